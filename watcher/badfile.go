@@ -1,0 +1,41 @@
+package watcher
+
+import (
+	"strconv"
+	"unicode/utf8"
+)
+
+// longestCell is how much of a bad cell is shown.
+const longestCell = 60
+
+// Place is the file with as much of line and column as is known.
+func (b *BadFile) Place() string {
+	s := b.File.Name
+	if b.Line > 0 {
+		s += ":" + strconv.Itoa(b.Line)
+		if b.Column > 0 {
+			s += ":" + strconv.Itoa(b.Column)
+		}
+	}
+	return s
+}
+
+// Message is the reason and the cell, without the place.
+func (b *BadFile) Message() string {
+	if b.Cell == "" {
+		return b.Reason
+	}
+	return b.Reason + ": " + QuoteCell(b.Cell)
+}
+
+// QuoteCell shows a cell's text quoted, cut on a rune boundary, control characters escaped.
+func QuoteCell(s string) string {
+	if len(s) <= longestCell {
+		return strconv.Quote(s)
+	}
+	cut := longestCell
+	for cut > 0 && !utf8.RuneStart(s[cut]) {
+		cut--
+	}
+	return strconv.Quote(s[:cut]) + "..."
+}

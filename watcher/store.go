@@ -1,0 +1,202 @@
+package watcher
+
+import (
+	"time"
+
+	"strayd/rules"
+)
+
+// Store is what a pass needs of the ledger.
+type Store interface {
+	// View opens a consistent reading as of the last published step. Several may be open at once, each for one goroutine.
+	View() (View, error)
+	// Publish writes a batch as one visible step: readers see all of it or nothing, whatever happens in between.
+	Publish(*Batch) error
+	// EndPass adds one row to the run record.
+	EndPass(PassRow) error
+}
+
+// View is a reading of the ledger at one step. Close it before publishing.
+type View interface {
+	Close() error
+	Step() uint32    // the last published step, 0 in a new ledger
+	NextRef() uint64 // the ref that the next flag gets
+	Names() (*Names, error)
+	// Dates lists the dates on which anything is held, ascending.
+	Dates(What) ([]rules.Date, error)
+	// Fill writes the newest values of one date for the series Block*BlockSize+from+i into dst (see Column.Fill) and says
+	// whether anything is held there. Nothing is written when it is not.
+	Fill(w What, date rules.Date, block uint32, from int, dst []int64) (bool, error)
+	// Patch overwrites, in dst filled as above with returns, the cells whose used value under a range differs from the
+	// return: with the used value, or with Missing64 where the value is left out.
+	Patch(rangeID uint16, date rules.Date, block uint32, from int, dst []int64) error
+	// Marked lists the flagged cells of one date and block, by offset.
+	Marked(date rules.Date, block uint32) ([]int, error)
+	// Series gives every version of every date of one series, by date, then step.
+	Series(w What, id uint32) ([]Version, error)
+	// Used gives every used value that differs from the return, by date, then step.
+	Used(rangeID uint16, id uint32) ([]Version, error)
+	// State is the newest stored state of a range for one block.
+	State(rangeID uint16, block uint32) (*State, error)
+	// FileSeen finds how a file of this content fared under the same feed settings before.
+	FileSeen(feed string, sha [32]byte, feedKey string) (FileRow, bool, error)
+	// File is the file row of a step.
+	File(step uint32) (FileRow, error)
+	// RangeID is the number of a range's definition, if it has one.
+	RangeID(key string) (uint16, bool, error)
+	// GroupScales gives the group deviations that provisional verdicts of a group used, by date, then step.
+	GroupScales(rangeID uint16, group string) ([]GroupScale, error)
+	// Settings is the settings text of a number, from 1; LastSettings is the newest number, 0 in a new ledger.
+	Settings(id uint32) ([]byte, error)
+	LastSettings() (uint32, error)
+	// FlagAt finds the flag of a series, date and kind.
+	FlagAt(series uint32, date rules.Date, kind rules.Kind) (rules.Flag, bool, error)
+	// Flag finds a flag by its ref.
+	Flag(ref uint64) (rules.Flag, bool, error)
+	// Flags calls each with every flag (or only with those whose standing asks something of a person) by ref, until it
+	// returns false.
+	Flags(all bool, each func(rules.Flag) bool) error
+}
+
+// Version is one value of one date, as known from a step on. In a list of used values, Missing64 means left out, and
+// Missing32 cannot occur.
+type Version struct {
+	Date  rules.Date
+	Step  uint32
+	Value int64
+	Line  uint32
+}
+
+// Batch is everything that one file changes. The ledger numbers it with the step after the view's.
+type Batch struct {
+	Step      uint32 // view.Step()+1
+	File      FileRow
+	NewNames  [][]byte // in the order of their numbers, continuing those held
+	Returns   []*Column
+	Prices    []*Column
+	Used      []UsedColumn
+	States    []State
+	Scales    []GroupScale
+	NewRanges []RangeKey
+	Settings  []byte // new settings text, nil when unchanged; the ledger gives it the next number
+	Record    []RecordEntry
+	Flags     []FlagRow
+}
+
+// UsedColumn holds the cells of one date and block whose used value under a range differs from the return.
+type UsedColumn struct {
+	Range   uint16
+	Date    rules.Date
+	Block   uint32
+	Offsets []uint16 // ascending
+	Values  []int64  // units; Missing64 where the value is left out; the return itself where an earlier patch is withdrawn
+}
+
+// State is the exact rolling state of one range for one block of series, after everything up to and including a date.
+type State struct {
+	Range uint16
+	Block uint32
+	Step  uint32
+	Upto  rules.Date
+	N     []uint32     // used observations in the window (weighted: since the start)
+	Last  []rules.Date // newest used observation, NoDate when none
+	Sum   []Int128     // of the used values in the window
+	Sq    []Int128     // of their squares, unsigned
+	Var   []float64    // weighted only: the mean square in fractions squared
+}
+
+// Int128 is a two's complement integer of 128 bits.
+type Int128 struct{ Hi, Lo uint64 }
+
+// RangeKey gives a range's definition its number.
+type RangeKey struct {
+	ID  uint16
+	Key string
+}
+
+// GroupScale is the deviation that a group lends to its provisional series on a date.
+type GroupScale struct {
+	Range     uint16
+	Group     string
+	Date      rules.Date
+	Step      uint32
+	Deviation float64
+	Series    uint32 // how many series it is the median of
+}
+
+// RecordEntry is one line of the hash-chained record.
+type RecordEntry struct {
+	Kind string // settings, decision
+	Who  string // uid and name of who acted
+	At   time.Time
+	Body []byte // JSON
+}
+
+// FlagRow is a flag with its series number. New is false when it replaces the flag of the same ref.
+type FlagRow struct {
+	rules.Flag
+	SeriesID uint32 // NoSeries when the flag is not about one series
+	New      bool
+}
+
+// NoSeries is the series number of a flag that is not about one series.
+const NoSeries uint32 = 1<<32 - 1
+
+// FileRow is what became of one file.
+type FileRow struct {
+	Step     uint32
+	File     File
+	FeedKey  string // hash of the feed's settings
+	Settings uint32
+	Outcome  Outcome
+	Received time.Time
+	Reason   string // of a refusal: place and message
+	Line     uint32
+	First    rules.Date
+	Last     rules.Date
+	Counts   Counts
+}
+
+// Outcome says what became of a file.
+type Outcome string
+
+const (
+	Accepted Outcome = "accepted"
+	Refused  Outcome = "refused"
+)
+
+// Counts are the figures of a file or a pass.
+type Counts struct {
+	Rows, New, Late, Restated, Same         int
+	Inside, Watch, Breach, NotJudged, Flags int // verdicts over all ranges; flags raised
+	Provisional                             int
+}
+
+// Add sums two counts.
+func (c *Counts) Add(o Counts) {
+	c.Rows += o.Rows
+	c.New += o.New
+	c.Late += o.Late
+	c.Restated += o.Restated
+	c.Same += o.Same
+	c.Inside += o.Inside
+	c.Watch += o.Watch
+	c.Breach += o.Breach
+	c.NotJudged += o.NotJudged
+	c.Flags += o.Flags
+	c.Provisional += o.Provisional
+}
+
+// PassRow is one line of the run record.
+type PassRow struct {
+	Number   uint32
+	Started  time.Time
+	Ended    time.Time
+	Feed     string // "" for all
+	Accepted int
+	Refused  int
+	Waiting  int
+	Counts   Counts
+	Failed   string // why the pass failed, "" when it did not
+	Program  string // version of the program
+}
