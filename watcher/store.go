@@ -12,7 +12,7 @@ type Store interface {
 	View() (View, error)
 	// Publish writes a batch as one visible step: readers see all of it or nothing, whatever happens in between.
 	Publish(*Batch) error
-	// EndPass adds one row to the run record.
+	// EndPass adds one row to the run record and gives it the next number.
 	EndPass(PassRow) error
 }
 
@@ -42,6 +42,12 @@ type View interface {
 	FileSeen(feed string, sha [32]byte, feedKey string) (FileRow, bool, error)
 	// File is the file row of a step.
 	File(step uint32) (FileRow, error)
+	// Files calls each with every file row by step, until it returns false.
+	Files(each func(FileRow) bool) error
+	// LastPass is the newest row of the run record; ok is false when there is none.
+	LastPass() (row PassRow, ok bool, err error)
+	// Head is the hash of the newest entry of the hash-chained record, in hex; "" when the record is empty.
+	Head() (string, error)
 	// RangeID is the number of a range's definition, if it has one.
 	RangeID(key string) (uint16, bool, error)
 	// GroupScales gives the group deviations that provisional verdicts of a group used, by date, then step.
@@ -146,6 +152,7 @@ const NoSeries uint32 = 1<<32 - 1
 type FileRow struct {
 	Step     uint32
 	File     File
+	Stamp    string // inode, size and times of the file when it was read, to know it again without reading
 	FeedKey  string // hash of the feed's settings
 	Settings uint32
 	Outcome  Outcome
