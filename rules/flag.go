@@ -37,11 +37,11 @@ const (
 	SignedOff    Standing = "signed off"
 	Waived       Standing = "waived"
 	Reopened     Standing = "reopened"
-	Past         Standing = "history" // of a first load: asks nothing of anyone
+	OfHistory    Standing = "history" // of a first load: asks nothing of anyone
 )
 
 // Standings lists every standing in order.
-var Standings = []Standing{Open, Acknowledged, Decided, SignedOff, Waived, Reopened, Past}
+var Standings = []Standing{Open, Acknowledged, Decided, SignedOff, Waived, Reopened, OfHistory}
 
 // Asks says whether a flag of this standing still asks something of a person.
 func (s Standing) Asks() bool { return s == Open || s == Acknowledged || s == Reopened }

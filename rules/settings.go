@@ -120,6 +120,7 @@ type Line struct {
 	Confidence float64 // share expected inside, a fraction
 	Z          float64 // deviations
 	Budget     float64 // flags a week, over all series and ranges
+	Level      float64 // the tail probability that a budget was turned into; fixed in the record
 }
 
 // Range is one expected range, or a limit when Limit is set.

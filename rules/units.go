@@ -31,10 +31,11 @@ func (u Units) String() string {
 	if u == Missing {
 		return ""
 	}
-	return formatFixed(int64(u), Places)
+	return Decimal(int64(u), Places)
 }
 
-func formatFixed(v int64, places int) string {
+// Decimal writes v x 10^-places exactly, without trailing zeros.
+func Decimal(v int64, places int) string {
 	var sign string
 	m := uint64(v)
 	if v < 0 {
@@ -58,7 +59,7 @@ type Price int64
 const PricePlaces = 10
 
 // String is the exact decimal, without trailing zeros.
-func (p Price) String() string { return formatFixed(int64(p), PricePlaces) }
+func (p Price) String() string { return Decimal(int64(p), PricePlaces) }
 
 var (
 	// ErrNotNumber: the text is no plain or exponent decimal.
@@ -209,4 +210,13 @@ func digits(s string) (m int64, decimals int, err error) {
 		m++ // a trace of what was cut, so that rounding at a coarser place still sees which side of the half it lies on
 	}
 	return m, decimals, nil
+}
+
+// unitsUp and unitsDown turn a line into whole units, rounding up and down. Lines beyond the window limit are held to it.
+func unitsUp(f float64) Units   { return clampUnits(math.Ceil(f * 1e15)) }
+func unitsDown(f float64) Units { return clampUnits(math.Floor(f * 1e15)) }
+
+func clampUnits(f float64) Units {
+	limit := float64(WindowLimit)
+	return Units(min(max(f, -limit), limit))
 }

@@ -97,27 +97,40 @@ func fill64(dst, src []int64, mul int64) int {
 
 // Line is the source line of the cell at an offset, 0 when the cell is absent.
 func (c *Column) Line(offset int) uint32 {
-	if c.Lines.At != nil {
-		if offset < len(c.Lines.At) {
-			return c.Lines.At[offset]
-		}
+	if offset >= c.Len() || !c.has(offset) {
 		return 0
 	}
-	rank := uint32(0)
+	if c.Lines.At != nil {
+		return c.Lines.At[offset]
+	}
+	line := c.Lines.First
 	for i := range offset {
 		if c.has(i) {
-			rank++
+			line += c.Lines.Stride
 		}
 	}
-	if !c.has(offset) {
-		return 0
+	return line
+}
+
+// AllLines is the source line of each offset, 0 where a cell is absent. It must not be changed.
+func (c *Column) AllLines() []uint32 {
+	if c.Lines.At != nil {
+		return c.Lines.At
 	}
-	return c.Lines.First + rank*c.Lines.Stride
+	at := make([]uint32, c.Len())
+	line := c.Lines.First
+	for i := range at {
+		if c.has(i) {
+			at[i] = line
+			line += c.Lines.Stride
+		}
+	}
+	return at
 }
 
 func (c *Column) has(i int) bool {
 	if c.V32 != nil {
-		return i < len(c.V32) && c.V32[i] != Missing32
+		return c.V32[i] != Missing32
 	}
-	return i < len(c.V64) && c.V64[i] != Missing64
+	return c.V64[i] != Missing64
 }

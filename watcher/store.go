@@ -48,8 +48,8 @@ type View interface {
 	LastPass() (row PassRow, ok bool, err error)
 	// Head is the hash of the newest entry of the hash-chained record, in hex; "" when the record is empty.
 	Head() (string, error)
-	// RangeID is the number of a range's definition, if it has one.
-	RangeID(key string) (uint16, bool, error)
+	// Ranges lists the numbered range definitions.
+	Ranges() ([]RangeKey, error)
 	// GroupScales gives the group deviations that provisional verdicts of a group used, by date, then step.
 	GroupScales(rangeID uint16, group string) ([]GroupScale, error)
 	// Settings is the settings text of a number, from 1; LastSettings is the newest number, 0 in a new ledger.
@@ -170,6 +170,8 @@ type Outcome string
 const (
 	Accepted Outcome = "accepted"
 	Refused  Outcome = "refused"
+	// Changed is the outcome of a step that holds no file: the settings changed.
+	Changed Outcome = "settings changed"
 )
 
 // Counts are the figures of a file or a pass.

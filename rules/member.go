@@ -1,0 +1,167 @@
+package rules
+
+import (
+	"path"
+	"strings"
+)
+
+// Pattern is an id or a glob (path.Match), prepared so that the usual forms are one comparison.
+type Pattern struct {
+	text string
+	form form
+}
+
+type form uint8
+
+const (
+	literal form = iota
+	prefix       // "alder-*"
+	glob
+)
+
+// NewPattern prepares an id or glob. A malformed glob gives path.ErrBadPattern.
+func NewPattern(s string) (Pattern, error) {
+	if _, err := path.Match(s, ""); err != nil {
+		return Pattern{}, err
+	}
+	switch i := strings.IndexAny(s, `*?[\`); {
+	case i < 0:
+		return Pattern{s, literal}, nil
+	case i == len(s)-1 && s[i] == '*' && !strings.Contains(s, "/"):
+		return Pattern{s[:i], prefix}, nil
+	}
+	return Pattern{s, glob}, nil
+}
+
+// Match says whether a series id fits. As in path.Match, * stops at a slash.
+func (p Pattern) Match(id string) bool {
+	switch p.form {
+	case literal:
+		return id == p.text
+	case prefix:
+		return strings.HasPrefix(id, p.text) && !strings.Contains(id[len(p.text):], "/")
+	}
+	ok, err := path.Match(p.text, id)
+	return ok && err == nil
+}
+
+// Settings is everything that decides a verdict, apart from the returns themselves.
+type Settings struct {
+	Ranges   []Range
+	Groups   []Group
+	Doubtful float64
+	Register []Series `json:"-"` // who is in which group; its hash stands for it
+	Members  string   // hash of the register's groups, "" without a register
+}
+
+// Membership answers, for a series id, its group and the ranges that judge it.
+type Membership struct {
+	groups   []memberGroup
+	register map[string]string // id to group, where the register names one
+	ranges   []memberRange
+}
+
+type memberGroup struct {
+	name string
+	of   []Pattern
+}
+
+type memberRange struct {
+	all    bool
+	groups map[string]bool
+	ids    []Pattern
+}
+
+// NewMembership prepares the settings' patterns. A malformed glob gives path.ErrBadPattern.
+func NewMembership(s *Settings) (*Membership, error) {
+	m := &Membership{}
+	names := map[string]bool{}
+	for _, g := range s.Groups {
+		of, err := patterns(g.Series)
+		if err != nil {
+			return nil, err
+		}
+		m.groups = append(m.groups, memberGroup{g.Name, of})
+		names[g.Name] = true
+	}
+	m.addRegister(s.Register, names)
+	for _, r := range s.Ranges {
+		mr := memberRange{all: len(r.For) == 0, groups: map[string]bool{}}
+		for _, f := range r.For {
+			if names[f] {
+				mr.groups[f] = true
+				continue
+			}
+			p, err := NewPattern(f)
+			if err != nil {
+				return nil, err
+			}
+			mr.ids = append(mr.ids, p)
+		}
+		m.ranges = append(m.ranges, mr)
+	}
+	return m, nil
+}
+
+func (m *Membership) addRegister(register []Series, names map[string]bool) {
+	for _, s := range register {
+		if s.Group == "" {
+			continue
+		}
+		if m.register == nil {
+			m.register = map[string]string{}
+		}
+		m.register[s.ID] = s.Group
+		names[s.Group] = true
+	}
+}
+
+func patterns(texts []string) ([]Pattern, error) {
+	var out []Pattern
+	for _, t := range texts {
+		p, err := NewPattern(t)
+		if err != nil {
+			return nil, err
+		}
+		out = append(out, p)
+	}
+	return out, nil
+}
+
+// Universal says that every range judges every series and no series has a group, so that nothing need be looked up.
+func (m *Membership) Universal() bool {
+	for _, r := range m.ranges {
+		if !r.all {
+			return false
+		}
+	}
+	return len(m.groups) == 0 && m.register == nil
+}
+
+// Group is the group of a series: the register's where it names one, else the first whose patterns fit, else "".
+func (m *Membership) Group(id string) string {
+	if g, ok := m.register[id]; ok {
+		return g
+	}
+	for _, g := range m.groups {
+		if matchAny(g.of, id) {
+			return g.name
+		}
+	}
+	return ""
+}
+
+// Applies says whether the range at an index of the settings judges a series of the given group.
+func (m *Membership) Applies(rangeIndex int, id, group string) bool {
+	r := &m.ranges[rangeIndex]
+	return r.all || group != "" && r.groups[group] || matchAny(r.ids, id)
+}
+
+func matchAny(ps []Pattern, id string) bool {
+	for _, p := range ps {
+		if p.Match(id) {
+			return true
+		}
+	}
+	return false
+}

@@ -1,0 +1,238 @@
+package watcher
+
+import (
+	"cmp"
+	"errors"
+	"runtime"
+	"slices"
+	"sync"
+	"sync/atomic"
+
+	"strayd/rules"
+)
+
+// accept judges a validated file and publishes it as one step.
+func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
+	if err := p.settle(sheet.Names.Len()); err != nil {
+		return err
+	}
+	j, err := p.judging(sheet)
+	if err != nil {
+		return err
+	}
+	b := &Batch{Step: j.step}
+	blocks, err := p.changes(j, sheet, b)
+	if err != nil {
+		return err
+	}
+	out, err := p.judgeAll(j, blocks)
+	if err != nil {
+		return err
+	}
+	b.File = FileRow{Step: b.Step, File: sheet.File, Stamp: c.Stamp, FeedKey: p.FeedKey(f), Settings: j.settings, Outcome: Accepted,
+		Received: p.Now, First: sheet.First(), Last: sheet.Last()}
+	p.assemble(b, j, sheet, out)
+	b.File.Counts.Rows = sheet.Rows
+	b.File.Counts.Same = sheet.Rows - b.File.Counts.New - b.File.Counts.Late - b.File.Counts.Restated
+	if err := p.Store.Publish(b); err != nil {
+		return err
+	}
+	p.row.Accepted++
+	p.row.Counts.Add(b.File.Counts)
+	p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateAccepted, Row: b.File, Notes: sheet.Notes})
+	return nil
+}
+
+// judging prepares what the workers of one file share.
+func (p *Pass) judging(sheet *Sheet) (*judging, error) {
+	v, err := p.Store.View()
+	if err != nil {
+		return nil, err
+	}
+	defer v.Close()
+	j := &judging{names: sheet.Names, heldNames: sheet.Held, firstNames: p.firstNames, file: sheet.File, now: p.Now, step: v.Step() + 1, nextRef: v.NextRef()}
+	j.newest = max(sheet.Last(), p.newest)
+	p.newest = j.newest
+	return j, p.prepare(j, v)
+}
+
+// prepare reads the recorded settings and the dates held.
+func (p *Pass) prepare(j *judging, v View) (err error) {
+	if j.settings, err = v.LastSettings(); err != nil {
+		return err
+	}
+	if j.held, err = v.Dates(Returns); err != nil {
+		return err
+	}
+	if j.members, err = rules.NewMembership(&p.Settings); err != nil {
+		return err
+	}
+	ids, err := rangeIDs(v)
+	if err != nil {
+		return err
+	}
+	for n, r := range p.Settings.Ranges {
+		g, err := rules.NewGauge(r)
+		if err != nil {
+			return err
+		}
+		j.gauges = append(j.gauges, g)
+		j.ids = append(j.ids, ids[RangeIdentity(&p.Settings, n)])
+		if r.Limit != nil {
+			j.limits = append(j.limits, n)
+		}
+	}
+	j.width = p.taskWidth(j.names.Len())
+	return nil
+}
+
+// ringMemory bounds the windows that one worker holds, in bytes.
+const ringMemory = 32 << 20
+
+// taskWidth is how many series a task covers: few enough that every worker gets some, and that the windows fit the memory.
+func (p *Pass) taskWidth(series int) int {
+	longest := 1
+	lanes := 0
+	for _, r := range p.Settings.Ranges {
+		if r.Limit == nil {
+			longest = max(longest, r.Window)
+			lanes++
+		}
+	}
+	width := min(BlockSize, max(64, (series+2*p.workers()-1)/(2*p.workers())))
+	return max(16, min(width, ringMemory/(8*longest*max(lanes, 1))))
+}
+
+func (p *Pass) workers() int {
+	if p.Workers > 0 {
+		return p.Workers
+	}
+	return runtime.GOMAXPROCS(0)
+}
+
+// block is the changed days of one block.
+type block struct {
+	number uint32
+	series int // how many series of the block exist
+	days   []*day
+}
+
+// tasks cuts blocks into runs of series.
+func tasks(blocks []block, width int, since rules.Date) (out []task) {
+	for _, b := range blocks {
+		for from := 0; from < b.series; from += width {
+			out = append(out, task{block: b.number, from: from, width: min(width, b.series-from), days: b.days, since: since})
+		}
+	}
+	return out
+}
+
+// judgeAll runs the tasks of all changed blocks.
+func (p *Pass) judgeAll(j *judging, blocks []block) ([]outcome, error) {
+	return p.runTasks(j, tasks(blocks, j.width, rules.NoDate))
+}
+
+func (p *Pass) runTasks(j *judging, todo []task) ([]outcome, error) {
+	outs := make([]outcome, len(todo))
+	errs := make([]error, min(p.workers(), max(1, len(todo))))
+	progress := p.progress("judging")
+	var next, done atomic.Int64
+	var wg sync.WaitGroup
+	for n := range errs {
+		wg.Go(func() { errs[n] = p.work(j, todo, outs, &next, &done, progress) })
+	}
+	wg.Wait()
+	return outs, errors.Join(errs...)
+}
+
+// work is one worker: it takes the next task until there is none.
+func (p *Pass) work(j *judging, todo []task, outs []outcome, next, done *atomic.Int64, progress Progress) error {
+	v, err := p.Store.View()
+	if err != nil {
+		return err
+	}
+	defer v.Close()
+	w := newWorker(j, v)
+	for {
+		n := int(next.Add(1)) - 1
+		if n >= len(todo) {
+			return nil
+		}
+		if outs[n], err = w.run(todo[n]); err != nil {
+			next.Store(int64(len(todo))) // the others need not go on
+			return err
+		}
+		if d := done.Add(1); progress != nil {
+			progress(d, int64(len(todo)))
+		}
+	}
+}
+
+// assemble puts the workers' outcomes into the batch, in an order that does not depend on who did what when.
+func (p *Pass) assemble(b *Batch, j *judging, sheet *Sheet, outs []outcome) {
+	var states []partState
+	for _, o := range outs {
+		b.File.Counts.Add(o.counts)
+		b.Flags = append(b.Flags, o.flags...)
+		b.Used = append(b.Used, o.used...)
+		states = append(states, o.states...)
+	}
+	b.Used = joinUsed(b.Used)
+	b.States = joinStates(states)
+	for n := range b.States {
+		b.States[n].Step = b.Step
+	}
+	for id := j.heldNames; id < sheet.Names.Len(); id++ {
+		b.NewNames = append(b.NewNames, sheet.Names.Name(uint32(id)))
+	}
+	p.numberFlags(b, j)
+}
+
+// joinUsed sorts used columns by range, date and block, and joins the parts of one block.
+func joinUsed(used []UsedColumn) []UsedColumn {
+	slices.SortStableFunc(used, func(a, b UsedColumn) int {
+		return cmp.Or(cmp.Compare(a.Range, b.Range), cmp.Compare(a.Date, b.Date), cmp.Compare(a.Block, b.Block))
+	})
+	out := used[:0]
+	for _, u := range used {
+		if n := len(out) - 1; n >= 0 && out[n].Range == u.Range && out[n].Date == u.Date && out[n].Block == u.Block {
+			out[n].Offsets = append(out[n].Offsets, u.Offsets...)
+			out[n].Values = append(out[n].Values, u.Values...)
+			continue
+		}
+		out = append(out, u)
+	}
+	return out
+}
+
+// numberFlags orders the flags by date, series and kind, gives the new ones their refs, and turns flags of a first load into
+// history once a newer date has come in within the same pass.
+func (p *Pass) numberFlags(b *Batch, j *judging) {
+	slices.SortFunc(b.Flags, func(x, y FlagRow) int {
+		return cmp.Or(cmp.Compare(x.Date, y.Date), cmp.Compare(x.SeriesID, y.SeriesID), cmp.Compare(x.Kind, y.Kind))
+	})
+	ref := j.nextRef
+	for n := range b.Flags {
+		f := &b.Flags[n]
+		if f.Step = b.Step; f.New {
+			f.Ref = ref
+			ref++
+			b.File.Counts.Flags++
+		}
+	}
+	kept := p.opened[:0]
+	for _, f := range p.opened {
+		if f.Date >= j.newest {
+			kept = append(kept, f)
+			continue
+		}
+		f.Standing, f.New = rules.OfHistory, false
+		b.Flags = append(b.Flags, f)
+	}
+	p.opened = kept
+	for _, f := range b.Flags {
+		if f.New && f.Standing == rules.Open && f.SeriesID != NoSeries && int(f.SeriesID) >= j.firstNames {
+			p.opened = append(p.opened, f)
+		}
+	}
+}

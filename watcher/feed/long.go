@@ -1,0 +1,125 @@
+package feed
+
+import (
+	"bytes"
+	"strconv"
+)
+
+// longRow reads one observation.
+func (p *parser) longRow() bool {
+	line := p.line
+	for i, r := range p.roles {
+		if i > 0 && !p.separator() {
+			return p.fail(p.at, p.line, p.lineStart, nil, carriageReturn)
+		}
+		ok := true
+		switch r {
+		case roleDate:
+			ok = p.takeDate()
+		case roleSeries:
+			ok = p.takeSeries()
+		case roleValue:
+			ok = p.takeValue()
+		default:
+			ok = p.takeOther(r)
+		}
+		if !ok {
+			return p.lost()
+		}
+	}
+	if !p.endOfLine() {
+		p.fail(p.at, p.line, p.lineStart, nil, carriageReturn)
+		return p.lost()
+	}
+	p.observe(line)
+	return true
+}
+
+// lost counts a row that gives no observation because it is bad.
+func (p *parser) lost() bool {
+	p.out.cells++
+	p.out.skipped++
+	return false
+}
+
+func (p *parser) observe(line uint32) {
+	p.out.cells++
+	switch {
+	case p.none:
+		p.out.missing++
+	case p.name != nil:
+		p.out.emitFresh(p.date, p.name, line, p.v, p.dec)
+	default:
+		p.out.emit(p.date, p.id, line, p.v, p.dec)
+	}
+}
+
+// takeSeries reads the name of a series. Files list series in the order of their numbers, or one series after another, so that
+// name is compared first.
+func (p *parser) takeSeries() bool {
+	want := p.names.Name(p.next - p.hint)
+	end := p.at + len(want)
+	if len(want) > 0 && end < len(p.text) && p.ends(p.text[end]) && bytes.Equal(p.text[p.at:end], want) {
+		p.at = end
+		p.follow(p.next - p.hint)
+		return true
+	}
+	return p.take((*parser).judgeSeries)
+}
+
+func (p *parser) follow(id uint32) {
+	p.id, p.next, p.name = id, id+1, nil
+}
+
+func (p *parser) judgeSeries(cell []byte) string {
+	if id, ok := p.names.Find(cell); ok {
+		if id+1 == p.next {
+			p.hint = 1
+		} else if id == p.next {
+			p.hint = 0
+		}
+		p.follow(id)
+		return ""
+	}
+	p.name = cell
+	return p.badName(cell)
+}
+
+// takeOther checks a cell that carries no observation.
+func (p *parser) takeOther(r role) bool {
+	switch r {
+	case roleStatus:
+		return p.take((*parser).judgeStatus)
+	case roleDays:
+		return p.take((*parser).judgeDays)
+	}
+	i := p.at
+	for b := p.text[i]; b > ' ' && b < 0x7f && b != '"' && b != p.sep; b = p.text[i] {
+		i++
+	}
+	if p.ends(p.text[i]) {
+		p.at = i
+		return true
+	}
+	return p.take((*parser).judgeText)
+}
+
+func (p *parser) judgeText(cell []byte) string { return p.badText(cell) }
+
+func (p *parser) judgeStatus(cell []byte) string {
+	if s := string(cell); s != "estimate" && s != "final" {
+		return "the status is neither estimate nor final"
+	}
+	return ""
+}
+
+func (p *parser) judgeDays(cell []byte) string {
+	n, err := strconv.Atoi(string(cell))
+	if err != nil || n < 1 || n > mostDays || digitsAt(cell) != len(cell) {
+		return "the number of days is not a whole number from 1 to " + strconv.Itoa(mostDays)
+	}
+	return ""
+}
+
+// mostDays is the longest stretch that one return may cover: a year of calendar days.
+const mostDays = 366

@@ -1,0 +1,69 @@
+package watcher
+
+import (
+	"slices"
+	"time"
+
+	"strayd/rules"
+)
+
+// judging is what all workers of one step share: the settings made ready, and what the ledger holds. It is only read.
+type judging struct {
+	gauges  []*rules.Gauge // by the settings' order
+	ids     []uint16       // the ranges' numbers in the ledger
+	limits  []int          // indexes of the limit ranges
+	members *rules.Membership
+
+	names      *Names
+	heldNames  int // names that the ledger has
+	firstNames int // names that the ledger had when the pass began: later ones are in their first load
+	held       []rules.Date
+	newest     rules.Date // newest date of the file: flags of a first load on older dates stand as history
+	file       File
+	now        time.Time
+	step       uint32
+	settings   uint32 // number of the settings text
+	nextRef    uint64
+	width      int // of the widest task
+	scales     *groupScales
+}
+
+// heldBefore lists the dates before a date on which a block may hold values, ascending.
+func (j *judging) heldBefore(block uint32, before rules.Date) []rules.Date {
+	if int(block)*BlockSize >= j.heldNames {
+		return nil
+	}
+	n, _ := slices.BinarySearch(j.held, before)
+	return j.held[:n]
+}
+
+// heldFrom lists the dates from a date on.
+func (j *judging) heldFrom(block uint32, from rules.Date) []rules.Date {
+	if int(block)*BlockSize >= j.heldNames {
+		return nil
+	}
+	n, _ := slices.BinarySearch(j.held, from)
+	return j.held[n:]
+}
+
+// appliesTo says for each series whether a range judges it; nil when it judges them all.
+func (j *judging) appliesTo(rangeIndex int, ids, groups []string) []bool {
+	all := true
+	out := make([]bool, len(ids))
+	for i, id := range ids {
+		out[i] = j.members.Applies(rangeIndex, id, groups[i])
+		all = all && out[i]
+	}
+	if all {
+		return nil
+	}
+	return out
+}
+
+// groupScale is the deviation that a group lends to its provisional series on a date.
+func (j *judging) groupScale(l *lane, group string, date rules.Date) rules.Num {
+	if j.scales == nil || group == "" {
+		return rules.Num{}
+	}
+	return j.scales.at(l.id, group, date)
+}

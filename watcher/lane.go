@@ -1,0 +1,144 @@
+package watcher
+
+import (
+	"math"
+
+	"strayd/rules"
+	"strayd/stats"
+)
+
+// dormantDays is the longest calendar gap that surely holds no more than rules.DormantAfter business days: four weeks.
+const dormantDays = rules.DormantAfter / 5 * 7
+
+// lane is the rolling state of one range for a run of neighbouring series.
+type lane struct {
+	index   int // of the range in the settings
+	id      uint16
+	gauge   *rules.Gauge
+	windows windows
+	last    []rules.Date // newest used observation of each series, NoDate when none
+	dormant []bool       // the window started anew after a gap
+	applies []bool       // nil when the range judges every series
+
+	gate stats.Gate // nil where every value must be judged one by one
+
+	values []int64 // scratch for one series' window
+	used   []int64 // scratch for one date
+}
+
+// windows are the windows of many series side by side: the plain, weighted or sorted panel of stats.
+type windows interface {
+	Reset()
+	Push(vals []int64)
+	Scan(vals []int64, gate stats.Gate, cand []int32) []int32
+	Clear(i int)
+	N(i int) int
+}
+
+// loader is what a panel has that depends on its window alone, so that it can be filled from the newest date backwards.
+type loader interface {
+	Prepend(vals []int64)
+	Full(i int) bool
+}
+
+func newLane(index int, id uint16, g *rules.Gauge, width int) *lane {
+	l := &lane{index: index, id: id, gauge: g, last: make([]rules.Date, width), dormant: make([]bool, width), used: make([]int64, width)}
+	l.gate, _ = g.Gate()
+	switch r := g.Range; {
+	case r.Scale == rules.Weighted:
+		l.windows = stats.NewWeightedPanel(width, r.Window, r.Decay, float64(rules.One))
+	case r.Scale == rules.MAD, r.Tail.Name == "rank":
+		l.windows = stats.NewSortedPanel(width, r.Window)
+	default:
+		l.windows = stats.NewPanel(width, r.Window)
+	}
+	return l
+}
+
+func (l *lane) reset() {
+	l.windows.Reset()
+	for i := range l.last {
+		l.last[i] = rules.NoDate
+	}
+	clear(l.dormant)
+}
+
+// candidates appends the series whose value on a date is not surely inside.
+func (l *lane) candidates(fresh []int64, cand []int32) []int32 {
+	if l.gate != nil {
+		return l.windows.Scan(fresh, l.gate, cand)
+	}
+	for i, v := range fresh {
+		if v != Missing64 {
+			cand = append(cand, int32(i))
+		}
+	}
+	return cand
+}
+
+// rest restarts the window of every series whose newest used value is too old on a date on which it has a value again.
+func (l *lane) rest(date rules.Date, vals []int64) {
+	last := l.last[:len(vals)]
+	edge := date - dormantDays
+	for i, v := range vals {
+		if last[i] < edge && v != Missing64 && last[i] != rules.NoDate && rules.Weekdays(last[i], date) > rules.DormantAfter {
+			l.windows.Clear(i)
+			last[i] = rules.NoDate
+			l.dormant[i] = true
+		}
+	}
+}
+
+// push lets the windows take the used values of a date.
+func (l *lane) push(date rules.Date, used []int64) {
+	l.windows.Push(used)
+	last := l.last[:len(used)]
+	for i, v := range used {
+		if v != Missing64 {
+			last[i] = date
+		}
+	}
+}
+
+// past is what the lane knows of series i before the date at hand.
+func (l *lane) past(i int, group rules.Num) *rules.Past {
+	p := &rules.Past{N: l.windows.N(i), Dormant: l.dormant[i], Group: group}
+	switch w := l.windows.(type) {
+	case *stats.WeightedPanel:
+		p.Var = w.State(i).V
+	case *stats.SortedPanel:
+		p.Sorted = func() stats.Sorted { return w.Sorted(i) }
+		p.Values = func() []int64 { return w.Sorted(i) }
+		if l.gauge.Range.Scale == rules.Plain {
+			for _, k := range w.Sorted(i) {
+				p.Sums.Add(k)
+			}
+		}
+	case *stats.Panel:
+		p.Sums = w.Sums(i)
+		p.Values = func() []int64 {
+			l.values = w.Values(i, l.values[:0])
+			return l.values
+		}
+	}
+	return p
+}
+
+// outsize leaves out of a row of values those that may never enter a window.
+func outsize(vals []int64) {
+	for i, v := range vals {
+		if v > int64(rules.WindowLimit) || v < -int64(rules.WindowLimit) {
+			vals[i] = Missing64
+		}
+	}
+}
+
+// oversize appends the series whose value may never enter a window.
+func oversize(vals []int64, at []int32) []int32 {
+	for i, v := range vals {
+		if uint64(v+int64(rules.WindowLimit)) > uint64(2*rules.WindowLimit) && v != math.MinInt64 {
+			at = append(at, int32(i))
+		}
+	}
+	return at
+}

@@ -1,0 +1,94 @@
+package ledger
+
+import (
+	"encoding/binary"
+
+	"strayd/watcher"
+)
+
+// write decodes the cells of offsets from, from+1, ... into dst, each times mul, and Missing64 where there is none.
+func (l *layer) write(dst []int64, from int, mul int64) {
+	if l.shape&shapeSparse != 0 {
+		clearCells(dst)
+		l.writeSparse(dst, from, mul)
+		return
+	}
+	n := max(0, min(l.n-from, len(dst)))
+	if n > 0 {
+		l.writeDense(dst[:n], from, mul)
+	}
+	clearCells(dst[n:])
+}
+
+func clearCells(dst []int64) {
+	for i := range dst {
+		dst[i] = watcher.Missing64
+	}
+}
+
+func (l *layer) writeDense(dst []int64, from int, mul int64) {
+	switch {
+	case l.shape&shapeWide != 0:
+		wide(dst, l.values[8*from:], mul)
+	case l.shape&shapeFull != 0:
+		full(dst, l.values[4*from:], mul)
+	default:
+		narrow(dst, l.values[4*from:], mul)
+	}
+}
+
+// full decodes int32 cells none of which is missing, two at a time.
+func full(dst []int64, src []byte, mul int64) {
+	for len(dst) >= 2 && len(src) >= 8 {
+		v := binary.LittleEndian.Uint64(src)
+		dst[0] = int64(int32(v)) * mul
+		dst[1] = int64(int32(v>>32)) * mul
+		dst, src = dst[2:], src[8:]
+	}
+	narrow(dst, src, mul)
+}
+
+func narrow(dst []int64, src []byte, mul int64) {
+	for i := range dst {
+		v := int32(binary.LittleEndian.Uint32(src))
+		src = src[4:]
+		if v == watcher.Missing32 {
+			dst[i] = watcher.Missing64
+		} else {
+			dst[i] = int64(v) * mul
+		}
+	}
+}
+
+func wide(dst []int64, src []byte, mul int64) {
+	for i := range dst {
+		v := int64(binary.LittleEndian.Uint64(src))
+		src = src[8:]
+		if v != watcher.Missing64 {
+			v *= mul
+		}
+		dst[i] = v
+	}
+}
+
+// overlay writes only the cells that the layer has, over those of earlier layers.
+func (l *layer) overlay(dst []int64, from int, mul int64) {
+	if l.shape&shapeSparse != 0 {
+		l.writeSparse(dst, from, mul)
+		return
+	}
+	for i := range max(0, min(l.n-from, len(dst))) {
+		if v := l.value(from + i); v != watcher.Missing64 {
+			dst[i] = v * mul
+		}
+	}
+}
+
+func (l *layer) writeSparse(dst []int64, from int, mul int64) {
+	for i := range l.n {
+		at := int(binary.LittleEndian.Uint16(l.offsets[2*i:])) - from
+		if at >= 0 && at < len(dst) {
+			dst[at] = l.value(i) * mul
+		}
+	}
+}

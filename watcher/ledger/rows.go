@@ -1,0 +1,121 @@
+package ledger
+
+import (
+	"bytes"
+	"fmt"
+
+	bolt "go.etcd.io/bbolt"
+
+	"strayd/watcher"
+)
+
+// newest finds the last layer of a key up to a step: key (a copy) and value, or nil.
+func newest(c *bolt.Cursor, prefix []byte, step uint32) (key, value []byte) {
+	for k, v := c.Seek(prefix); k != nil && bytes.HasPrefix(k, prefix) && len(k) == len(prefix)+4; k, v = c.Next() {
+		if stepOf(k) > step {
+			break
+		}
+		key, value = k, v
+	}
+	return bytes.Clone(key), value
+}
+
+// rows puts what is written only when the batch is published.
+func (w *writer) rows(p *plan) error {
+	for _, f := range p.flags {
+		if err := w.openFlag(f); err != nil {
+			return err
+		}
+	}
+	for _, r := range p.batch.NewRanges {
+		key := put16(nil, r.ID)
+		if w.buckets[inRanges].Get(key) != nil {
+			return fmt.Errorf("range number %d is taken", r.ID)
+		}
+		if err := w.put(inRanges, key, func(dst []byte) []byte { return append(dst, r.Key...) }); err != nil {
+			return err
+		}
+	}
+	if err := w.fileRow(p); err != nil {
+		return err
+	}
+	if p.batch.Settings != nil {
+		w.head.settings++
+		key := put32(nil, w.head.settings)
+		if err := w.put(inSettings, key, func(dst []byte) []byte { return append(dst, p.batch.Settings...) }); err != nil {
+			return err
+		}
+	}
+	for _, r := range p.batch.Record {
+		if err := w.entry(r); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (w *writer) openFlag(f *watcher.FlagRow) error {
+	key := put64(nil, f.Ref)
+	if !f.Standing.Asks() {
+		return w.remove(inOpen, key)
+	}
+	return w.replace(inOpen, key, func(dst []byte) []byte { return dst })
+}
+
+func (w *writer) fileRow(p *plan) error {
+	f := p.batch.File
+	if f.Outcome == "" {
+		return nil
+	}
+	if indexOf(outcomes(), f.Outcome) == 255 {
+		return fmt.Errorf("outcome %q of file %s is not known", f.Outcome, f.File.Name)
+	}
+	step := put32(nil, p.batch.Step)
+	if err := w.put(inFiles, step, func(dst []byte) []byte { return packFile(dst, &f) }); err != nil {
+		return err
+	}
+	return w.replace(inFileAt, fileDigest(f.File.Feed, f.File.SHA256, f.FeedKey), func(dst []byte) []byte { return append(dst, step...) })
+}
+
+// entry adds one entry to the chain.
+func (w *writer) entry(r watcher.RecordEntry) error {
+	w.head.records++
+	e := Entry{Number: w.head.records, RecordEntry: r, Prev: w.head.chain}
+	e.Hash = e.link()
+	w.head.chain = e.Hash
+	return w.put(inRecord, put64(nil, e.Number), func(dst []byte) []byte { return packEntry(dst, &e) })
+}
+
+// EndPass adds one row to the run record. The ledger numbers it when it has no number.
+func (l *Ledger) EndPass(r watcher.PassRow) error {
+	return l.write(nil, func(w *writer) error {
+		if want := w.head.passes + 1; r.Number != 0 && r.Number != want {
+			return fmt.Errorf("pass %d: the run record is at %d", r.Number, w.head.passes)
+		}
+		w.head.passes++
+		return w.put(inPasses, put32(nil, w.head.passes), func(dst []byte) []byte { return packPass(dst, &r) })
+	})
+}
+
+const (
+	leastGrowth = 256 << 10
+	mostGrowth  = 64 << 20
+)
+
+// grow sets by how much more than needed the file grows next: for a large batch by about all that it brings, so that it grows
+// once; else by a thirty-second of its size, so that a day seldom pays for growing and little lies idle.
+func (w *writer) grow(p *plan) {
+	room := w.tx.Size() / 32
+	room = max(room, p.size()-2*commitSize)
+	w.l.db.AllocSize = int(min(max(room, leastGrowth), max(mostGrowth, p.size())))
+}
+
+// size is about how many bytes the columns of a batch take.
+func (p *plan) size() (n int64) {
+	for _, columns := range p.columns {
+		for _, c := range columns {
+			n += int64(4*len(c.V32) + 8*len(c.V64) + 48)
+		}
+	}
+	return n
+}

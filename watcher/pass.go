@@ -1,0 +1,232 @@
+package watcher
+
+import (
+	"context"
+	"crypto/sha256"
+	"errors"
+	"fmt"
+	"time"
+
+	"strayd/rules"
+)
+
+// Pass is one run over one or all feeds. Fill in the fields and call Run once.
+type Pass struct {
+	Store    Store
+	Source   Source
+	Settings rules.Settings
+	Feeds    []rules.Feed
+	FeedKey  func(rules.Feed) string // hash of what decides how a feed's files are read
+	Now      time.Time
+	Settled  bool   // take the person's word that every file is whole
+	Only     string // the one feed to take; "" for all
+	Who      string // who acts, for the record
+	Program  string // version of the program
+	Workers  int    // goroutines that judge; 0 for one a processor
+
+	// Report is told of every file as it is done with; nil for nobody.
+	Report func(FileReport)
+	// Progress is told of long work by its name; nil for nobody.
+	Progress func(work string, done, total int64)
+
+	firstNames int        // names held when the pass began
+	newest     rules.Date // newest date of the files taken so far
+	opened     []FlagRow  // open flags of first loads, which become history when a newer date comes in
+	row        PassRow
+}
+
+// FileReport is what became of one file in a pass.
+type FileReport struct {
+	Feed, Name string
+	Fate       Fate
+	Why        string
+	Row        FileRow
+	Notes      []string
+}
+
+// Fate is a file's part in a pass.
+type Fate string
+
+const (
+	FateAccepted Fate = "accepted"
+	FateRefused  Fate = "refused"
+	FateWaiting  Fate = "waiting"
+	FateSeen     Fate = "seen" // the same content under the same settings: nothing happens
+)
+
+// Run takes every ready file as one step each and adds a row to the run record. Files that are refused do not stop it: they are
+// counted in the row. An error means that the pass could not go on; steps published before it stand.
+func (p *Pass) Run(ctx context.Context) (PassRow, error) {
+	p.row = PassRow{Started: p.Now, Feed: p.Only, Program: p.Program}
+	p.newest = rules.NoDate
+	err := p.run(ctx)
+	if err != nil {
+		p.row.Failed = err.Error()
+	}
+	p.row.Ended = p.Now
+	return p.row, errors.Join(err, p.Store.EndPass(p.row))
+}
+
+func (p *Pass) run(ctx context.Context) error {
+	seen, err := p.begin()
+	if err != nil {
+		return err
+	}
+	for _, f := range p.Feeds {
+		if p.Only != "" && f.Name != p.Only {
+			continue
+		}
+		if err := p.feed(ctx, f, seen); err != nil {
+			return fmt.Errorf("feed %s: %w", f.Name, err)
+		}
+	}
+	return nil
+}
+
+// seenFiles knows the files that were taken before, by stamp, and the sizes that have occurred.
+type seenFiles struct {
+	stamps map[string]bool
+	sizes  map[int64]bool
+}
+
+func stampKey(feed, name, stamp, feedKey string) string {
+	return feed + "\x00" + name + "\x00" + stamp + "\x00" + feedKey
+}
+
+func (p *Pass) begin() (*seenFiles, error) {
+	v, err := p.Store.View()
+	if err != nil {
+		return nil, err
+	}
+	defer v.Close()
+	names, err := v.Names()
+	if err != nil {
+		return nil, err
+	}
+	p.firstNames = names.Len()
+	s := &seenFiles{map[string]bool{}, map[int64]bool{}}
+	return s, v.Files(func(r FileRow) bool {
+		s.stamps[stampKey(r.File.Feed, r.File.Name, r.Stamp, r.FeedKey)] = true
+		s.sizes[r.File.Size] = true
+		return true
+	})
+}
+
+func (p *Pass) feed(ctx context.Context, f rules.Feed, seen *seenFiles) error {
+	found, err := p.Source.Find(f, p.Now, p.Settled)
+	if err != nil {
+		return err
+	}
+	for _, w := range found.Waiting {
+		p.row.Waiting++
+		p.report(FileReport{Feed: f.Name, Name: w.Name, Fate: FateWaiting, Why: w.Why})
+	}
+	for _, bad := range found.Refused {
+		bad.File.Feed = f.Name
+		bad.File.SHA256 = sha256.Sum256([]byte(bad.File.Name + "\x00" + bad.Reason)) // it has no content that may be read
+		if err := p.refuse(bad, f, Candidate{Name: bad.File.Name}); err != nil {
+			return err
+		}
+	}
+	for _, c := range found.Ready {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
+		if err := p.file(f, c, seen); err != nil {
+			return fmt.Errorf("%s: %w", c.Name, err)
+		}
+	}
+	return nil
+}
+
+// file takes one file: nothing happens when it was taken before, a bad one is refused, and the rest is judged and published.
+func (p *Pass) file(f rules.Feed, c Candidate, seen *seenFiles) error {
+	key := p.FeedKey(f)
+	if seen.stamps[stampKey(f.Name, c.Name, c.Stamp, key)] {
+		p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateSeen})
+		return nil
+	}
+	if seen.sizes[c.Size] { // only a file of a size that has occurred can have been taken before under another name
+		sha, err := p.Source.Hash(c)
+		if err != nil {
+			return err
+		}
+		if known, err := p.known(f, sha, key); known || err != nil {
+			p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateSeen})
+			return err
+		}
+	}
+	seen.sizes[c.Size] = true
+	v, err := p.Store.View()
+	if err != nil {
+		return err
+	}
+	names, err := v.Names()
+	if err := errors.Join(err, v.Close()); err != nil {
+		return err
+	}
+	sheet, err := p.Source.Read(c, f, names, p.Now, p.progress("reading "+c.Name))
+	if bad, ok := errors.AsType[*BadFile](err); ok {
+		bad.File.Feed = f.Name
+		return p.refuse(bad, f, c)
+	}
+	if err != nil {
+		return err
+	}
+	sheet.File.Feed = f.Name
+	return p.accept(sheet, f, c)
+}
+
+func (p *Pass) known(f rules.Feed, sha [32]byte, key string) (bool, error) {
+	v, err := p.Store.View()
+	if err != nil {
+		return false, err
+	}
+	defer v.Close()
+	_, ok, err := v.FileSeen(f.Name, sha, key)
+	return ok, err
+}
+
+// refuse records a file that changes nothing, with the one flag that it raises.
+func (p *Pass) refuse(bad *BadFile, f rules.Feed, c Candidate) error {
+	if known, err := p.known(f, bad.File.SHA256, p.FeedKey(f)); known || err != nil {
+		p.report(FileReport{Feed: f.Name, Name: bad.File.Name, Fate: FateSeen})
+		return err
+	}
+	v, err := p.Store.View()
+	if err != nil {
+		return err
+	}
+	b := &Batch{Step: v.Step() + 1}
+	ref := v.NextRef()
+	if err := v.Close(); err != nil {
+		return err
+	}
+	b.File = FileRow{Step: b.Step, File: bad.File, Stamp: c.Stamp, FeedKey: p.FeedKey(f), Outcome: Refused, Received: p.Now,
+		Reason: bad.Error(), Line: uint32(bad.Line), First: bad.Date, Last: bad.Date, Counts: Counts{Flags: 1}}
+	flag := FlagRow{SeriesID: NoSeries, New: true}
+	flag.Ref, flag.Step, flag.RaisedAt, flag.Date = ref, b.Step, p.Now, bad.Date
+	flag.Kind, flag.Standing, flag.Return = rules.KindRefused, rules.Open, rules.Missing
+	flag.Feed, flag.File, flag.Line, flag.Note = f.Name, bad.File.Name, uint32(bad.Line), bad.Error()
+	b.Flags = []FlagRow{flag}
+	if err := p.Store.Publish(b); err != nil {
+		return err
+	}
+	p.row.Refused++
+	p.row.Counts.Add(b.File.Counts)
+	p.report(FileReport{Feed: f.Name, Name: bad.File.Name, Fate: FateRefused, Why: bad.Error(), Row: b.File})
+	return nil
+}
+
+func (p *Pass) report(r FileReport) {
+	if p.Report != nil {
+		p.Report(r)
+	}
+}
+
+func (p *Pass) progress(work string) Progress {
+	if p.Progress == nil {
+		return nil
+	}
+	return func(done, total int64) { p.Progress(work, done, total) }
+}

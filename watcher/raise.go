@@ -1,0 +1,112 @@
+package watcher
+
+import (
+	"fmt"
+
+	"strayd/rules"
+)
+
+// raise makes the flags of the fresh hits and of the restated values of a date.
+func (w *worker) raise(t task, d *day, fresh []int64, out *outcome) {
+	if d.col == nil {
+		return
+	}
+	w.countArrivals(t, d, fresh, out)
+	for n := range w.hits {
+		h := &w.hits[n]
+		if !h.fresh {
+			continue
+		}
+		f := w.blank(t, d, int(h.at))
+		if k := worst(h.verdicts); k >= 0 {
+			out.flags = append(out.flags, w.breachFlag(f, w.lanes[k].gauge.Range.Name, &h.verdicts[k]))
+		}
+		if len(h.broken) > 0 || h.outsize {
+			out.flags = append(out.flags, w.limitFlag(f, h))
+		}
+	}
+}
+
+// countArrivals counts new, late and restated values, and flags the restated ones.
+func (w *worker) countArrivals(t task, d *day, fresh []int64, out *outcome) {
+	for i, v := range fresh {
+		if v == Missing64 {
+			continue
+		}
+		switch {
+		case d.old != nil && d.old[t.from+i] != Missing64:
+			out.counts.Restated++
+			out.flags = append(out.flags, w.restatedFlag(w.blank(t, d, i), rules.Units(d.old[t.from+i])))
+		case w.late[i] > d.date:
+			out.counts.Late++
+		default:
+			out.counts.New++
+		}
+	}
+}
+
+// worst is the lane whose breach has the smallest tail, -1 when none is breached.
+func worst(verdicts []rules.Verdict) int {
+	at := -1
+	for k := range verdicts {
+		if verdicts[k].Finding == rules.Breach && (at < 0 || verdicts[k].Log10.V < verdicts[at].Log10.V) {
+			at = k
+		}
+	}
+	return at
+}
+
+// blank is a flag with what every flag of an observation carries.
+func (w *worker) blank(t task, d *day, i int) FlagRow {
+	id := t.series(i)
+	f := FlagRow{SeriesID: id, New: true}
+	f.RaisedAt, f.Date = w.j.now, d.date
+	f.Series, f.Group = string(w.j.names.Name(id)), w.group(i)
+	f.Return = rules.Units(w.raw[i])
+	f.Feed, f.File = w.j.file.Feed, w.j.file.Name
+	f.Line = d.col.Line(t.from + i)
+	f.Standing = rules.Open
+	if int(id) >= w.j.firstNames && d.date < w.j.newest {
+		f.Standing = rules.OfHistory
+	}
+	return f
+}
+
+func (w *worker) breachFlag(f FlagRow, name string, v *rules.Verdict) FlagRow {
+	f.Kind, f.Range = rules.KindBreach, name
+	f.Low, f.High, f.Z, f.Tail, f.Log10 = v.Low, v.High, v.Z, v.Tail, v.Log10
+	f.Note = v.Why
+	return f
+}
+
+func (w *worker) limitFlag(f FlagRow, h *hit) FlagRow {
+	f.Kind = rules.KindLimit
+	if len(h.broken) == 0 {
+		f.Note = fmt.Sprintf("beyond +-%d, never enters a window", rules.WindowLimit/rules.One)
+		return f
+	}
+	r := w.j.gauges[h.broken[0]].Range
+	f.Range = r.Name
+	f.Low, f.High = rules.Some(r.Limit.Low.Float()), rules.Some(r.Limit.High.Float())
+	return f
+}
+
+func (w *worker) restatedFlag(f FlagRow, old rules.Units) FlagRow {
+	f.Kind = rules.KindRestated
+	f.Note = RestatedNote(old, f.Return)
+	return f
+}
+
+// RestatedNote says by how much a value changed: "changed by +12.3 bp from 0.0012".
+func RestatedNote(old, now rules.Units) string {
+	return fmt.Sprintf("changed by %s bp from %s", SignedBP(old, now), old)
+}
+
+// SignedBP is the exact change from one return to another in basis points, with its sign.
+func SignedBP(old, now rules.Units) string {
+	bp := rules.Decimal(int64(now-old), rules.Places-4)
+	if now >= old {
+		return "+" + bp
+	}
+	return bp
+}

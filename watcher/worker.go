@@ -1,0 +1,167 @@
+package watcher
+
+import (
+	"strayd/rules"
+)
+
+// task is a run of neighbouring series of one block, with the days that a file changes for its block.
+type task struct {
+	block       uint32
+	from, width int // offsets within the block
+	days        []*day
+	since       rules.Date // replay from here even where nothing changed; NoDate for the first day
+}
+
+// day is what a file changes on one date in one block.
+type day struct {
+	date rules.Date
+	col  *Column // new and changed cells only
+	old  []int64 // the block's values before, nil when nothing was held on the date
+}
+
+// outcome is what judging a task found.
+type outcome struct {
+	counts Counts
+	flags  []FlagRow
+	used   []UsedColumn
+	states []partState
+}
+
+// worker judges tasks one after another with buffers of its own.
+type worker struct {
+	j     *judging
+	view  View
+	lanes []*lane
+
+	raw, fresh, held []int64 // one date: every value, those judged now, those held before
+	cand             []int32
+	hits             []hit
+	slot             []int32 // index into hits of each series, -1 for none
+	ids              []string
+	groups           []string
+	late             []rules.Date // newest date held before, of each series
+	upto             rules.Date   // newest date taken
+	replayed         bool         // dates that were held before were gone through again
+}
+
+// hit is a series that is not plainly inside everything on the date at hand.
+type hit struct {
+	at       int32
+	fresh    bool
+	flagged  bool
+	verdicts []rules.Verdict // by lane
+	judged   []bool
+	limits   []rules.Limit
+	broken   []int // indexes of limit ranges that it breaks
+	outsize  bool
+}
+
+func newWorker(j *judging, v View) *worker {
+	w := &worker{j: j, view: v}
+	for n, g := range j.gauges {
+		if g.Range.Limit == nil && j.ids[n] != 0 {
+			w.lanes = append(w.lanes, newLane(n, j.ids[n], g, j.width))
+		}
+	}
+	w.raw, w.fresh, w.held = make([]int64, j.width), make([]int64, j.width), make([]int64, j.width)
+	w.slot = make([]int32, j.width)
+	w.late = make([]rules.Date, j.width)
+	for i := range w.slot {
+		w.slot[i] = -1
+	}
+	return w
+}
+
+// run judges a task: it loads the windows as they were before the first changed date, then goes forward date by date.
+func (w *worker) run(t task) (outcome, error) {
+	var out outcome
+	first := t.since
+	if first == rules.NoDate {
+		first = t.days[0].date
+	}
+	w.begin(t)
+	replay := w.j.heldFrom(t.block, first)
+	if err := w.noteNewest(t, replay); err != nil {
+		return out, err
+	}
+	if err := w.load(t, first); err != nil {
+		return out, err
+	}
+	days := t.days
+	for len(days) > 0 || len(replay) > 0 {
+		d, old := next(&days, &replay)
+		w.upto, w.replayed = d.date, w.replayed || old
+		if err := w.date(t, d, old, &out); err != nil {
+			return out, err
+		}
+	}
+	w.keepStates(t, &out)
+	return out, nil
+}
+
+// next takes the earlier of the next changed day and the next held date; old says that the date was held before.
+func next(days *[]*day, replay *[]rules.Date) (d *day, old bool) {
+	switch {
+	case len(*replay) == 0 || len(*days) > 0 && (*days)[0].date < (*replay)[0]:
+		d = (*days)[0]
+		*days = (*days)[1:]
+		return d, false
+	case len(*days) > 0 && (*days)[0].date == (*replay)[0]:
+		d = (*days)[0]
+		*days = (*days)[1:]
+	default:
+		d = &day{date: (*replay)[0]}
+	}
+	*replay = (*replay)[1:]
+	return d, true
+}
+
+// begin clears the worker for a task and looks up who its series are, where that matters.
+func (w *worker) begin(t task) {
+	w.ids, w.groups, w.replayed = w.ids[:0], w.groups[:0], false
+	for _, l := range w.lanes {
+		l.reset()
+		l.applies = nil
+	}
+	if w.j.members.Universal() {
+		return
+	}
+	for i := range t.width {
+		id := string(w.j.names.Name(t.series(i)))
+		w.ids = append(w.ids, id)
+		w.groups = append(w.groups, w.j.members.Group(id))
+	}
+	for _, l := range w.lanes {
+		l.applies = w.j.appliesTo(l.index, w.ids, w.groups)
+	}
+}
+
+// series is the number of the i-th series of the task.
+func (t task) series(i int) uint32 { return t.block*BlockSize + uint32(t.from+i) }
+
+func (w *worker) group(i int) string {
+	if len(w.groups) == 0 {
+		return ""
+	}
+	return w.groups[i]
+}
+
+// noteNewest finds, for the dates that are replayed, the newest one on which each series held a value, to know a late value.
+func (w *worker) noteNewest(t task, replay []rules.Date) error {
+	for i := range w.late {
+		w.late[i] = rules.NoDate
+	}
+	for _, d := range replay {
+		vals := w.held[:t.width]
+		ok, err := w.view.Fill(Returns, d, t.block, t.from, vals)
+		if err != nil {
+			return err
+		}
+		for i := range vals {
+			if ok && vals[i] != Missing64 {
+				w.late[i] = d
+			}
+		}
+	}
+	return nil
+}
