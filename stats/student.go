@@ -47,12 +47,12 @@ func studentInner(df, peak, t float64) float64 {
 	return t * peak * math.Exp(-(df+1)/2*lnRise(df, t)) * sum
 }
 
-// studentFar is ln P(T >= t) for t^2 from 3 on. Abramowitz and Stegun 26.7.1 and 26.5.8:
+// studentFar is ln P(T >= t) for t^2 from 3 on. Abramowitz and Stegun 26.7.1:
 //
-//	P = I_x(df/2, 1/2)/2 = peak/sqrt(df) x^(df/2) sqrt(1-x) F,  x = df/(df+t^2), F the continued fraction
+//	P = I_x(df/2, 1/2)/2 = peak sqrt(df)/2 x^(df/2) sqrt(1-x) K,  x = df/(df+t^2), K the continued fraction
 func studentFar(df, peak, t float64) float64 {
 	w := t * t / df
-	return math.Log(peak) - math.Log(df)/2 - df/2*lnRise(df, t) - math.Log1p(1/w)/2 + math.Log(betaFraction(df/2, 1/(1+w)))
+	return math.Log(peak*math.Sqrt(df)/2) - df/2*lnRise(df, t) - math.Log1p(1/w)/2 + math.Log(betaFraction(df/2, w))
 }
 
 // lnRise is ln(1 + t^2/df), also where t^2 is beyond the floats.
@@ -64,30 +64,30 @@ func lnRise(df, t float64) float64 {
 	return math.Log1p(w)
 }
 
-// betaFraction is the continued fraction of the incomplete beta function with b = 1/2 (Abramowitz and Stegun 26.5.8), evaluated
-// from the front by the method of Lentz (1976, Applied Optics 15:668-671) as Thompson and Barnett (1986) modified it:
+// betaFraction is the continued fraction of the incomplete beta function I_x(a, b) for b = 1/2 and x = 1/(1+w): the even part of
+// Abramowitz and Stegun 26.5.8, as DiDonato and Morris (1992, ACM Transactions on Mathematical Software 18:360-373, BFRAC)
+// write it, so that nothing cancels where a is large and y = 1-x small:
 //
-//	1/(1 + d1/(1 + d2/(1 + ...)))
-//	d(2m) = m (b-m) x/((a+2m-1)(a+2m)),  d(2m+1) = -(a+m)(a+b+m) x/((a+2m)(a+2m+1))
+//	K = 1/(beta(0) + alpha(1)/(beta(1) + alpha(2)/(beta(2) + ...)))
+//	alpha(n) = n (b-n) x^2 (a+n-1)(a+b+n-1)/(a+2n-1)^2
+//	beta(n)  = n + n (b-n) x/(a+2n-1) + (a+n)/(a+2n+1) ((a+b) y + 1-b + n (1+y))
 //
-// It converges for x < (a+1)/(a+b+2) within about sqrt(a) terms.
-func betaFraction(a, x float64) float64 {
-	const b, terms = 0.5, 100_000
-	f, c, d := 1.0, 1.0, 0.0
-	for m := 0.0; m < terms; m++ {
-		if m > 0 {
-			f, c, d = lentz(f, c, d, m*(b-m)*x/((a+2*m-1)*(a+2*m)))
-		}
-		f, c, d = lentz(f, c, d, -(a+m)*(a+b+m)*x/((a+2*m)*(a+2*m+1)))
+// It is evaluated from the front by the method of Lentz (1976, Applied Optics 15:668-671).
+func betaFraction(a, w float64) float64 {
+	const b, terms = 0.5, 10_000
+	x, y := 1/(1+w), 1/(1+1/w)
+	f := a / (a + 1) * ((a+b)*y + 1 - b)
+	c, d := f, 0.0
+	for n := 1.0; n < terms; n++ {
+		middle := a + 2*n - 1
+		alpha := n * (b - n) * x * x * (a + n - 1) / middle * (a + b + n - 1) / middle
+		beta := n + n*(b-n)*x/middle + (a+n)/(middle+2)*((a+b)*y+1-b+n*(1+y))
+		d = 1 / (beta + alpha*d)
+		c = beta + alpha/c
+		f *= c * d
 		if math.Abs(c*d-1) <= 3e-16 {
 			break
 		}
 	}
 	return 1 / f
-}
-
-func lentz(f, c, d, term float64) (float64, float64, float64) {
-	d = 1 / (1 + term*d)
-	c = 1 + term/c
-	return f * c * d, c, d
 }
