@@ -135,8 +135,11 @@ func (m *Membership) Universal() bool {
 			return false
 		}
 	}
-	return len(m.groups) == 0 && m.register == nil
+	return m.Groupless()
 }
+
+// Groupless says that no series has a group.
+func (m *Membership) Groupless() bool { return len(m.groups) == 0 && m.register == nil }
 
 // Group is the group of a series: the register's where it names one, else the first whose patterns fit, else "".
 func (m *Membership) Group(id string) string {

@@ -25,7 +25,7 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	if err != nil {
 		return err
 	}
-	out, err := p.judgeAll(j, blocks)
+	out, err := p.judgeAll(j, blocks, b)
 	if err != nil {
 		return err
 	}
@@ -127,9 +127,20 @@ func tasks(blocks []block, width int, since rules.Date) (out []task) {
 	return out
 }
 
-// judgeAll runs the tasks of all changed blocks.
-func (p *Pass) judgeAll(j *judging, blocks []block) ([]outcome, error) {
-	return p.runTasks(j, tasks(blocks, j.width, rules.NoDate))
+// judgeAll runs the tasks of all changed blocks, and notes what the groups lent.
+func (p *Pass) judgeAll(j *judging, blocks []block, b *Batch) ([]outcome, error) {
+	v, err := p.Store.View()
+	if err != nil {
+		return nil, err
+	}
+	defer v.Close()
+	j.scales = newGroupScales(j, v, blocks)
+	outs, err := p.runTasks(j, tasks(blocks, j.width, rules.NoDate))
+	if err != nil {
+		return nil, err
+	}
+	b.Scales, err = j.scales.stored()
+	return outs, err
 }
 
 func (p *Pass) runTasks(j *judging, todo []task) ([]outcome, error) {

@@ -35,9 +35,9 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 	}
 	present := count(fresh)
 	for n := range w.hits {
-		w.judge(t, d.date, &w.hits[n])
+		w.judge(d.date, &w.hits[n])
 	}
-	w.tally(present, t, fresh, out)
+	w.tally(present, fresh, out)
 	w.raise(t, d, fresh, out)
 	for k, l := range w.lanes {
 		if err := w.take(t, d, old, k, l, out); err != nil {
@@ -145,12 +145,16 @@ func (w *worker) applies(rangeIndex, i int) bool {
 }
 
 // judge makes every verdict of a hit.
-func (w *worker) judge(t task, date rules.Date, h *hit) {
+func (w *worker) judge(date rules.Date, h *hit) {
 	x := rules.Units(w.raw[h.at])
 	for _, l := range w.lanes {
 		var v rules.Verdict
 		if l.judges(int(h.at)) {
-			v = l.gauge.Judge(x, l.past(int(h.at), w.j.groupScale(l, w.group(int(h.at)), date)))
+			past := l.past(int(h.at))
+			if past.N < rules.LeastNormal && past.N >= rules.LeastJudged {
+				past.Group = w.j.scales.lent(l, w.group(int(h.at)), date)
+			}
+			v = l.gauge.Judge(x, past)
 		}
 		h.verdicts = append(h.verdicts, v)
 		h.flagged = h.flagged || h.fresh && v.Finding == rules.Breach
@@ -171,7 +175,7 @@ func (w *worker) judge(t task, date rules.Date, h *hit) {
 func (l *lane) judges(i int) bool { return l.applies == nil || l.applies[i] }
 
 // tally counts the verdicts of a date. Values that are no hits are inside every range that judges them.
-func (w *worker) tally(present int, t task, fresh []int64, out *outcome) {
+func (w *worker) tally(present int, fresh []int64, out *outcome) {
 	if present == 0 {
 		return
 	}
@@ -241,7 +245,7 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 		}
 		outsize(used)
 	}
-	w.patch(t, d, k, l, used, stored, out)
+	w.patch(t, d, l, used, stored, out)
 	l.push(d.date, used)
 	return nil
 }
@@ -252,7 +256,7 @@ func (w *worker) hasOutsize(vals []int64) bool {
 }
 
 // patch notes the cells whose used value is not what the ledger would give: on a new date, what differs from the return.
-func (w *worker) patch(t task, d *day, k int, l *lane, used, stored []int64, out *outcome) {
+func (w *worker) patch(t task, d *day, l *lane, used, stored []int64, out *outcome) {
 	u := UsedColumn{Range: l.id, Date: d.date, Block: t.block}
 	add := func(i int) {
 		u.Offsets = append(u.Offsets, uint16(t.from+i))

@@ -41,6 +41,7 @@ func (p *Pass) Expect(on rules.Date, each func(Expected) error) error {
 	if err := p.prepare(j, v); err != nil {
 		return err
 	}
+	j.scales = newGroupScales(j, v, nil)
 	w := newWorker(j, v)
 	for _, t := range tasks(allBlocks(names.Len()), j.width, rules.NoDate) {
 		if err := w.expect(t, on, each); err != nil {
@@ -67,8 +68,10 @@ func (w *worker) expect(t task, on rules.Date, each func(Expected) error) error 
 			if g.Range.Limit == nil {
 				l := w.lanes[lane]
 				lane++
-				past = l.past(i, rules.Num{})
-				past.Dormant = past.Dormant || past.N > 0 && rules.Weekdays(l.last[i], on) > rules.DormantAfter
+				if past = l.past(i); past.N > 0 && rules.Weekdays(l.last[i], on) > rules.DormantAfter {
+					past = &rules.Past{Dormant: true}
+				}
+				past.Group = w.j.scales.lent(l, w.group(i), on)
 			}
 			if !judges {
 				continue

@@ -59,11 +59,3 @@ func (j *judging) appliesTo(rangeIndex int, ids, groups []string) []bool {
 	}
 	return out
 }
-
-// groupScale is the deviation that a group lends to its provisional series on a date.
-func (j *judging) groupScale(l *lane, group string, date rules.Date) rules.Num {
-	if j.scales == nil || group == "" {
-		return rules.Num{}
-	}
-	return j.scales.at(l.id, group, date)
-}

@@ -101,8 +101,8 @@ func (l *lane) push(date rules.Date, used []int64) {
 }
 
 // past is what the lane knows of series i before the date at hand.
-func (l *lane) past(i int, group rules.Num) *rules.Past {
-	p := &rules.Past{N: l.windows.N(i), Dormant: l.dormant[i], Group: group}
+func (l *lane) past(i int) *rules.Past {
+	p := &rules.Past{N: l.windows.N(i), Dormant: l.dormant[i]}
 	switch w := l.windows.(type) {
 	case *stats.WeightedPanel:
 		p.Var = w.State(i).V

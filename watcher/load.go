@@ -110,9 +110,14 @@ func (b *backward) finish(i int) {
 
 func (w *worker) stepBack(t task, b *backward, date rules.Date) error {
 	used, err := w.usedOf(t, b.l, date)
-	if err != nil {
-		return err
+	if err == nil {
+		b.take(date, used)
 	}
+	return err
+}
+
+// take puts the used values of a date in front of the windows that are not done.
+func (b *backward) take(date rules.Date, used []int64) {
 	edge := date + dormantDays
 	last := b.l.last
 	for i, v := range used {
@@ -133,7 +138,6 @@ func (w *worker) stepBack(t task, b *backward, date rules.Date) error {
 	if b.steps++; b.steps >= b.l.gauge.Range.Window && b.steps%8 == 0 || b.steps == b.l.gauge.Range.Window {
 		b.finishFull()
 	}
-	return nil
 }
 
 func (b *backward) finishFull() {

@@ -115,7 +115,7 @@ func (b *priceBlock) date(date rules.Date, c *Column) error {
 	}
 	var col *Column
 	if c != nil {
-		overlay(now, c)
+		overlay(now, c, rules.PricePlaces)
 		if col = c; old != nil {
 			col = differing(c, old, Prices)
 		}
@@ -146,9 +146,10 @@ func (b *priceBlock) date(date rules.Date, c *Column) error {
 	return nil
 }
 
-func overlay(now []int64, c *Column) {
+// overlay puts the present cells of a column over a row.
+func overlay(now []int64, c *Column, places int) {
 	vals := make([]int64, c.Len())
-	c.Fill(vals, 0, rules.PricePlaces)
+	c.Fill(vals, 0, places)
 	for i, x := range vals {
 		if x != Missing64 {
 			now[i] = x

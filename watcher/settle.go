@@ -179,6 +179,7 @@ func (p *Pass) replayAll(v View, b *Batch) error {
 		return err
 	}
 	p.only(j, b.NewRanges)
+	j.scales = newGroupScales(j, v, nil)
 	outs, err := p.runTasks(j, tasks(allBlocks(names.Len()), j.width, j.held[0]))
 	if err != nil {
 		return err
@@ -187,7 +188,8 @@ func (p *Pass) replayAll(v View, b *Batch) error {
 		b.Used = append(b.Used, o.used...)
 	}
 	b.Used = joinUsed(b.Used)
-	return nil
+	b.Scales, err = j.scales.stored()
+	return err
 }
 
 // only leaves the ranges of the given definitions, with their new numbers, and the limits: a range without a number gets no lane.
