@@ -1,0 +1,109 @@
+package config
+
+import (
+	"fmt"
+	"io"
+	"io/fs"
+	"os"
+	"path/filepath"
+	"time"
+
+	"strayd/rules"
+)
+
+// Config is a checked configuration. Paths are absolute.
+type Config struct {
+	File     string // as given to Load or Parse
+	Ledger   string
+	Timezone string // name of Location
+	Location *time.Location
+	Calendar Calendar
+	Feeds    []rules.Feed
+	Series   string // path of the register; "" for none
+	Events   string // path of the events; "" for none
+	Groups   []rules.Group
+	Ranges   []rules.Range
+	Doubtful float64 // share of ordinary observations, a fraction
+	Channels []rules.Channel
+	Weekly   *Weekly // nil when there is none
+	Later    []Note  // what is set now and works in a later version, in the order of the file
+}
+
+// Calendar says which days are business days: all weekdays, a nation's, or those of a file of holidays.
+type Calendar struct {
+	Name string // as written: weekdays, a nation's code, or the file
+	Path string // of the file; "" for none
+}
+
+// Weekly is when the weekly log is written and where it goes.
+type Weekly struct {
+	Schedule string
+	Channels []string // empty for all
+}
+
+// Note says of a key that it is set and valid and that its work comes in a later version.
+type Note struct {
+	Line int
+	Path string
+	Text string
+}
+
+// Options are what reading needs from outside. The zero value works.
+type Options struct {
+	Cron     func(spec string) error                        // checks cron text; nil: not checked
+	Stat     func(path string) (fs.FileInfo, error)         // nil: os.Stat
+	Zone     func(name string) (*time.Location, error)      // nil: time.LoadLocation
+	Absolute func(path string) (absolute string, err error) // nil: filepath.Abs
+}
+
+func (o Options) filled() Options {
+	if o.Stat == nil {
+		o.Stat = os.Stat
+	}
+	if o.Zone == nil {
+		o.Zone = time.LoadLocation
+	}
+	if o.Absolute == nil {
+		o.Absolute = filepath.Abs
+	}
+	return o
+}
+
+// largest is the largest configuration, in bytes.
+const largest = 1 << 20
+
+// Load reads and checks a file. The error is Errors when the content is wrong.
+func Load(path string, opt Options) (*Config, error) {
+	f, err := os.Open(path)
+	if err != nil {
+		return nil, fmt.Errorf("configuration: %w", err)
+	}
+	defer f.Close()
+	data, err := io.ReadAll(io.LimitReader(f, largest+1))
+	if err != nil {
+		return nil, fmt.Errorf("configuration: %w", err)
+	}
+	return Parse(path, data, opt)
+}
+
+// Parse checks the content of the file that name stands for; relative paths in it are relative to that file's folder. The error
+// is Errors, with everything that is wrong, in the order of the file.
+func Parse(name string, data []byte, opt Options) (*Config, error) {
+	opt = opt.filled()
+	folder, err := opt.Absolute(filepath.Dir(name))
+	if err != nil {
+		return nil, fmt.Errorf("configuration: %w", err)
+	}
+	d := &decoder{opt: opt, folder: folder, given: map[string]place{}, failed: map[string]bool{}}
+	c := &Config{File: name}
+	if root := d.document(data); root != nil {
+		d.tree(root, "")
+		table.read(d, "", root, c)
+		d.cross(c)
+	}
+	if len(d.faults) > 0 {
+		return nil, d.sorted(name)
+	}
+	c.Later = d.notes()
+	return c, nil
+}

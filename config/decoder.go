@@ -1,0 +1,121 @@
+package config
+
+import (
+	"cmp"
+	"errors"
+	"slices"
+	"strings"
+
+	"gopkg.in/yaml.v3"
+)
+
+// place is where a key and its value stand in the file.
+type place struct {
+	key, value *yaml.Node
+	later      string
+}
+
+// decoder walks one document, remembers where each key stands and gathers the faults.
+type decoder struct {
+	opt    Options
+	folder string
+	given  map[string]place // by path; a key that took its default is not in it
+	order  []string         // the paths with a note
+	failed map[string]bool  // paths with a fault
+	faults []Error
+}
+
+// has says whether the file gives the key itself, rather than leaving it to its default.
+func (d *decoder) has(path string) bool {
+	_, ok := d.given[path]
+	return ok
+}
+
+// sound says whether nothing is wrong at the paths or below them.
+func (d *decoder) sound(paths ...string) bool {
+	for _, p := range paths {
+		if d.failed[p] {
+			return false
+		}
+	}
+	return true
+}
+
+// fail records a fault at a node. The paths above it are no longer sound.
+func (d *decoder) fail(path string, n *yaml.Node, t trouble) {
+	if secret.MatchString(t.message + t.want + t.hint) {
+		t = trouble{message: "wrong value", got: "a secret"}
+	}
+	d.faults = append(d.faults, Error{Line: max(n.Line, 1), Col: max(n.Column, 1), Path: path,
+		Message: t.message, Got: t.got, Want: t.want, Hint: t.hint})
+	for p := path; ; p = parent(p) {
+		d.failed[p] = true
+		if p == "" {
+			return
+		}
+	}
+}
+
+// failAt records a fault at the value of a path, or at the nearest key above it that the file gives.
+func (d *decoder) failAt(path string, t trouble) {
+	p := path
+	for p != "" && !d.has(p) {
+		p = parent(p)
+	}
+	n := d.given[p].value
+	if n == nil {
+		n = &yaml.Node{Line: 1, Column: 1}
+	}
+	d.fail(path, n, t)
+}
+
+// parent is the path above: "ranges[0].tail" is in "ranges[0]", which is in "ranges", which is in "".
+func parent(path string) string {
+	return path[:max(strings.LastIndexAny(path, ".["), 0)]
+}
+
+func join(path, key string) string {
+	if path == "" {
+		return key
+	}
+	return path + "." + key
+}
+
+// wrong records an error of a parse function, with what the shape expects where the error does not say.
+func (d *decoder) wrong(path string, n *yaml.Node, err error, want string) {
+	t := trouble{message: err.Error(), got: shown(n.Value), want: want}
+	var own trouble
+	if errors.As(err, &own) {
+		t.hint = own.hint
+		if own.got != "" {
+			t.got = own.got
+		}
+		if own.want != "" {
+			t.want = own.want
+		}
+	}
+	d.fail(path, n, t)
+}
+
+// remember keeps where a key stands.
+func (d *decoder) remember(path string, key, value *yaml.Node, later string) {
+	d.given[path] = place{key, value, later}
+	if later != "" {
+		d.order = append(d.order, path)
+	}
+}
+
+// notes are what the keys had to say of later versions, in the order of the file.
+func (d *decoder) notes() (notes []Note) {
+	for _, path := range d.order {
+		p := d.given[path]
+		notes = append(notes, Note{Line: p.key.Line, Path: path, Text: p.later})
+	}
+	slices.SortStableFunc(notes, func(a, b Note) int { return cmp.Compare(a.Line, b.Line) })
+	return notes
+}
+
+// quiet is a decoder for defaults: what it reads is not in the file.
+func (d *decoder) quiet() *decoder {
+	return &decoder{opt: d.opt, folder: d.folder, given: map[string]place{}, failed: map[string]bool{}}
+}

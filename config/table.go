@@ -1,0 +1,160 @@
+package config
+
+import (
+	"time"
+
+	"gopkg.in/yaml.v3"
+
+	"strayd/rules"
+)
+
+// always notes a key whatever it holds.
+func always(text string) func(*yaml.Node) string {
+	return func(*yaml.Node) string { return text }
+}
+
+// when notes a key that holds the value.
+func when(value, text string) func(*yaml.Node) string {
+	return func(n *yaml.Node) string {
+		if n.Value == value {
+			return text
+		}
+		return ""
+	}
+}
+
+// unless notes a key that holds anything but the value.
+func unless(value, text string) func(*yaml.Node) string {
+	return func(n *yaml.Node) string {
+		if n.Value != value {
+			return text
+		}
+		return ""
+	}
+}
+
+const laterTalk = "checked now; delivery to this channel comes in a later version"
+
+// table is the one list of keys: Parse walks it, and Schema is made of it.
+var table = object{what: "keys: ledger, feeds and ranges at least", fields: []field{
+	{key: "ledger", required: true, shape: file("the ledger's file, such as ledger.db", false),
+		doc: "The file of the ledger, relative to this one.",
+		at:  in(func(c *Config) any { return &c.Ledger })},
+	{key: "timezone", initial: "UTC", shape: zone(),
+		doc: "The time zone of schedules, and of deadlines that name none.",
+		at: in(func(c *Config) any {
+			return func(z *time.Location) { c.Timezone, c.Location = z.String(), z }
+		})},
+	{key: "calendar", initial: everyWeekday, shape: calendar(),
+		doc:   "Business days: weekdays, a nation's two-letter code, or a file of holidays.",
+		later: unless(everyWeekday, "holidays come in a later version; for now every weekday is a business day"),
+		at:    in(func(c *Config) any { return &c.Calendar })},
+	{key: "feeds", required: true, doc: "The regular files, each from one source.",
+		shape: list[rules.Feed]{item: feedTable, least: 1, what: "a list of at least one feed"},
+		at:    in(func(c *Config) any { return &c.Feeds })},
+	{key: "series", shape: file("the register's file, such as series.csv", true),
+		doc: "The register of series: series,name,group,reference,fx,calendar,start,end,owner.",
+		at:  in(func(c *Config) any { return &c.Series })},
+	{key: "events", shape: file("the events' file, such as events.csv", true),
+		doc:   "Distributions (fraction of the previous NAV) and splits (new units per old): date,series,kind,amount.",
+		later: always("checked now; events enter the explanation of a flag in a later version"),
+		at:    in(func(c *Config) any { return &c.Events })},
+	{key: "groups", doc: "Series that are judged together.",
+		shape: list[rules.Group]{item: groupTable, what: "a list of groups"},
+		at:    in(func(c *Config) any { return &c.Groups })},
+	{key: "ranges", required: true, doc: "The expected ranges and the limits.",
+		shape: list[rules.Range]{item: rangeTable, least: 1, what: "a list of at least one range"},
+		at:    in(func(c *Config) any { return &c.Ranges })},
+	{key: "doubtful", initial: "0.2%", shape: share(bounds{low: 0, high: 0.1}),
+		doc:   "Share of ordinary observations that may be flagged doubtful, stale or repeat, together; 0% for none.",
+		later: always("checked now; doubtful, stale and repeat flags come in a later version"),
+		at:    in(func(c *Config) any { return &c.Doubtful })},
+	{key: "channels", initial: "[{name: console, console: {}}]", doc: "Where notices go; the console when left out.",
+		shape: list[rules.Channel]{item: channelTable, least: 1, what: "a list of at least one channel"},
+		at:    in(func(c *Config) any { return &c.Channels })},
+	{key: "weekly", shape: weeklyTable, doc: "The weekly log.",
+		later: always("checked now; the weekly log comes in a later version"),
+		at:    in(func(c *Config) any { c.Weekly = &Weekly{}; return c.Weekly })},
+}}
+
+var weeklyTable = object{what: "keys: schedule, channels", fields: []field{
+	{key: "schedule", initial: `"0 7 * * mon"`, shape: cron(), doc: "When the weekly log is written, as cron text.",
+		at: in(func(w *Weekly) any { return &w.Schedule })},
+	{key: "channels", doc: "Names of the channels that get it; all when left out.",
+		shape: list[string]{item: name(), least: 1, unique: true, what: "a list of channels' names"},
+		at:    in(func(w *Weekly) any { return &w.Channels })},
+}}
+
+var feedTable = object{what: "keys: name and files at least", fields: []field{
+	{key: "name", required: true, shape: name(), doc: "What the feed is called.",
+		at: in(func(f *rules.Feed) any { return &f.Name })},
+	{key: "files", required: true, shape: files(), doc: "Folder and pattern of the files, relative to this one; also .csv.gz.",
+		at: in(func(f *rules.Feed) any { return func(p pattern) { f.Dir, f.Pattern = p.dir, p.name } })},
+	{key: "schedule", shape: cron(), doc: "When the folder is looked at, as cron text in the configuration's time zone.",
+		later: always("checked now; the daemon that runs it comes in a later version, until then use the pass command"),
+		at:    in(func(f *rules.Feed) any { return &f.Schedule })},
+	{key: "due", shape: dueTable, doc: "When the feed must be whole, or it is late.",
+		later: always("checked now; late flags come in a later version"),
+		at:    in(func(f *rules.Feed) any { f.Due = &rules.Due{}; return f.Due })},
+	{key: "layout", initial: "long", shape: named(rules.Long, rules.Wide),
+		doc: "long: one row an observation; wide: one row a date, one column a series.",
+		at:  in(func(f *rules.Feed) any { return &f.Layout })},
+	{key: "columns", initial: "{}", shape: columnsTable, doc: "The names of the columns in the header row.",
+		at: in(func(f *rules.Feed) any { return &f.Columns })},
+	{key: "value", initial: "return", shape: named(rules.OfReturn, rules.OfPrice),
+		doc: "What the values are; prices are turned into simple returns.",
+		at:  in(func(f *rules.Feed) any { return &f.Value })},
+	{key: "unit", initial: "fraction", shape: named(rules.Fraction, rules.Percent, rules.BP),
+		doc: "What a return of 1 in the file means: 1 (fraction), 1/100 (percent) or 1/10000 (bp). Prices have none.",
+		at:  in(func(f *rules.Feed) any { return &f.Unit })},
+	{key: "date", initial: "YYYY-MM-DD", shape: dateStyle(), doc: "How dates are written: YYYY or YY, MM or MMM, DD; or excel for serial days.",
+		at: in(func(f *rules.Feed) any { return &f.DateStyle })},
+	{key: "decimal", initial: `"."`, shape: words(word[byte]{".", '.'}, word[byte]{",", ','}), doc: "The decimal sign of the numbers.",
+		at: in(func(f *rules.Feed) any { return &f.Decimal })},
+	{key: "separator", initial: `","`, doc: "What stands between two cells.",
+		shape: words(word[byte]{",", ','}, word[byte]{";", ';'}, word[byte]{"\t", '\t'}, word[byte]{"tab", '\t'}, word[byte]{"|", '|'}),
+		at:    in(func(f *rules.Feed) any { return &f.Separator })},
+	{key: "encoding", initial: "utf-8", shape: named("utf-8", "utf-16", "latin-1"), doc: "The encoding of the text.",
+		at: in(func(f *rules.Feed) any { return &f.Encoding })},
+	{key: "missing", initial: `["", NA, n/a]`, doc: "Cells that mean that there is no value.",
+		shape: list[string]{item: text("a cell's text", "", nil), unique: true, what: "a list of texts"},
+		at:    in(func(f *rules.Feed) any { return &f.Missing })},
+	{key: "settle", initial: "60s", shape: duration(0, 24*time.Hour), doc: "How old a file must be before it is read.",
+		at: in(func(f *rules.Feed) any { return &f.Settle })},
+	{key: "sentinel", initial: `""`, shape: sentinel(), doc: "Ending of the companion file that says that a file is whole; empty for none.",
+		at: in(func(f *rules.Feed) any { return &f.Sentinel })},
+	{key: "bad_rows", initial: "refuse", doc: "refuse: the first bad row refuses the file; skip: the greatest share of bad rows that are left out.",
+		shape: oneOf{word: words(word[float64]{"refuse", 0}), keys: skipTable},
+		at:    in(func(f *rules.Feed) any { return &f.SkipShare })},
+}}
+
+var skipTable = object{what: "{skip: 1%}", fields: []field{
+	{key: "skip", required: true, shape: share(bounds{low: 0, high: 0.5, openLow: true}), doc: "Greatest share of bad rows that are left out.",
+		at: in(func(share *float64) any { return share })},
+}}
+
+var columnsTable = object{what: "keys: date, series, value, status, days", fields: []field{
+	{key: "date", initial: "date", shape: columnName(), doc: "The valuation date.",
+		at: in(func(c *rules.Columns) any { return &c.Date })},
+	{key: "series", shape: columnName(), doc: "The series' id (long only); series when left out.",
+		at: in(func(c *rules.Columns) any { return &c.Series })},
+	{key: "value", shape: columnName(), doc: "The return or price (long only); return or price, after the feed's value, when left out.",
+		at: in(func(c *rules.Columns) any { return &c.Value })},
+	{key: "status", shape: columnName(), doc: "estimate or final (long only); none when left out.",
+		later: always("checked now; the status of an estimate is used in a later version"),
+		at:    in(func(c *rules.Columns) any { return &c.Status })},
+	{key: "days", shape: columnName(), doc: "Business days that the return covers (long only); none when left out.",
+		later: always("checked now; returns over several business days are judged at their length in a later version"),
+		at:    in(func(c *rules.Columns) any { return &c.Days })},
+}}
+
+func columnName() shape { return text("a column's name in the header row", filledPattern, filled) }
+
+var dueTable = object{what: "keys: at, and also days, timezone", fields: []field{
+	{key: "at", required: true, shape: clock(), doc: "Time of day.",
+		at: in(func(d *rules.Due) any { return &d.Minutes })},
+	{key: "days", initial: "0", shape: integer(0, 30), doc: "Business days after the valuation date.",
+		at: in(func(d *rules.Due) any { return &d.Days })},
+	{key: "timezone", shape: zone(), doc: "Time zone; the configuration's when left out.",
+		at: in(func(d *rules.Due) any { return func(z *time.Location) { d.Timezone = z.String() } })},
+}}
