@@ -14,8 +14,13 @@ func guard(path string, faults bool, err *error) {
 		*err = &Damaged{Path: path, Why: fmt.Sprintf("a page cannot be read (%v)", r)}
 		return
 	}
+	name(path, *err)
+}
+
+// name puts the path into a *Damaged that does not know it yet.
+func name(path string, err error) {
 	var d *Damaged
-	if *err != nil && errors.As(*err, &d) && d.Path == "" {
+	if err != nil && errors.As(err, &d) && d.Path == "" {
 		d.Path = path
 	}
 }

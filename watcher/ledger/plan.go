@@ -12,15 +12,14 @@ import (
 
 // plan is a batch made ready: checked as far as it can be without the ledger, and in the order of its keys.
 type plan struct {
-	batch    *watcher.Batch
-	firstRef uint64 // of the new flags
-	columns  [2][]*watcher.Column
-	used     []*watcher.UsedColumn
-	states   []*watcher.State
-	scales   []keyed[*watcher.GroupScale]
-	flags    []*watcher.FlagRow
-	index    [][]byte // keys of the index of flags
-	held     uint32   // names before the batch
+	batch   *watcher.Batch
+	columns [2][]*watcher.Column
+	used    []*watcher.UsedColumn
+	states  []*watcher.State
+	scales  []keyed[*watcher.GroupScale]
+	flags   []*watcher.FlagRow
+	index   [][]byte // keys of the index of flags
+	held    uint32   // names before the batch
 }
 
 // keyed is a value with its key ready made.
@@ -48,7 +47,9 @@ func newPlan(b *watcher.Batch) (*plan, error) {
 }
 
 func planColumns(w watcher.What, columns []*watcher.Column) ([]*watcher.Column, error) {
-	order := func(a, b *watcher.Column) int { return cmp.Or(cmp.Compare(a.Date, b.Date), cmp.Compare(a.Block, b.Block)) }
+	order := func(a, b *watcher.Column) int {
+		return cmp.Or(cmp.Compare(a.Date, b.Date), cmp.Compare(a.Block, b.Block))
+	}
 	for _, c := range columns {
 		switch {
 		case c.V32 != nil && c.V64 != nil, c.Len() == 0, c.Len() > watcher.BlockSize:
@@ -106,7 +107,9 @@ func (p *plan) planStates() error {
 		}
 		p.states = append(p.states, s)
 	}
-	order := func(a, b *watcher.State) int { return cmp.Or(cmp.Compare(a.Range, b.Range), cmp.Compare(a.Block, b.Block)) }
+	order := func(a, b *watcher.State) int {
+		return cmp.Or(cmp.Compare(a.Range, b.Range), cmp.Compare(a.Block, b.Block))
+	}
 	slices.SortFunc(p.states, order)
 	return twice(p.states, order, func(s *watcher.State) string { return fmt.Sprintf("state of range %d, block %d", s.Range, s.Block) })
 }

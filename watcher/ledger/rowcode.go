@@ -24,7 +24,9 @@ func (u *unpacker) counts(c *watcher.Counts) {
 }
 
 // outcomes are numbered in the order of this list: only append.
-func outcomes() []watcher.Outcome { return []watcher.Outcome{watcher.Accepted, watcher.Refused} }
+func outcomes() []watcher.Outcome {
+	return []watcher.Outcome{watcher.Accepted, watcher.Refused, watcher.Changed}
+}
 
 func packFile(dst []byte, f *watcher.FileRow) []byte {
 	p := packer{dst}
@@ -32,6 +34,7 @@ func packFile(dst []byte, f *watcher.FileRow) []byte {
 	p.text(f.File.Name)
 	p.int(f.File.Size)
 	p.raw(f.File.SHA256[:])
+	p.text(f.Stamp)
 	p.text(f.FeedKey)
 	p.uint(uint64(f.Settings))
 	p.byte(byte(indexOf(outcomes(), f.Outcome)))
@@ -44,14 +47,17 @@ func packFile(dst []byte, f *watcher.FileRow) []byte {
 	return p.b
 }
 
-// indexOf is the place of v in list, 255 when it is not there.
+// notListed is what indexOf gives for a value that is not in the list.
+const notListed = 255
+
+// indexOf is the place of v in list.
 func indexOf[T comparable](list []T, v T) int {
 	for i := range list {
 		if list[i] == v {
 			return i
 		}
 	}
-	return 255
+	return notListed
 }
 
 func unpackFile(v []byte) (f watcher.FileRow, ok bool) {
@@ -60,6 +66,7 @@ func unpackFile(v []byte) (f watcher.FileRow, ok bool) {
 	f.File.Name = u.text()
 	f.File.Size = u.int()
 	copy(f.File.SHA256[:], u.raw(len(f.File.SHA256)))
+	f.Stamp = u.text()
 	f.FeedKey = u.text()
 	f.Settings = uint32(u.uint())
 	outcome := int(u.byte())

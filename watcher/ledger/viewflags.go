@@ -1,0 +1,185 @@
+package ledger
+
+import (
+	"fmt"
+
+	bolt "go.etcd.io/bbolt"
+
+	"strayd/rules"
+	"strayd/watcher"
+)
+
+// flag decodes a flag whole: the series' name, and what stands in the file row of the step that raised it.
+func (v *View) flag(key, value []byte) (f rules.Flag, err error) {
+	body, err := checked(inFlags, key, value)
+	if err != nil {
+		return f, err
+	}
+	row, ok := unpackFlag(get64(key), body)
+	if !ok {
+		return f, malformed(inFlags, key, "it cannot be read")
+	}
+	f = row.flag
+	if row.bits&(flagOwnFile|flagReceived) != 0 {
+		if v.file.Step != f.Step {
+			if v.file, err = v.fileRow(f.Step); err != nil {
+				return f, err
+			}
+		}
+		if row.bits&flagOwnFile != 0 {
+			f.Feed, f.File = v.file.File.Feed, v.file.File.Name
+		}
+		if row.bits&flagReceived != 0 {
+			f.RaisedAt = v.file.Received
+		}
+	}
+	if row.series != watcher.NoSeries {
+		f.Series, err = v.name(row.series)
+	}
+	return f, err
+}
+
+// namePart is a chunk of names with where each stops.
+type namePart struct {
+	text []byte // in the map
+	ends []uint32
+}
+
+// name is the name of one series, without loading all.
+func (v *View) name(id uint32) (string, error) {
+	c := id / watcher.BlockSize
+	part, ok := v.chunks[c]
+	if !ok {
+		list, err := v.chunk(c)
+		if err != nil {
+			return "", err
+		}
+		part = namePart{list.text, list.appendEnds(make([]uint32, 0, list.n), 0)}
+		v.chunks[c] = part
+	}
+	at := int(id % watcher.BlockSize)
+	if at >= len(part.ends) {
+		return "", malformed(inNames, put32(put32(nil, c), v.head.step), fmt.Sprintf("series %d has no name", id))
+	}
+	from := uint32(0)
+	if at > 0 {
+		from = part.ends[at-1]
+	}
+	return string(part.text[from:part.ends[at]]), nil
+}
+
+// chunk is the published form of one chunk of names.
+func (v *View) chunk(c uint32) (chunk, error) {
+	key, value := newest(v.cursors[inNames], put32(nil, c), v.head.step)
+	if key == nil {
+		return chunk{}, malformed(inNames, put32(put32(nil, c), v.head.step), "it is not there")
+	}
+	body, err := opened(inNames, key, value)
+	if err != nil {
+		return chunk{}, err
+	}
+	list, ok := parseChunk(body)
+	if want := min(watcher.BlockSize, int(v.head.names)-int(c)*watcher.BlockSize); !ok || list.n != want {
+		return list, malformed(inNames, key, "it does not hold as many names as it should")
+	}
+	return list, nil
+}
+
+// Names loads the dictionary of series.
+func (v *View) Names() (n *watcher.Names, err error) {
+	defer v.leave(v.enter(&err), &err)
+	if err != nil {
+		return nil, err
+	}
+	var parts []chunk
+	size := 0
+	for c := uint32(0); c*watcher.BlockSize < v.head.names; c++ {
+		p, err := v.chunk(c)
+		if err != nil {
+			return nil, err
+		}
+		parts = append(parts, p)
+		size += len(p.text)
+	}
+	text, ends := make([]byte, 0, size), make([]uint32, 0, v.head.names)
+	for _, p := range parts {
+		ends = p.appendEnds(ends, uint32(len(text)))
+		text = append(text, p.text...)
+	}
+	return watcher.NewNames(text, ends), nil
+}
+
+// Flags calls each with every flag by ref, or only with those that ask something of a person, until it returns false.
+func (v *View) Flags(all bool, each func(rules.Flag) bool) error {
+	in := inOpen
+	if all {
+		in = inFlags
+	}
+	if v.tx == nil {
+		return errDone
+	}
+	c := v.buckets[in].Cursor()
+	for ref := uint64(0); ; {
+		f, ok, err := v.nextFlag(c, in, ref)
+		if err != nil || !ok || !each(f) {
+			return err
+		}
+		ref = f.Ref
+	}
+}
+
+// nextFlag finds the first flag after a ref. It stands by itself so that a panic in the caller's function is not taken for
+// damage.
+func (v *View) nextFlag(c *bolt.Cursor, in bucket, after uint64) (f rules.Flag, ok bool, err error) {
+	defer v.leave(v.enter(&err), &err)
+	if err != nil {
+		return f, false, err
+	}
+	for k, value := c.Seek(put64(nil, after+1)); k != nil; k, value = c.Next() {
+		if _, err := checked(in, k, value); err != nil {
+			return f, false, err
+		}
+		ref := get64(k)
+		key, row := newest(v.cursors[inFlags], k[:8], v.head.step)
+		if key != nil {
+			f, err = v.flag(key, row)
+			return f, err == nil, err
+		}
+		if in == inOpen {
+			return f, false, malformed(inOpen, k, fmt.Sprintf("flag %d is not there", ref))
+		}
+	}
+	return f, false, nil
+}
+
+// FlagAt finds the flag of a series, date and kind; of several, the newest.
+func (v *View) FlagAt(series uint32, date rules.Date, kind rules.Kind) (f rules.Flag, ok bool, err error) {
+	number := indexOf(rules.Kinds, kind)
+	if number == notListed {
+		return f, false, nil
+	}
+	ref := uint64(0)
+	prefix := flagAtKey(date, series, byte(number), 0)[:9]
+	err = v.walk(inFlagAt, prefix, func(k, _ []byte) (bool, error) {
+		ref = get64(k[9:])
+		return true, nil
+	})
+	if err != nil || ref == 0 {
+		return f, false, err
+	}
+	return v.Flag(ref)
+}
+
+// Flag finds a flag by its ref.
+func (v *View) Flag(ref uint64) (f rules.Flag, ok bool, err error) {
+	defer v.leave(v.enter(&err), &err)
+	if err != nil {
+		return f, false, err
+	}
+	key, value := newest(v.cursors[inFlags], put64(nil, ref), v.head.step)
+	if key == nil {
+		return f, false, nil
+	}
+	f, err = v.flag(key, value)
+	return f, err == nil, err
+}
