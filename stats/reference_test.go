@@ -2,6 +2,7 @@ package stats_test
 
 import (
 	"encoding/csv"
+	"encoding/json"
 	"math"
 	"os"
 	"path/filepath"
@@ -73,4 +74,64 @@ func near(t testing.TB, what string, got, want, tolerance float64) {
 	if r := relative(got, want); !(r <= tolerance) {
 		t.Errorf("%s: got %.17g, want %.17g: off by %.2g of it, allowed %.2g", what, got, want, r, tolerance)
 	}
+}
+
+// example is one published worked example of worked/worked_examples.json: its parts by name.
+type example map[string]json.RawMessage
+
+func worked(t testing.TB, id string) example {
+	t.Helper()
+	text, err := os.ReadFile(filepath.Join("..", "testdata", "reference", "worked", "worked_examples.json"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	var all []example
+	if err := json.Unmarshal(text, &all); err != nil {
+		t.Fatal(err)
+	}
+	for _, e := range all {
+		if string(e["id"]) == strconv.Quote(id) {
+			return e
+		}
+	}
+	t.Fatalf("no worked example %s", id)
+	return nil
+}
+
+// into decodes one figure of one part.
+func (e example) into(t testing.TB, part, name string, v any) {
+	t.Helper()
+	var figures map[string]json.RawMessage
+	if err := json.Unmarshal(e[part], &figures); err != nil {
+		t.Fatal(err)
+	}
+	if err := json.Unmarshal(figures[name], v); err != nil {
+		t.Fatalf("%s %s %s: %v", e["id"], part, name, err)
+	}
+}
+
+func (e example) float(t testing.TB, part, name string) (v float64) {
+	t.Helper()
+	e.into(t, part, name, &v)
+	return v
+}
+
+func (e example) floats(t testing.TB, part, name string) (v []float64) {
+	t.Helper()
+	e.into(t, part, name, &v)
+	if len(v) == 0 {
+		t.Fatalf("%s %s %s is empty", e["id"], part, name)
+	}
+	return v
+}
+
+// numbers keeps the text of the figures, so that decimals stay exact.
+func (e example) numbers(t testing.TB, part, name string) (v []string) {
+	t.Helper()
+	var numbers []json.Number
+	e.into(t, part, name, &numbers)
+	for _, n := range numbers {
+		v = append(v, n.String())
+	}
+	return v
 }
