@@ -91,6 +91,22 @@ func (n *Names) Add(name []byte) uint32 {
 	return id
 }
 
+// Cut forgets the names from a number on: those of a file that was refused.
+func (n *Names) Cut(size int) {
+	n.mu.Lock()
+	defer n.mu.Unlock()
+	l := n.list.Load()
+	if size >= len(l.ends) {
+		return
+	}
+	end := uint32(0)
+	if size > 0 {
+		end = l.ends[size-1]
+	}
+	n.list.Store(&nameList{l.text[:end:end], l.ends[:size:size]})
+	n.slots = nil
+}
+
 // index builds the table with room for at least the given number of names. Called with the lock held.
 func (n *Names) index(room int) {
 	if n.slots != nil && 2*room <= len(n.slots) {

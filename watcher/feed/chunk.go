@@ -18,10 +18,10 @@ type run struct {
 
 // fault is what is wrong at a place, before the file's name and the chunk's first line are known.
 type fault struct {
-	line    uint32 // within the chunk, from 0
-	column  int
-	cell    string
-	reason  string
+	line   uint32 // within the chunk, from 0
+	column int
+	cell   string
+	reason string
 	fatal  bool // nothing after it can be trusted
 }
 

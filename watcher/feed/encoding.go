@@ -35,12 +35,14 @@ func (p *plan) decoded(src io.Reader) (io.Reader, error) {
 		if wide == nil {
 			return nil, refusal("the file is not UTF-16: it has no byte-order mark and does not begin with an ASCII letter")
 		}
-		return &utf16Reader{src: bufio.NewReaderSize(whole(markWidth(head)), 1<<16), order: wide}, nil
+		u := &utf16Source{src: bufio.NewReaderSize(whole(markWidth(head)), 1<<16), order: wide, done: int64(markWidth(head))}
+		return &decoder{next: u.next}, nil
 	case "latin-1":
 		if wide != nil || bytes.HasPrefix(head, utf8Mark) {
 			return nil, refusal("the file begins with a Unicode byte-order mark; it is not latin-1")
 		}
-		return &latinReader{src: bufio.NewReaderSize(whole(0), 1<<16)}, nil
+		l := &latinSource{src: bufio.NewReaderSize(whole(0), 1<<16)}
+		return &decoder{next: l.next}, nil
 	}
 	return nil, fmt.Errorf("feed %s: unknown encoding %q", p.feed.Name, p.feed.Encoding)
 }
@@ -65,41 +67,46 @@ func markWidth(head []byte) int {
 	return 0
 }
 
-// utf16Reader decodes UTF-16 strictly (RFC 2781, section 2.2).
-type utf16Reader struct {
-	src   *bufio.Reader
-	order binary.ByteOrder
-	done  int64
+// decoder turns characters from next into UTF-8.
+type decoder struct {
+	next  func() (rune, error)
 	spare []byte // decoded, not yet handed out
 }
 
-func (u *utf16Reader) Read(p []byte) (int, error) {
-	if len(u.spare) == 0 {
-		if err := u.decode(); err != nil {
+func (d *decoder) Read(p []byte) (int, error) {
+	if len(d.spare) == 0 {
+		if err := d.decode(); err != nil {
 			return 0, err
 		}
 	}
-	n := copy(p, u.spare)
-	u.spare = u.spare[:copy(u.spare, u.spare[n:])]
+	n := copy(p, d.spare)
+	d.spare = d.spare[:copy(d.spare, d.spare[n:])]
 	return n, nil
 }
 
-// decode fills spare with up to a few KiB of text; io.EOF when there is none.
-func (u *utf16Reader) decode() error {
-	for len(u.spare) < 1<<12 {
-		r, err := u.char()
-		if err == io.EOF && len(u.spare) > 0 {
+// decode fills spare with some KiB of text; io.EOF when there is none.
+func (d *decoder) decode() error {
+	for len(d.spare) < 1<<12 {
+		r, err := d.next()
+		if err == io.EOF && len(d.spare) > 0 {
 			return nil
 		}
 		if err != nil {
 			return err
 		}
-		u.spare = utf8.AppendRune(u.spare, r)
+		d.spare = utf8.AppendRune(d.spare, r)
 	}
 	return nil
 }
 
-func (u *utf16Reader) char() (rune, error) {
+// utf16Source decodes UTF-16 strictly (RFC 2781, section 2.2).
+type utf16Source struct {
+	src   *bufio.Reader
+	order binary.ByteOrder
+	done  int64
+}
+
+func (u *utf16Source) next() (rune, error) {
 	first, err := u.unit()
 	if err != nil || !utf16.IsSurrogate(rune(first)) {
 		return rune(first), err
@@ -115,7 +122,7 @@ func (u *utf16Reader) char() (rune, error) {
 	return r, nil
 }
 
-func (u *utf16Reader) unit() (uint16, error) {
+func (u *utf16Source) unit() (uint16, error) {
 	var b [2]byte
 	n, err := io.ReadFull(u.src, b[:])
 	u.done += int64(n)
@@ -125,29 +132,22 @@ func (u *utf16Reader) unit() (uint16, error) {
 	return u.order.Uint16(b[:]), err
 }
 
-// latinReader decodes ISO 8859-1, whose bytes are the first 256 code points. The control characters 0x80 to 0x9F are refused:
+// latinSource decodes ISO 8859-1, whose bytes are the first 256 code points. The control characters 0x80 to 0x9F are refused:
 // where they stand, the file is in another encoding.
-type latinReader struct {
+type latinSource struct {
 	src  *bufio.Reader
 	done int64
 }
 
-func (l *latinReader) Read(p []byte) (int, error) {
-	n := 0
-	for n+1 < len(p) {
-		b, err := l.src.ReadByte()
-		if err == io.EOF && n > 0 {
-			return n, nil
-		}
-		if err != nil {
-			return n, err
-		}
-		l.done++
-		if b >= 0x80 && b < 0xA0 {
-			return n, refusal(fmt.Sprintf("byte 0x%X, the %d. of the file, is no letter of latin-1 (it looks like windows-1252); "+
-				"deliver UTF-8", b, l.done))
-		}
-		n += utf8.EncodeRune(p[n:], rune(b))
+func (l *latinSource) next() (rune, error) {
+	b, err := l.src.ReadByte()
+	if err != nil {
+		return 0, err
 	}
-	return n, nil
+	l.done++
+	if b >= 0x80 && b < 0xA0 {
+		return 0, refusal(fmt.Sprintf("byte %d of the file, 0x%X, is no letter of latin-1 (it looks like windows-1252); deliver UTF-8",
+			l.done, b))
+	}
+	return rune(b), nil
 }

@@ -67,4 +67,3 @@ func shrink(vals []int64) []int32 {
 	}
 	return small
 }
-

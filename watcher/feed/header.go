@@ -24,7 +24,7 @@ func (p *plan) header(c *cursor, names *watcher.Names) (ok bool, bad *fault) {
 	}
 	line, from := c.line, c.at
 	cells, bad := p.headerCells(c)
-	if bad == nil && c.at-from > p.limits.LineBytes {
+	if c.at-from > p.limits.LineBytes {
 		bad = &fault{reason: tooLong(p.limits.LineBytes)}
 	}
 	if bad == nil {
@@ -79,9 +79,9 @@ func (p *plan) firstLine(cells []headerCell) *fault {
 		return nil
 	}
 	for _, sep := range ",;\t|" {
-		if byte(sep) != p.sep && strings.ContainsRune(cells[0].name, sep) {
+		if byte(sep) != p.comma && strings.ContainsRune(cells[0].name, sep) {
 			return &fault{column: 1, cell: cells[0].name,
-				reason: fmt.Sprintf("the header has no %q but has %q; is the feed's separator right?", p.sep, byte(sep))}
+				reason: fmt.Sprintf("the header has no %q but has %q; is the feed's separator right?", p.comma, byte(sep))}
 		}
 	}
 	return nil

@@ -74,7 +74,7 @@ func (m *merger) checkBounds() {
 func (m *merger) clashed(c *chunk, clash *clash) *fault {
 	bad := &fault{line: clash.line, reason: fmt.Sprintf("series %s has another value for %s on line %d of this file",
 		watcher.QuoteCell(string(m.names.Name(clash.id))), clash.date, clash.oldLine)}
-	cur := cursor{text: c.text, sep: m.sep}
+	cur := cursor{text: c.text, sep: m.comma}
 	for target := clash.line - uint32(m.line) - 1; cur.line < target; {
 		if _, problem := cur.record(); problem != "" {
 			return bad

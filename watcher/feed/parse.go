@@ -30,7 +30,7 @@ type parser struct {
 // parse works through a chunk.
 func (p *parser) parse(c *chunk) {
 	p.out = c
-	p.cursor = cursor{text: c.text, sep: p.sep, arena: c.arena}
+	p.cursor = cursor{text: c.text, sep: p.comma, arena: c.arena}
 	for p.at < len(p.text) {
 		if b := p.text[p.at]; b <= ' ' && p.blank() {
 			continue

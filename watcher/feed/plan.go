@@ -28,7 +28,7 @@ type plan struct {
 	feed    rules.Feed
 	limits  Limits
 	wide    bool
-	sep     byte
+	comma   byte
 	style   dateStyle
 	newest  rules.Date
 	missing [][]byte
@@ -45,9 +45,9 @@ type plan struct {
 // newPlan takes a feed's declaration. An empty setting stands for the default of the configuration. The error is about the
 // declaration, not about a file.
 func newPlan(f rules.Feed, o Options) (*plan, error) {
-	p := &plan{feed: f, limits: o.Limits, wide: f.Layout == rules.Wide, sep: f.Separator, newest: rules.DateFrom(o.Now) + 1}
-	if p.sep == 0 {
-		p.sep = ','
+	p := &plan{feed: f, limits: o.Limits, wide: f.Layout == rules.Wide, comma: f.Separator, newest: rules.DateFrom(o.Now) + 1}
+	if p.comma == 0 {
+		p.comma = ','
 	}
 	p.amount = amount{mark: f.Decimal, shift: f.Unit.Decimals(), places: rules.Places}
 	if p.mark == 0 {
@@ -75,8 +75,8 @@ func (p *plan) check() error {
 		return fmt.Errorf("feed %s: unknown layout %q", f.Name, f.Layout)
 	case f.Columns.Date == "" || !p.wide && (f.Columns.Series == "" || f.Columns.Value == ""):
 		return fmt.Errorf("feed %s: columns need the names of date, series and value (wide: of date)", f.Name)
-	case p.sep == '"' || p.sep == '\n' || p.sep == '\r' || p.sep == ' ' || p.sep-'0' <= 9:
-		return fmt.Errorf("feed %s: separator %q cannot part cells", f.Name, p.sep)
+	case p.comma == '"' || p.comma == '\n' || p.comma == '\r' || p.comma == ' ' || p.comma-'0' <= 9:
+		return fmt.Errorf("feed %s: separator %q cannot part cells", f.Name, p.comma)
 	}
 	return nil
 }
@@ -95,7 +95,7 @@ func (p *plan) setMissing(tokens []string) {
 // setMost makes the greatest mantissas: most[d] x 10^(places-d) still fits 63 bits. A separator that is also the decimal mark
 // leaves no number for the fast way.
 func (p *plan) setMost() {
-	if p.sep == p.mark {
+	if p.comma == p.mark {
 		return
 	}
 	for d := 0; d <= p.places; d++ {

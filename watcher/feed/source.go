@@ -100,8 +100,8 @@ func (b *bounded) explain(err error) error {
 	return err
 }
 
-// text opens the decoded text of a file.
-func (p *plan) text(d *disk, name string) (io.Reader, error) {
+// opened gives the decoded text of a file.
+func (p *plan) opened(d *disk, name string) (io.Reader, error) {
 	b := &bounded{src: d, disk: d, limits: p.limits, gzip: strings.HasSuffix(name, gzipSuffix)}
 	if b.gzip {
 		z, err := gzip.NewReader(bufio.NewReaderSize(d, 1<<18))
