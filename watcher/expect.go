@@ -9,11 +9,12 @@ type Expected struct {
 	Series string
 	Range  string
 	rules.Verdict
+	Limited bool // the range is a limit: nothing is estimated
 }
 
-// Expect tells, for every series and range under the settings recorded last, what would be in range on a date. It calls each
-// in the order of the series' numbers, then of the configuration, until it gives an error.
-func (p *Pass) Expect(on rules.Date, each func(Expected) error) error {
+// Expect tells, for one series (or, with "", for all) and every range under the settings recorded last, what would be in range
+// on a date. It calls each in the order of the series' numbers, then of the configuration, until it gives an error.
+func (p *Pass) Expect(only string, on rules.Date, each func(Expected) error) error {
 	v, err := p.Store.View()
 	if err != nil {
 		return err
@@ -43,12 +44,25 @@ func (p *Pass) Expect(on rules.Date, each func(Expected) error) error {
 	}
 	j.scales = newGroupScales(j, v, nil)
 	w := newWorker(j, v)
-	for _, t := range tasks(allBlocks(names.Len()), j.width, rules.NoDate) {
+	todo := tasks(allBlocks(names.Len()), j.width, rules.NoDate)
+	if only != "" {
+		todo = taskOf(names, only)
+	}
+	for _, t := range todo {
 		if err := w.expect(t, on, each); err != nil {
 			return err
 		}
 	}
 	return nil
+}
+
+// taskOf is the task of one series; none when it is not there.
+func taskOf(names *Names, series string) []task {
+	id, ok := names.Find([]byte(series))
+	if !ok {
+		return nil
+	}
+	return []task{{block: id / BlockSize, from: int(id % BlockSize), width: 1, since: rules.NoDate}}
 }
 
 func (w *worker) expect(t task, on rules.Date, each func(Expected) error) error {
@@ -76,7 +90,7 @@ func (w *worker) expect(t task, on rules.Date, each func(Expected) error) error 
 			if !judges {
 				continue
 			}
-			if err := each(Expected{id, g.Range.Name, g.Expect(past)}); err != nil {
+			if err := each(Expected{id, g.Range.Name, g.Expect(past), g.Range.Limit != nil}); err != nil {
 				return err
 			}
 		}

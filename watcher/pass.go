@@ -2,7 +2,6 @@ package watcher
 
 import (
 	"context"
-	"crypto/sha256"
 	"errors"
 	"fmt"
 	"time"
@@ -123,7 +122,6 @@ func (p *Pass) feed(ctx context.Context, f rules.Feed, seen *seenFiles) error {
 	}
 	for _, bad := range found.Refused {
 		bad.File.Feed = f.Name
-		bad.File.SHA256 = sha256.Sum256([]byte(bad.File.Name + "\x00" + bad.Reason)) // it has no content that may be read
 		if err := p.refuse(bad, f, Candidate{Name: bad.File.Name}); err != nil {
 			return err
 		}
@@ -132,24 +130,52 @@ func (p *Pass) feed(ctx context.Context, f rules.Feed, seen *seenFiles) error {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
-		if err := p.file(f, c, seen); err != nil {
+		if err := p.unread(f, c, p.file(ctx, f, c, seen)); err != nil {
 			return fmt.Errorf("%s: %w", c.Name, err)
 		}
 	}
 	return nil
 }
 
+// unreadable is an error of reading a file, as against one of the ledger.
+type unreadable struct{ error }
+
+func (u unreadable) Unwrap() error { return u.error }
+
+// unread takes the errors of files that could not be read: one that is refused raises its flag, one that is still being
+// written waits, and none stops the others.
+func (p *Pass) unread(f rules.Feed, c Candidate, err error) error {
+	var u unreadable
+	if !errors.As(err, &u) {
+		return err
+	}
+	var bad *BadFile
+	if errors.As(u, &bad) {
+		bad.File.Feed = f.Name
+		return p.refuse(bad, f, c)
+	}
+	report := FileReport{Feed: f.Name, Name: c.Name, Fate: FateWaiting, Why: "it changes while it is read"}
+	if errors.Is(u, ErrChanged) {
+		p.row.Waiting++
+	} else {
+		p.row.Refused++
+		report.Fate, report.Why = FateRefused, fmt.Sprintf("%s: cannot be read: %v", c.Name, u.error)
+	}
+	p.report(report)
+	return nil
+}
+
 // file takes one file: nothing happens when it was taken before, a bad one is refused, and the rest is judged and published.
-func (p *Pass) file(f rules.Feed, c Candidate, seen *seenFiles) error {
+func (p *Pass) file(ctx context.Context, f rules.Feed, c Candidate, seen *seenFiles) error {
 	key := p.FeedKey(f)
-	if seen.stamps[stampKey(f.Name, c.Name, c.Stamp, key)] {
+	if c.Stamp != "" && seen.stamps[stampKey(f.Name, c.Name, c.Stamp, key)] {
 		p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateSeen})
 		return nil
 	}
 	if seen.sizes[c.Size] { // only a file of a size that has occurred can have been taken before under another name
-		sha, err := p.Source.Hash(c)
+		sha, err := p.Source.Hash(ctx, c)
 		if err != nil {
-			return err
+			return unreadable{err}
 		}
 		if known, err := p.known(f, sha, key); known || err != nil {
 			p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateSeen})
@@ -165,13 +191,12 @@ func (p *Pass) file(f rules.Feed, c Candidate, seen *seenFiles) error {
 	if err := errors.Join(err, v.Close()); err != nil {
 		return err
 	}
-	sheet, err := p.Source.Read(c, f, names, p.Now, p.progress("reading "+c.Name))
-	if bad, ok := errors.AsType[*BadFile](err); ok {
-		bad.File.Feed = f.Name
-		return p.refuse(bad, f, c)
+	sheet, err := p.Source.Read(ctx, c, f, names, p.Now, p.progress("reading "+c.Name))
+	if ctx.Err() != nil {
+		return ctx.Err()
 	}
 	if err != nil {
-		return err
+		return unreadable{err}
 	}
 	sheet.File.Feed = f.Name
 	return p.accept(sheet, f, c)
