@@ -96,7 +96,7 @@ func judged(r rules.Range) judgedRange {
 		out.Limit = []string{r.Limit.Low.String(), r.Limit.High.String()}
 		return out
 	}
-	own := judgedOwn{Window: r.Window, Scale: string(r.Scale), Tail: r.Tail.Name, DF: r.Tail.DF, Predictive: r.Predictive,
+	own := judgedOwn{Window: r.Window, Scale: string(r.Scale), Tail: r.Tail.Name, DF: r.Tail.DF, Predictive: r.Predictive && r.Scale == rules.Plain,
 		Side: string(r.Side), Watch: line(r.Watch), Breach: line(r.Breach), Pending: string(r.Pending)}
 	if r.Scale == rules.Weighted {
 		own.Decay = r.Decay

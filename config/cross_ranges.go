@@ -2,6 +2,7 @@ package config
 
 import (
 	"fmt"
+	"math"
 
 	"strayd/rules"
 	"strayd/stats"
@@ -9,8 +10,8 @@ import (
 
 // expected checks one range.
 func (d *decoder) expected(p string, r *rules.Range) {
-	if r.Limit != nil {
-		if d.sound(p+".limit") && r.Limit.Low >= r.Limit.High {
+	if d.has(join(p, hard)) {
+		if d.sound(join(p, hard)) && r.Limit.Low >= r.Limit.High {
 			d.failAt(p+".limit", trouble{message: "the lower line is not below the upper",
 				got: "[" + r.Limit.Low.String() + ", " + r.Limit.High.String() + "]"})
 		}
@@ -56,8 +57,14 @@ func (d *decoder) floor(p string, r *rules.Range, l rules.Line) {
 	}
 	if tail := l.Probability(); tail > 0 && tail < least {
 		d.failAt(p, trouble{message: fmt.Sprintf("below the floor of a rank over %d observations", r.Window),
-			got: "tail " + percent(tail) + d.unsaid(p), want: "tail " + percent(least) + " or more", hint: "take a longer window or another tail"})
+			got: "tail " + percent(tail) + d.unsaid(p), want: "tail " + percent(roundUp(least)) + " or more", hint: "take a longer window or another tail"})
 	}
+}
+
+// roundUp is v to four digits, not below it.
+func roundUp(v float64) float64 {
+	scale := math.Pow10(3 - int(math.Floor(math.Log10(v))))
+	return math.Ceil(v*scale) / scale
 }
 
 // unsaid marks a value that the file does not give.

@@ -218,10 +218,8 @@ func (d *decoder) kind(path string, n *yaml.Node, s shape) {
 		return // has its error
 	case n.ShortTag() == "!!null":
 		t.message = "no value"
-		t.hint = "leave the key out to take its default"
-		if n.Value == "" {
-			t.hint += ", and put a value that starts with # in quotes"
-		} else {
+		t.hint = "a # begins a comment: put a value that starts with it in quotes"
+		if n.Value != "" {
 			t.hint = "put " + shown(n.Value) + " in quotes if it is meant as text"
 		}
 	}

@@ -103,35 +103,57 @@ func (d *decoder) text(lines []string) {
 
 func column(line string, byteAt int) int { return 1 + utf8.RuneCountInString(line[:byteAt]) }
 
-var yamlLine = regexp.MustCompile(`^yaml: (?:line (\d+): )?(.*)$`)
+var yamlLine = regexp.MustCompile(`^yaml: (?:line \d+: )?`)
 
-// syntax records an error of the YAML library at the place that most likely caused it: the library's own line may be missing or
-// off by one, and it names no column.
+// syntax records an error of the YAML library. Its own line is that of the structure around the error, may be missing, and comes
+// without a column; the place given here is the first line with which the text goes wrong.
 func (d *decoder) syntax(lines []string, err error) {
-	text, line := err.Error(), 0
-	if m := yamlLine.FindStringSubmatch(text); m != nil {
-		line, _ = strconv.Atoi(m[1])
-		text = m[2]
+	text := yamlLine.ReplaceAllString(err.Error(), "")
+	line := firstBad(lines, text)
+	if d.tabbed(line) {
+		return
 	}
 	t := trouble{message: "not YAML: " + text}
-	if secret.MatchString(text) {
-		t.message = "not YAML"
-	}
 	n, char := suspect(lines, line)
 	if char != "" {
 		t.got = char + " outside quotes"
 		t.hint = "put the value in quotes"
 	}
-	if d.tabbed(n.Line) {
-		return
-	}
 	d.fail("", n, t)
+}
+
+// mostWork is how many bytes at most are parsed again to find the line of an error.
+const mostWork = 20 << 20
+
+// firstBad is the first line of those that, once the text reaches it, bring the error up to the end of the text.
+func firstBad(lines []string, message string) int {
+	work := 0
+	for n := len(lines); n > 1; n-- {
+		text := strings.Join(lines[:n-1], "\n")
+		work += len(text)
+		if work > mostWork || problem(text) != message {
+			return n
+		}
+	}
+	return 1
+}
+
+// problem is what the YAML library says against a text, "" for nothing.
+func problem(text string) string {
+	dec := yaml.NewDecoder(strings.NewReader(text))
+	for {
+		if _, err := decode(dec); errors.Is(err, io.EOF) {
+			return ""
+		} else if err != nil {
+			return yamlLine.ReplaceAllString(err.Error(), "")
+		}
+	}
 }
 
 // tabbed says whether the line already has its error, about a tab.
 func (d *decoder) tabbed(line int) bool {
 	for _, f := range d.faults {
-		if f.Got == "a tab" && f.Line >= line-1 && f.Line <= line+1 {
+		if f.Got == "a tab" && f.Line == line {
 			return true
 		}
 	}
@@ -141,22 +163,14 @@ func (d *decoder) tabbed(line int) bool {
 // special finds a character that YAML keeps for itself: at the start of a value, or a ? within a list in brackets.
 var special = regexp.MustCompile("(?:^|[:,\\[{-])[ \\t]*([@%`*&!])[^ ]|\\[[^\\]]*?(\\?)")
 
-// suspect is the place of a special character on or next to the line that the library names (0: anywhere), or else the first
-// character of that line.
+// suspect is the place of a special character in a line, or else the line's first character.
 func suspect(lines []string, line int) (n *yaml.Node, char string) {
-	for i, text := range lines {
-		if line > 0 && (i+1 < line-1 || i+1 > line+1) {
-			continue
-		}
-		for _, m := range special.FindAllStringSubmatchIndex(text, -1) {
-			from := max(m[2], m[4])
-			if !inQuotes(text[:from]) {
-				return at(i+1, column(text, from)), strconv.Quote(text[from : from+1])
-			}
+	text := lines[line-1]
+	for _, m := range special.FindAllStringSubmatchIndex(text, -1) {
+		if from := max(m[2], m[4]); !inQuotes(text[:from]) {
+			return at(line, column(text, from)), strconv.Quote(text[from : from+1])
 		}
 	}
-	line = min(max(line, 1), len(lines))
-	text := lines[line-1]
 	return at(line, 1+len(text)-len(strings.TrimLeft(text, " \t"))), ""
 }
 
