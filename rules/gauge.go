@@ -92,6 +92,31 @@ func (g *Gauge) cutAt(t stats.Tail, l Line) (float64, error) {
 	return line.Z, err
 }
 
+// Forms says one of the range's lines in every way, under its own tail with a full window. ok is false for a budget without its
+// level, and for a rank range, where no z stands for a tail.
+func (g *Gauge) Forms(l Line) (forms stats.Line, ok bool) {
+	t := g.tail
+	if g.Range.Tail.Name == "predictive-t" {
+		thin, err := g.thinAt(g.Range.Window)
+		if err != nil {
+			return forms, false
+		}
+		t = thin.tail
+	}
+	var err error
+	switch p := l.Probability(); {
+	case g.Range.Tail.Name == "rank" && p > 0:
+		return stats.Line{Tail: p, Confidence: stats.Complement(p), Days: 1 / p}, true
+	case l.Z > 0:
+		forms, err = t.LineOfZ(l.Z, g.side())
+	case p > 0:
+		forms, err = t.LineOfTail(p, g.side())
+	default:
+		return forms, false
+	}
+	return forms, err == nil
+}
+
 // side is how many tails the range's lines cut off.
 func (g *Gauge) side() stats.Side {
 	if g.Range.Side == Lower || g.Range.Side == Upper {

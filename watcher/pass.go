@@ -199,7 +199,12 @@ func (p *Pass) file(ctx context.Context, f rules.Feed, c Candidate, seen *seenFi
 		return unreadable{err}
 	}
 	sheet.File.Feed = f.Name
-	return p.accept(sheet, f, c)
+	err = p.accept(sheet, f, c)
+	var bad *BadFile
+	if errors.As(err, &bad) {
+		return p.refuse(bad, f, c)
+	}
+	return err
 }
 
 func (p *Pass) known(f rules.Feed, sha [32]byte, key string) (bool, error) {

@@ -152,6 +152,9 @@ func resolveBudgets(s, recorded *rules.Settings, active int) {
 	}
 }
 
+// ResolveBudgets turns budget lines into levels for a number of series, as a first pass would.
+func ResolveBudgets(s *rules.Settings, active int) { resolveBudgets(s, &rules.Settings{}, active) }
+
 func level(budget float64, old rules.Line, judged int) float64 {
 	switch {
 	case budget == 0:
@@ -159,7 +162,7 @@ func level(budget float64, old rules.Line, judged int) float64 {
 	case old.Budget == budget && old.Level > 0:
 		return old.Level
 	case judged == 0:
-		return 0.5
+		return 0
 	}
 	return min(max(budget/(5*float64(judged)), leastLevel), 0.5)
 }

@@ -1,0 +1,164 @@
+package main
+
+import (
+	"context"
+	"crypto/sha256"
+	"encoding/hex"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+	"os/user"
+	"strings"
+	"time"
+
+	"strayd/config"
+	"strayd/rules"
+	"strayd/watcher"
+	"strayd/watcher/feed"
+	"strayd/watcher/ledger"
+	"strayd/watcher/schedule"
+)
+
+// app is one command line being carried out.
+type app struct {
+	ctx        context.Context
+	out, err   io.Writer
+	configPath string
+	nowText    string
+	started    bool // a command's own code has begun: errors before it are wrong usage
+}
+
+// version is the program's version, kept with every pass.
+const version = "0.1"
+
+// now is the clock, or what --now fixed it to.
+func (a *app) now() (time.Time, error) {
+	if a.nowText == "" {
+		return time.Now().UTC().Truncate(time.Millisecond), nil
+	}
+	for _, layout := range []string{time.RFC3339, "2006-01-02T15:04:05", "2006-01-02 15:04", time.DateOnly} {
+		if t, err := time.Parse(layout, a.nowText); err == nil {
+			return t.UTC(), nil
+		}
+	}
+	return time.Time{}, usagef("--now %q is not a time such as 2026-03-13 or 2026-03-13T07:00:00Z", a.nowText)
+}
+
+// load reads the configuration and says on stderr what is set for a later version.
+func (a *app) load() (*config.Config, error) {
+	c, err := config.Load(a.configPath, config.Options{Cron: schedule.Check, LineTail: rules.LineTail})
+	if errors.Is(err, os.ErrNotExist) {
+		fmt.Fprintf(a.err, "strayd: no configuration %s here; `strayd demo` writes one to begin with, or name yours with --config\n", a.configPath)
+		return nil, quiet{exitConfig}
+	}
+	return c, err
+}
+
+// sayLater tells what the configuration sets that this version does not act on yet.
+func (a *app) sayLater(c *config.Config) {
+	for _, n := range c.Later {
+		fmt.Fprintf(a.err, "%s:%d: %s: %s\n", c.File, n.Line, n.Path, n.Text)
+	}
+}
+
+// openLedger opens the configuration's ledger for reading, or for writing.
+func openLedger(c *config.Config, mode ledger.Mode) (*ledger.Ledger, error) {
+	return ledger.Open(c.Ledger, ledger.Options{Mode: mode})
+}
+
+// reading loads the configuration, opens a view of its ledger and calls do with it.
+func (a *app) reading(do func(c *config.Config, v watcher.View) error) error {
+	c, err := a.load()
+	if err != nil {
+		return err
+	}
+	l, err := openLedger(c, ledger.ReadOnly)
+	if err != nil {
+		return err
+	}
+	v, err := l.View()
+	if err != nil {
+		return errors.Join(err, l.Close())
+	}
+	return errors.Join(do(c, v), v.Close(), l.Close())
+}
+
+// settings are what decides verdicts, from the configuration and its register.
+func settings(c *config.Config) (rules.Settings, error) {
+	s := rules.Settings{Ranges: c.Ranges, Groups: c.Groups, Doubtful: c.Doubtful}
+	if c.Series == "" {
+		return s, nil
+	}
+	register, err := feed.ReadRegister(c.Series)
+	if err != nil {
+		return s, err
+	}
+	s.Register = register
+	h := sha256.New()
+	for _, r := range register {
+		fmt.Fprintf(h, "%q %q\n", r.ID, r.Group)
+	}
+	s.Members = hex.EncodeToString(h.Sum(nil))
+	return s, nil
+}
+
+// reader prepares a reader of verdicts.
+func reader(c *config.Config, v watcher.View) (*watcher.Reader, error) {
+	s, err := settings(c)
+	if err != nil {
+		return nil, err
+	}
+	r, err := watcher.NewReader(v)
+	if err == nil {
+		r.Register = s.Register
+	}
+	return r, err
+}
+
+// actor is who acts: the operating system's user, never an option.
+func actor() string {
+	uid := fmt.Sprint(os.Getuid())
+	if u, err := user.Current(); err == nil {
+		return fmt.Sprintf("%s (uid %s)", u.Username, uid)
+	}
+	return "uid " + uid
+}
+
+// source hands the feed room to the pass. Whether a file has settled is told by the real clock too, since files know no --now.
+type source struct{}
+
+func (source) Find(f rules.Feed, now time.Time, settled bool) (watcher.Found, error) {
+	if real := time.Now(); real.After(now) {
+		now = real
+	}
+	return feed.Find(f, now, settled)
+}
+
+func (source) Hash(ctx context.Context, c watcher.Candidate) ([32]byte, error) {
+	return feed.Hash(ctx, c)
+}
+
+func (source) Read(ctx context.Context, c watcher.Candidate, f rules.Feed, names *watcher.Names, now time.Time, progress watcher.Progress) (*watcher.Sheet, error) {
+	return feed.Read(ctx, c, f, names, feed.Options{Now: now, Progress: progress})
+}
+
+// plural writes a count with its noun.
+func plural(n int, noun string) string {
+	if n == 1 {
+		return "1 " + noun
+	}
+	if strings.HasSuffix(noun, "ch") {
+		return thousands(n) + " " + noun + "es"
+	}
+	return thousands(n) + " " + noun + "s"
+}
+
+// thousands writes a count with commas.
+func thousands(n int) string {
+	s := fmt.Sprint(n)
+	for i := len(s) - 3; i > 0 && s[i-1] != '-'; i -= 3 {
+		s = s[:i] + "," + s[i:]
+	}
+	return s
+}

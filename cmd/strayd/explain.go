@@ -1,0 +1,236 @@
+package main
+
+import (
+	"fmt"
+	"strconv"
+	"strings"
+	"time"
+
+	"github.com/spf13/cobra"
+
+	"strayd/config"
+	"strayd/rules"
+	"strayd/watcher"
+)
+
+func (a *app) explainCommand() *cobra.Command {
+	var format, rangeName string
+	cmd := &cobra.Command{
+		Use:   "explain REF | SERIES DATE",
+		Short: "Every figure behind a verdict, recomputed",
+		Long: `Recomputes one verdict from the returns held, as they were known when it was given, and lists its window and versions.
+Without --range, the range of the flag, or the one whose verdict weighs most, is explained.
+
+` + caution,
+		Example: "  strayd explain 12\n  strayd explain alder-income 2026-03-13 --format json",
+		Args:    cobra.RangeArgs(1, 2),
+		RunE: func(_ *cobra.Command, args []string) error {
+			if err := checkFormat(format); err != nil {
+				return err
+			}
+			return a.reading(func(c *config.Config, v watcher.View) error { return a.explain(c, v, args, rangeName, format) })
+		},
+	}
+	cmd.Flags().StringVar(&rangeName, "range", "", "explain the verdict under this `RANGE`")
+	cmd.Flags().StringVar(&format, "format", "table", "table, csv or json")
+	return cmd
+}
+
+// explained is one verdict with all that stands behind it.
+type explained struct {
+	row      watcher.Row
+	versions []watcher.Version
+	flag     *rules.Flag
+}
+
+func (a *app) explain(c *config.Config, v watcher.View, args []string, rangeName, format string) error {
+	r, err := reader(c, v)
+	if err != nil {
+		return err
+	}
+	e, err := findExplained(r, args, rangeName)
+	if err != nil {
+		return notFound(err)
+	}
+	switch format {
+	case "csv":
+		l, err := newListing(a.out, format, historyColumns)
+		return firstError(err, l.row(historyCells(&e.row)...), l.end())
+	case "json":
+		return a.explainJSON(r, e)
+	}
+	if e.flag != nil && e.flag.Series == "" {
+		return a.explainFile(e.flag)
+	}
+	return a.explainTable(r, e)
+}
+
+func findExplained(r *watcher.Reader, args []string, rangeName string) (*explained, error) {
+	if len(args) == 2 {
+		d, err := rules.ParseDate(args[1])
+		if err != nil {
+			return nil, usageError{err}
+		}
+		return explainObservation(r, args[0], d, ^uint32(0), rangeName, nil)
+	}
+	ref, err := strconv.ParseUint(args[0], 10, 64)
+	if err != nil {
+		return nil, usagef("%q is not a ref; for an observation give SERIES and DATE", args[0])
+	}
+	f, ok, err := r.View.Flag(ref)
+	if err != nil {
+		return nil, err
+	}
+	if !ok {
+		return nil, fmt.Errorf("no flag has the ref %d; `strayd flags --all` lists them", ref)
+	}
+	if f.Series == "" {
+		return &explained{flag: &f}, nil
+	}
+	if rangeName == "" {
+		rangeName = f.Range
+	}
+	return explainObservation(r, f.Series, f.Date, f.Step, rangeName, &f)
+}
+
+func explainObservation(r *watcher.Reader, series string, d rules.Date, asOf uint32, rangeName string, f *rules.Flag) (*explained, error) {
+	rows, versions, err := r.At(series, d, asOf)
+	if err != nil {
+		return nil, err
+	}
+	if len(rows) == 0 {
+		return nil, fmt.Errorf("no range judges series %q", series)
+	}
+	at := heaviest(rows)
+	if rangeName != "" {
+		at = -1
+		for i := range rows {
+			if rows[i].Range == rangeName {
+				at = i
+			}
+		}
+	}
+	if at < 0 {
+		return nil, fmt.Errorf("no range %q judged series %q on %s", rangeName, series, d)
+	}
+	return &explained{rows[at], versions, f}, nil
+}
+
+// heaviest is the row to explain when none is asked for: the worst verdict, and of equal ones the smallest tail.
+func heaviest(rows []watcher.Row) int {
+	weight := map[rules.Finding]int{rules.Breach: 3, rules.Watch: 2, rules.Inside: 1}
+	best := 0
+	for i := range rows {
+		a, b := &rows[i], &rows[best]
+		if w, v := weight[a.Finding], weight[b.Finding]; w > v || w == v && !a.Limited && (b.Limited || a.Log10.V < b.Log10.V) {
+			best = i
+		}
+	}
+	return best
+}
+
+func (a *app) explainJSON(r *watcher.Reader, e *explained) error {
+	if e.flag != nil && e.flag.Series == "" {
+		return fmt.Errorf("flag %d is about file %s, not an observation: see `strayd flags --all --format json`", e.flag.Ref, e.flag.File)
+	}
+	var window, versions []string
+	for _, u := range e.row.Window {
+		window = append(window, object([]string{"date", "return", "used"}, []cell{date(u.Date), units(u.Return), units(u.Used)}, "    ", " "))
+	}
+	for _, v := range e.versions {
+		file, err := r.File(v.Step)
+		if err != nil {
+			return err
+		}
+		versions = append(versions, object([]string{"return", "received", "file", "line"},
+			[]cell{units(rules.Units(v.Value)), moment(file.Received), text(file.File.Name), integer(v.Line)}, "    ", " "))
+	}
+	names := strings.Split(historyColumns, ",")
+	var b strings.Builder
+	b.WriteString("{\n")
+	for i, c := range historyCells(&e.row) {
+		fmt.Fprintf(&b, "  %q: %s,\n", names[i], c.json)
+	}
+	fmt.Fprintf(&b, "  \"window\": %s,\n  \"reference\": null,\n  \"causes\": [],\n  \"versions\": %s\n}\n", array(window), array(versions))
+	_, err := a.out.Write([]byte(b.String()))
+	return err
+}
+
+func array(objects []string) string {
+	if len(objects) == 0 {
+		return "[]"
+	}
+	return "[\n" + strings.Join(objects, ",\n") + "\n  ]"
+}
+
+func (a *app) explainFile(f *rules.Flag) error {
+	fmt.Fprintf(a.out, "Ref %d: file %s of feed %s was refused on %s, and nothing of it is kept.\n  %s\n", f.Ref, printable(f.File), f.Feed,
+		f.RaisedAt.Format(time.RFC3339), printable(f.Note))
+	fmt.Fprintln(a.out, "It is tried again when its content or the feed's settings change.")
+	return nil
+}
+
+func (a *app) explainTable(r *watcher.Reader, e *explained) error {
+	row := &e.row
+	ref := ""
+	if e.flag != nil {
+		ref = fmt.Sprintf(", ref %d (%s, %s)", e.flag.Ref, e.flag.Kind, e.flag.Standing)
+	}
+	fmt.Fprintf(a.out, "%s  %s  for %s: %s under range %q%s\n", printable(row.Series), percent(row.Return.Float()), row.Date.Time().Format("Monday 2006-01-02"),
+		row.Finding, row.Range, ref)
+	w := columns(a.out)
+	line := func(name, format string, args ...any) { fields(w, "  "+name, fmt.Sprintf(format, args...)) }
+	if row.Why != "" {
+		line("why", "%s", printable(row.Why))
+	}
+	if row.Low.OK || row.High.OK {
+		line("expected", "%s", between(row.Low, row.High))
+	}
+	if row.WatchLow.OK || row.WatchHigh.OK {
+		line("watched beyond", "%s", between(row.WatchLow, row.WatchHigh))
+	}
+	if !row.Limited {
+		a.explainWindow(line, row)
+	}
+	for i, v := range e.versions {
+		file, err := r.File(v.Step)
+		if err != nil {
+			return err
+		}
+		name := "received"
+		if i > 0 {
+			name = "restated"
+		}
+		line(name, "%s as %s in %s, line %d (feed %s)", file.Received.Format(time.RFC3339), rules.Units(v.Value), printable(file.File.Name), v.Line, file.File.Feed)
+	}
+	if err := w.Flush(); err != nil {
+		return err
+	}
+	fmt.Fprintln(a.out, "\n"+caution)
+	return nil
+}
+
+func (a *app) explainWindow(line func(name, format string, args ...any), row *watcher.Row) {
+	if row.N > 0 {
+		line("made of", "%s from %s to %s", plural(row.N, "observation"), day(row.WindowFrom), day(row.WindowTo))
+		line("mean, deviation", "%s, %s", percentNum(row.Mean), width(row.Deviation))
+	}
+	if row.Z.OK {
+		line("z", "%+.3f, %s (tail %.3g)", row.Z.V, onceIn(row.Tail), row.Tail.V)
+	}
+	clipped := 0
+	for _, u := range row.Window {
+		if u.Return != u.Used {
+			clipped++
+		}
+	}
+	if clipped > 0 {
+		line("clipped", "%s of the window held to the line that they broke", plural(clipped, "value"))
+	}
+	switch {
+	case row.Used == rules.Missing:
+		line("window takes", "nothing of it until someone decides")
+	case row.Used != row.Return:
+		line("window takes", "%s until someone decides", percent(row.Used.Float()))
+	}
+}

@@ -1,0 +1,185 @@
+package main
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"strayd/config"
+	"strayd/rules"
+	"strayd/watcher"
+)
+
+const flagColumns = "ref,raised_at,date,series,group,kind,range,return,low,high,z,tail,reference,reference_return,residual," +
+	"looks_like,share,implied,standing,reason,feed,file,line,note"
+
+// flagFilter is which flags are asked for.
+type flagFilter struct {
+	all                        bool
+	date, from, to             string
+	kind, group, series, stand string
+	feed, blocking, format     string
+
+	on, since, until rules.Date
+}
+
+func (a *app) flagsCommand() *cobra.Command {
+	f := &flagFilter{}
+	cmd := &cobra.Command{
+		Use:   "flags",
+		Short: "The flags that still ask something of a person",
+		Long: `Lists the flags whose standing is open, acknowledged or reopened; --all lists every one.
+With --blocking GROUP, exit code 1 while a flag of that group holds its release back.
+
+` + caution,
+		Example: "  strayd flags\n  strayd flags --all --kind breach --from 2026-03-01 --format csv\n  strayd flags --blocking equity",
+		Args:    cobra.NoArgs,
+		RunE:    func(*cobra.Command, []string) error { return a.flags(f) },
+	}
+	s := cmd.Flags()
+	s.BoolVar(&f.all, "all", false, "every flag, whatever its standing")
+	s.StringVar(&f.date, "date", "", "of this valuation `DATE`")
+	s.StringVar(&f.from, "from", "", "of this valuation `DATE` or later")
+	s.StringVar(&f.to, "to", "", "of this valuation `DATE` or earlier")
+	s.StringVar(&f.kind, "kind", "", "of this `KIND`: breach, limit, restated, refused, ...")
+	s.StringVar(&f.group, "group", "", "of this `GROUP`")
+	s.StringVar(&f.series, "series", "", "of this `SERIES`")
+	s.StringVar(&f.stand, "standing", "", "of this `STANDING`: open, history, ...")
+	s.StringVar(&f.feed, "feed", "", "of this `FEED`")
+	s.StringVar(&f.blocking, "blocking", "", "of this `GROUP`, exit code 1 when there is one")
+	s.StringVar(&f.format, "format", "table", "table, csv or json")
+	return cmd
+}
+
+func (f *flagFilter) check() (err error) {
+	if err := checkFormat(f.format); err != nil {
+		return err
+	}
+	if f.kind != "" && !slices.Contains(rules.Kinds, rules.Kind(f.kind)) {
+		return usagef("--kind %q: need one of %s", f.kind, joinWords(rules.Kinds))
+	}
+	if f.stand != "" && !slices.Contains(rules.Standings, rules.Standing(f.stand)) {
+		return usagef("--standing %q: need one of %s", f.stand, joinWords(rules.Standings))
+	}
+	for _, d := range []struct {
+		name, text string
+		into       *rules.Date
+	}{{"--date", f.date, &f.on}, {"--from", f.from, &f.since}, {"--to", f.to, &f.until}} {
+		if *d.into = rules.NoDate; d.text != "" {
+			if *d.into, err = rules.ParseDate(d.text); err != nil {
+				return usagef("%s: %w", d.name, err)
+			}
+		}
+	}
+	return nil
+}
+
+func joinWords[T ~string](words []T) string {
+	texts := make([]string, len(words))
+	for i, w := range words {
+		texts[i] = string(w)
+	}
+	return strings.Join(texts, ", ")
+}
+
+func (f *flagFilter) takes(g *rules.Flag) bool {
+	is := func(want, have string) bool { return want == "" || want == have }
+	return is(f.kind, string(g.Kind)) && is(f.group, g.Group) && is(f.blocking, g.Group) && is(f.series, g.Series) &&
+		is(f.stand, string(g.Standing)) && is(f.feed, g.Feed) && (f.on == rules.NoDate || g.Date == f.on) &&
+		g.Date >= f.since && (f.until == rules.NoDate || g.Date <= f.until)
+}
+
+func (a *app) flags(f *flagFilter) error {
+	if err := f.check(); err != nil {
+		return err
+	}
+	all := f.all || f.stand != "" && !rules.Standing(f.stand).Asks()
+	blocked := false
+	err := a.reading(func(_ *config.Config, v watcher.View) error {
+		if f.format == "table" {
+			n, err := a.flagTable(v, all, f)
+			blocked = n > 0
+			return err
+		}
+		l, err := newListing(a.out, f.format, flagColumns)
+		if err != nil {
+			return err
+		}
+		var rowErr error
+		err = v.Flags(all, func(g rules.Flag) bool {
+			if f.takes(&g) {
+				blocked = blocked || g.Standing.Asks()
+				rowErr = l.row(flagCells(&g)...)
+			}
+			return rowErr == nil
+		})
+		return firstError(err, rowErr, l.end())
+	})
+	if err == nil && f.blocking != "" && blocked {
+		return quiet{exitFailed}
+	}
+	return err
+}
+
+func firstError(errs ...error) error {
+	for _, err := range errs {
+		if err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func flagCells(g *rules.Flag) []cell {
+	line := null
+	if g.Line > 0 {
+		line = integer(g.Line)
+	}
+	return []cell{text(fmt.Sprint(g.Ref)), moment(g.RaisedAt), date(g.Date), text(g.Series), text(g.Group), text(string(g.Kind)), text(g.Range),
+		units(g.Return), number(g.Low), number(g.High), number(g.Z), number(g.Tail), null, null, null, null, null, null,
+		text(string(g.Standing)), null, text(g.Feed), text(g.File), line, text(g.Note)}
+}
+
+// flagTable prints flags as the desk reads them, newest date last, and says how many there are.
+func (a *app) flagTable(v watcher.View, all bool, f *flagFilter) (n int, err error) {
+	w := columns(a.out)
+	err = v.Flags(all, func(g rules.Flag) bool {
+		if !f.takes(&g) {
+			return true
+		}
+		if n++; n == 1 {
+			fields(w, "ref", "date", "series", "kind", "return", "expected", "z", "how rare", "standing", "note")
+		}
+		fields(w, flagFields(&g)...)
+		return true
+	})
+	if err != nil {
+		return n, err
+	}
+	if err := w.Flush(); err != nil {
+		return n, err
+	}
+	if n == 0 {
+		fmt.Fprintln(a.out, "No flag asks anything of anyone.")
+		return 0, nil
+	}
+	fmt.Fprintf(a.out, "\n%s. `strayd explain REF` shows every figure behind one.\n%s\n", plural(n, "flag"), caution)
+	return n, nil
+}
+
+func flagFields(g *rules.Flag) []string {
+	value, z, rare := "-", "-", "-"
+	if g.Return != rules.Missing {
+		value = percent(g.Return.Float())
+	}
+	if g.Z.OK {
+		z, rare = fmt.Sprintf("%+.1f", g.Z.V), onceIn(g.Tail)
+	}
+	what := g.Series
+	if what == "" {
+		what = g.Feed + ": " + g.File
+	}
+	return []string{fmt.Sprint(g.Ref), day(g.Date), printable(what), string(g.Kind), value, between(g.Low, g.High), z, rare, string(g.Standing), printable(g.Note)}
+}

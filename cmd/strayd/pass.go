@@ -1,0 +1,112 @@
+package main
+
+import (
+	"errors"
+	"fmt"
+
+	"github.com/spf13/cobra"
+
+	"strayd/config"
+	"strayd/watcher"
+	"strayd/watcher/ledger"
+)
+
+func (a *app) passCommand() *cobra.Command {
+	var settled bool
+	cmd := &cobra.Command{
+		Use:   "pass [FEED]",
+		Short: "Read what has arrived, judge it, say what strayed",
+		Long: `One pass now over one feed or all of them: every whole new file is read, judged and recorded as one step.
+The same content again changes nothing. A file with a bad row changes nothing either and raises one flag.
+
+Exit code 1 when a file was refused or could not be read; flags do not change it.`,
+		Example: "  strayd pass\n  strayd pass administrator --settled      the files are whole, whatever their age",
+		Args:    cobra.MaximumNArgs(1),
+		RunE: func(_ *cobra.Command, args []string) error {
+			only := ""
+			if len(args) == 1 {
+				only = args[0]
+			}
+			return a.pass(only, settled)
+		},
+	}
+	cmd.Flags().BoolVar(&settled, "settled", false, "take my word that every file is whole")
+	return cmd
+}
+
+func (a *app) pass(only string, settled bool) error {
+	c, err := a.load()
+	if err != nil {
+		return err
+	}
+	a.sayLater(c)
+	if only != "" && c.FeedKey(only) == "" {
+		return usagef("no feed %q in %s", only, c.File)
+	}
+	l, err := openLedger(c, ledger.ReadWrite)
+	if err != nil {
+		return err
+	}
+	return errors.Join(a.passOver(c, l, only, settled), l.Close())
+}
+
+// passOver runs one pass over an open ledger and prints what became of each file.
+func (a *app) passOver(c *config.Config, l watcher.Store, only string, settled bool) error {
+	p, err := a.newPass(c, l)
+	if err != nil {
+		return err
+	}
+	p.Only, p.Settled = only, settled
+	bars := newBars(a.err)
+	p.Progress = bars.progress
+	p.Report = func(r watcher.FileReport) { bars.clear(); a.sayFile(r) }
+	row, err := p.Run(a.ctx)
+	bars.clear()
+	a.sayPass(row)
+	if err == nil && row.Refused > 0 {
+		return quiet{exitFailed}
+	}
+	return err
+}
+
+func (a *app) newPass(c *config.Config, l watcher.Store) (*watcher.Pass, error) {
+	now, err := a.now()
+	if err != nil {
+		return nil, err
+	}
+	s, err := settings(c)
+	if err != nil {
+		return nil, err
+	}
+	return &watcher.Pass{Store: l, Source: source{}, Settings: s, Feeds: c.Feeds, FeedKey: config.FeedKey, Now: now, Who: actor(),
+		Program: version}, nil
+}
+
+func (a *app) sayFile(r watcher.FileReport) {
+	name := printable(r.Name)
+	switch r.Fate {
+	case watcher.FateAccepted:
+		n := r.Row.Counts
+		fmt.Fprintf(a.out, "%s: %s, %s new, %s late, %s restated, %s unchanged; %s\n", name, plural(n.Rows, "row"), thousands(n.New), thousands(n.Late),
+			thousands(n.Restated), thousands(n.Same), plural(n.Flags, "flag"))
+		for _, note := range r.Notes {
+			fmt.Fprintf(a.err, "%s: %s\n", name, printable(note))
+		}
+	case watcher.FateRefused:
+		fmt.Fprintf(a.err, "refused, nothing of it is kept: %s\n", printable(r.Why))
+	case watcher.FateWaiting:
+		fmt.Fprintf(a.err, "waiting: %s: %s\n", name, r.Why)
+	}
+}
+
+// sayPass prints the pass in one line, with the verdicts counted.
+func (a *app) sayPass(row watcher.PassRow) {
+	n := row.Counts
+	fmt.Fprintf(a.out, "%s accepted, %d refused, %d waiting. ", plural(row.Accepted, "file"), row.Refused, row.Waiting)
+	if row.Accepted == 0 {
+		fmt.Fprintln(a.out, "Nothing new to judge.")
+		return
+	}
+	fmt.Fprintf(a.out, "Verdicts: %s inside, %s watch, %s, %s not judged. %s raised.\n", thousands(n.Inside), thousands(n.Watch),
+		plural(n.Breach, "breach"), thousands(n.NotJudged), plural(n.Flags, "flag"))
+}

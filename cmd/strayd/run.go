@@ -1,0 +1,119 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+
+	"github.com/spf13/cobra"
+
+	"strayd/config"
+	"strayd/watcher"
+	"strayd/watcher/ledger"
+)
+
+// Exit codes, which other programs read.
+const (
+	exitDone    = 0
+	exitFailed  = 1
+	exitUsage   = 2
+	exitHeld    = 3
+	exitDamaged = 4
+	exitConfig  = 78
+)
+
+// quiet is an error whose words have been printed already; only its exit code is left.
+type quiet struct{ code int }
+
+func (q quiet) Error() string { return fmt.Sprintf("exit %d", q.code) }
+
+// usageError is a wrong call of a command that runs.
+type usageError struct{ error }
+
+func usagef(format string, args ...any) error { return usageError{fmt.Errorf(format, args...)} }
+
+// run carries out one command line and gives its exit code. No stack trace reaches a person.
+func run(ctx context.Context, args []string, stdout, stderr io.Writer) (code int) {
+	defer func() {
+		if r := recover(); r != nil {
+			fmt.Fprintf(stderr, "strayd: internal error: %v\nThis is a fault of the program, not of your data. What was published before it stands; `strayd ledger verify` checks it.\n", r)
+			code = exitFailed
+		}
+	}()
+	a := &app{ctx: ctx, out: stdout, err: stderr}
+	root := a.root()
+	root.SetArgs(args)
+	root.SetOut(stdout)
+	root.SetErr(stderr)
+	err := root.ExecuteContext(ctx)
+	if err == nil {
+		return exitDone
+	}
+	code = a.codeOf(err)
+	var q quiet
+	if !errors.As(err, &q) {
+		fmt.Fprintf(stderr, "strayd: %v\n", err)
+	}
+	if code == exitUsage {
+		fmt.Fprintln(stderr, "See `strayd help`, or `strayd COMMAND --help`.")
+	}
+	return code
+}
+
+func (a *app) codeOf(err error) int {
+	var q quiet
+	var usage usageError
+	var bad config.Errors
+	var damaged *ledger.Damaged
+	switch {
+	case errors.As(err, &q):
+		return q.code
+	case errors.As(err, &usage), !a.started:
+		return exitUsage
+	case errors.As(err, &bad):
+		return exitConfig
+	case errors.Is(err, ledger.ErrHeld):
+		return exitHeld
+	case errors.As(err, &damaged):
+		return exitDamaged
+	}
+	return exitFailed
+}
+
+func (a *app) root() *cobra.Command {
+	root := &cobra.Command{
+		Use:   "strayd",
+		Short: "Flags daily investment returns outside their expected ranges",
+		Long: `strayd reads daily returns from files, judges each against a range learnt from its series' own past,
+flags what strayed, and keeps the record.
+
+A flag is a statistical statement about past data: neither advice nor a finding of error; no flag is no certificate.`,
+		Example: `  strayd demo                       a small invented book, judged from start to end
+  strayd init                       make the ledger that the configuration names
+  strayd pass                       read what has arrived, judge it, say what strayed
+  strayd flags                      the flags that still ask something of a person
+  strayd explain 12                 every figure behind a flag`,
+		SilenceErrors: true,
+		SilenceUsage:  true,
+		Args:          cobra.NoArgs,
+		PersistentPreRun: func(*cobra.Command, []string) {
+			a.started = true
+		},
+		RunE: func(cmd *cobra.Command, _ []string) error { return cmd.Help() },
+	}
+	root.PersistentFlags().StringVar(&a.configPath, "config", "strayd.yaml", "configuration `FILE`")
+	root.PersistentFlags().StringVar(&a.nowText, "now", "", "take this `TIME` for the clock: 2026-03-13 or 2026-03-13T07:00:00Z")
+	root.AddCommand(a.initCommand(), a.checkCommand(), a.passCommand(), a.flagsCommand(), a.explainCommand(),
+		a.historyCommand(), a.rangesCommand())
+	return root
+}
+
+// notFound turns a series that is not there into words with a cure.
+func notFound(err error) error {
+	var unknown *watcher.UnknownSeries
+	if errors.As(err, &unknown) {
+		return fmt.Errorf("%w; names are case-sensitive, `strayd ranges` lists them", err)
+	}
+	return err
+}
