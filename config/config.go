@@ -94,7 +94,7 @@ func Parse(name string, data []byte, opt Options) (*Config, error) {
 	if err != nil {
 		return nil, fmt.Errorf("configuration: %w", err)
 	}
-	d := &decoder{opt: opt, folder: folder, given: map[string]place{}, failed: map[string]bool{}}
+	d := newDecoder(opt, folder)
 	c := &Config{File: name}
 	if root := d.document(data); root != nil {
 		d.tree(root, "")

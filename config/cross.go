@@ -120,12 +120,14 @@ func (d *decoder) wideColumns(at string) {
 
 // sources refuses two feeds that read the same files: each file would be taken twice.
 func (d *decoder) sources(feeds []rules.Feed) {
+	first := map[pattern]string{}
 	for i, f := range feeds {
+		at := pattern{f.Dir, f.Pattern}
 		p := fmt.Sprintf("feeds[%d].files", i)
-		same := func(other rules.Feed) bool { return other.Dir == f.Dir && other.Pattern == f.Pattern }
-		if j := slices.IndexFunc(feeds[:i], same); j >= 0 && f.Pattern != "" && d.sound(p) {
-			d.failAt(p, trouble{message: "the same files as another feed", got: "the files of " + shown(feeds[j].Name)})
+		if other, ok := first[at]; ok && f.Pattern != "" && d.sound(p) {
+			d.failAt(p, trouble{message: "the same files as another feed", got: "the files of " + shown(other)})
 		}
+		first[at] = f.Name
 	}
 }
 

@@ -23,6 +23,7 @@ type decoder struct {
 	order  []string         // the paths with a note
 	failed map[string]bool  // paths with a fault
 	faults []Error
+	starts map[string]*yaml.Node // defaults as nodes, by their text
 }
 
 // has says whether the file gives the key itself, rather than leaving it to its default.
@@ -117,5 +118,21 @@ func (d *decoder) notes() (notes []Note) {
 
 // quiet is a decoder for defaults: what it reads is not in the file.
 func (d *decoder) quiet() *decoder {
-	return &decoder{opt: d.opt, folder: d.folder, given: map[string]place{}, failed: map[string]bool{}}
+	q := newDecoder(d.opt, d.folder)
+	q.starts = d.starts
+	return q
+}
+
+func newDecoder(opt Options, folder string) *decoder {
+	return &decoder{opt: opt, folder: folder, given: map[string]place{}, failed: map[string]bool{}, starts: map[string]*yaml.Node{}}
+}
+
+// start is the default of a field as a node.
+func (d *decoder) start(f *field) *yaml.Node {
+	n, ok := d.starts[f.initial]
+	if !ok {
+		n = f.start()
+		d.starts[f.initial] = n
+	}
+	return n
 }

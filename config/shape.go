@@ -66,7 +66,7 @@ func (o object) read(d *decoder, path string, n *yaml.Node, dst any) {
 		case f.required:
 			d.fail(path, n, trouble{message: "missing key " + f.key, want: f.shape.want()})
 		case f.initial != "" && !has(given, f.without):
-			f.shape.read(d.quiet(), p, f.start(), f.at(dst))
+			f.shape.read(d.quiet(), p, d.start(f), f.at(dst))
 		}
 	}
 	o.exclude(d, path, given)

@@ -2,7 +2,6 @@ package config
 
 import (
 	"fmt"
-	"slices"
 
 	"gopkg.in/yaml.v3"
 )
@@ -26,15 +25,15 @@ func (l list[T]) read(d *decoder, path string, n *yaml.Node, dst any) {
 		d.fail(path, n, trouble{message: "wrong number of entries", got: fmt.Sprint(c), want: l.what})
 		return
 	}
-	values := make([]T, len(n.Content))
+	values, seen := make([]T, len(n.Content)), map[string]bool{}
 	for i, item := range n.Content {
 		p := fmt.Sprintf("%s[%d]", path, i)
 		d.remember(p, item, item, "")
 		l.item.read(d, p, item, &values[i])
-		same := func(b *yaml.Node) bool { return b.Kind == yaml.ScalarNode && b.Value == item.Value }
-		if l.unique && item.Kind == yaml.ScalarNode && slices.ContainsFunc(n.Content[:i], same) {
+		if l.unique && item.Kind == yaml.ScalarNode && seen[item.Value] {
 			d.fail(p, item, trouble{message: "given twice", got: shown(item.Value)})
 		}
+		seen[item.Value] = true
 	}
 	put(dst, values)
 }

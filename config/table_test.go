@@ -64,7 +64,7 @@ func TestDefaultsAreValid(t *testing.T) {
 			return
 		}
 		n++
-		d := &decoder{opt: testOptions.filled(), given: map[string]place{}, failed: map[string]bool{}}
+		d := newDecoder(testOptions.filled(), "/desk")
 		f.shape.read(d, path, f.start(), f.at(dst[parent(path)]))
 		if len(d.faults) > 0 {
 			t.Errorf("%s: default %s: %v", path, f.initial, Errors(d.faults))
@@ -83,7 +83,8 @@ func TestSchemaIsStableJSON(t *testing.T) {
 	if v["$schema"] != "http://json-schema.org/draft-07/schema#" {
 		t.Errorf("schema says it is %v", v["$schema"])
 	}
-	if string(Schema()) != string(Schema()) {
+	first, second := Schema(), Schema()
+	if string(first) != string(second) {
 		t.Error("two calls differ")
 	}
 }

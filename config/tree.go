@@ -7,10 +7,16 @@ import (
 	"gopkg.in/yaml.v3"
 )
 
+// deepest is how many levels a value may lie below the top; no key needs more than five.
+const deepest = 16
+
 // tree refuses the parts of YAML that hide what a file says, wherever they stand: anchors, aliases, merge keys, tags, and keys
 // that are given twice or are not plain text.
 func (d *decoder) tree(n *yaml.Node, path string) {
 	switch {
+	case strings.Count(path, ".")+strings.Count(path, "[") > deepest:
+		d.fail(path, n, trouble{message: "nested too deeply"})
+		return
 	case n.Kind == yaml.AliasNode:
 		d.fail(path, n, trouble{message: "an alias", got: shown("*" + n.Value), want: "the value itself",
 			hint: "put a value that starts with * in quotes"})
