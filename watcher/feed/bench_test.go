@@ -28,7 +28,7 @@ const (
 )
 
 // layLong writes invented returns of 8 decimals and gives the candidate.
-func layLong(b testing.TB, series, dates int, how order) Candidate {
+func layLong(b testing.TB, series, dates int, how order) watcher.Candidate {
 	b.Helper()
 	dir := os.Getenv("STRAYD_BENCH_DIR")
 	if dir == "" {
@@ -88,7 +88,7 @@ func weekdays(n int) []string {
 }
 
 // layWide writes invented returns with one column a series.
-func layWide(b testing.TB, series, dates int) Candidate {
+func layWide(b testing.TB, series, dates int) watcher.Candidate {
 	b.Helper()
 	var text strings.Builder
 	rng := rand.New(rand.NewPCG(3, 4))
@@ -107,16 +107,23 @@ func layWide(b testing.TB, series, dates int) Candidate {
 	return lay(b, "wide.csv", []byte(text.String()))
 }
 
-// bench reads a file over and over and prints rows a second and the greatest memory of the process so far.
-func bench(b *testing.B, f rules.Feed, c Candidate) {
+// bench reads a file over and over and prints rows a second, processor time a row and the greatest memory of the process. With
+// names nil every reading begins with none.
+func bench(b *testing.B, f rules.Feed, c watcher.Candidate, names *watcher.Names) {
 	b.SetBytes(c.Size)
-	rows := 0
+	rows, cpu := 0, 0.0
 	for b.Loop() {
-		s, err := Read(context.Background(), c, f, watcher.NewNames(nil, nil), Options{Now: testNow})
+		held := names
+		if held == nil {
+			held = watcher.NewNames(nil, nil)
+		}
+		before := used(b)
+		s, err := Read(context.Background(), c, f, held, Options{Now: testNow})
 		if err != nil {
 			b.Fatal(err)
 		}
 		rows += s.Rows
+		cpu += seconds(used(b)) - seconds(before)
 		b.StopTimer()
 		s = nil
 		runtime.GC()
@@ -124,16 +131,51 @@ func bench(b *testing.B, f rules.Feed, c Candidate) {
 		b.StartTimer()
 	}
 	b.ReportMetric(float64(rows)/b.Elapsed().Seconds()/1e6, "Mrows/s")
+	b.ReportMetric(cpu*1e9/float64(rows), "cpu-ns/row")
+	b.ReportMetric(float64(used(b).Maxrss)/1024, "peak-MiB")
+}
+
+func used(b *testing.B) syscall.Rusage {
 	var use syscall.Rusage
-	if syscall.Getrusage(syscall.RUSAGE_SELF, &use) == nil {
-		b.ReportMetric(float64(use.Maxrss)/1024, "peak-MiB")
+	if err := syscall.Getrusage(syscall.RUSAGE_SELF, &use); err != nil {
+		b.Fatal(err)
 	}
+	return use
+}
+
+func seconds(u syscall.Rusage) float64 {
+	return float64(u.Utime.Sec+u.Stime.Sec) + float64(u.Utime.Usec+u.Stime.Usec)/1e6
+}
+
+// manyNames are the series of the files of a day, in order.
+func manyNames(n int) *watcher.Names {
+	names := watcher.NewNames(nil, nil)
+	for s := range n {
+		names.Add(fmt.Appendf(nil, "S%06d", s))
+	}
+	return names
 }
 
 // The files lie in the folder of STRAYD_BENCH_DIR and stay there, or else in a folder that is taken away again.
-func BenchmarkLongByDate(b *testing.B)   { bench(b, longFeed(), layLong(b, 2000, 5000, byDate)) }
-func BenchmarkLongBySeries(b *testing.B) { bench(b, longFeed(), layLong(b, 2000, 5000, bySeries)) }
-func BenchmarkLongShuffled(b *testing.B) { bench(b, longFeed(), layLong(b, 2000, 5000, shuffled)) }
-func BenchmarkLongDay(b *testing.B)      { bench(b, longFeed(), layLong(b, 1_000_000, 1, byDate)) }
-func BenchmarkWideDay(b *testing.B)      { bench(b, wideFeed(), layWide(b, 1_000_000, 1)) }
-func BenchmarkWideYears(b *testing.B)    { bench(b, wideFeed(), layWide(b, 2000, 1000)) }
+func BenchmarkLongByDate(b *testing.B) { bench(b, longFeed(), layLong(b, 2000, 5000, byDate), nil) }
+
+func BenchmarkLongBySeries(b *testing.B) { bench(b, longFeed(), layLong(b, 2000, 5000, bySeries), nil) }
+
+func BenchmarkLongShuffled(b *testing.B) { bench(b, longFeed(), layLong(b, 2000, 5000, shuffled), nil) }
+
+func BenchmarkLongDay(b *testing.B) {
+	bench(b, longFeed(), layLong(b, 1_000_000, 1, byDate), manyNames(1_000_000))
+}
+
+func BenchmarkLongDayShuffled(b *testing.B) {
+	c := layLong(b, 1_000_000, 2, shuffled)
+	bench(b, longFeed(), c, manyNames(1_000_000))
+}
+
+func BenchmarkLongDayNew(b *testing.B) { bench(b, longFeed(), layLong(b, 1_000_000, 1, byDate), nil) }
+
+func BenchmarkWideDay(b *testing.B) {
+	bench(b, wideFeed(), layWide(b, 1_000_000, 1), manyNames(1_000_000))
+}
+
+func BenchmarkWideYears(b *testing.B) { bench(b, wideFeed(), layWide(b, 2000, 1000), nil) }

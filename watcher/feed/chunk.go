@@ -1,6 +1,7 @@
 package feed
 
 import (
+	"bytes"
 	"math"
 
 	"strayd/rules"
@@ -33,7 +34,7 @@ type chunk struct {
 
 	runs    []run
 	vals    []int64
-	fresh   [][]byte // names that were unknown when the chunk was parsed
+	fresh   [][]byte // names that were unknown when the chunk was parsed, in the order of the rows
 	arena   []byte   // reused by the cursor
 	lines   uint32
 	missing int
@@ -71,8 +72,10 @@ func (c *chunk) emit(date rules.Date, id, line uint32, v int64, dec uint8) {
 
 // emitFresh adds a value of a series that has no number yet.
 func (c *chunk) emitFresh(date rules.Date, name []byte, line uint32, v int64, dec uint8) {
-	c.runs = append(c.runs, run{date: date, id: uint32(len(c.fresh)), line: line, n: 1, dec: dec, fresh: true})
-	c.fresh = append(c.fresh, name)
+	if k := len(c.fresh) - 1; k < 0 || !bytes.Equal(c.fresh[k], name) {
+		c.fresh = append(c.fresh, name)
+	}
+	c.runs = append(c.runs, run{date: date, id: uint32(len(c.fresh) - 1), line: line, n: 1, dec: dec, fresh: true})
 	c.vals = append(c.vals, v)
 }
 

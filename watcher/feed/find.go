@@ -18,35 +18,11 @@ import (
 	"strayd/watcher"
 )
 
-// Candidate is a file of a feed that is there.
-type Candidate struct {
-	Feed     string
-	Dir      string
-	Name     string
-	Size     int64
-	ModTime  time.Time
-	Date     rules.Date // in the name, NoDate when there is none
-	Sentinel bool       // its sentinel is there: the sender says that it is whole
-}
-
-// Waiting is a file that is not ready yet.
-type Waiting struct {
-	Candidate
-	Why string
-}
-
-// Found is what lies in a feed's folder. Each list goes by the date in the name, then the name; names without a date come first.
-type Found struct {
-	Ready   []Candidate
-	Waiting []Waiting
-	Refused []*watcher.BadFile // what must not be opened: links out of the folder, pipes, devices, folders
-}
-
 // Find lists the files of a feed. A file is ready when it is older than the feed's settle, when its sentinel is there (the file's
 // name with the sentinel added, or put in place of the extension), or when settled says so. Files whose names begin with a dot
 // or end in a suffix of unfinished transfers are not there at all. A pattern also matches names with .gz added.
-func Find(f rules.Feed, now time.Time, settled bool) (Found, error) {
-	var found Found
+func Find(f rules.Feed, now time.Time, settled bool) (watcher.Found, error) {
+	var found watcher.Found
 	root, err := os.OpenRoot(f.Dir)
 	if err != nil {
 		return found, fmt.Errorf("feed %s: %w", f.Name, err)
@@ -64,12 +40,12 @@ func Find(f rules.Feed, now time.Time, settled bool) (Found, error) {
 		if !ok {
 			continue
 		}
-		c := Candidate{Feed: f.Name, Dir: f.Dir, Name: name, Date: nameDate(name), Sentinel: hasSentinel(names, name, f.Sentinel)}
-		if err := found.sort(root, c, f.Settle, now, settled); err != nil {
+		c := watcher.Candidate{Feed: f.Name, Dir: f.Dir, Name: name, Date: nameDate(name), Sentinel: hasSentinel(names, name, f.Sentinel)}
+		if err := sortInto(&found, root, c, f.Settle, now, settled); err != nil {
 			return found, fmt.Errorf("feed %s: %w", f.Name, err)
 		}
 	}
-	found.order()
+	arrange(&found)
 	return found, nil
 }
 
@@ -82,8 +58,8 @@ func namesIn(root *os.Root) ([]string, error) {
 	return dir.Readdirnames(-1)
 }
 
-// sort puts a candidate where it belongs.
-func (found *Found) sort(root *os.Root, c Candidate, settle time.Duration, now time.Time, settled bool) error {
+// sortInto puts a candidate where it belongs.
+func sortInto(found *watcher.Found, root *os.Root, c watcher.Candidate, settle time.Duration, now time.Time, settled bool) error {
 	info, err := root.Stat(c.Name)
 	if gone(root, c.Name, err) {
 		return nil
@@ -95,9 +71,9 @@ func (found *Found) sort(root *os.Root, c Candidate, settle time.Duration, now t
 	if err != nil {
 		return err
 	}
-	c.Size, c.ModTime = info.Size(), info.ModTime()
+	c.Size, c.ModTime, c.Stamp = info.Size(), info.ModTime(), stamp(info)
 	if why := waits(c, settle, now); why != "" && !settled {
-		found.Waiting = append(found.Waiting, Waiting{c, why})
+		found.Waiting = append(found.Waiting, watcher.Waiting{Candidate: c, Why: why})
 		return nil
 	}
 	found.Ready = append(found.Ready, c)
@@ -136,13 +112,13 @@ func unfit(info fs.FileInfo, err error) string {
 
 // unread is the refusal of a file that was not read. In place of the hash of its bytes it has one of its name, size, time and the reason,
 // so that the same refusal is known again.
-func unread(c Candidate, reason string) *watcher.BadFile {
+func unread(c watcher.Candidate, reason string) *watcher.BadFile {
 	key := fmt.Sprintf("not read\x00%s\x00%d\x00%s\x00%s", c.Name, c.Size, c.ModTime.UTC().Format(time.RFC3339Nano), reason)
 	file := watcher.File{Feed: c.Feed, Name: c.Name, Size: c.Size, SHA256: sha256.Sum256([]byte(key))}
 	return &watcher.BadFile{File: file, Date: c.Date, Reason: reason}
 }
 
-func waits(c Candidate, settle time.Duration, now time.Time) string {
+func waits(c watcher.Candidate, settle time.Duration, now time.Time) string {
 	age := now.Sub(c.ModTime)
 	switch {
 	case c.Sentinel || age >= settle:
@@ -176,10 +152,12 @@ func hasSentinel(names []string, name, sentinel string) bool {
 	return slices.Contains(names, name+sentinel) || slices.Contains(names, stem+sentinel)
 }
 
-func (found *Found) order() {
-	byDate := func(a, b Candidate) int { return cmp.Or(cmp.Compare(a.Date, b.Date), cmp.Compare(a.Name, b.Name)) }
+func arrange(found *watcher.Found) {
+	byDate := func(a, b watcher.Candidate) int {
+		return cmp.Or(cmp.Compare(a.Date, b.Date), cmp.Compare(a.Name, b.Name))
+	}
 	slices.SortFunc(found.Ready, byDate)
-	slices.SortFunc(found.Waiting, func(a, b Waiting) int { return byDate(a.Candidate, b.Candidate) })
+	slices.SortFunc(found.Waiting, func(a, b watcher.Waiting) int { return byDate(a.Candidate, b.Candidate) })
 	slices.SortFunc(found.Refused, func(a, b *watcher.BadFile) int {
 		return cmp.Or(cmp.Compare(a.Date, b.Date), cmp.Compare(a.File.Name, b.File.Name))
 	})

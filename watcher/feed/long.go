@@ -1,9 +1,6 @@
 package feed
 
-import (
-	"bytes"
-	"strconv"
-)
+import "strconv"
 
 // longRow reads one observation.
 func (p *parser) longRow() bool {
@@ -52,37 +49,6 @@ func (p *parser) observe(line uint32) {
 	default:
 		p.out.emit(p.date, p.id, line, p.v, p.dec)
 	}
-}
-
-// takeSeries reads the name of a series. Files list series in the order of their numbers, or one series after another, so that
-// name is compared first.
-func (p *parser) takeSeries() bool {
-	want := p.names.Name(p.next - p.hint)
-	end := p.at + len(want)
-	if len(want) > 0 && end < len(p.text) && p.ends(p.text[end]) && bytes.Equal(p.text[p.at:end], want) {
-		p.at = end
-		p.follow(p.next - p.hint)
-		return true
-	}
-	return p.take((*parser).judgeSeries)
-}
-
-func (p *parser) follow(id uint32) {
-	p.id, p.next, p.name = id, id+1, nil
-}
-
-func (p *parser) judgeSeries(cell []byte) string {
-	if id, ok := p.names.Find(cell); ok {
-		if id+1 == p.next {
-			p.hint = 1
-		} else if id == p.next {
-			p.hint = 0
-		}
-		p.follow(id)
-		return ""
-	}
-	p.name = cell
-	return p.badName(cell)
 }
 
 // takeOther checks a cell that carries no observation.

@@ -12,7 +12,8 @@ type merger struct {
 	*plan
 	*builder
 	names   *watcher.Names
-	line    uint64 // lines of the chunks taken
+	fresh   []uint32 // numbers of the chunk's fresh names
+	line    uint64   // lines of the chunks taken
 	newest  rules.Date
 	missing int
 	cells   int
@@ -26,12 +27,13 @@ func (m *merger) take(c *chunk) {
 	if m.bad != nil {
 		return
 	}
+	m.number(c.fresh)
 	at := 0
 	for _, r := range c.runs {
 		vals := c.vals[at : at+int(r.n)]
 		at += int(r.n)
 		if r.fresh {
-			r.id = m.names.Add(c.fresh[r.id])
+			r.id = m.fresh[r.id]
 		}
 		m.newest = max(m.newest, r.date)
 		if clash := m.add(r, vals, uint32(m.line)+r.line+1, c.stride); clash != nil {
@@ -45,6 +47,14 @@ func (m *merger) take(c *chunk) {
 	m.takeFaults(c)
 	m.line += uint64(c.lines)
 	m.checkBounds()
+}
+
+// number gives the series of a chunk that had no number theirs.
+func (m *merger) number(fresh [][]byte) {
+	m.fresh = m.fresh[:0]
+	for _, name := range fresh {
+		m.fresh = append(m.fresh, m.names.Add(name))
+	}
 }
 
 func (m *merger) takeFaults(c *chunk) {

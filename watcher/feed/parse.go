@@ -1,7 +1,9 @@
 package feed
 
 import (
+	"encoding/binary"
 	"fmt"
+	"hash/maphash"
 	"math"
 
 	"strayd/rules"
@@ -15,21 +17,31 @@ type parser struct {
 	names *watcher.Names
 	out   *chunk
 
-	dateText []byte // the last good date as it was written
-	date     rules.Date
-	next     uint32 // one after the series of the last row
-	hint     uint32 // 1 when rows repeat the series of the row before, else 0
-	name     []byte // the row's series when it has no number yet
-	id       uint32
-	v        int64
-	dec      uint8
-	none     bool // the value is a missing token
-	bad      fault
+	date      rules.Date
+	dates     []knownDate    // in the order of their first appearance
+	dateIndex map[string]int // where each is among them, by its text
+	dateNow   int            // the last row's
+
+	next   uint32 // one after the series of the last row
+	hint   uint32 // 1 when rows repeat the series of the row before, else 0
+	recent *[recentNames]uint32
+	seed   maphash.Seed
+
+	name []byte // the row's series when it has no number yet
+	id   uint32
+	v    int64
+	dec  uint8
+	none bool // the value is a missing token
+	bad  fault
+}
+
+func (p *plan) parser(names *watcher.Names) *parser {
+	return &parser{plan: p, names: names, dateIndex: map[string]int{}, recent: new([recentNames]uint32), seed: maphash.MakeSeed()}
 }
 
 // parse works through a chunk.
 func (p *parser) parse(c *chunk) {
-	p.out = c
+	p.out, p.name = c, nil
 	p.cursor = cursor{text: c.text, sep: p.comma, arena: c.arena}
 	for p.at < len(p.text) {
 		if b := p.text[p.at]; b <= ' ' && p.blank() {
@@ -113,28 +125,6 @@ func (p *parser) take(judge func(*parser, []byte) string) bool {
 	return true
 }
 
-// takeDate reads a date; rows come in runs of one date, so its text is compared with the last one first.
-func (p *parser) takeDate() bool {
-	end := p.at + len(p.dateText)
-	if end < len(p.text) && p.ends(p.text[end]) && string(p.text[p.at:end]) == string(p.dateText) && end > p.at {
-		p.at = end
-		return true
-	}
-	return p.take((*parser).judgeDate)
-}
-
-func (p *parser) judgeDate(cell []byte) string {
-	d, reason := p.style.date(cell)
-	if reason == "" {
-		reason = inBounds(d, p.newest)
-	}
-	if reason != "" {
-		return reason
-	}
-	p.date, p.dateText = d, append(p.dateText[:0], cell...)
-	return ""
-}
-
 // takeValue reads a number of at most 18 digits without an exponent at once, everything else by take.
 func (p *parser) takeValue() bool {
 	text, i := p.text, p.at
@@ -142,26 +132,19 @@ func (p *parser) takeValue() bool {
 	if neg {
 		i++
 	}
-	var m uint64
 	from := i
-	for d := text[i] - '0'; d <= 9; d = text[i] - '0' {
-		m = m*10 + uint64(d)
-		i++
-	}
-	whole, frac := i-from, 0
+	m, i := digitRun(text, i, 0)
+	whole, dec := i-from, p.shift
 	if text[i] == p.mark {
-		i++
-		from = i
-		for d := text[i] - '0'; d <= 9; d = text[i] - '0' {
-			m = m*10 + uint64(d)
-			i++
-		}
-		if frac = i - from; frac == 0 {
+		from = i + 1
+		m, i = digitRun(text, from, m)
+		if i == from {
 			return p.take((*parser).judgeValue)
 		}
+		dec += i - from
+		whole += i - from
 	}
-	dec := frac + p.shift
-	if whole == 0 || whole+frac > 18 || dec > p.places || m > p.most[dec] || !p.ends(text[i]) || p.special(m, neg, text[p.at:i]) {
+	if uint(whole-1) > 17 || dec > p.places || m > p.most[dec] || !p.ends(text[i]) || p.special(m, neg, i) {
 		return p.take((*parser).judgeValue)
 	}
 	p.at, p.none = i, false
@@ -175,9 +158,36 @@ func (p *parser) takeValue() bool {
 	return true
 }
 
+// digitRun reads on from a number through the digits at i and says where they end. Beyond 18 digits the number is nonsense.
+func digitRun(text []byte, i int, m uint64) (uint64, int) {
+	if i+8 <= len(text) {
+		if x := binary.LittleEndian.Uint64(text[i:]); eightDigits(x) {
+			m = m*1e8 + eightValue(x)
+			i += 8
+		}
+	}
+	for d := text[i] - '0'; d <= 9; d = text[i] - '0' {
+		m = m*10 + uint64(d)
+		i++
+	}
+	return m, i
+}
+
+// eightDigits says whether all eight bytes are ASCII digits: the high half of each is 3, also after adding 6.
+func eightDigits(x uint64) bool {
+	return x&0xF0F0F0F0F0F0F0F0|(x+0x0606060606060606)&0xF0F0F0F0F0F0F0F0>>4 == 0x3333333333333333
+}
+
+// eightValue joins neighbours to pairs, pairs to fours, fours to the number; the first digit is the lowest byte.
+func eightValue(x uint64) uint64 {
+	x = x & 0x0F0F0F0F0F0F0F0F * (10<<8 + 1) >> 8
+	x = x & 0x00FF00FF00FF00FF * (100<<16 + 1) >> 16
+	return x & 0x0000FFFF0000FFFF * (10000<<32 + 1) >> 32
+}
+
 // special says whether a well-formed number needs a second look.
-func (p *parser) special(m uint64, neg bool, cell []byte) bool {
-	return p.price && (neg || m == 0) || len(p.digits) > 0 && p.isDigits(cell)
+func (p *parser) special(m uint64, neg bool, end int) bool {
+	return p.price && (neg || m == 0) || len(p.digits) > 0 && p.isDigits(p.text[p.at:end])
 }
 
 // shorten takes trailing zeros off a long mantissa, so that more columns fit 32 bits.

@@ -36,7 +36,7 @@ func (m *merger) pipeline(s *splitter, first *chunk, workers int) error {
 	}()
 	for range workers {
 		go func() {
-			p := &parser{plan: m.plan, names: m.names}
+			p := m.parser(m.names)
 			for c := range work {
 				p.parse(c)
 				c.done <- struct{}{}

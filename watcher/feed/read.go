@@ -13,11 +13,8 @@ import (
 	"strayd/watcher"
 )
 
-// ErrChanged says that a file changed after it was found or while it was read. It waits for the next pass.
-var ErrChanged = errors.New("the file changed while it was read")
-
 // openFile opens a candidate without waiting for anything and checks that it is the file that was found.
-func openFile(c Candidate) (*os.File, error) {
+func openFile(c watcher.Candidate) (*os.File, error) {
 	root, err := os.OpenRoot(c.Dir)
 	if err != nil {
 		return nil, err
@@ -35,7 +32,7 @@ func openFile(c Candidate) (*os.File, error) {
 		if reason := unfit(info, nil); reason != "" {
 			err = unread(c, reason)
 		} else if !same(info, c) {
-			err = ErrChanged
+			err = watcher.ErrChanged
 		}
 	}
 	if err != nil {
@@ -45,24 +42,24 @@ func openFile(c Candidate) (*os.File, error) {
 	return file, nil
 }
 
-func same(info fs.FileInfo, c Candidate) bool {
+func same(info fs.FileInfo, c watcher.Candidate) bool {
 	return info.Size() == c.Size && info.ModTime().Equal(c.ModTime)
 }
 
 // unchanged looks at the open file again.
-func unchanged(file *os.File, c Candidate, read int64) error {
+func unchanged(file *os.File, c watcher.Candidate, read int64) error {
 	info, err := file.Stat()
 	if err != nil {
 		return err
 	}
 	if !same(info, c) || read != c.Size {
-		return ErrChanged
+		return watcher.ErrChanged
 	}
 	return nil
 }
 
-// Hash is the SHA-256 of a file's bytes. Errors: ErrChanged, a *watcher.BadFile when it must not be opened, or what went wrong in reading.
-func Hash(ctx context.Context, c Candidate) (sum [32]byte, err error) {
+// Hash is the SHA-256 of a file's bytes. Errors: watcher.ErrChanged, a *watcher.BadFile when it must not be opened, or what went wrong in reading.
+func Hash(ctx context.Context, c watcher.Candidate) (sum [32]byte, err error) {
 	file, err := openFile(c)
 	if err != nil {
 		return sum, err
@@ -76,9 +73,9 @@ func Hash(ctx context.Context, c Candidate) (sum [32]byte, err error) {
 }
 
 // Read reads a file as its feed declares it. New series are added to names in the order of their first appearance, and
-// forgotten again when there is an error. Errors: a *watcher.BadFile when the file is refused, ErrChanged when it must wait,
+// forgotten again when there is an error. Errors: a *watcher.BadFile when the file is refused, watcher.ErrChanged when it must wait,
 // else what went wrong in reading, or the feed's declaration.
-func Read(ctx context.Context, c Candidate, f rules.Feed, names *watcher.Names, opt Options) (*watcher.Sheet, error) {
+func Read(ctx context.Context, c watcher.Candidate, f rules.Feed, names *watcher.Names, opt Options) (*watcher.Sheet, error) {
 	opt = opt.filled(f.Layout == rules.Wide)
 	p, err := newPlan(f, opt)
 	if err != nil {
@@ -104,7 +101,7 @@ func Read(ctx context.Context, c Candidate, f rules.Feed, names *watcher.Names, 
 }
 
 // sheet reads an open file to its end, whatever it holds: a refusal needs the hash too.
-func (m *merger) sheet(ctx context.Context, file *os.File, c Candidate, opt Options) (*watcher.Sheet, error) {
+func (m *merger) sheet(ctx context.Context, file *os.File, c watcher.Candidate, opt Options) (*watcher.Sheet, error) {
 	d := newDisk(ctx, file, c.Size, opt.Progress)
 	s := &splitter{size: opt.chunk, most: opt.Limits.LineBytes}
 	err := m.read(d, s, c.Name, opt)

@@ -30,7 +30,7 @@ func wideFeed() rules.Feed {
 }
 
 // lay writes a file and gives its candidate.
-func lay(t testing.TB, name string, content []byte) Candidate {
+func lay(t testing.TB, name string, content []byte) watcher.Candidate {
 	t.Helper()
 	dir := t.TempDir()
 	if err := os.WriteFile(filepath.Join(dir, name), content, 0o600); err != nil {
@@ -39,13 +39,13 @@ func lay(t testing.TB, name string, content []byte) Candidate {
 	return candidate(t, dir, name)
 }
 
-func candidate(t testing.TB, dir, name string) Candidate {
+func candidate(t testing.TB, dir, name string) watcher.Candidate {
 	t.Helper()
 	info, err := os.Stat(filepath.Join(dir, name))
 	if err != nil {
 		t.Fatal(err)
 	}
-	return Candidate{Feed: "admin", Dir: dir, Name: name, Size: info.Size(), ModTime: info.ModTime(), Date: nameDate(name)}
+	return watcher.Candidate{Feed: "admin", Dir: dir, Name: name, Size: info.Size(), ModTime: info.ModTime(), Date: nameDate(name)}
 }
 
 func read(t testing.TB, f rules.Feed, name, content string, o Options) (*watcher.Sheet, error) {
