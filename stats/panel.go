@@ -168,8 +168,8 @@ func (p *Panel) Scan(vals []int64, gate Gate, cand []int32) []int32 {
 	return cand
 }
 
-// spread is D rounded down, for windows whose high word of Q is small. Truncation moves it by less than 2^-30 of itself, or to
-// 0 where D is 1.
+// spread is D or one less, rounded, for windows whose high word of Q is small: erring low only asks for a closer look. The halves are
+// converted as signed numbers, which is the faster conversion.
 func (c *cell) spread() float64 {
 	n := uint64(c.n)
 	hi, lo := bits.Mul64(n, c.qLo)

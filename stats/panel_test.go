@@ -3,6 +3,7 @@ package stats_test
 import (
 	"fmt"
 	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"strayd/stats"
@@ -21,7 +22,7 @@ func BenchmarkPanel(b *testing.B) {
 	for _, size := range []struct{ series, window int }{{1000, 60}, {4080, 60}, {4080, 250}} {
 		r := rand.New(rand.NewPCG(1, 2))
 		p := stats.NewPanel(size.series, size.window)
-		var cols [][]int64
+		var cols, gapped [][]int64
 		for range 64 {
 			cols = append(cols, returns(r, size.series))
 		}
@@ -43,6 +44,25 @@ func BenchmarkPanel(b *testing.B) {
 		b.Run("Push/"+name, func(b *testing.B) {
 			for i := 0; b.Loop(); i++ {
 				p.Push(cols[i%len(cols)])
+			}
+			perValue(b)
+		})
+		b.Run("Push with gaps/"+name, func(b *testing.B) { // 1 in 50 is absent, so that the series drift apart
+			gaps := stats.NewPanel(size.series, size.window)
+			for _, col := range cols {
+				col = slices.Clone(col)
+				for j := range col {
+					if r.IntN(50) == 0 {
+						col[j] = stats.Missing
+					}
+				}
+				gapped = append(gapped, col)
+			}
+			for i := range 20 * size.window {
+				gaps.Push(gapped[i%len(gapped)])
+			}
+			for i := 0; b.Loop(); i++ {
+				gaps.Push(gapped[i%len(gapped)])
 			}
 			perValue(b)
 		})

@@ -43,7 +43,7 @@ func (s Sums) spread() uint192 {
 // offset is n k - sum(k), exactly: n times the distance of k from the mean.
 func (s Sums) offset(k int64) Int128 { return product(int64(s.N), k).sub(s.S) }
 
-// Mean is the mean of the values where one units make 1, within 1 ulp; 0 for the empty window.
+// Mean is the mean of the values where one units make 1, nearest float (0.501 ulp); 0 for the empty window.
 //
 //	mean = sum(k) / (n one)
 func (s Sums) Mean(one float64) float64 {
@@ -53,8 +53,8 @@ func (s Sums) Mean(one float64) float64 {
 	return s.S.pair().over(float64(s.N)).over(one).float()
 }
 
-// Deviation is the sample deviation (divisor n-1) where one units make 1, within 1 ulp, and exactly 0 when all values are
-// equal. ok is false below two values.
+// Deviation is the sample deviation (divisor n-1) where one units make 1, nearest float (0.501 ulp), and exactly 0 when all
+// values are equal. ok is false below two values.
 //
 //	deviation = sqrt(D / (n (n-1))) / one,  D = n sum(k^2) - (sum k)^2
 func (s Sums) Deviation(one float64) (deviation float64, ok bool) {
@@ -65,8 +65,8 @@ func (s Sums) Deviation(one float64) (deviation float64, ok bool) {
 	return s.spread().pair().over(n * (n - 1)).root().over(one).float(), true
 }
 
-// Distance is how far k lies from the mean, where one units make 1, within 1 ulp: the difference is taken in integers, so
-// nothing cancels. For the empty window it is the value itself.
+// Distance is how far k lies from the mean, where one units make 1, nearest float (0.501 ulp): the difference is taken in
+// integers, so nothing cancels. For the empty window it is the value itself.
 //
 //	x - mean = (n k - sum(k)) / (n one)
 func (s Sums) Distance(k int64, one float64) float64 {

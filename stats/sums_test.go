@@ -41,6 +41,9 @@ func quotient(a, b *big.Int) *big.Float {
 	return x.Quo(x, new(big.Float).SetPrec(300).SetInt(b))
 }
 
+// The figures come out nearest to the exact value, or as near as 100 bits can tell: within 0.501 ulp. So they are the same on
+// every machine.
+
 // ulps is how many ulp got lies from the exact value/one.
 func ulps(t testing.TB, got float64, value *big.Float, one float64) float64 {
 	t.Helper()
@@ -63,7 +66,7 @@ func checkSums(t *testing.T, what string, s stats.Sums, values []int64) {
 	e := exactly(values)
 	for _, scale := range []float64{one, 1, 10} {
 		if e.n > 0 {
-			if off := ulps(t, s.Mean(scale), e.mean, scale); !(off <= 1) {
+			if off := ulps(t, s.Mean(scale), e.mean, scale); !(off <= 0.501) {
 				t.Errorf("%s: mean %v at scale %v is %.2f ulp off", what, s.Mean(scale), scale, off)
 			}
 		}
@@ -74,7 +77,7 @@ func checkSums(t *testing.T, what string, s stats.Sums, values []int64) {
 		if e.n < 2 {
 			continue
 		}
-		if off := ulps(t, got, e.spread, scale); !(off <= 1) {
+		if off := ulps(t, got, e.spread, scale); !(off <= 0.501) {
 			t.Errorf("%s: deviation %v at scale %v is %.2f ulp off", what, got, scale, off)
 		}
 		if (got == 0) != (e.spreadInteger.Sign() == 0) {
@@ -126,7 +129,7 @@ func TestMaxWindow(t *testing.T) {
 	square := new(big.Int).Exp(big.NewInt(stats.MaxValue), big.NewInt(2), nil)
 	for n, want := range map[int64]bool{stats.MaxWindow: true, 34_028: true, 34_029: false} {
 		if fits := new(big.Int).Mul(square, big.NewInt(n)).BitLen() <= 128; fits != want {
-			t.Errorf("%d squares of %d fit 128 bits: %v, want %v", n, stats.MaxValue, fits, want)
+			t.Errorf("%d squares of %d fit 128 bits: %v, want %v", n, int64(stats.MaxValue), fits, want)
 		}
 	}
 }

@@ -62,6 +62,7 @@ func TestWeightedSeed(t *testing.T) {
 	r := rand.New(rand.NewPCG(23, 29))
 	p := stats.NewWeightedPanel(len(regimes), 60, 0.94, one)
 	squares := make([]big.Int, len(regimes))
+	unitsSquared := new(big.Int).Exp(big.NewInt(10), big.NewInt(30), nil) // one^2, which no float is
 	n := make([]int64, len(regimes))
 	for range 60 {
 		vals := column(r, len(regimes))
@@ -73,7 +74,7 @@ func TestWeightedSeed(t *testing.T) {
 			n[i]++
 			b := big.NewInt(k)
 			squares[i].Add(&squares[i], b.Mul(b, b))
-			if off := ulps(t, p.State(i).V, quotient(&squares[i], big.NewInt(n[i])), one*one); !(off <= 1) {
+			if off := ulps(t, p.State(i).V, quotient(&squares[i], new(big.Int).Mul(big.NewInt(n[i]), unitsSquared)), 1); !(off <= 0.501) {
 				t.Errorf("series %d after %d: variance %v is %.2f ulp off", i, n[i], p.State(i).V, off)
 			}
 		}
@@ -91,6 +92,9 @@ func TestWeightedScan(t *testing.T) {
 		for i := range vals {
 			if deviation, _ := p.Deviation(i); r.IntN(2) == 0 {
 				vals[i] = int64(z*deviation*one) + r.Int64N(3) - 1
+			}
+			if r.IntN(10) == 0 {
+				vals[i] = (stats.MaxValue + 1) * (r.Int64N(2)*2 - 1)
 			}
 		}
 		cand := p.Scan(vals, stats.WeightedGate(window, least, stats.Fixed(z)), nil)
