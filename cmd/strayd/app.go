@@ -47,7 +47,7 @@ func (a *app) now() (time.Time, error) {
 
 // load reads the configuration and says on stderr what is set for a later version.
 func (a *app) load() (*config.Config, error) {
-	c, err := config.Load(a.configPath, config.Options{Cron: schedule.Check, LineTail: rules.LineTail})
+	c, err := config.Load(a.configPath, config.Options{Cron: schedule.Check})
 	if errors.Is(err, os.ErrNotExist) {
 		fmt.Fprintf(a.err, "strayd: no configuration %s here; `strayd demo` writes one to begin with, or name yours with --config\n", a.configPath)
 		return nil, quiet{exitConfig}
