@@ -18,13 +18,16 @@ type open struct {
 // builder gathers the values of one file in columns, whatever the order in which they come.
 type builder struct {
 	places   int
-	first    rules.Date // the date of days[0]
-	days     [][]*open  // by date, then block
+	first    rules.Date       // of spans[0]
+	spans    []*[span][]*open // by date, then block
 	room     []int      // by block: the length of its longest column
 	bytes    int64
 	rows     int
 	repeated int
 }
+
+// span is how many dates lie together.
+const span = 512
 
 // clash is a second, different value of a series and date.
 type clash struct {
@@ -36,7 +39,7 @@ type clash struct {
 
 func newBuilder(places int, newest rules.Date) *builder {
 	first, _ := rules.DateOf(firstYear, 1, 1)
-	return &builder{places: places, first: first, days: make([][]*open, max(0, int(newest-first)+1))}
+	return &builder{places: places, first: first, spans: make([]*[span][]*open, max(0, int(newest-first)/span+1))}
 }
 
 // add takes the values of a run, of which the first stands on a line of the file.
@@ -55,7 +58,13 @@ func (b *builder) add(r run, vals []int64, line, stride uint32) *clash {
 
 // column finds or makes the column of a date and block.
 func (b *builder) column(d rules.Date, block uint32) *open {
-	day := &b.days[d-b.first]
+	i := int(d - b.first)
+	dates := b.spans[i/span]
+	if dates == nil {
+		dates = new([span][]*open)
+		b.spans[i/span] = dates
+	}
+	day := &dates[i%span]
 	if int(block) >= len(*day) {
 		grown := make([]*open, max(int(block)+1, len(b.room)))
 		copy(grown, *day)

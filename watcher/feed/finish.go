@@ -10,11 +10,16 @@ import (
 // all its values exactly, in 32 bits if they then fit.
 func (b *builder) columns() []*watcher.Column {
 	var all []*watcher.Column
-	for _, day := range b.days {
-		for _, o := range day {
-			if o != nil {
-				o.settle()
-				all = append(all, &o.Column)
+	for _, dates := range b.spans {
+		if dates == nil {
+			continue
+		}
+		for _, day := range dates {
+			for _, o := range day {
+				if o != nil {
+					o.settle()
+					all = append(all, &o.Column)
+				}
 			}
 		}
 	}

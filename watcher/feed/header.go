@@ -9,6 +9,8 @@ import (
 	"strayd/watcher"
 )
 
+const columnTwice = "the header has this column twice"
+
 // headerCell is one name of the header with its place.
 type headerCell struct {
 	name   string
@@ -132,7 +134,7 @@ func repeated(cells []headerCell, blankOK bool) *fault {
 		case c.name == "":
 			return &fault{column: c.column, reason: "a column of the header has no name"}
 		case seen[c.name]:
-			return &fault{column: c.column, cell: c.name, reason: "the header has this column twice"}
+			return &fault{column: c.column, cell: c.name, reason: columnTwice}
 		}
 		seen[c.name] = true
 	}
@@ -145,25 +147,39 @@ func (p *plan) wideHeader(cells []headerCell, names *watcher.Names) *fault {
 	if bad != nil {
 		return bad
 	}
-	if bad := repeated(cells, false); bad != nil {
-		return bad
-	}
 	p.dateAt, p.ids = at, make([]uint32, len(cells))
-	last := uint32(0)
+	var taken []bool // by number of the series
+	next := uint32(0)
 	for i, c := range cells {
 		if i == at {
 			p.ids[i] = watcher.NoSeries
 			continue
 		}
-		name := []byte(c.name)
-		if problem := p.badName(name); problem != "" {
-			return &fault{column: c.column, cell: c.name, reason: problem}
+		id, reason := p.wideName(c.name, names, next)
+		if reason != "" {
+			return &fault{column: c.column, cell: c.name, reason: reason}
 		}
-		if !names.Is(last, name) {
-			last = names.Add(name)
+		if int(id) >= len(taken) {
+			taken = append(taken, make([]bool, int(id)+len(cells)-len(taken))...)
 		}
-		p.ids[i] = last
-		last++
+		if taken[id] || c.name == p.feed.Columns.Date {
+			return &fault{column: c.column, cell: c.name, reason: columnTwice}
+		}
+		p.ids[i], taken[id], next = id, true, id+1
 	}
 	return nil
+}
+
+// wideName is the number of a series of the header, which is most often the next one.
+func (p *plan) wideName(name string, names *watcher.Names, next uint32) (id uint32, reason string) {
+	if names.Is(next, []byte(name)) {
+		return next, ""
+	}
+	if name == "" {
+		return 0, "a column of the header has no name"
+	}
+	if reason := p.badName([]byte(name)); reason != "" {
+		return 0, reason
+	}
+	return names.Add([]byte(name)), ""
 }

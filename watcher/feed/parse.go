@@ -134,17 +134,16 @@ func (p *parser) takeValue() bool {
 	}
 	from := i
 	m, i := digitRun(text, i, 0)
-	whole, dec := i-from, p.shift
+	whole, frac := i-from, 0
 	if text[i] == p.mark {
 		from = i + 1
-		m, i = digitRun(text, from, m)
-		if i == from {
+		if m, i = digitRun(text, from, m); i == from {
 			return p.take((*parser).judgeValue)
 		}
-		dec += i - from
-		whole += i - from
+		frac = i - from
 	}
-	if uint(whole-1) > 17 || dec > p.places || m > p.most[dec] || !p.ends(text[i]) || p.special(m, neg, i) {
+	dec := frac + p.shift
+	if whole == 0 || whole+frac > 18 || dec > p.places || m > p.most[dec] || !p.ends(text[i]) || p.special(m, neg, i) {
 		return p.take((*parser).judgeValue)
 	}
 	p.at, p.none = i, false

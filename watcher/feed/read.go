@@ -7,6 +7,7 @@ import (
 	"io"
 	"io/fs"
 	"os"
+	"strings"
 	"syscall"
 
 	"strayd/rules"
@@ -104,6 +105,9 @@ func Read(ctx context.Context, c watcher.Candidate, f rules.Feed, names *watcher
 func (m *merger) sheet(ctx context.Context, file *os.File, c watcher.Candidate, opt Options) (*watcher.Sheet, error) {
 	d := newDisk(ctx, file, c.Size, opt.Progress)
 	s := &splitter{size: opt.chunk, most: opt.Limits.LineBytes}
+	if !strings.HasSuffix(c.Name, gzipSuffix) {
+		s.size = int(min(int64(s.size), c.Size+1)) // fresh memory is slow: a small file gets a small buffer
+	}
 	err := m.read(d, s, c.Name, opt)
 	if r, ok := err.(refusal); ok && m.bad == nil {
 		m.bad = &fault{reason: string(r)}

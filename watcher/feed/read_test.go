@@ -2,6 +2,7 @@ package feed
 
 import (
 	"context"
+	"crypto/sha256"
 	"errors"
 	"os"
 	"path/filepath"
@@ -97,3 +98,5 @@ func TestReadBad(t *testing.T) {
 		t.Error(err)
 	}
 }
+
+func sum(text []byte) [32]byte { return sha256.Sum256(text) }

@@ -19,6 +19,9 @@ type splitter struct {
 // last.
 func (s *splitter) next(c *chunk) error {
 	c.reset()
+	if s.ended && len(s.rest) == 0 {
+		return io.EOF
+	}
 	buf := append(c.buf[:0], s.rest...)
 	s.rest = s.rest[:0]
 	want := s.size
