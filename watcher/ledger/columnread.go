@@ -37,21 +37,23 @@ func (l *layer) writeDense(dst []int64, from int, mul int64) {
 	}
 }
 
-// full decodes int32 cells none of which is missing, two at a time.
+// full decodes int32 cells none of which is missing, eight at a time (fixed arrays spare the checks of each index).
 func full(dst []int64, src []byte, mul int64) {
-	for len(dst) >= 2 && len(src) >= 8 {
-		v := binary.LittleEndian.Uint64(src)
-		dst[0] = int64(int32(v)) * mul
-		dst[1] = int64(int32(v>>32)) * mul
-		dst, src = dst[2:], src[8:]
+	at := 0
+	for ; at+8 <= len(dst); at += 8 {
+		d, s := (*[8]int64)(dst[at:]), (*[32]byte)(src[4*at:])
+		a, b := binary.LittleEndian.Uint64(s[0:8]), binary.LittleEndian.Uint64(s[8:16])
+		d[0], d[1], d[2], d[3] = int64(int32(a))*mul, int64(int32(a>>32))*mul, int64(int32(b))*mul, int64(int32(b>>32))*mul
+		a, b = binary.LittleEndian.Uint64(s[16:24]), binary.LittleEndian.Uint64(s[24:32])
+		d[4], d[5], d[6], d[7] = int64(int32(a))*mul, int64(int32(a>>32))*mul, int64(int32(b))*mul, int64(int32(b>>32))*mul
 	}
-	narrow(dst, src, mul)
+	narrow(dst[at:], src[4*at:], mul)
 }
 
+// narrow decodes int32 cells some of which are missing.
 func narrow(dst []int64, src []byte, mul int64) {
 	for i := range dst {
-		v := int32(binary.LittleEndian.Uint32(src))
-		src = src[4:]
+		v := int32(binary.LittleEndian.Uint32(src[4*i : 4*i+4]))
 		if v == watcher.Missing32 {
 			dst[i] = watcher.Missing64
 		} else {

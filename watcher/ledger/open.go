@@ -8,6 +8,7 @@ import (
 	"runtime/debug"
 	"strconv"
 	"sync"
+	"sync/atomic"
 	"time"
 
 	bolt "go.etcd.io/bbolt"
@@ -36,10 +37,12 @@ type Ledger struct {
 	db   *bolt.DB
 	file *os.File // bbolt's own, to let go of the lock when bbolt panics on opening
 
-	mu     sync.Mutex // held by whoever writes
-	arena  []byte     // of encoded values, reused between commits
-	broken error      // why writing is off: a panic left a transaction half done
-	left   bool       // staged values of a failed batch are still there
+	mu       sync.Mutex   // held by whoever writes
+	arena    []byte       // of encoded values, reused between commits
+	broken   error        // why writing is off: a panic left a transaction half done
+	readings atomic.Int64 // open ones
+
+	left bool // staged values of a failed batch are still there
 }
 
 // reserve is how much address space is set aside, so that a growing file is not mapped anew: a writer would have to wait for
@@ -78,6 +81,9 @@ func Open(path string, o Options) (*Ledger, error) {
 // begin checks what was opened and, for writing, sweeps what was staged and never published.
 func (l *Ledger) begin(o Options) error {
 	if err := l.sameFile(); err != nil {
+		return err
+	}
+	if err := l.checkOpened(); err != nil {
 		return err
 	}
 	if err := l.identify(); err != nil {
@@ -229,10 +235,13 @@ func metaRow(meta *bolt.Bucket, key string) ([]byte, error) {
 // Path is the name under which the ledger was opened.
 func (l *Ledger) Path() string { return l.path }
 
-// Close closes the file and lets go of the lock. Close every reading before.
+// Close closes the file and lets go of the lock. It refuses while a reading is open: bbolt would wait for it for ever.
 func (l *Ledger) Close() (err error) {
 	l.mu.Lock()
 	defer l.mu.Unlock()
+	if n := l.readings.Load(); n > 0 {
+		return fmt.Errorf("ledger %s cannot be closed: %d readings are open", l.path, n)
+	}
 	if l.broken != nil {
 		return l.file.Close() // bbolt's own locks may still be held
 	}

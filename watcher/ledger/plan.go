@@ -139,6 +139,28 @@ func (p *plan) planFlags() error {
 	return twice(p.flags, order, func(f *watcher.FlagRow) string { return fmt.Sprintf("flag %d", f.Ref) })
 }
 
+// end is the highest series that has a value in the batch, plus one.
+func (p *plan) end() (end uint64) {
+	until := func(block uint32, n int) { end = max(end, uint64(block)*watcher.BlockSize+uint64(n)) }
+	for _, columns := range p.columns {
+		for _, c := range columns {
+			until(c.Block, c.Len())
+		}
+	}
+	for _, u := range p.used {
+		until(u.Block, int(u.Offsets[len(u.Offsets)-1])+1)
+	}
+	for _, s := range p.states {
+		until(s.Block, len(s.N))
+	}
+	for _, f := range p.flags {
+		if f.New && f.SeriesID != watcher.NoSeries {
+			end = max(end, uint64(f.SeriesID)+1)
+		}
+	}
+	return end
+}
+
 // staging lists the spans of keys that the batch writes before it is published.
 func (p *plan) staging() staging {
 	step := p.batch.Step

@@ -41,19 +41,10 @@ func precheck(path string) error {
 }
 
 func checkHead(path string, f *os.File) error {
-	var best boltMeta
-	known := false
-	for _, at := range []int64{0, 4096, 8192, 16384, 65536} {
-		m, err := readMeta(f, at)
-		if err != nil {
-			return err
-		}
-		known = known || m.magic
-		if m.valid && m.tx >= best.tx {
-			best = m
-		}
-	}
+	best, known, err := newestMeta(f)
 	switch {
+	case err != nil:
+		return err
 	case !known:
 		return &Foreign{path, "it does not begin like one"}
 	case !best.valid:
@@ -69,10 +60,40 @@ func checkHead(path string, f *os.File) error {
 	return nil
 }
 
+// checkOpened checks, with the lock held, what bbolt would take on trust.
+func (l *Ledger) checkOpened() error {
+	meta, _, err := newestMeta(l.file)
+	if err == nil {
+		_, err = freePages(l.file, meta)
+	}
+	name(l.path, err)
+	return err
+}
+
+// newestMeta finds the head page that counts; known says that a head page of bbolt was met, damaged or not.
+func newestMeta(f io.ReaderAt) (best boltMeta, known bool, err error) {
+	for _, at := range []int64{0, 4096, 8192, 16384, 65536} { // the second lies one page in, whatever the size of a page
+		m, err := readMeta(f, at)
+		if err != nil {
+			return best, known, err
+		}
+		known = known || m.magic
+		if m.valid && (at == 0 || at == m.pageSize) {
+			m.both = best.valid
+			if m.tx < best.tx {
+				best.both, m = true, best
+			}
+			best = m
+		}
+	}
+	return best, known, nil
+}
+
 // boltMeta is what is needed of a head page.
 type boltMeta struct {
 	magic, valid    bool
-	tx              uint64
+	both            bool // the other head page is valid too
+	tx, root, free  uint64
 	pageSize, pages int64
 }
 
@@ -90,6 +111,8 @@ func readMeta(f io.ReaderAt, at int64) (m boltMeta, err error) {
 	sum.Write(v[:metaBytes-8])
 	m.valid = m.magic && binary.NativeEndian.Uint64(v[metaBytes-8:]) == sum.Sum64()
 	m.pageSize = int64(binary.NativeEndian.Uint32(v[8:]))
+	m.root = binary.NativeEndian.Uint64(v[16:])
+	m.free = binary.NativeEndian.Uint64(v[32:])
 	m.pages = int64(binary.NativeEndian.Uint64(v[40:]))
 	m.tx = binary.NativeEndian.Uint64(v[48:])
 	m.valid = m.valid && m.pageSize > 0

@@ -43,6 +43,9 @@ func (w *writer) accepts(p *plan) error {
 		}
 	}
 	p.held = w.head.names
+	if end, held := p.end(), uint64(w.head.names)+uint64(len(b.NewNames)); end > held {
+		return fmt.Errorf("it has values up to series %d, and %d have a name", end-1, held)
+	}
 	ref := w.head.nextRef
 	for _, f := range p.flags {
 		switch {
@@ -56,7 +59,7 @@ func (w *writer) accepts(p *plan) error {
 	}
 	w.head.step, w.head.nextRef = b.Step, ref
 	w.head.names += uint32(len(b.NewNames))
-	w.grow(p)
+	w.grow(p.size())
 	return nil
 }
 

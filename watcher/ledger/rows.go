@@ -96,26 +96,3 @@ func (l *Ledger) EndPass(r watcher.PassRow) error {
 		return w.put(inPasses, put32(nil, w.head.passes), func(dst []byte) []byte { return packPass(dst, &r) })
 	})
 }
-
-const (
-	leastGrowth = 256 << 10
-	mostGrowth  = 64 << 20
-)
-
-// grow sets by how much more than needed the file grows next: for a large batch by about all that it brings, so that it grows
-// once; else by a thirty-second of its size, so that a day seldom pays for growing and little lies idle.
-func (w *writer) grow(p *plan) {
-	room := w.tx.Size() / 32
-	room = max(room, p.size()-2*commitSize)
-	w.l.db.AllocSize = int(min(max(room, leastGrowth), max(mostGrowth, p.size())))
-}
-
-// size is about how many bytes the columns of a batch take.
-func (p *plan) size() (n int64) {
-	for _, columns := range p.columns {
-		for _, c := range columns {
-			n += int64(4*len(c.V32) + 8*len(c.V64) + 48)
-		}
-	}
-	return n
-}

@@ -43,7 +43,9 @@ func (l *Ledger) Read() (v *View, err error) {
 		return nil, err
 	}
 	v = &View{l: l, tx: tx, chunks: map[uint32]namePart{}}
+	l.readings.Add(1)
 	if err := v.begin(); err != nil {
+		l.readings.Add(-1)
 		_ = tx.Rollback() // the error to tell is the first
 		return nil, err
 	}
@@ -69,6 +71,7 @@ func (v *View) Close() error {
 	}
 	tx := v.tx
 	v.tx = nil
+	v.l.readings.Add(-1)
 	return tx.Rollback()
 }
 

@@ -160,7 +160,11 @@ func (w *writer) spill() error {
 	// The pages just written are garbage now; collected, they serve the next commit. Otherwise every commit touches fresh
 	// memory, which costs more than the collection.
 	runtime.GC()
-	return w.open()
+	if err := w.open(); err != nil {
+		return err
+	}
+	w.grow(0)
+	return nil
 }
 
 // replace stores a value under a key that may be taken.

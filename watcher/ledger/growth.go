@@ -1,0 +1,28 @@
+package ledger
+
+const (
+	leastGrowth = 256 << 10
+	mostGrowth  = 64 << 20
+)
+
+// grow sets by how much more than needed the file grows when it next must, each time a truncate and a sync: by what is still
+// to come of a large batch, so that a first load grows it once; else by a share of its size, so that a day seldom pays for
+// growing and little lies idle.
+func (w *writer) grow(coming int64) {
+	share := min(max(w.tx.Size()/64, leastGrowth), mostGrowth)
+	w.l.db.AllocSize = int(max(share, coming-commitSize))
+	if coming > commitSize && cap(w.l.arena) < commitSize {
+		w.l.arena = make([]byte, 0, commitSize+commitSize/8)
+	}
+}
+
+// size is about how many bytes the columns and flags of a batch take.
+func (p *plan) size() (n int64) {
+	n = 150 * int64(len(p.flags))
+	for _, columns := range p.columns {
+		for _, c := range columns {
+			n += int64(4*len(c.V32) + 8*len(c.V64) + 48)
+		}
+	}
+	return n
+}

@@ -1,0 +1,31 @@
+//go:build unix
+
+package ledger
+
+import (
+	"errors"
+	"io/fs"
+	"os"
+
+	"golang.org/x/sys/unix"
+)
+
+// hold takes the lock of a ledger that may be damaged, so that nobody uses it: the lock that bbolt takes. nil when there is no
+// file.
+func hold(path string) (*os.File, error) {
+	f, err := os.Open(path)
+	if errors.Is(err, fs.ErrNotExist) {
+		return nil, nil
+	}
+	if err != nil {
+		return nil, err
+	}
+	if err := unix.Flock(int(f.Fd()), unix.LOCK_EX|unix.LOCK_NB); err != nil {
+		f.Close()
+		if errors.Is(err, unix.EWOULDBLOCK) {
+			return nil, refuse(path, ErrHeld)
+		}
+		return nil, err
+	}
+	return f, nil
+}
