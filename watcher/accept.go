@@ -31,7 +31,7 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	}
 	b.File = FileRow{Step: b.Step, File: sheet.File, Stamp: c.Stamp, FeedKey: p.FeedKey(f), Settings: j.settings, Outcome: Accepted,
 		Received: p.Now, First: sheet.First(), Last: sheet.Last()}
-	p.assemble(b, j, sheet, out)
+	p.assemble(b, j, out)
 	b.File.Counts.Rows = sheet.Rows
 	b.File.Counts.Same = sheet.Rows - b.File.Counts.New - b.File.Counts.Late - b.File.Counts.Restated
 	if err := p.Store.Publish(b); err != nil {
@@ -180,7 +180,7 @@ func (p *Pass) work(j *judging, todo []task, outs []outcome, next, done *atomic.
 }
 
 // assemble puts the workers' outcomes into the batch, in an order that does not depend on who did what when.
-func (p *Pass) assemble(b *Batch, j *judging, sheet *Sheet, outs []outcome) {
+func (p *Pass) assemble(b *Batch, j *judging, outs []outcome) {
 	var states []partState
 	for _, o := range outs {
 		b.File.Counts.Add(o.counts)
@@ -193,8 +193,8 @@ func (p *Pass) assemble(b *Batch, j *judging, sheet *Sheet, outs []outcome) {
 	for n := range b.States {
 		b.States[n].Step = b.Step
 	}
-	for id := j.heldNames; id < sheet.Names.Len(); id++ {
-		b.NewNames = append(b.NewNames, sheet.Names.Name(uint32(id)))
+	for id := j.heldNames; id < j.names.Len(); id++ {
+		b.NewNames = append(b.NewNames, j.names.Name(uint32(id)))
 	}
 	p.numberFlags(b, j)
 }
@@ -225,7 +225,10 @@ func (p *Pass) numberFlags(b *Batch, j *judging) {
 	ref := j.nextRef
 	for n := range b.Flags {
 		f := &b.Flags[n]
-		if f.Step = b.Step; f.New {
+		if f.Step == 0 {
+			f.Step = b.Step
+		}
+		if f.New {
 			f.Ref = ref
 			ref++
 			b.File.Counts.Flags++

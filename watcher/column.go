@@ -103,13 +103,25 @@ func (c *Column) Line(offset int) uint32 {
 	if c.Lines.At != nil {
 		return c.Lines.At[offset]
 	}
-	line := c.Lines.First
-	for i := range offset {
-		if c.has(i) {
-			line += c.Lines.Stride
+	return c.Lines.First + uint32(c.rank(offset))*c.Lines.Stride
+}
+
+// rank counts the present cells before an offset.
+func (c *Column) rank(offset int) (n int) {
+	if c.V32 != nil {
+		for _, v := range c.V32[:offset] {
+			if v != Missing32 {
+				n++
+			}
+		}
+		return n
+	}
+	for _, v := range c.V64[:offset] {
+		if v != Missing64 {
+			n++
 		}
 	}
-	return line
+	return n
 }
 
 // AllLines is the source line of each offset, 0 where a cell is absent. It must not be changed.

@@ -20,16 +20,8 @@ func (p *Pass) Expect(only string, on rules.Date, each func(Expected) error) err
 		return err
 	}
 	defer v.Close()
-	last, err := v.LastSettings()
+	last, recorded, err := lastSettings(v)
 	if err != nil || last == 0 {
-		return err
-	}
-	text, err := v.Settings(last)
-	if err != nil {
-		return err
-	}
-	recorded, err := ParseSettings(text)
-	if err != nil {
 		return err
 	}
 	recorded.Register = p.Settings.Register

@@ -19,11 +19,48 @@ func (w *worker) raise(t task, d *day, fresh []int64, out *outcome) {
 		}
 		f := w.blank(t, d, int(h.at))
 		if k := worst(h.verdicts); k >= 0 {
-			out.flags = append(out.flags, w.breachFlag(f, w.lanes[k].gauge.Range.Name, &h.verdicts[k]))
+			w.keep(w.breachFlag(f, w.lanes[k].gauge.Range.Name, &h.verdicts[k]), d.restated(t, h), out)
+		} else if d.restated(t, h) {
+			w.amend(f, rules.KindBreach, out)
 		}
 		if len(h.broken) > 0 || h.outsize {
-			out.flags = append(out.flags, w.limitFlag(f, h))
+			w.keep(w.limitFlag(f, h), d.restated(t, h), out)
+		} else if d.restated(t, h) {
+			w.amend(f, rules.KindLimit, out)
 		}
+	}
+}
+
+func (d *day) restated(t task, h *hit) bool {
+	return d.old != nil && d.old[t.from+int(h.at)] != Missing64
+}
+
+// keep notes a flag. One that a restated value had before is replaced under its ref, and reopened where it had been settled.
+func (w *worker) keep(f FlagRow, restated bool, out *outcome) {
+	if restated {
+		old, ok, err := w.view.FlagAt(f.SeriesID, f.Date, f.Kind)
+		if err != nil {
+			w.failed = err
+		}
+		if ok {
+			f.Ref, f.RaisedAt, f.New, f.Standing = old.Ref, old.RaisedAt, false, old.Standing
+			if !f.Standing.Asks() {
+				f.Standing = rules.Reopened
+			}
+		}
+	}
+	out.flags = append(out.flags, f)
+}
+
+// amend notes on the flag of a value that was restated that it would not be raised now. What it was raised for stands.
+func (w *worker) amend(f FlagRow, kind rules.Kind, out *outcome) {
+	old, ok, err := w.view.FlagAt(f.SeriesID, f.Date, kind)
+	if err != nil {
+		w.failed = err
+	}
+	if ok {
+		old.Note = "restated to " + f.Return.String() + ", for which it would not be raised"
+		out.flags = append(out.flags, FlagRow{Flag: old, SeriesID: f.SeriesID})
 	}
 }
 
@@ -36,7 +73,7 @@ func (w *worker) countArrivals(t task, d *day, fresh []int64, out *outcome) {
 		switch {
 		case d.old != nil && d.old[t.from+i] != Missing64:
 			out.counts.Restated++
-			out.flags = append(out.flags, w.restatedFlag(w.blank(t, d, i), rules.Units(d.old[t.from+i])))
+			w.keep(w.restatedFlag(w.blank(t, d, i), rules.Units(d.old[t.from+i])), true, out)
 		case w.late[i] > d.date:
 			out.counts.Late++
 		default:

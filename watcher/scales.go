@@ -15,7 +15,7 @@ const leastLenders = 3
 // groupScales are the deviations that groups lend to their provisional series in one step: on each date, the median over the
 // group's series of the plain deviation of their returns as received, over the range's window before the date. Returns as
 // received, not as used: so the figure does not wait for the verdicts of the same date, and a median bears the odd bad value.
-// It is computed when first asked for. Safe for concurrent use.
+// It is computed when first asked for, and stands from then on. Safe for concurrent use.
 type groupScales struct {
 	j      *judging
 	view   View
@@ -24,6 +24,7 @@ type groupScales struct {
 	mu      sync.Mutex
 	members map[string][]uint32 // series numbers by group
 	known   map[scaleKey]GroupScale
+	loaded  map[scaleKey]bool    // by range and group, without a date: what the ledger has of them is in known
 	panels  map[int]*stats.Panel // by window
 	sums    map[blockKey][]stats.Sums
 	at      rules.Date // the date that sums belong to
@@ -46,7 +47,7 @@ func newGroupScales(j *judging, v View, blocks []block) *groupScales {
 	if j.members.Groupless() {
 		return nil
 	}
-	g := &groupScales{j: j, view: v, blocks: map[uint32][]*day{}, known: map[scaleKey]GroupScale{}, panels: map[int]*stats.Panel{}}
+	g := &groupScales{j: j, view: v, blocks: map[uint32][]*day{}, known: map[scaleKey]GroupScale{}, loaded: map[scaleKey]bool{}, panels: map[int]*stats.Panel{}}
 	for _, b := range blocks {
 		g.blocks[b.number] = b.days
 	}
@@ -61,6 +62,7 @@ func (g *groupScales) lent(l *lane, group string, date rules.Date) rules.Num {
 	g.mu.Lock()
 	defer g.mu.Unlock()
 	key := scaleKey{l.id, group, date}
+	g.recall(scaleKey{l.id, group, rules.NoDate})
 	s, ok := g.known[key]
 	if !ok {
 		s = g.compute(key, l.gauge.Range.Window)
@@ -70,6 +72,21 @@ func (g *groupScales) lent(l *lane, group string, date rules.Date) rules.Num {
 		return rules.Num{}
 	}
 	return rules.Some(s.Deviation)
+}
+
+// recall reads what was lent before: what a date's first verdict was given stands.
+func (g *groupScales) recall(all scaleKey) {
+	if g.loaded[all] {
+		return
+	}
+	g.loaded[all] = true
+	scales, err := g.view.GroupScales(all.id, all.group)
+	if err != nil {
+		g.err = err
+	}
+	for _, s := range scales {
+		g.known[scaleKey{s.Range, s.Group, s.Date}] = s
+	}
 }
 
 func (g *groupScales) compute(key scaleKey, window int) GroupScale {
@@ -162,7 +179,7 @@ func (g *groupScales) stored() (out []GroupScale, err error) {
 		return nil, nil
 	}
 	for _, s := range g.known {
-		if s.Series >= leastLenders {
+		if s.Series >= leastLenders && s.Step == g.j.step {
 			out = append(out, s)
 		}
 	}

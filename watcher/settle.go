@@ -68,9 +68,9 @@ func (p *Pass) settle(active int) error {
 	if err != nil {
 		return err
 	}
-	b, err := p.settingsStep(v, active)
+	b, again, err := p.settingsStep(v, active)
 	if err == nil && b != nil {
-		err = p.replayAll(v, b)
+		err = p.replayAll(v, b, again)
 	}
 	if closeErr := v.Close(); err == nil {
 		err = closeErr
@@ -81,42 +81,67 @@ func (p *Pass) settle(active int) error {
 	return p.Store.Publish(b)
 }
 
-// settingsStep is the step that records new settings, nil when nothing changed.
-func (p *Pass) settingsStep(v View, active int) (*Batch, error) {
-	last, err := v.LastSettings()
+// settingsStep is the step that records new settings, nil when nothing changed. again lists the ranges whose used values nobody
+// kept up to date under the settings before, or that are new.
+func (p *Pass) settingsStep(v View, active int) (b *Batch, again []RangeKey, err error) {
+	last, recorded, err := lastSettings(v)
 	if err != nil {
-		return nil, err
-	}
-	var before []byte
-	recorded := &rules.Settings{}
-	if last > 0 {
-		if before, err = v.Settings(last); err != nil {
-			return nil, err
-		}
-		if recorded, err = ParseSettings(before); err != nil {
-			return nil, fmt.Errorf("settings %d: %w", last, err)
-		}
+		return nil, nil, err
 	}
 	resolveBudgets(&p.Settings, recorded, active)
 	text := settingsText(&p.Settings)
-	if bytes.Equal(text, before) {
-		return nil, nil
+	if last > 0 && bytes.Equal(text, settingsText(recorded)) {
+		return nil, nil, nil
 	}
-	b := &Batch{Step: v.Step() + 1, Settings: text}
+	b = &Batch{Step: v.Step() + 1, Settings: text}
 	b.File = FileRow{Step: b.Step, Settings: last + 1, Outcome: Changed, Received: p.Now, First: rules.NoDate, Last: rules.NoDate}
 	b.Record = []RecordEntry{{Kind: "settings", Who: p.Who, At: p.Now, Body: text}}
+	b.NewRanges, again, err = p.newRanges(v, recorded)
+	return b, again, err
+}
+
+// newRanges numbers the definitions that the ledger does not know, and lists those that need a replay.
+func (p *Pass) newRanges(v View, recorded *rules.Settings) (unknown, again []RangeKey, err error) {
 	known, err := rangeIDs(v)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
+	}
+	kept := map[string]bool{}
+	for n := range recorded.Ranges {
+		kept[RangeIdentity(recorded, n)] = true
 	}
 	for n, r := range p.Settings.Ranges {
 		key := RangeIdentity(&p.Settings, n)
-		if _, ok := known[key]; !ok && r.Limit == nil {
-			known[key] = uint16(len(known) + 1)
-			b.NewRanges = append(b.NewRanges, RangeKey{known[key], key})
+		if r.Limit != nil || kept[key] {
+			continue
 		}
+		kept[key] = true
+		id, ok := known[key]
+		if !ok {
+			id = uint16(len(known) + 1)
+			known[key] = id
+			unknown = append(unknown, RangeKey{id, key})
+		}
+		again = append(again, RangeKey{id, key})
 	}
-	return b, nil
+	return unknown, again, nil
+}
+
+// lastSettings is the number and content of the settings recorded last; 0 and empty ones in a new ledger.
+func lastSettings(v View) (uint32, *rules.Settings, error) {
+	last, err := v.LastSettings()
+	if err != nil || last == 0 {
+		return 0, &rules.Settings{}, err
+	}
+	text, err := v.Settings(last)
+	if err != nil {
+		return 0, nil, err
+	}
+	s, err := ParseSettings(text)
+	if err != nil {
+		return 0, nil, fmt.Errorf("settings %d: %w", last, err)
+	}
+	return last, s, nil
 }
 
 func rangeIDs(v View) (map[string]uint16, error) {
@@ -167,10 +192,9 @@ func level(budget float64, old rules.Line, judged int) float64 {
 	return min(max(budget/(5*float64(judged)), leastLevel), 0.5)
 }
 
-// replayAll gives a batch of new ranges the used values of everything held, by a replay from the first date. Only flagged
-// values can differ from their returns, so a ledger without flags needs none.
-func (p *Pass) replayAll(v View, b *Batch) error {
-	if len(b.NewRanges) == 0 {
+// replayAll brings ranges up to date with everything held, by a replay from the first date.
+func (p *Pass) replayAll(v View, b *Batch, again []RangeKey) error {
+	if len(again) == 0 {
 		return nil
 	}
 	names, err := v.Names()
@@ -181,16 +205,13 @@ func (p *Pass) replayAll(v View, b *Batch) error {
 	if err := p.prepare(j, v); err != nil || len(j.held) == 0 {
 		return err
 	}
-	p.only(j, b.NewRanges)
+	p.only(j, again)
 	j.scales = newGroupScales(j, v, nil)
 	outs, err := p.runTasks(j, tasks(allBlocks(names.Len()), j.width, j.held[0]))
 	if err != nil {
 		return err
 	}
-	for _, o := range outs {
-		b.Used = append(b.Used, o.used...)
-	}
-	b.Used = joinUsed(b.Used)
+	p.assemble(b, j, outs)
 	b.Scales, err = j.scales.stored()
 	return err
 }

@@ -12,6 +12,7 @@ type Sheet struct {
 	Rows     int // data rows accepted, a repeated identical row counted once
 	Repeated int // rows that repeated an earlier row of the file exactly
 	Skipped  int // bad rows left out under bad_rows: skip
+	Missing  int // values that are a missing token
 	Notes    []string
 }
 

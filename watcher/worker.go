@@ -42,6 +42,8 @@ type worker struct {
 	late             []rules.Date // newest date held before, of each series
 	upto             rules.Date   // newest date taken
 	replayed         bool         // dates that were held before were gone through again
+	failed           error        // of looking up a flag
+	stored           []*State     // by lane: what a recheck holds against the replay
 }
 
 // hit is a series that is not plainly inside everything on the date at hand.
@@ -94,9 +96,12 @@ func (w *worker) run(t task) (outcome, error) {
 		if err := w.date(t, d, old, &out); err != nil {
 			return out, err
 		}
+		if err := w.compareStates(t, d.date); err != nil {
+			return out, err
+		}
 	}
 	w.keepStates(t, &out)
-	return out, nil
+	return out, w.failed
 }
 
 // next takes the earlier of the next changed day and the next held date; old says that the date was held before.
