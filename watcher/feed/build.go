@@ -20,7 +20,7 @@ type builder struct {
 	places   int
 	first    rules.Date       // of spans[0]
 	spans    []*[span][]*open // by date, then block
-	room     []int      // by block: the length of its longest column
+	room     []int            // by block: the length of its longest column
 	bytes    int64
 	rows     int
 	repeated int

@@ -7,7 +7,8 @@ func (p *parser) longRow() bool {
 	line := p.line
 	for i, r := range p.roles {
 		if i > 0 && !p.separator() {
-			return p.fail(p.at, p.line, p.lineStart, nil, carriageReturn)
+			p.fail(p.at, p.line, p.lineStart, nil, carriageReturn)
+			return p.lost()
 		}
 		ok := true
 		switch r {

@@ -126,7 +126,7 @@ func (m *merger) sheet(ctx context.Context, file *os.File, c watcher.Candidate, 
 		return nil, m.badFile(id, c.Date)
 	}
 	sheet := &watcher.Sheet{File: id, What: m.what(), Names: m.names, Columns: m.columns(), Rows: m.rows, Repeated: m.repeated,
-		Skipped: m.skipped, Notes: m.notes(c.Name)}
+		Skipped: m.skipped, Missing: m.missing, Notes: m.notes(c.Name)}
 	if s.noLast && !c.Sentinel {
 		sheet.Notes = append(sheet.Notes, "the last line has no newline: is the file whole?")
 	}

@@ -3,6 +3,7 @@ package feed
 import (
 	"context"
 	"crypto/sha256"
+	"encoding/hex"
 	"errors"
 	"os"
 	"path/filepath"
@@ -100,3 +101,5 @@ func TestReadBad(t *testing.T) {
 }
 
 func sum(text []byte) [32]byte { return sha256.Sum256(text) }
+
+func hexOf(sum [32]byte) string { return hex.EncodeToString(sum[:]) }
