@@ -145,11 +145,13 @@ func (source) Read(ctx context.Context, c watcher.Candidate, f rules.Feed, names
 
 // plural writes a count with its noun.
 func plural(n int, noun string) string {
-	if n == 1 {
-		return "1 " + noun
-	}
-	if strings.HasSuffix(noun, "ch") {
+	switch {
+	case n == 1, noun == "series":
+		return thousands(n) + " " + noun
+	case strings.HasSuffix(noun, "ch"):
 		return thousands(n) + " " + noun + "es"
+	case strings.HasSuffix(noun, "y"):
+		return thousands(n) + " " + strings.TrimSuffix(noun, "y") + "ies"
 	}
 	return thousands(n) + " " + noun + "s"
 }

@@ -1,0 +1,211 @@
+package main
+
+import (
+	"errors"
+	"fmt"
+	"os"
+
+	"github.com/spf13/cobra"
+
+	"strayd/config"
+	"strayd/rules"
+	"strayd/watcher"
+	"strayd/watcher/ledger"
+)
+
+func (a *app) ledgerCommand() *cobra.Command {
+	cmd := &cobra.Command{
+		Use:   "ledger",
+		Short: "Verify, back up, restore, compact or export the store",
+		Args:  cobra.NoArgs,
+		RunE:  func(cmd *cobra.Command, _ []string) error { return cmd.Help() },
+	}
+	cmd.AddCommand(a.verifyCommand(), a.backupCommand(), a.restoreCommand(), a.compactCommand(), a.exportCommand())
+	return cmd
+}
+
+func (a *app) verifyCommand() *cobra.Command {
+	var head string
+	cmd := &cobra.Command{
+		Use:   "verify",
+		Short: "Check the whole ledger against itself",
+		Long: `Checks every checksum and index, walks the hash-chained record of settings and decisions, and recomputes every rolling state and
+used value from the returns held. Exit code 4 and the first place that differs when something is wrong.
+With --head, the hash that was noted before must occur in the record, so that a cut-off end shows.`,
+		Example: "  strayd ledger verify\n  strayd ledger verify --head 5f0c...",
+		Args:    cobra.NoArgs,
+		RunE:    func(*cobra.Command, []string) error { return a.verify(head) },
+	}
+	cmd.Flags().StringVar(&head, "head", "", "`HASH` of the record that was noted before")
+	return cmd
+}
+
+func (a *app) verify(head string) error {
+	return a.withLedger(ledger.ReadOnly, func(c *config.Config, l *ledger.Ledger) error {
+		s, err := settings(c)
+		if err != nil {
+			return err
+		}
+		bars := newBars(a.err)
+		r, err := l.Verify(a.ctx, ledger.VerifyOptions{
+			Head:     head,
+			Progress: func(done, total int64) { bars.progress("verifying", done, total) },
+			Recheck: func(v watcher.View) error {
+				return watcher.Recheck(v, s.Register, func(done, total int64) { bars.progress("recomputing", done, total) })
+			},
+		})
+		bars.clear()
+		if err != nil {
+			return err
+		}
+		fmt.Fprintf(a.out, "The ledger is whole: %s at step %d, %s, %s in the record.\n", plural(int(r.Values), "value"), r.Step,
+			plural(int(r.Names), "series"), plural(int(r.Records), "entry"))
+		if r.Head != "" {
+			fmt.Fprintf(a.out, "Head of the record: %s\n", r.Head)
+		}
+		if head != "" && r.HeadSeen < r.Records {
+			fmt.Fprintf(a.out, "The hash given is that of entry %d of %d.\n", r.HeadSeen, r.Records)
+		}
+		return nil
+	})
+}
+
+// withLedger loads the configuration, opens its ledger and calls do with it.
+func (a *app) withLedger(mode ledger.Mode, do func(*config.Config, *ledger.Ledger) error) error {
+	c, err := a.load()
+	if err != nil {
+		return err
+	}
+	l, err := openLedger(c, mode)
+	if err != nil {
+		return err
+	}
+	return errors.Join(do(c, l), l.Close())
+}
+
+func (a *app) backupCommand() *cobra.Command {
+	return &cobra.Command{
+		Use:     "backup FILE",
+		Short:   "Copy the ledger, verified, to a new file",
+		Example: "  strayd ledger backup /backup/ledger-2026-03-13.db",
+		Args:    cobra.ExactArgs(1),
+		RunE: func(_ *cobra.Command, args []string) error {
+			if _, err := os.Lstat(args[0]); err == nil {
+				return fmt.Errorf("%s is there already; a backup never replaces a file", args[0])
+			}
+			return a.withLedger(ledger.ReadOnly, func(_ *config.Config, l *ledger.Ledger) error {
+				r, err := l.Backup(a.ctx, args[0])
+				if err == nil {
+					fmt.Fprintf(a.out, "Backed up step %d to %s, verified.\n", r.Step, args[0])
+				}
+				return err
+			})
+		},
+	}
+}
+
+func (a *app) restoreCommand() *cobra.Command {
+	return &cobra.Command{
+		Use:   "restore FILE",
+		Short: "Put a backup in the ledger's place",
+		Long: `Verifies the backup, then puts a copy of it in the place of the configuration's ledger. What was there is kept beside it
+under another name.`,
+		Example: "  strayd ledger restore /backup/ledger-2026-03-13.db",
+		Args:    cobra.ExactArgs(1),
+		RunE: func(_ *cobra.Command, args []string) error {
+			c, err := a.load()
+			if err != nil {
+				return err
+			}
+			kept, r, err := ledger.Restore(a.ctx, args[0], c.Ledger)
+			if err != nil {
+				return err
+			}
+			fmt.Fprintf(a.out, "Restored step %d from %s.\n", r.Step, args[0])
+			if kept != "" {
+				fmt.Fprintf(a.out, "The ledger that was there is kept as %s.\n", kept)
+			}
+			return nil
+		},
+	}
+}
+
+func (a *app) compactCommand() *cobra.Command {
+	return &cobra.Command{
+		Use:     "compact",
+		Short:   "Give freed space back to the disk",
+		Example: "  strayd ledger compact",
+		Args:    cobra.NoArgs,
+		RunE: func(*cobra.Command, []string) error {
+			c, err := a.load()
+			if err != nil {
+				return err
+			}
+			done, err := ledger.Compact(a.ctx, c.Ledger, ledger.Options{})
+			if err != nil {
+				return err
+			}
+			fmt.Fprintf(a.out, "%s: %s bytes before, %s after.\n", c.Ledger, thousands(int(done.Before)), thousands(int(done.After)))
+			return nil
+		},
+	}
+}
+
+func (a *app) exportCommand() *cobra.Command {
+	var format, what string
+	cmd := &cobra.Command{
+		Use:   "export",
+		Short: "Write every return held, as CSV",
+		Long: `Writes the newest value of every observation, by date, then series: date,series,return, the return as an exact fraction.
+With --what prices, the prices of price feeds instead.`,
+		Example: "  strayd ledger export > returns.csv\n  strayd ledger export --what prices > prices.csv",
+		Args:    cobra.NoArgs,
+		RunE: func(*cobra.Command, []string) error {
+			if format != "csv" {
+				return usagef("--format %q: this version exports csv; parquet comes later", format)
+			}
+			return a.export(what)
+		},
+	}
+	cmd.Flags().StringVar(&format, "format", "csv", "csv")
+	cmd.Flags().StringVar(&what, "what", "returns", "returns or prices")
+	return cmd
+}
+
+func (a *app) export(what string) error {
+	w := watcher.Returns
+	switch what {
+	case "returns":
+	case "prices":
+		w = watcher.Prices
+	default:
+		return usagef("--what %q: need returns or prices", what)
+	}
+	return a.withLedger(ledger.ReadOnly, func(_ *config.Config, l *ledger.Ledger) error {
+		v, err := l.Read()
+		if err != nil {
+			return err
+		}
+		return errors.Join(a.exportOf(v, w), v.Close())
+	})
+}
+
+func (a *app) exportOf(v *ledger.View, w watcher.What) error {
+	names, err := v.Names()
+	if err != nil {
+		return err
+	}
+	value := "return"
+	if w == watcher.Prices {
+		value = "price"
+	}
+	l, err := newListing(a.out, "csv", "date,series,"+value)
+	if err != nil {
+		return err
+	}
+	err = v.Values(w, func(d rules.Date, series uint32, value int64) error {
+		s := rules.Decimal(value, w.Places())
+		return l.row(date(d), text(string(names.Name(series))), cell{s, s})
+	})
+	return firstError(err, l.end())
+}
