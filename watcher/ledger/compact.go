@@ -82,7 +82,7 @@ func (l *Ledger) rewrite() (temp string, err error) {
 	if err != nil {
 		return temp, err
 	}
-	db.AllocSize = leastGrowth
+	db.AllocSize = 0 // no more room than is needed
 	return temp, errors.Join(bolt.Compact(db, l.db, commitSize), db.Close())
 }
 

@@ -62,7 +62,7 @@ func furnish(rng *rand.Rand, step uint32, ref *uint64) *watcher.Batch {
 	for date := rules.Date(step); date < rules.Date(step)+12; date++ {
 		for _, list := range []*[]*watcher.Column{&b.Returns, &b.Prices} {
 			c := &watcher.Column{Date: date, Decimals: 8, Lines: watcher.Lines{First: 2, Stride: 1}}
-			for range series * step {
+			for range min(series*step, watcher.BlockSize) {
 				c.V32 = append(c.V32, rng.Int32N(1e6))
 			}
 			*list = append(*list, c)

@@ -37,10 +37,11 @@ type Ledger struct {
 	db   *bolt.DB
 	file *os.File // bbolt's own, to let go of the lock when bbolt panics on opening
 
-	mu       sync.Mutex   // held by whoever writes
-	arena    []byte       // of encoded values, reused between commits
-	broken   error        // why writing is off: a panic left a transaction half done
-	readings atomic.Int64 // open ones
+	mu         sync.Mutex   // held by whoever writes
+	arena      []byte       // of encoded values, reused between commits
+	broken     error        // why writing is off: a panic left a transaction half done
+	commitSize int          // as the constant, smaller in tests
+	readings   atomic.Int64 // open ones
 
 	left bool // staged values of a failed batch are still there
 }
@@ -132,7 +133,7 @@ func isDamaged(err error) bool {
 
 // tryOpen opens the file with room bytes of address space.
 func tryOpen(path string, o Options, room int64) (l *Ledger, err error) {
-	l = &Ledger{path: path}
+	l = &Ledger{path: path, commitSize: commitSize}
 	defer func() {
 		if err != nil && l.file != nil {
 			l.file.Close() // also lets go of the lock; a second close after bbolt's own does nothing

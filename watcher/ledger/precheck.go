@@ -79,11 +79,11 @@ func newestMeta(f io.ReaderAt) (best boltMeta, known bool, err error) {
 		}
 		known = known || m.magic
 		if m.valid && (at == 0 || at == m.pageSize) {
-			m.both = best.valid
-			if m.tx < best.tx {
-				best.both, m = true, best
+			both := best.valid
+			if !both || m.tx >= best.tx {
+				best = m
 			}
-			best = m
+			best.both = both
 		}
 	}
 	return best, known, nil

@@ -19,7 +19,7 @@ func (l *Ledger) Publish(b *watcher.Batch) error {
 		if err := w.accepts(p); err != nil {
 			return fmt.Errorf("step %d: %w", b.Step, err)
 		}
-		w.limit = commitSize
+		w.limit = l.commitSize
 		if err := w.layers(p); err != nil {
 			return err
 		}
