@@ -43,22 +43,27 @@ ranges:
     limit: [-50%, 50%]
 `
 
+func judged(c *Config) []byte {
+	s := c.Settings()
+	return s.Text()
+}
+
 func TestJudgingIsTheSameForTheSameMeaning(t *testing.T) {
 	a, b := parsed(t, said), parsed(t, spelledOut)
-	if !bytes.Equal(a.Judging(), b.Judging()) {
-		t.Errorf("\n%s\n%s", a.Judging(), b.Judging())
+	if !bytes.Equal(judged(a), judged(b)) {
+		t.Errorf("\n%s\n%s", judged(a), judged(b))
 	}
 	if a.FeedKey("a") != b.FeedKey("other") {
 		t.Error("feeds that read alike have two keys")
 	}
-	if !json.Valid(a.Judging()) {
-		t.Errorf("not JSON: %s", a.Judging())
+	if !json.Valid(judged(a)) {
+		t.Errorf("not JSON: %s", judged(a))
 	}
 }
 
 // Whatever decides a verdict changes the bytes.
 func TestJudgingSeesEveryChange(t *testing.T) {
-	seen := map[string]string{string(parsed(t, said).Judging()): "nothing"}
+	seen := map[string]string{string(judged(parsed(t, said))): "nothing"}
 	for _, change := range []struct{ from, to string }{
 		{"- name: own", "- name: mine"},
 		{"- name: own", "- name: own\n    window: 61"},
@@ -83,7 +88,7 @@ func TestJudgingSeesEveryChange(t *testing.T) {
 		{"ledger:", "calendar: DE\nledger:"},
 	} {
 		text := strings.Replace(said, change.from, change.to, 1)
-		got := string(parsed(t, text).Judging())
+		got := string(judged(parsed(t, text)))
 		if other, ok := seen[got]; ok {
 			t.Errorf("%q gives the bytes of %q", change.to, other)
 		}

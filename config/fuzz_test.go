@@ -27,7 +27,7 @@ func FuzzParse(f *testing.F) {
 			if v, err := asJSON(data); err != nil || schema.Validate(v) != nil {
 				t.Fatalf("taken, but the schema says %v, %v", err, schema.Validate(v))
 			}
-			c.Judging()
+			judged(c)
 			return
 		}
 		var all Errors

@@ -50,6 +50,7 @@ type Settings struct {
 	Ranges   []Range
 	Groups   []Group
 	Doubtful float64
+	Calendar string
 	Register []Series `json:"-"` // who is in which group; its hash stands for it
 	Members  string   // hash of the register's groups, "" without a register
 }

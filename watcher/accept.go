@@ -77,7 +77,7 @@ func (p *Pass) prepare(j *judging, v View) (err error) {
 			return err
 		}
 		j.gauges = append(j.gauges, g)
-		j.ids = append(j.ids, ids[RangeIdentity(&p.Settings, n)])
+		j.ids = append(j.ids, ids[p.Settings.Identity(n)])
 		if r.Limit != nil {
 			j.limits = append(j.limits, n)
 		}

@@ -365,9 +365,9 @@ func (r *Reader) settingsNumber(id uint32) (*recorded, error) {
 	if err != nil {
 		return nil, err
 	}
-	parsed, err := ParseSettings(text)
+	parsed, err := rules.ParseSettings(text)
 	if err != nil {
-		return nil, fmt.Errorf("settings %d: %w", id, err)
+		return nil, err
 	}
 	parsed.Register = r.Register
 	s, err := r.ready(parsed)
@@ -392,7 +392,7 @@ func (r *Reader) ready(parsed *rules.Settings) (*recorded, error) {
 			return nil, err
 		}
 		s.gauges = append(s.gauges, g)
-		s.ids = append(s.ids, ids[RangeIdentity(parsed, n)])
+		s.ids = append(s.ids, ids[parsed.Identity(n)])
 	}
 	return s, nil
 }

@@ -2,64 +2,12 @@ package watcher
 
 import (
 	"bytes"
-	"encoding/json"
-	"fmt"
 
 	"strayd/rules"
 )
 
 // leastLevel is the smallest tail probability that a budget is turned into: the data of a series supports nothing rarer.
 const leastLevel = 0.0005
-
-// RangeIdentity is the text that tells one definition of a range's windows from another: all that decides which used values
-// they take. Ranges that differ only in name, in whom they judge or in the watch line share it.
-func RangeIdentity(s *rules.Settings, n int) string {
-	r := s.Ranges[n]
-	r.Name, r.For, r.Watch = "", nil, rules.Line{}
-	var limits []rules.Range
-	for _, l := range s.Ranges {
-		if l.Limit != nil {
-			limits = append(limits, rules.Range{For: l.For, Limit: l.Limit})
-		}
-	}
-	text, err := json.Marshal(struct {
-		Range  rules.Range
-		Limits []rules.Range
-		Groups []string
-	}{r, limits, groupsOf(s, limits)})
-	if err != nil {
-		panic(err) // plain values always encode
-	}
-	return string(text)
-}
-
-// groupsOf is the membership that the limits' `for` leans on; "" when they judge everything.
-func groupsOf(s *rules.Settings, limits []rules.Range) (out []string) {
-	for _, l := range limits {
-		if len(l.For) > 0 {
-			for _, g := range s.Groups {
-				out = append(out, fmt.Sprint(g.Name, g.Series))
-			}
-			return append(out, s.Members)
-		}
-	}
-	return nil
-}
-
-// settingsText is the text under which settings are recorded.
-func settingsText(s *rules.Settings) []byte {
-	text, err := json.Marshal(s)
-	if err != nil {
-		panic(err) // plain values always encode
-	}
-	return text
-}
-
-// ParseSettings reads a recorded settings text.
-func ParseSettings(text []byte) (*rules.Settings, error) {
-	s := new(rules.Settings)
-	return s, json.Unmarshal(text, s)
-}
 
 // settle records the settings when they are not those recorded last: as one step of its own, with the used values that they
 // give to the flagged values already held. active is how many series there are, for lines stated as a budget.
@@ -89,8 +37,8 @@ func (p *Pass) settingsStep(v View, active int) (b *Batch, again []RangeKey, err
 		return nil, nil, err
 	}
 	resolveBudgets(&p.Settings, recorded, active)
-	text := settingsText(&p.Settings)
-	if last > 0 && bytes.Equal(text, settingsText(recorded)) {
+	text := p.Settings.Text()
+	if last > 0 && bytes.Equal(text, recorded.Text()) {
 		return nil, nil, nil
 	}
 	b = &Batch{Step: v.Step() + 1, Settings: text}
@@ -108,10 +56,10 @@ func (p *Pass) newRanges(v View, recorded *rules.Settings) (unknown, again []Ran
 	}
 	kept := map[string]bool{}
 	for n := range recorded.Ranges {
-		kept[RangeIdentity(recorded, n)] = true
+		kept[recorded.Identity(n)] = true
 	}
 	for n, r := range p.Settings.Ranges {
-		key := RangeIdentity(&p.Settings, n)
+		key := p.Settings.Identity(n)
 		if r.Limit != nil || kept[key] {
 			continue
 		}
@@ -137,11 +85,8 @@ func lastSettings(v View) (uint32, *rules.Settings, error) {
 	if err != nil {
 		return 0, nil, err
 	}
-	s, err := ParseSettings(text)
-	if err != nil {
-		return 0, nil, fmt.Errorf("settings %d: %w", last, err)
-	}
-	return last, s, nil
+	s, err := rules.ParseSettings(text)
+	return last, s, err
 }
 
 func rangeIDs(v View) (map[string]uint16, error) {
@@ -201,7 +146,7 @@ func (p *Pass) replayAll(v View, b *Batch, again []RangeKey) error {
 	if err != nil {
 		return err
 	}
-	j := &judging{names: names, heldNames: names.Len(), firstNames: names.Len(), now: p.Now, step: b.Step, nextRef: v.NextRef()}
+	j := &judging{names: names, heldNames: names.Len(), firstNames: names.Len(), newest: rules.NoDate, now: p.Now, step: b.Step, nextRef: v.NextRef()}
 	if err := p.prepare(j, v); err != nil || len(j.held) == 0 {
 		return err
 	}
@@ -223,7 +168,7 @@ func (p *Pass) only(j *judging, ranges []RangeKey) {
 		ids[r.Key] = r.ID
 	}
 	for n := range j.gauges {
-		j.ids[n] = ids[RangeIdentity(&p.Settings, n)]
+		j.ids[n] = ids[p.Settings.Identity(n)]
 	}
 }
 

@@ -86,7 +86,7 @@ func (a *app) reading(do func(c *config.Config, v watcher.View) error) error {
 
 // settings are what decides verdicts, from the configuration and its register.
 func settings(c *config.Config) (rules.Settings, error) {
-	s := rules.Settings{Ranges: c.Ranges, Groups: c.Groups, Doubtful: c.Doubtful}
+	s := c.Settings()
 	if c.Series == "" {
 		return s, nil
 	}
