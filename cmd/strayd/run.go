@@ -65,7 +65,6 @@ func (a *app) codeOf(err error) int {
 	var q quiet
 	var usage usageError
 	var bad config.Errors
-	var damaged *ledger.Damaged
 	switch {
 	case errors.As(err, &q):
 		return q.code
@@ -75,10 +74,18 @@ func (a *app) codeOf(err error) int {
 		return exitConfig
 	case errors.Is(err, ledger.ErrHeld):
 		return exitHeld
-	case errors.As(err, &damaged):
+	case unusable(err):
 		return exitDamaged
 	}
 	return exitFailed
+}
+
+// unusable says of a file that it is there and is no ledger that this program may touch.
+func unusable(err error) bool {
+	var damaged *ledger.Damaged
+	var foreign *ledger.Foreign
+	var newer *ledger.Newer
+	return errors.As(err, &damaged) || errors.As(err, &foreign) || errors.As(err, &newer) || errors.Is(err, ledger.ErrEmpty)
 }
 
 func (a *app) root() *cobra.Command {
