@@ -11,10 +11,12 @@ const (
 	NoticeSending NoticeState = "sending" // handed to the channel, outcome not yet recorded
 	NoticeSent    NoticeState = "sent"
 	NoticeFailed  NoticeState = "failed" // for good; a person may send it again
+	// NoticeWithdrawn was never sent: what it told of became history before it left.
+	NoticeWithdrawn NoticeState = "withdrawn"
 )
 
 // NoticeStates lists every state in order.
-var NoticeStates = []NoticeState{NoticeWaiting, NoticeSending, NoticeSent, NoticeFailed}
+var NoticeStates = []NoticeState{NoticeWaiting, NoticeSending, NoticeSent, NoticeFailed, NoticeWithdrawn}
 
 // The kinds of notice beside those of a flag.
 const (
@@ -58,10 +60,9 @@ type News struct {
 // FlagNews is a flag that asks something, with what its message says beyond the flag itself.
 type FlagNews struct {
 	Flag
-	Window      int  // observations behind the range, 0 where it has none
-	WindowTo    Date // newest of them
-	Provisional bool
-	Used        Units // what the window takes meanwhile, Missing when left out
+	Window   int   // observations behind the range, 0 where it has none
+	WindowTo Date  // newest of them
+	Used     Units // what the window takes meanwhile, Missing when left out
 }
 
 // DayNews is what the daily line says.

@@ -87,6 +87,8 @@ type Batch struct {
 	Settings  []byte // new settings text, nil when unchanged; the ledger gives it the next number
 	Record    []RecordEntry
 	Flags     []FlagRow
+	Notices   []rules.Notice // of this step's flags; one whose key is there already is passed over
+	Withdraw  []uint64       // flags that ask nothing any more: a waiting notice of these alone is not sent
 }
 
 // UsedColumn holds the cells of one date and block whose used value under a range differs from the return.
@@ -143,6 +145,11 @@ type FlagRow struct {
 	rules.Flag
 	SeriesID uint32 // NoSeries when the flag is not about one series
 	New      bool
+
+	// For the message only; not stored.
+	Window   int         // observations behind the range
+	WindowTo rules.Date  // newest of them
+	Used     rules.Units // what the window takes meanwhile
 }
 
 // NoSeries is the series number of a flag that is not about one series.
