@@ -34,6 +34,7 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	p.assemble(b, j, out)
 	b.File.Counts.Rows = sheet.Rows
 	b.File.Counts.Same = sheet.Rows - b.File.Counts.New - b.File.Counts.Late - b.File.Counts.Restated
+	p.tell(b, newestSeries(sheet))
 	if err := p.Store.Publish(b); err != nil {
 		return err
 	}
@@ -242,6 +243,7 @@ func (p *Pass) numberFlags(b *Batch, j *judging) {
 		}
 		f.Standing, f.New = rules.OfHistory, false
 		b.Flags = append(b.Flags, f)
+		b.Withdraw = append(b.Withdraw, f.Ref)
 	}
 	p.opened = kept
 	for _, f := range b.Flags {

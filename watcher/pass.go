@@ -23,6 +23,8 @@ type Pass struct {
 	Program  string // version of the program
 	Workers  int    // goroutines that judge; 0 for one a processor
 
+	// Tell makes the notices of a step, which are recorded with it; nil for none.
+	Tell func(rules.News) []rules.Notice
 	// Report is told of every file as it is done with; nil for nobody.
 	Report func(FileReport)
 	// Progress is told of long work by its name; nil for nobody.
@@ -239,6 +241,7 @@ func (p *Pass) refuse(bad *BadFile, f rules.Feed, c Candidate) error {
 	flag.Kind, flag.Standing, flag.Return = rules.KindRefused, rules.Open, rules.Missing
 	flag.Feed, flag.File, flag.Line, flag.Note = f.Name, bad.File.Name, uint32(bad.Line), bad.Error()
 	b.Flags = []FlagRow{flag}
+	p.tell(b, 0)
 	if err := p.Store.Publish(b); err != nil {
 		return err
 	}

@@ -19,7 +19,7 @@ func (w *worker) raise(t task, d *day, fresh []int64, out *outcome) {
 		}
 		f := w.blank(t, d, int(h.at))
 		if k := worst(h.verdicts); k >= 0 {
-			w.keep(w.breachFlag(f, w.lanes[k].gauge.Range.Name, &h.verdicts[k]), d.restated(t, h), out)
+			w.keep(w.breachFlag(f, w.lanes[k], h, &h.verdicts[k]), d.restated(t, h), out)
 		} else if d.restated(t, h) {
 			w.amend(f, rules.KindBreach, out)
 		}
@@ -99,7 +99,7 @@ func (w *worker) blank(t task, d *day, i int) FlagRow {
 	f := FlagRow{SeriesID: id, New: true}
 	f.RaisedAt, f.Date = w.j.now, d.date
 	f.Series, f.Group = string(w.j.names.Name(id)), w.group(i)
-	f.Return = rules.Units(w.raw[i])
+	f.Return, f.Used, f.WindowTo = rules.Units(w.raw[i]), rules.Missing, rules.NoDate
 	f.Feed, f.File = w.j.file.Feed, w.j.file.Name
 	f.Line = d.col.Line(t.from + i)
 	f.Standing = rules.Open
@@ -109,10 +109,13 @@ func (w *worker) blank(t task, d *day, i int) FlagRow {
 	return f
 }
 
-func (w *worker) breachFlag(f FlagRow, name string, v *rules.Verdict) FlagRow {
-	f.Kind, f.Range = rules.KindBreach, name
+func (w *worker) breachFlag(f FlagRow, l *lane, h *hit, v *rules.Verdict) FlagRow {
+	r := &l.gauge.Range
+	f.Kind, f.Range = rules.KindBreach, r.Name
 	f.Low, f.High, f.Z, f.Tail, f.Log10 = v.Low, v.High, v.Z, v.Tail, v.Log10
 	f.Note = v.Why
+	f.Window, f.WindowTo = v.N, l.last[h.at]
+	f.Used, _ = rules.UsedValue(r.Pending, f.Return, v, h.limits)
 	return f
 }
 

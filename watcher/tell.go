@@ -1,0 +1,27 @@
+package watcher
+
+import "strayd/rules"
+
+// tell puts the notices of a batch's flags into it: of those that are new or open again and ask something of a person.
+func (p *Pass) tell(b *Batch, series int) {
+	if p.Tell == nil {
+		return
+	}
+	news := rules.News{At: p.Now, Feed: b.File.File.Feed, File: b.File.File.Name, Rows: b.File.Counts.Rows, Series: series}
+	for _, f := range b.Flags {
+		if f.Step == b.Step && f.Standing.Asks() {
+			news.Flags = append(news.Flags, rules.FlagNews{Flag: f.Flag, Window: f.Window, WindowTo: f.WindowTo, Used: f.Used})
+		}
+	}
+	if len(news.Flags) > 0 {
+		b.Notices = p.Tell(news)
+	}
+}
+
+// newestSeries counts the series that have a value on the newest date of a sheet.
+func newestSeries(s *Sheet) (n int) {
+	for i := len(s.Columns) - 1; i >= 0 && s.Columns[i].Date == s.Last(); i-- {
+		n += s.Columns[i].rank(s.Columns[i].Len())
+	}
+	return n
+}
