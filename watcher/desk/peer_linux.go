@@ -1,0 +1,45 @@
+package desk
+
+import (
+	"fmt"
+	"net"
+	"os"
+	"os/user"
+	"syscall"
+)
+
+// private says whether a folder belongs to this user and is closed to all others, save a group that may only enter.
+func private(dir string) bool {
+	info, err := os.Lstat(dir)
+	if err != nil || !info.IsDir() {
+		return false
+	}
+	st, ok := info.Sys().(*syscall.Stat_t)
+	return ok && int(st.Uid) == os.Getuid() && info.Mode().Perm()&0o027 == 0
+}
+
+// peer is the user at the other end of a connection, as the kernel knows it.
+func peer(c net.Conn) (string, error) {
+	unix, ok := c.(*net.UnixConn)
+	if !ok {
+		return "", fmt.Errorf("connection %T is no socket", c)
+	}
+	raw, err := unix.SyscallConn()
+	if err != nil {
+		return "", err
+	}
+	var cred *syscall.Ucred
+	var credErr error
+	if err := raw.Control(func(fd uintptr) {
+		cred, credErr = syscall.GetsockoptUcred(int(fd), syscall.SOL_SOCKET, syscall.SO_PEERCRED)
+	}); err != nil {
+		return "", err
+	}
+	if credErr != nil {
+		return "", credErr
+	}
+	if u, err := user.LookupId(fmt.Sprint(cred.Uid)); err == nil {
+		return fmt.Sprintf("%s (uid %d)", u.Username, cred.Uid), nil
+	}
+	return fmt.Sprintf("uid %d", cred.Uid), nil
+}
