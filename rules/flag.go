@@ -26,6 +26,9 @@ const (
 var Kinds = []Kind{KindBreach, KindLimit, KindDoubtful, KindStale, KindRepeat, KindMissing, KindLate, KindRefused, KindRestated,
 	KindMarketDay, KindDrift, KindVolatility, KindMisfit}
 
+// OutOfLine lists the kinds that are about a value itself, which enters its window as `pending` says.
+var OutOfLine = []Kind{KindBreach, KindLimit, KindDoubtful, KindStale, KindRepeat}
+
 // Standing is where a flag is in its life.
 type Standing string
 

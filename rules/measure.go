@@ -24,7 +24,7 @@ func (g *Gauge) measure(p *Past) (m measure) {
 	v.Mean, v.Deviation, m.distance = g.estimate(p)
 	v.Finding, v.Why = g.standing(p, v)
 	v.Provisional = v.Finding == Inside && p.N < LeastNormal
-	if !v.Deviation.OK || v.Deviation.V == 0 {
+	if !v.Deviation.OK || v.Deviation.V == 0 || p.N < 2 { // one value gives no degree of freedom
 		return m
 	}
 	m.scored = true

@@ -123,18 +123,42 @@ func (w *worker) limitHits(fresh []int64) {
 	}
 }
 
-// markedHits finds the flagged values of a date that was held before.
+// markedHits finds the values of a date held before that were flagged as they stand. What a flag says of one version it does not say
+// of the next: a value that comes anew is judged for itself.
 func (w *worker) markedHits(t task, d *day, fresh []int64) error {
 	marked, err := w.view.Marked(d.date, t.block)
 	if err != nil {
 		return err
 	}
 	for _, off := range marked {
-		if i := off - t.from; i >= 0 && i < t.width && w.raw[i] != Missing64 {
-			w.hitAt(int32(i), fresh[i] != Missing64).flagged = true
+		i := off - t.from
+		if i < 0 || i >= t.width || w.raw[i] == Missing64 {
+			continue
+		}
+		if fresh[i] != Missing64 {
+			w.hitAt(int32(i), true)
+			continue
+		}
+		stands, err := w.flagStands(t.series(i), d.date, rules.Units(w.raw[i]))
+		if err != nil {
+			return err
+		}
+		if stands {
+			w.hitAt(int32(i), false).flagged = true
 		}
 	}
 	return nil
+}
+
+// flagStands says whether a flag about a value out of line was raised for the value that is held now.
+func (w *worker) flagStands(series uint32, date rules.Date, x rules.Units) (bool, error) {
+	for _, kind := range rules.OutOfLine {
+		f, ok, err := w.view.FlagAt(series, date, kind)
+		if err != nil || ok && f.Return == x {
+			return ok, err
+		}
+	}
+	return false, nil
 }
 
 func (w *worker) applies(rangeIndex, i int) bool {
