@@ -49,7 +49,7 @@ func (a *app) now() (time.Time, error) {
 func (a *app) load() (*config.Config, error) {
 	c, err := config.Load(a.configPath, config.Options{Cron: schedule.Check})
 	if errors.Is(err, os.ErrNotExist) {
-		fmt.Fprintf(a.err, "strayd: no configuration %s here; `strayd demo` writes one to begin with, or name yours with --config\n", a.configPath)
+		fmt.Fprintf(a.err, "strayd: no configuration %s here; name yours with --config, or begin with `strayd check --example > %s`\n", a.configPath, a.configPath)
 		return nil, quiet{exitConfig}
 	}
 	return c, err

@@ -143,7 +143,7 @@ func (b *book) files() []bookFile {
 		{"An ordinary day.", func([]float64) {}},
 		{"One row arrives a hundred times too large (planted).", func(v []float64) { v[b.at("cedar-growth")] = 128.4071 }},
 		{"A distribution of 3.9 % is missing from one fund (planted).", func(v []float64) { v[b.at("birch-income")] -= 3.9 }},
-		{"The file breaks off in the middle of a number (planted), and is sent again whole.", func([]float64) {}},
+		{"The file breaks off in the middle of a row (planted), and is sent again whole.", func([]float64) {}},
 		{"Tuesday's row is corrected by its sender; a cash fund makes a move that is small, but not for cash (planted).",
 			func(v []float64) { v[b.at("hazel-reserve")] = -0.4210 }},
 	}

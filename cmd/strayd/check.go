@@ -16,26 +16,45 @@ import (
 	"strayd/watcher/schedule"
 )
 
+// checking is what check is asked for.
+type checking struct{ settled, schema, example bool }
+
 func (a *app) checkCommand() *cobra.Command {
-	return &cobra.Command{
+	var asked checking
+	cmd := &cobra.Command{
 		Use:   "check",
 		Short: "Check the configuration and the feeds, and say what each line means",
 		Long: `Checks the configuration, reads what lies in the feeds without storing any of it, and says each line in every form,
 with the flags to expect of it. Exit code 78 when the configuration is wrong, 1 when a file would be refused.`,
-		Example: "  strayd check",
-		Args:    cobra.NoArgs,
-		RunE:    func(*cobra.Command, []string) error { return a.check() },
+		Example: "  strayd check\n  strayd check --example > strayd.yaml      a configuration to begin with\n" +
+			"  strayd check --schema > strayd.schema.json",
+		Args: takes(0, 0),
+		RunE: func(*cobra.Command, []string) error {
+			switch {
+			case asked.schema:
+				_, err := a.out.Write(config.Schema())
+				return err
+			case asked.example:
+				_, err := io.WriteString(a.out, config.Starter)
+				return err
+			}
+			return a.check(asked.settled)
+		},
 	}
+	cmd.Flags().BoolVar(&asked.settled, "settled", false, "take my word that every file is whole")
+	cmd.Flags().BoolVar(&asked.schema, "schema", false, "print the JSON Schema of the configuration, and nothing else")
+	cmd.Flags().BoolVar(&asked.example, "example", false, "print a commented configuration to begin with, and nothing else")
+	return cmd
 }
 
-func (a *app) check() error {
+func (a *app) check(settled bool) error {
 	c, err := a.load()
 	if err != nil {
 		return err
 	}
 	a.sayLater(c)
 	fmt.Fprintf(a.out, "%s is right.\n\n", c.File)
-	series, refused, err := a.checkFeeds(c)
+	series, refused, err := a.checkFeeds(c, settled)
 	if err != nil {
 		return err
 	}
@@ -70,8 +89,8 @@ func heldSeries(c *config.Config) (int, error) {
 	return names.Len(), nil
 }
 
-// checkFeeds reads every ready file without storing it.
-func (a *app) checkFeeds(c *config.Config) (series, refused int, err error) {
+// checkFeeds reads every ready file (with settled, every file) without storing it.
+func (a *app) checkFeeds(c *config.Config, settled bool) (series, refused int, err error) {
 	now, err := a.now()
 	if err != nil {
 		return 0, 0, err
@@ -82,7 +101,7 @@ func (a *app) checkFeeds(c *config.Config) (series, refused int, err error) {
 		if f.Schedule != "" {
 			a.sayRuns(c, f.Schedule, now)
 		}
-		found, err := source{}.Find(f, now, false)
+		found, err := source{}.Find(f, now, settled)
 		if err != nil {
 			fmt.Fprintf(a.out, "  cannot be looked into: %v\n", err)
 			refused++

@@ -23,7 +23,7 @@ func (a *app) demoCommand() *cobra.Command {
 errors planted in them. Then it makes the ledger and runs one pass a day, printing what strayed. Everything stays in the folder,
 to be tried with the other commands.`,
 		Example: "  strayd demo\n  strayd demo /tmp/book",
-		Args:    cobra.MaximumNArgs(1),
+		Args:    takes(0, 1),
 		RunE: func(_ *cobra.Command, args []string) error {
 			folder := "strayd-demo"
 			if len(args) == 1 {
@@ -79,9 +79,9 @@ func (a *app) demoWeek(c *config.Config, l *ledger.Ledger, folder string) error 
 			return err
 		}
 	}
-	fmt.Fprintf(a.out, "\n%s\n\nLook further:\n  cd %s\n", caution, folder)
-	for _, next := range []string{"strayd flags", "strayd explain 5", "strayd history birch-income --from 2026-03-09", "strayd ranges", "strayd ledger verify"} {
-		fmt.Fprintln(a.out, "  "+next)
+	fmt.Fprintf(a.out, "\n%s\n\nLook further (from the source, write go run ./cmd/strayd for strayd):\n", caution)
+	for _, next := range []string{"flags", "explain 11", "history birch-income --from 2026-03-09", "ranges --now 2026-03-16", "ledger verify"} {
+		fmt.Fprintf(a.out, "  strayd --config %s %s\n", filepath.Join(folder, "strayd.yaml"), next)
 	}
 	return nil
 }

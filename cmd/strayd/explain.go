@@ -23,7 +23,7 @@ Without --range, the range of the flag, or the one whose verdict weighs most, is
 
 ` + caution,
 		Example: "  strayd explain 12\n  strayd explain alder-income 2026-03-13 --format json",
-		Args:    cobra.RangeArgs(1, 2),
+		Args:    takes(1, 2),
 		RunE: func(_ *cobra.Command, args []string) error {
 			if err := checkFormat(format); err != nil {
 				return err
@@ -32,7 +32,7 @@ Without --range, the range of the flag, or the one whose verdict weighs most, is
 		},
 	}
 	cmd.Flags().StringVar(&rangeName, "range", "", "explain the verdict under this `RANGE`")
-	cmd.Flags().StringVar(&format, "format", "table", "table, csv or json")
+	cmd.Flags().StringVar(&format, "format", "table", "`FORMAT`: table, csv or json")
 	return cmd
 }
 
@@ -190,7 +190,7 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 		line("watched beyond", "%s", between(row.WatchLow, row.WatchHigh))
 	}
 	if !row.Limited {
-		a.explainWindow(line, row)
+		a.explainWindow(line, row, e.versions[len(e.versions)-1].Step > row.Step)
 	}
 	for i, v := range e.versions {
 		file, err := r.File(v.Step)
@@ -210,7 +210,8 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 	return nil
 }
 
-func (a *app) explainWindow(line func(name, format string, args ...any), row *watcher.Row) {
+// explainWindow says what the verdict was made of; restated: a newer version of the observation is held.
+func (a *app) explainWindow(line func(name, format string, args ...any), row *watcher.Row, restated bool) {
 	if row.N > 0 {
 		line("made of", "%s from %s to %s", plural(row.N, "observation"), day(row.WindowFrom), day(row.WindowTo))
 		line("mean, deviation", "%s, %s", percentNum(row.Mean), width(row.Deviation))
@@ -230,6 +231,8 @@ func (a *app) explainWindow(line func(name, format string, args ...any), row *wa
 	switch {
 	case row.Used == rules.Missing:
 		line("window takes", "nothing of it until someone decides")
+	case row.Used != row.Return && restated:
+		line("window takes", "%s, now that it is restated", percent(row.Used.Float()))
 	case row.Used != row.Return:
 		line("window takes", "%s until someone decides", percent(row.Used.Float()))
 	}

@@ -35,7 +35,7 @@ With --blocking GROUP, exit code 1 while a flag of that group holds its release 
 
 ` + caution,
 		Example: "  strayd flags\n  strayd flags --all --kind breach --from 2026-03-01 --format csv\n  strayd flags --blocking equity",
-		Args:    cobra.NoArgs,
+		Args:    takes(0, 0),
 		RunE:    func(*cobra.Command, []string) error { return a.flags(f) },
 	}
 	s := cmd.Flags()
@@ -49,7 +49,7 @@ With --blocking GROUP, exit code 1 while a flag of that group holds its release 
 	s.StringVar(&f.stand, "standing", "", "of this `STANDING`: open, history, ...")
 	s.StringVar(&f.feed, "feed", "", "of this `FEED`")
 	s.StringVar(&f.blocking, "blocking", "", "of this `GROUP`, exit code 1 when there is one")
-	s.StringVar(&f.format, "format", "table", "table, csv or json")
+	s.StringVar(&f.format, "format", "table", "`FORMAT`: table, csv or json")
 	return cmd
 }
 

@@ -20,14 +20,14 @@ func (a *app) historyCommand() *cobra.Command {
 		Long: `Recomputes every verdict from the returns held: one row an observation and range, by date, then in the order of
 the configuration. Returns are fractions in CSV and JSON; low and high are the breach line's.`,
 		Example: "  strayd history alder-income\n  strayd history alder-income --from 2026-01-01 --format csv",
-		Args:    cobra.ExactArgs(1),
+		Args:    takes(1, 1),
 		RunE: func(_ *cobra.Command, args []string) error {
 			return a.history(args[0], from, to, format)
 		},
 	}
 	cmd.Flags().StringVar(&from, "from", "", "first valuation `DATE`")
 	cmd.Flags().StringVar(&to, "to", "", "last valuation `DATE`")
-	cmd.Flags().StringVar(&format, "format", "table", "table, csv or json")
+	cmd.Flags().StringVar(&format, "format", "table", "`FORMAT`: table, csv or json")
 	return cmd
 }
 

@@ -18,7 +18,7 @@ like a new ledger. An existing file is left as it is.`,
 		Example: "  strayd init\n  strayd --config desk.yaml init",
 		Args: func(_ *cobra.Command, args []string) error {
 			if len(args) > 0 {
-				return fmt.Errorf("init takes no files in this version: writing a configuration from samples comes later")
+				return fmt.Errorf("init takes no files in this version: writing a configuration from samples comes later; `strayd check --example` prints one to begin with")
 			}
 			return nil
 		},

@@ -33,7 +33,7 @@ func (a *app) verifyCommand() *cobra.Command {
 used value from the returns held. Exit code 4 and the first place that differs when something is wrong.
 With --head, the hash that was noted before must occur in the record, so that a cut-off end shows.`,
 		Example: "  strayd ledger verify\n  strayd ledger verify --head 5f0c...",
-		Args:    cobra.NoArgs,
+		Args:    takes(0, 0),
 		RunE:    func(*cobra.Command, []string) error { return a.verify(head) },
 	}
 	cmd.Flags().StringVar(&head, "head", "", "`HASH` of the record that was noted before")
@@ -58,8 +58,8 @@ func (a *app) verify(head string) error {
 		if err != nil {
 			return err
 		}
-		fmt.Fprintf(a.out, "The ledger is whole: %s at step %d, %s, %s in the record.\n", plural(int(r.Values), "value"), r.Step,
-			plural(int(r.Names), "series"), plural(int(r.Records), "entry"))
+		fmt.Fprintf(a.out, "The ledger is whole up to step %d: %s, %s checked, %s in the record of settings and decisions.\n", r.Step,
+			plural(int(r.Names), "series"), plural(int(r.Values), "stored piece"), plural(int(r.Records), "entry"))
 		if r.Head != "" {
 			fmt.Fprintf(a.out, "Head of the record: %s\n", r.Head)
 		}
@@ -88,7 +88,7 @@ func (a *app) backupCommand() *cobra.Command {
 		Use:     "backup FILE",
 		Short:   "Copy the ledger, verified, to a new file",
 		Example: "  strayd ledger backup /backup/ledger-2026-03-13.db",
-		Args:    cobra.ExactArgs(1),
+		Args:    takes(1, 1),
 		RunE: func(_ *cobra.Command, args []string) error {
 			if _, err := os.Lstat(args[0]); err == nil {
 				return fmt.Errorf("%s is there already; a backup never replaces a file", args[0])
@@ -111,7 +111,7 @@ func (a *app) restoreCommand() *cobra.Command {
 		Long: `Verifies the backup, then puts a copy of it in the place of the configuration's ledger. What was there is kept beside it
 under another name.`,
 		Example: "  strayd ledger restore /backup/ledger-2026-03-13.db",
-		Args:    cobra.ExactArgs(1),
+		Args:    takes(1, 1),
 		RunE: func(_ *cobra.Command, args []string) error {
 			c, err := a.load()
 			if err != nil {
@@ -135,7 +135,7 @@ func (a *app) compactCommand() *cobra.Command {
 		Use:     "compact",
 		Short:   "Give freed space back to the disk",
 		Example: "  strayd ledger compact",
-		Args:    cobra.NoArgs,
+		Args:    takes(0, 0),
 		RunE: func(*cobra.Command, []string) error {
 			c, err := a.load()
 			if err != nil {
@@ -159,7 +159,7 @@ func (a *app) exportCommand() *cobra.Command {
 		Long: `Writes the newest value of every observation, by date, then series: date,series,return, the return as an exact fraction.
 With --what prices, the prices of price feeds instead.`,
 		Example: "  strayd ledger export > returns.csv\n  strayd ledger export --what prices > prices.csv",
-		Args:    cobra.NoArgs,
+		Args:    takes(0, 0),
 		RunE: func(*cobra.Command, []string) error {
 			if format != "csv" {
 				return usagef("--format %q: this version exports csv; parquet comes later", format)
@@ -167,8 +167,8 @@ With --what prices, the prices of price feeds instead.`,
 			return a.export(what)
 		},
 	}
-	cmd.Flags().StringVar(&format, "format", "csv", "csv")
-	cmd.Flags().StringVar(&what, "what", "returns", "returns or prices")
+	cmd.Flags().StringVar(&format, "format", "csv", "`FORMAT`: csv")
+	cmd.Flags().StringVar(&what, "what", "returns", "`WHAT`: returns or prices")
 	return cmd
 }
 

@@ -21,7 +21,7 @@ The same content again changes nothing. A file with a bad row changes nothing ei
 
 Exit code 1 when a file was refused or could not be read; flags do not change it.`,
 		Example: "  strayd pass\n  strayd pass administrator --settled      the files are whole, whatever their age",
-		Args:    cobra.MaximumNArgs(1),
+		Args:    takes(0, 1),
 		RunE: func(_ *cobra.Command, args []string) error {
 			only := ""
 			if len(args) == 1 {

@@ -22,7 +22,7 @@ func (a *app) rangesCommand() *cobra.Command {
 		Long: `For each series and range: the lines that a return of today (or of --now) would be judged by, were it the next one.
 low and high are the breach line's.`,
 		Example: "  strayd ranges\n  strayd ranges alder-income --format json",
-		Args:    cobra.MaximumNArgs(1),
+		Args:    takes(0, 1),
 		RunE: func(_ *cobra.Command, args []string) error {
 			if err := checkFormat(format); err != nil {
 				return err
@@ -34,7 +34,7 @@ low and high are the breach line's.`,
 			return a.ranges(only, format)
 		},
 	}
-	cmd.Flags().StringVar(&format, "format", "table", "table, csv or json")
+	cmd.Flags().StringVar(&format, "format", "table", "`FORMAT`: table, csv or json")
 	return cmd
 }
 

@@ -97,6 +97,7 @@ flags what strayed, and keeps the record.
 
 A flag is a statistical statement about past data: neither advice nor a finding of error; no flag is no certificate.`,
 		Example: `  strayd demo                       a small invented book, judged from start to end
+  strayd check --example            a configuration to begin with
   strayd init                       make the ledger that the configuration names
   strayd pass                       read what has arrived, judge it, say what strayed
   strayd flags                      the flags that still ask something of a person
@@ -109,6 +110,7 @@ A flag is a statistical statement about past data: neither advice nor a finding 
 		},
 		RunE: func(cmd *cobra.Command, _ []string) error { return cmd.Help() },
 	}
+	inWords(root)
 	root.PersistentFlags().StringVar(&a.configPath, "config", "strayd.yaml", "configuration `FILE`")
 	root.PersistentFlags().StringVar(&a.nowText, "now", "", "take this `TIME` for the clock: 2026-03-13 or 2026-03-13T07:00:00Z")
 	root.AddCommand(a.demoCommand(), a.initCommand(), a.checkCommand(), a.passCommand(), a.flagsCommand(), a.explainCommand(),

@@ -1,11 +1,12 @@
 package main
 
 import (
+	"bufio"
 	"fmt"
 	"io"
 	"math"
 	"strings"
-	"text/tabwriter"
+	"unicode/utf8"
 
 	"strayd/rules"
 )
@@ -82,8 +83,34 @@ func printable(s string) string {
 	}, s)
 }
 
-func columns(w io.Writer) *tabwriter.Writer { return tabwriter.NewWriter(w, 0, 0, 2, ' ', 0) }
+// table lines up rows of cells for a person; the last cell of a row is not padded.
+type table struct {
+	w    io.Writer
+	rows [][]string
+}
 
-func fields(w io.Writer, texts ...string) {
-	fmt.Fprintln(w, strings.TrimRight(strings.Join(texts, "\t"), "\t"))
+func columns(w io.Writer) *table { return &table{w: w} }
+
+func fields(t *table, texts ...string) { t.rows = append(t.rows, texts) }
+
+// Flush writes the rows.
+func (t *table) Flush() error {
+	var widths []int
+	for _, row := range t.rows {
+		for i, text := range row {
+			if i == len(widths) {
+				widths = append(widths, 0)
+			}
+			widths[i] = max(widths[i], utf8.RuneCountInString(text))
+		}
+	}
+	out := bufio.NewWriter(t.w)
+	for _, row := range t.rows {
+		line := ""
+		for i, text := range row {
+			line += fmt.Sprintf("%-*s  ", widths[i], text)
+		}
+		fmt.Fprintln(out, strings.TrimRight(line, " "))
+	}
+	return out.Flush()
 }
