@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/big"
 	"slices"
+	"sync"
 
 	"strayd/rules"
 )
@@ -238,8 +239,8 @@ func lineAt(l oracleLine, df int, unit bool, side string) float64 {
 		return l.z
 	}
 	key := lineKey{l.p, df, unit, side == "both"}
-	if z, ok := knownLines[key]; ok {
-		return z
+	if z, ok := knownLines.Load(key); ok {
+		return z.(float64)
 	}
 	low, high := 0.0, 1e4
 	if side != "both" {
@@ -254,7 +255,7 @@ func lineAt(l oracleLine, df int, unit bool, side string) float64 {
 			high = mid
 		}
 	}
-	knownLines[key] = low
+	knownLines.Store(key, low)
 	return low
 }
 
@@ -266,4 +267,4 @@ type lineKey struct {
 }
 
 // knownLines spares the search for lines that were found before.
-var knownLines = map[lineKey]float64{}
+var knownLines sync.Map

@@ -232,7 +232,7 @@ func (o *oracle) judge(past []*oracleObservation, k int, date rules.Date, x rule
 	return v
 }
 
-const bits = 300
+const bits = 200
 
 func bigFloat(v float64) *big.Float { return new(big.Float).SetPrec(bits).SetFloat64(v) }
 

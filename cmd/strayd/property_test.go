@@ -16,13 +16,14 @@ func seeds() uint64 {
 	if testing.Short() {
 		return 2
 	}
-	return 8
+	return 6
 }
 
 // forBooks tries a property on invented books; a failure prints its seed in the test's name.
 func forBooks(t *testing.T, property func(t *testing.T, b *invented, ranges []oracleRange)) {
 	for seed := range seeds() {
 		t.Run(fmt.Sprintf("seed %d", seed), func(t *testing.T) {
+			t.Parallel()
 			b := invent(seed)
 			property(t, b, inventRanges(b.random))
 		})
