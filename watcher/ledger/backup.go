@@ -16,13 +16,7 @@ import (
 // Backup copies the ledger as of its last published step to a new file, while it is in use. The copy is verified before it gets
 // its name; a file of that name is replaced.
 func (l *Ledger) Backup(ctx context.Context, to string) (r Report, err error) {
-	temp, err := beside(to, func(f *os.File) (err error) {
-		defer guard(l.path, debug.SetPanicOnFault(true), &err)
-		return l.db.View(func(tx *bolt.Tx) error {
-			_, err := tx.WriteTo(f)
-			return err
-		})
-	})
+	temp, err := beside(to, l.copyTo)
 	if err != nil {
 		return r, fmt.Errorf("backup of ledger %s: %w", l.path, err)
 	}
@@ -31,6 +25,15 @@ func (l *Ledger) Backup(ctx context.Context, to string) (r Report, err error) {
 		return r, fmt.Errorf("backup of ledger %s: %w", l.path, err)
 	}
 	return r, takeName(temp, to)
+}
+
+// copyTo writes the ledger as of its last commit.
+func (l *Ledger) copyTo(f *os.File) (err error) {
+	defer guard(l.path, debug.SetPanicOnFault(true), &err)
+	return l.db.View(func(tx *bolt.Tx) error {
+		_, err := tx.WriteTo(f)
+		return err
+	})
 }
 
 // beside writes a file in the folder of path under a name of its own, and brings it to the disk.

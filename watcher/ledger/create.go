@@ -13,7 +13,7 @@ import (
 
 // create makes an empty ledger under another name and gives it its own only when it is whole: a power cut while bbolt lays
 // out its first pages leaves a file that cannot be opened.
-func create(path string) error {
+func create(path string, o *Options) error {
 	if _, err := os.Lstat(path); err == nil {
 		return refuse(path, ErrExists)
 	}
@@ -26,7 +26,7 @@ func create(path string) error {
 	if err := f.Close(); err != nil {
 		return err
 	}
-	if err := layOut(temp); err != nil {
+	if err := layOut(temp, o); err != nil {
 		return fmt.Errorf("ledger %s cannot be made: %w", path, err)
 	}
 	return settle(temp, path)
@@ -52,7 +52,7 @@ func syncDir(dir string) error {
 	return errors.Join(d.Sync(), d.Close())
 }
 
-func layOut(path string) error {
+func layOut(path string, o *Options) error {
 	db, err := bolt.Open(path, 0o600, &bolt.Options{FreelistType: bolt.FreelistMapType, NoStatistics: true})
 	if err != nil {
 		return err
@@ -63,13 +63,13 @@ func layOut(path string) error {
 				return err
 			}
 		}
-		return firstRows(tx.Bucket(inMeta.name()))
+		return firstRows(tx.Bucket(inMeta.name()), o)
 	})
 	return errors.Join(err, db.Close())
 }
 
-func firstRows(meta *bolt.Bucket) error {
-	i := identity{schema: schemaOwn}
+func firstRows(meta *bolt.Bucket, o *Options) error {
+	i := identity{schema: o.schema()}
 	if _, err := rand.Read(i.id[:]); err != nil {
 		return err
 	}

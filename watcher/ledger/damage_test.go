@@ -297,8 +297,16 @@ func TestNoPanicComesOut(t *testing.T) {
 		}
 		l, err := Open(other, Options{AnyFilesystem: true})
 		if err == nil {
-			err = use(l)
-			l.Close()
+			ref := uint64(61)
+			err = errors.Join(use(l), l.Publish(furnish(rand.New(rand.NewPCG(1, 1)), 6, &ref)))
+			if err := l.Close(); err != nil {
+				t.Error(err)
+			}
+		}
+		if again, err := Open(other, Options{AnyFilesystem: true}); err == nil {
+			again.Close()
+		} else if errors.Is(err, ErrHeld) {
+			t.Errorf("page %d zeroed: the lock is still held", page)
 		}
 		if err != nil && !isDamaged(err) && !errors.Is(err, ErrNone) {
 			t.Errorf("page %d zeroed: %v", page, err)

@@ -21,7 +21,12 @@ func (p *plan) size() (n int64) {
 	n = 150 * int64(len(p.flags))
 	for _, columns := range p.columns {
 		for _, c := range columns {
-			n += int64(4*len(c.V32) + 8*len(c.V64) + 48)
+			cell := 4
+			if c.V64 != nil {
+				cell = 8
+			}
+			present := c.Len() - missing(c)
+			n += int64(min(c.Len()*cell, present*(2+cell)) + columnHead + 32)
 		}
 	}
 	return n

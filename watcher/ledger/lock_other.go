@@ -16,3 +16,6 @@ func hold(path string) (*os.File, error) {
 	}
 	return f, err
 }
+
+// letGo closes a file that bbolt can no longer close.
+func letGo(f *os.File) error { return f.Close() }

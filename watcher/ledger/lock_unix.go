@@ -29,3 +29,9 @@ func hold(path string) (*os.File, error) {
 	}
 	return f, nil
 }
+
+// letGo unlocks and closes a file that bbolt can no longer close. Closing is not enough: its map keeps the file, and with it the
+// lock, alive.
+func letGo(f *os.File) error {
+	return errors.Join(unix.Flock(int(f.Fd()), unix.LOCK_UN), f.Close())
+}

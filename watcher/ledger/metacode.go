@@ -9,8 +9,6 @@ const (
 	keyStaging  = "staging"
 
 	identityMark = "strayd ledger"
-	// schemaOwn is the layout that this program writes.
-	schemaOwn = 1
 )
 
 // identity says that a file is a ledger, in which layout, and which one.

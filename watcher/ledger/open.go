@@ -29,13 +29,16 @@ type Options struct {
 	Mode          Mode
 	Timeout       time.Duration // to wait for the lock, default 1 s
 	AnyFilesystem bool          // also a network or user-space file system
+
+	upgrades []upgrade // in place of upgrades(), for tests
 }
 
 // Ledger is an open ledger: a watcher.Store, for any number of goroutines.
 type Ledger struct {
-	path string
-	db   *bolt.DB
-	file *os.File // bbolt's own, to let go of the lock when bbolt panics on opening
+	path     string
+	db       *bolt.DB
+	file     *os.File // bbolt's own, to let go of the lock when bbolt panics on opening
+	identity identity
 
 	mu         sync.Mutex   // held by whoever writes
 	arena      []byte       // of encoded values, reused between commits
@@ -53,13 +56,16 @@ const reserve = int64(16) << 30
 // Open opens a ledger. Errors: ErrMissing, ErrEmpty, ErrHeld, ErrExists, ErrFilesystem (each wrapped with the path), *Foreign,
 // *Newer, *Damaged.
 func Open(path string, o Options) (*Ledger, error) {
+	if o.upgrades == nil {
+		o.upgrades = upgrades()
+	}
 	if !o.AnyFilesystem {
 		if err := localDisk(filepath.Dir(path)); err != nil {
 			return nil, err
 		}
 	}
 	if o.Mode == Create {
-		if err := create(path); err != nil {
+		if err := create(path, &o); err != nil {
 			return nil, err
 		}
 	}
@@ -87,7 +93,13 @@ func (l *Ledger) begin(o Options) error {
 	if err := l.checkOpened(); err != nil {
 		return err
 	}
-	if err := l.identify(); err != nil {
+	if err := l.identify(o.schema()); err != nil {
+		return err
+	}
+	if err := l.bringUp(&o); err != nil {
+		return err
+	}
+	if err := l.complete(); err != nil {
 		return err
 	}
 	if o.Mode == ReadOnly {
@@ -136,7 +148,7 @@ func tryOpen(path string, o Options, room int64) (l *Ledger, err error) {
 	l = &Ledger{path: path, commitSize: commitSize}
 	defer func() {
 		if err != nil && l.file != nil {
-			l.file.Close() // also lets go of the lock; a second close after bbolt's own does nothing
+			_ = letGo(l.file) // fails when bbolt itself has closed it
 		}
 	}()
 	defer guard(path, debug.SetPanicOnFault(true), &err)
@@ -172,27 +184,34 @@ func addressRoom(path string, room int64) int {
 	return int(room)
 }
 
-// identify checks that the file is a ledger of this schema.
-func (l *Ledger) identify() (err error) {
+// identify checks that the file is a ledger, and not of a later schema than own.
+func (l *Ledger) identify(own uint32) (err error) {
 	defer guard(l.path, debug.SetPanicOnFault(true), &err)
 	return l.db.View(func(tx *bolt.Tx) error {
 		meta := tx.Bucket(inMeta.name())
 		if meta == nil {
 			return &Foreign{l.path, "it is a database of another program"}
 		}
-		i, err := readIdentity(l.path, meta)
-		if err != nil {
+		if l.identity, err = readIdentity(l.path, meta); err != nil {
 			return err
 		}
-		if i.schema > schemaOwn {
-			return &Newer{l.path, i.schema, schemaOwn}
+		if l.identity.schema > own {
+			return &Newer{l.path, l.identity.schema, own}
 		}
+		return nil
+	})
+}
+
+// complete checks that every bucket and the head are there.
+func (l *Ledger) complete() (err error) {
+	defer guard(l.path, debug.SetPanicOnFault(true), &err)
+	return l.db.View(func(tx *bolt.Tx) error {
 		for b := range buckets {
 			if tx.Bucket(b.name()) == nil {
 				return &Damaged{Where: b.String(), Why: "the bucket is not there"}
 			}
 		}
-		_, err = readHead(meta)
+		_, err := readHead(tx.Bucket(inMeta.name()))
 		return err
 	})
 }
@@ -244,7 +263,7 @@ func (l *Ledger) Close() (err error) {
 		return fmt.Errorf("ledger %s cannot be closed: %d readings are open", l.path, n)
 	}
 	if l.broken != nil {
-		return l.file.Close() // bbolt's own locks may still be held
+		return letGo(l.file) // bbolt's own locks may still be held
 	}
 	return l.db.Close()
 }

@@ -88,6 +88,9 @@ func (c *verifier) all() (err error) {
 			return err
 		}
 	}
+	if c.o.Progress != nil {
+		c.o.Progress(c.total, c.total)
+	}
 	for _, check := range []func() error{c.counts, c.headSeen} {
 		if err := check(); err != nil {
 			return err
