@@ -87,6 +87,9 @@ func TestGood(t *testing.T) {
 	// any order of rows
 	check("any order", plain, head+"2024-01-03,B,4\n2024-01-02,B,2\n2024-01-03,A,3\n2024-01-02,A,1\n2024-01-02,C,9\n",
 		"2024-01-02 B 2 3\n2024-01-02 A 1 5\n2024-01-02 C 9 6\n2024-01-03 B 4 2\n2024-01-03 A 3 4\n")
+	check("two, the second before the first", plain, head+"2024-01-02,A,1\n2024-01-02,B,2\n2024-01-03,B,4\n2024-01-03,A,3\n",
+		"2024-01-02 A 1 2\n2024-01-02 B 2 3\n2024-01-03 A 3 5\n2024-01-03 B 4 4\n")
+	check("lines after quoted newlines", plain, "date,series,x,return\n2024-01-02,A,\"a\n\nb\",1\n2024-01-02,B,,2\n", "2024-01-02 A 1 2\n2024-01-02 B 2 5\n")
 	check("header only", plain, head, "")
 }
 
@@ -263,5 +266,21 @@ func TestRefusalForgetsNames(t *testing.T) {
 	s, err := Read(t.Context(), c, longFeed(), names, Options{Now: testNow})
 	if err != nil || s.Held != 1 || names.Len() != 2 || string(names.Name(1)) != "C" {
 		t.Error(err, names.Len())
+	}
+}
+
+// New series between held ones get the next numbers; the held ones keep theirs.
+func TestHeldAndNewSeries(t *testing.T) {
+	names := watcher.NewNames(nil, nil)
+	names.Add([]byte("A"))
+	names.Add([]byte("B"))
+	text := "date,series,return\n2024-01-02,C,3\n2024-01-02,B,2\n2024-01-02,D,4\n2024-01-02,A,1\n2024-01-03,A,5\n2024-01-03,D,6\n"
+	s, err := Read(t.Context(), lay(t, "a.csv", []byte(text)), longFeed(), names, Options{Now: testNow})
+	if err != nil {
+		t.Fatal(err)
+	}
+	want := "2024-01-02 A 1 5\n2024-01-02 B 2 3\n2024-01-02 C 3 2\n2024-01-02 D 4 4\n2024-01-03 A 5 6\n2024-01-03 D 6 7\n"
+	if got := spell(s); got != want || s.Held != 2 {
+		t.Errorf("got\n%swant\n%s", got, want)
 	}
 }

@@ -173,6 +173,8 @@ func TestColumnsAreCanonical(t *testing.T) {
 	check("1 0.12345678", 8, true)
 	check("21.47483647 0.00000001", 8, true)
 	check("21.47483648 0.00000001", 8, false)
+	check("-21.47483647 0.00000001", 8, true)
+	check("-21.47483648 0.00000001", 8, false)
 	check("0.012345678901234 1", 15, false)
 	check("1000 0.000000000000001", 15, false)
 	check("0.000000000000001 0.000000000000002", 15, true)
