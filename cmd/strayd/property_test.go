@@ -4,19 +4,21 @@ import (
 	"fmt"
 	"math"
 	"math/big"
+	"os"
 	"slices"
+	"strconv"
 	"strings"
 	"testing"
 
 	"strayd/rules"
 )
 
-// seeds is how many invented books each property is tried on.
+// seeds is how many invented books each property is tried on: STRAYD_SEEDS, or few.
 func seeds() uint64 {
-	if testing.Short() {
-		return 2
+	if n, err := strconv.ParseUint(os.Getenv("STRAYD_SEEDS"), 10, 64); err == nil {
+		return n
 	}
-	return 6
+	return 3
 }
 
 // forBooks tries a property on invented books; a failure prints its seed in the test's name.
