@@ -1,6 +1,9 @@
 package schedule
 
-import "time"
+import (
+	"sort"
+	"time"
+)
 
 // Next is the first run after t, in the schedule's zone. It is the zero time only for the zero Schedule.
 func (s Schedule) Next(t time.Time) time.Time {
@@ -103,3 +106,18 @@ func earlier(a, b time.Time) time.Time {
 	}
 	return a
 }
+
+// Latest is the newest run at or before t. It is the zero time only for the zero Schedule.
+func (s Schedule) Latest(t time.Time) time.Time {
+	if s.Next(t).IsZero() {
+		return time.Time{}
+	}
+	reach := 1
+	for s.Next(seconds(t, -reach)).After(t) {
+		reach *= 2
+	}
+	near := sort.Search(reach, func(n int) bool { return !s.Next(seconds(t, -n)).After(t) })
+	return s.Next(seconds(t, -near))
+}
+
+func seconds(t time.Time, n int) time.Time { return t.Add(time.Duration(n) * time.Second) }
