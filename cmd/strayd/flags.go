@@ -84,6 +84,27 @@ func joinWords[T ~string](words []T) string {
 	return strings.Join(texts, ", ")
 }
 
+// checkGroups refuses a group that nobody has declared, so that a mistyped name never looks like a release that nothing holds back.
+func (f *flagFilter) checkGroups(c *config.Config) error {
+	s, err := settings(c)
+	if err != nil {
+		return err
+	}
+	known := map[string]bool{"": true}
+	for _, g := range s.Groups {
+		known[g.Name] = true
+	}
+	for _, r := range s.Register {
+		known[r.Group] = true
+	}
+	for _, option := range [][2]string{{"--group", f.group}, {"--blocking", f.blocking}} {
+		if !known[option[1]] {
+			return usagef("%s %q: neither %s nor its register of series has this group", option[0], option[1], c.File)
+		}
+	}
+	return nil
+}
+
 func (f *flagFilter) takes(g *rules.Flag) bool {
 	is := func(want, have string) bool { return want == "" || want == have }
 	return is(f.kind, string(g.Kind)) && is(f.group, g.Group) && is(f.blocking, g.Group) && is(f.series, g.Series) &&
@@ -97,11 +118,12 @@ func (a *app) flags(f *flagFilter) error {
 	}
 	all := f.all || f.stand != "" && !rules.Standing(f.stand).Asks()
 	blocked := false
-	err := a.reading(func(_ *config.Config, v watcher.View) error {
-		if f.format == "table" {
-			n, err := a.flagTable(v, all, f)
-			blocked = n > 0
+	err := a.reading(func(c *config.Config, v watcher.View) error {
+		if err := f.checkGroups(c); err != nil {
 			return err
+		}
+		if f.format == "table" {
+			return a.flagTable(v, all, f, &blocked)
 		}
 		l, err := newListing(a.out, f.format, flagColumns)
 		if err != nil {
@@ -137,36 +159,35 @@ func flagCells(g *rules.Flag) []cell {
 	if g.Line > 0 {
 		line = integer(g.Line)
 	}
-	return []cell{text(fmt.Sprint(g.Ref)), moment(g.RaisedAt), date(g.Date), text(g.Series), text(g.Group), text(string(g.Kind)), text(g.Range),
+	return []cell{integer(g.Ref), moment(g.RaisedAt), date(g.Date), text(g.Series), text(g.Group), text(string(g.Kind)), text(g.Range),
 		units(g.Return), number(g.Low), number(g.High), number(g.Z), number(g.Tail), null, null, null, null, null, null,
 		text(string(g.Standing)), null, text(g.Feed), text(g.File), line, text(g.Note)}
 }
 
-// flagTable prints flags as the desk reads them, newest date last, and says how many there are.
-func (a *app) flagTable(v watcher.View, all bool, f *flagFilter) (n int, err error) {
-	w := columns(a.out)
-	err = v.Flags(all, func(g rules.Flag) bool {
+// flagTable prints flags as the desk reads them, newest date last, and says how many there are. blocked becomes true when one of
+// them asks something of a person.
+func (a *app) flagTable(v watcher.View, all bool, f *flagFilter, blocked *bool) error {
+	w, n := columns(a.out), 0
+	err := v.Flags(all, func(g rules.Flag) bool {
 		if !f.takes(&g) {
 			return true
 		}
+		*blocked = *blocked || g.Standing.Asks()
 		if n++; n == 1 {
 			fields(w, "ref", "date", "series", "kind", "return", "expected", "z", "how rare", "standing", "note")
 		}
 		fields(w, flagFields(&g)...)
 		return true
 	})
-	if err != nil {
-		return n, err
-	}
-	if err := w.Flush(); err != nil {
-		return n, err
+	if err := firstError(err, w.Flush()); err != nil {
+		return err
 	}
 	if n == 0 {
 		fmt.Fprintln(a.out, "No flag asks anything of anyone.")
-		return 0, nil
+		return nil
 	}
 	fmt.Fprintf(a.out, "\n%s. `strayd explain REF` shows every figure behind one.\n%s\n", plural(n, "flag"), caution)
-	return n, nil
+	return nil
 }
 
 func flagFields(g *rules.Flag) []string {
