@@ -9,13 +9,19 @@ import (
 	"strayd/watcher"
 )
 
-const columnTwice = "the header has this column twice"
+const (
+	columnTwice    = "the header has this column twice"
+	columnNameless = "a column of the header has no name"
+)
 
 // headerCell is one name of the header with its place.
 type headerCell struct {
-	name   string
-	column int // byte column, from 1
+	name   []byte // within the text
+	column int    // byte column, from 1
 }
+
+// shownNames is how many names of a header a message lists.
+const shownNames = 20
 
 // header reads the first record that is not blank and completes the plan from it. ok is false while there is none.
 func (p *plan) header(c *cursor, names *watcher.Names) (ok bool, bad *fault) {
@@ -25,73 +31,93 @@ func (p *plan) header(c *cursor, names *watcher.Names) (ok bool, bad *fault) {
 		return false, nil
 	}
 	line, from := c.line, c.at
-	cells, bad := p.headerCells(c)
+	if p.wide {
+		bad = p.wideHeader(c, names)
+	} else {
+		bad = p.longHeader(c)
+	}
 	if c.at-from > p.limits.LineBytes {
 		bad = &fault{reason: tooLong(p.limits.LineBytes)}
-	}
-	if bad == nil {
-		bad = p.firstLine(cells)
-	}
-	if bad == nil && p.wide {
-		bad = p.wideHeader(cells, names)
-	} else if bad == nil {
-		bad = p.longHeader(cells)
 	}
 	if bad != nil {
 		bad.line = line
 	}
-	p.width = len(cells)
 	return true, bad
 }
 
-func (p *plan) headerCells(c *cursor) (cells []headerCell, bad *fault) {
-	for {
+// eachCell walks over the cells of a record and steps over it. It stops at the first fault.
+func (p *plan) eachCell(c *cursor, take func(headerCell) *fault) *fault {
+	for n := 0; ; n++ {
 		start := c.at
-		column := c.at - c.lineStart + 1
-		text, problem := c.cell()
+		cell := headerCell{column: c.at - c.lineStart + 1}
+		var problem string
+		cell.name, problem = c.cell()
 		switch {
 		case problem != "":
-			return nil, &fault{column: column, cell: string(text), reason: problem}
-		case len(cells) >= p.limits.Columns:
-			return nil, &fault{column: column, reason: fmt.Sprintf("the header has more than %d columns, the limit", p.limits.Columns)}
+		case n >= p.limits.Columns:
+			return &fault{column: cell.column, reason: fmt.Sprintf("the header has more than %d columns, the limit", p.limits.Columns)}
 		case bytes.IndexByte(c.text[start:c.at], '\r') >= 0:
-			return nil, &fault{column: column, cell: string(text), reason: carriageReturn}
+			problem = carriageReturn
+		default:
+			problem = p.badText(cell.name)
 		}
-		if problem := p.badText(text); problem != "" {
-			return nil, &fault{column: column, cell: string(text), reason: problem}
+		if problem != "" {
+			return cell.bad(problem)
 		}
-		cells = append(cells, headerCell{string(text), column})
+		if bad := take(cell); bad != nil {
+			return bad
+		}
 		if !c.separator() {
 			break
 		}
 	}
 	if !c.endOfLine() {
-		return nil, &fault{reason: carriageReturn}
+		return &fault{reason: carriageReturn}
 	}
-	return cells, nil
+	return nil
+}
+
+func (h headerCell) bad(reason string) *fault {
+	return &fault{column: h.column, cell: string(h.name), reason: reason}
+}
+
+// cells lists the cells of a record.
+func (p *plan) cells(c *cursor) (cells []headerCell, bad *fault) {
+	bad = p.eachCell(c, func(h headerCell) *fault {
+		cells = append(cells, h)
+		return nil
+	})
+	return cells, bad
 }
 
 // firstLine refuses what is no header at all.
 func (p *plan) firstLine(cells []headerCell) *fault {
-	if first := cells[0].name; len(first) >= 4 && strings.EqualFold(first[:4], "sep=") {
-		return &fault{column: 1, cell: first, reason: "the file begins with a spreadsheet's separator line, not with the header; " +
-			"deliver it without, and declare the separator in the feed"}
+	first := cells[0]
+	if len(first.name) >= 4 && strings.EqualFold(string(first.name[:4]), "sep=") {
+		return first.bad("the file begins with a spreadsheet's separator line, not with the header; deliver it without, and declare the " +
+			"separator in the feed")
 	}
 	if len(cells) > 1 {
 		return nil
 	}
-	for _, sep := range ",;\t|" {
-		if byte(sep) != p.comma && strings.ContainsRune(cells[0].name, sep) {
-			return &fault{column: 1, cell: cells[0].name,
-				reason: fmt.Sprintf("the header has no %q but has %q; is the feed's separator right?", p.comma, byte(sep))}
+	for _, sep := range []byte(",;\t|") {
+		if sep != p.comma && bytes.IndexByte(first.name, sep) >= 0 {
+			return first.bad(fmt.Sprintf("the header has no %q but has %q; is the feed's separator right?", p.comma, sep))
 		}
 	}
 	return nil
 }
 
-func (p *plan) longHeader(cells []headerCell) *fault {
+func (p *plan) longHeader(c *cursor) *fault {
+	cells, bad := p.cells(c)
+	if bad == nil {
+		bad = p.firstLine(cells)
+	}
+	if bad != nil {
+		return bad
+	}
 	want := p.feed.Columns
-	p.roles = make([]role, len(cells))
+	p.width, p.roles = len(cells), make([]role, len(cells))
 	for _, w := range []struct {
 		name string
 		role role
@@ -99,87 +125,45 @@ func (p *plan) longHeader(cells []headerCell) *fault {
 		if w.name == "" {
 			continue
 		}
-		at, bad := columnNamed(cells, w.name)
-		if bad != nil {
-			return bad
+		at := columnNamed(cells, w.name)
+		if at < 0 {
+			return noColumn(cells, w.name)
 		}
 		p.roles[at] = w.role
 	}
 	return repeated(cells, true)
 }
 
-// columnNamed finds a declared column.
-func columnNamed(cells []headerCell, name string) (int, *fault) {
-	has := make([]string, len(cells))
-	for i, c := range cells {
-		if c.name == name {
-			return i, nil
-		}
-		has[i] = c.name
-	}
+// columnNamed is the place of a column, -1 when there is none.
+func columnNamed(cells []headerCell, name string) int {
+	return slices.IndexFunc(cells, func(h headerCell) bool { return string(h.name) == name })
+}
+
+// noColumn says that a declared column is not there.
+func noColumn(cells []headerCell, name string) *fault {
+	var has []string
 	reason := fmt.Sprintf("the header has no column %q", name)
-	if i := slices.IndexFunc(has, func(h string) bool { return strings.EqualFold(h, name) }); i >= 0 {
-		reason += fmt.Sprintf(" but has %q: capitals count", has[i])
-		return 0, &fault{reason: reason}
+	for _, h := range cells[:min(len(cells), shownNames)] {
+		if strings.EqualFold(string(h.name), name) {
+			return &fault{reason: reason + fmt.Sprintf(" but has %q: capitals count", h.name)}
+		}
+		has = append(has, string(h.name))
 	}
-	return 0, &fault{reason: reason + "; it has", cell: strings.Join(has, ", ")}
+	return &fault{reason: reason + "; it has", cell: strings.Join(has, ", ")}
 }
 
 // repeated refuses a name that the header has twice. In a long file a column that nobody uses may lack a name.
 func repeated(cells []headerCell, blankOK bool) *fault {
 	seen := make(map[string]bool, len(cells))
-	for _, c := range cells {
-		switch {
-		case c.name == "" && blankOK:
-		case c.name == "":
-			return &fault{column: c.column, reason: "a column of the header has no name"}
-		case seen[c.name]:
-			return &fault{column: c.column, cell: c.name, reason: columnTwice}
+	for _, h := range cells {
+		switch name := string(h.name); {
+		case name == "" && blankOK:
+		case name == "":
+			return h.bad(columnNameless)
+		case seen[name]:
+			return h.bad(columnTwice)
 		}
-		seen[c.name] = true
+		seen[string(h.name)] = true
 	}
 	return nil
-}
-
-// wideHeader gives every column its series.
-func (p *plan) wideHeader(cells []headerCell, names *watcher.Names) *fault {
-	at, bad := columnNamed(cells, p.feed.Columns.Date)
-	if bad != nil {
-		return bad
-	}
-	p.dateAt, p.ids = at, make([]uint32, len(cells))
-	var taken []bool // by number of the series
-	next := uint32(0)
-	for i, c := range cells {
-		if i == at {
-			p.ids[i] = watcher.NoSeries
-			continue
-		}
-		id, reason := p.wideName(c.name, names, next)
-		if reason != "" {
-			return &fault{column: c.column, cell: c.name, reason: reason}
-		}
-		if int(id) >= len(taken) {
-			taken = append(taken, make([]bool, int(id)+len(cells)-len(taken))...)
-		}
-		if taken[id] || c.name == p.feed.Columns.Date {
-			return &fault{column: c.column, cell: c.name, reason: columnTwice}
-		}
-		p.ids[i], taken[id], next = id, true, id+1
-	}
-	return nil
-}
-
-// wideName is the number of a series of the header, which is most often the next one.
-func (p *plan) wideName(name string, names *watcher.Names, next uint32) (id uint32, reason string) {
-	if names.Is(next, []byte(name)) {
-		return next, ""
-	}
-	if name == "" {
-		return 0, "a column of the header has no name"
-	}
-	if reason := p.badName([]byte(name)); reason != "" {
-		return 0, reason
-	}
-	return names.Add([]byte(name)), ""
 }

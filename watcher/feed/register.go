@@ -101,13 +101,13 @@ func (t *table) amount(column string) float64 {
 // checkHeader wants every required column, and none that is unknown: a misspelt one would be lost in silence.
 func checkHeader(cells []headerCell, known, required []string) *fault {
 	for _, c := range cells {
-		if !slices.Contains(known, c.name) {
-			return &fault{column: c.column, cell: c.name, reason: "unknown column; known are " + strings.Join(known, ", ")}
+		if !slices.Contains(known, string(c.name)) {
+			return c.bad("unknown column; known are " + strings.Join(known, ", "))
 		}
 	}
 	for _, name := range required {
-		if _, bad := columnNamed(cells, name); bad != nil {
-			return bad
+		if columnNamed(cells, name) < 0 {
+			return noColumn(cells, name)
 		}
 	}
 	return repeated(cells, false)

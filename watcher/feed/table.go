@@ -44,7 +44,7 @@ func readTable(path string, known, required []string) (*table, error) {
 	case t.cur.at == len(text):
 		t.failed = &fault{reason: "the file is empty"}
 	default:
-		if t.cells, t.failed = p.headerCells(&t.cur); t.failed == nil {
+		if t.cells, t.failed = p.cells(&t.cur); t.failed == nil {
 			t.failed = checkHeader(t.cells, known, required)
 		}
 		if t.failed != nil {
@@ -89,7 +89,7 @@ func (t *table) next() bool {
 	}
 	line := t.cur.line
 	t.line = line + 1
-	t.row, t.failed = t.plan.headerCells(&t.cur)
+	t.row, t.failed = t.plan.cells(&t.cur)
 	if t.failed == nil && len(t.row) != len(t.cells) {
 		t.failed = &fault{reason: fmt.Sprintf("the line has %d cells, the header has %d", len(t.row), len(t.cells))}
 	}
@@ -101,10 +101,8 @@ func (t *table) next() bool {
 
 // get is the cell of a column, empty where the file has no such column.
 func (t *table) get(column string) string {
-	for i, c := range t.cells {
-		if c.name == column {
-			return t.row[i].name
-		}
+	if i := columnNamed(t.cells, column); i >= 0 {
+		return string(t.row[i].name)
 	}
 	return ""
 }
@@ -114,12 +112,11 @@ func (t *table) fail(column, reason string) {
 	if t.failed != nil {
 		return
 	}
-	t.failed = &fault{line: t.line, reason: reason}
-	for i, c := range t.cells {
-		if c.name == column {
-			t.failed.column, t.failed.cell = t.row[i].column, t.row[i].name
-		}
+	t.failed = &fault{reason: reason}
+	if i := columnNamed(t.cells, column); i >= 0 {
+		t.failed = t.row[i].bad(reason)
 	}
+	t.failed.line = t.line
 }
 
 func (t *table) err() error {
