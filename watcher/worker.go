@@ -52,7 +52,6 @@ type hit struct {
 	fresh    bool
 	flagged  bool
 	verdicts []rules.Verdict // by lane
-	judged   []bool
 	limits   []rules.Limit
 	broken   []int // indexes of limit ranges that it breaks
 	outsize  bool

@@ -6,7 +6,6 @@ import (
 	"os/exec"
 	"path/filepath"
 	"strings"
-	"syscall"
 	"time"
 )
 
@@ -76,8 +75,8 @@ func (d *desk) run(args ...string) (usage, error) {
 	if err != nil {
 		return usage{}, fmt.Errorf("strayd %s: %w\n%s", strings.Join(args, " "), err, errs.String())
 	}
-	r := cmd.ProcessState.SysUsage().(*syscall.Rusage)
-	return usage{wall, cmd.ProcessState.UserTime() + cmd.ProcessState.SystemTime(), r.Maxrss << 10, r.Oublock * 512}, nil
+	peak, written := resources(cmd.ProcessState)
+	return usage{wall, cmd.ProcessState.UserTime() + cmd.ProcessState.SystemTime(), peak, written}, nil
 }
 
 // keep sets the ledger aside under a name; back puts a copy of it in place, written out and in the cache.
