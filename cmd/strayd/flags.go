@@ -154,12 +154,13 @@ func firstError(errs ...error) error {
 	return nil
 }
 
+// flagCells are the columns of a flag. The ref is a name, so it is text in JSON too.
 func flagCells(g *rules.Flag) []cell {
 	line := null
 	if g.Line > 0 {
 		line = integer(g.Line)
 	}
-	return []cell{integer(g.Ref), moment(g.RaisedAt), date(g.Date), text(g.Series), text(g.Group), text(string(g.Kind)), text(g.Range),
+	return []cell{text(fmt.Sprint(g.Ref)), moment(g.RaisedAt), date(g.Date), text(g.Series), text(g.Group), text(string(g.Kind)), text(g.Range),
 		units(g.Return), number(g.Low), number(g.High), number(g.Z), number(g.Tail), null, null, null, null, null, null,
 		text(string(g.Standing)), null, text(g.Feed), text(g.File), line, text(g.Note)}
 }
