@@ -8,5 +8,5 @@ import (
 // resources gives the peak memory and the bytes written to disk of a process that has ended.
 func resources(p *os.ProcessState) (peak, written int64) {
 	r := p.SysUsage().(*syscall.Rusage)
-	return r.Maxrss << 10, r.Oublock * 512
+	return int64(r.Maxrss) << 10, int64(r.Oublock) * 512
 }
