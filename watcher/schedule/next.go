@@ -3,6 +3,8 @@ package schedule
 import (
 	"sort"
 	"time"
+
+	"strayd/rules"
 )
 
 // Next is the first run after t, in the schedule's zone. It is the zero time only for the zero Schedule.
@@ -34,7 +36,7 @@ func (s Schedule) nextCivil(t time.Time) time.Time {
 	civil := wall(t, s.zone)
 	for {
 		civil = s.search(civil)
-		if at := instant(civil, s.zone); at.After(t) {
+		if at := rules.Instant(civil, s.zone); at.After(t) {
 			return at
 		}
 	}
@@ -78,26 +80,6 @@ func wall(t time.Time, zone *time.Location) time.Time {
 	t = t.In(zone)
 	_, offset := t.Zone()
 	return t.Add(time.Duration(offset) * time.Second).UTC()
-}
-
-// widest is more than any zone's distance from UTC.
-const widest = 36 * time.Hour
-
-// instant is when the clock on the wall first shows the civil time, or the first instant after it when it never does.
-func instant(civil time.Time, zone *time.Location) time.Time {
-	t := civil.Add(-widest).In(zone)
-	for {
-		_, offset := t.Zone()
-		start, end := t.ZoneBounds()
-		at := civil.Add(-time.Duration(offset) * time.Second).In(zone)
-		if at.Before(start) {
-			return start
-		}
-		if end.IsZero() || at.Before(end) {
-			return at
-		}
-		t = end
-	}
 }
 
 func earlier(a, b time.Time) time.Time {

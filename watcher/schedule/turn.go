@@ -33,11 +33,8 @@ func (l *Loop) turn(now time.Time) (turn, bool) {
 		return turn{}, false
 	}
 	s.began, s.asked = now, nil
-	if first.slots > 0 {
-		s.missed += first.slots - 1
-		if first.asked != nil {
-			s.coalesced++
-		}
+	if first.slots > 0 && first.asked != nil {
+		s.coalesced++
 	}
 	return first, true
 }
@@ -92,6 +89,7 @@ func (l *Loop) end(t turn, outcome Outcome, err error) {
 	s.runs++
 	if t.slots > 0 && outcome != Interrupted {
 		s.mark(t.slot)
+		s.missed += t.slots - 1
 	}
 	switch outcome {
 	case Panicked:
