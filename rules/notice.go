@@ -41,7 +41,7 @@ type Notice struct {
 	Attempts int
 	Next     time.Time // not to be sent before
 	Started  time.Time // of the last attempt
-	Ended    time.Time // sent, or failed for good
+	Ended    time.Time // sent, or failed for good; of one put back by a person, when that was
 	Receipt  string    // what the channel gave back, such as a message's id
 	Error    string    // of the last attempt, without secrets
 	Repeat   bool      // an earlier attempt may have got through
