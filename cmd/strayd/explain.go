@@ -52,15 +52,18 @@ func (a *app) explain(c *config.Config, v watcher.View, args []string, rangeName
 	if err != nil {
 		return notFound(err)
 	}
+	if e.flag != nil && e.flag.Series == "" {
+		if format == "table" {
+			return a.explainFile(e.flag)
+		}
+		return fmt.Errorf("flag %d is about file %s, not an observation: see `strayd flags --all --format %s`", e.flag.Ref, e.flag.File, format)
+	}
 	switch format {
 	case "csv":
 		l, err := newListing(a.out, format, historyColumns)
 		return firstError(err, l.row(historyCells(&e.row)...), l.end())
 	case "json":
 		return a.explainJSON(r, e)
-	}
-	if e.flag != nil && e.flag.Series == "" {
-		return a.explainFile(e.flag)
 	}
 	return a.explainTable(r, e)
 }
@@ -130,9 +133,6 @@ func heaviest(rows []watcher.Row) int {
 }
 
 func (a *app) explainJSON(r *watcher.Reader, e *explained) error {
-	if e.flag != nil && e.flag.Series == "" {
-		return fmt.Errorf("flag %d is about file %s, not an observation: see `strayd flags --all --format json`", e.flag.Ref, e.flag.File)
-	}
 	var window, versions []string
 	for _, u := range e.row.Window {
 		window = append(window, object([]string{"date", "return", "used"}, []cell{date(u.Date), units(u.Return), units(u.Used)}, "    ", " "))
