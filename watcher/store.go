@@ -32,6 +32,9 @@ type View interface {
 	Patch(rangeID uint16, date rules.Date, block uint32, from int, dst []int64) error
 	// Marked lists the flagged cells of one date and block, by offset.
 	Marked(date rules.Date, block uint32) ([]int, error)
+	// Layers calls each with every layer of one date and block, oldest first: the step that wrote it and its cells, Missing64
+	// where it has none. The cells are valid in the call only.
+	Layers(w What, date rules.Date, block uint32, each func(step uint32, vals []int64) error) error
 	// Series gives every version of every date of one series, by date, then step.
 	Series(w What, id uint32) ([]Version, error)
 	// Used gives every used value that differs from the return, by date, then step.

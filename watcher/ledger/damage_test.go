@@ -4,11 +4,13 @@ import (
 	"context"
 	"crypto/sha256"
 	"errors"
+	"fmt"
 	"math/rand/v2"
 	"os"
 	"path/filepath"
 	"strings"
 	"testing"
+	"time"
 
 	bolt "go.etcd.io/bbolt"
 
@@ -30,6 +32,9 @@ func furnished(t testing.TB) (path string, heads []string) {
 	for step := uint32(1); step <= 5; step++ {
 		publish(t, l, furnish(rng, step, &ref))
 		if err := l.EndPass(watcher.PassRow{Started: noon, Ended: noon, Program: "v1", Accepted: 1}); err != nil {
+			t.Fatal(err)
+		}
+		if err := l.Done("job", noon.Add(time.Duration(step)*time.Hour)); err != nil {
 			t.Fatal(err)
 		}
 		v, err := l.Read()
@@ -57,6 +62,7 @@ func furnished(t testing.TB) (path string, heads []string) {
 func furnish(rng *rand.Rand, step uint32, ref *uint64) *watcher.Batch {
 	const series = 60
 	b := &watcher.Batch{Step: step, File: fileRow(step), Settings: []byte(strings.Repeat("text ", int(step))),
+		Notices:   []rules.Notice{notice("desk", fmt.Sprint("a", step)), notice("console", fmt.Sprint("b", step))},
 		NewRanges: []watcher.RangeKey{{ID: uint16(step), Key: "range"}},
 		NewNames:  names(int(step-1)*series, series), Record: []watcher.RecordEntry{{Kind: "settings", Who: "ada", At: noon, Body: []byte("{}")}}}
 	for date := rules.Date(step); date < rules.Date(step)+12; date++ {

@@ -13,27 +13,31 @@ import (
 type bucket uint8
 
 const (
-	inMeta     bucket = iota // identity, head, totals, staging
-	inNames                  // chunk | step -> names
-	inReturns                // date | block | step -> column
-	inPrices                 // the same
-	inUsed                   // range | date | block | step -> cells
-	inStates                 // range | block | step -> state
-	inScales                 // range | group | date | step -> deviation
-	inRanges                 // range -> definition
-	inFiles                  // step -> file row
-	inFileAt                 // digest of feed, content and feed settings -> step
-	inPasses                 // number -> pass row
-	inSettings               // number -> text
-	inRecord                 // number -> entry, chained
-	inFlags                  // ref | step -> flag
-	inFlagAt                 // date | series | kind | ref -> nothing
-	inOpen                   // ref -> nothing, for flags that ask something of a person
+	inMeta      bucket = iota // identity, head, totals, staging
+	inNames                   // chunk | step -> names
+	inReturns                 // date | block | step -> column
+	inPrices                  // the same
+	inUsed                    // range | date | block | step -> cells
+	inStates                  // range | block | step -> state
+	inScales                  // range | group | date | step -> deviation
+	inRanges                  // range -> definition
+	inFiles                   // step -> file row
+	inFileAt                  // digest of feed, content and feed settings -> step
+	inPasses                  // number -> pass row
+	inSettings                // number -> text
+	inRecord                  // number -> entry, chained
+	inFlags                   // ref | step -> flag
+	inFlagAt                  // date | series | kind | ref -> nothing
+	inOpen                    // ref -> nothing, for flags that ask something of a person
+	inOutbox                  // number -> notice
+	inOutboxKey               // digest of the dedupe key -> number
+	inQueue                   // channel | number -> state, until the notice is sent or withdrawn
+	inSlots                   // job -> time up to which its slots are done
 	buckets
 )
 
 var bucketNames = [buckets]string{"meta", "names", "returns", "prices", "used", "states", "scales", "ranges", "files", "fileat",
-	"passes", "settings", "record", "flags", "flagat", "open"}
+	"passes", "settings", "record", "flags", "flagat", "open", "outbox", "outboxkey", "queue", "slots"}
 
 func (b bucket) name() []byte { return []byte(bucketNames[b]) }
 
@@ -48,7 +52,7 @@ func bucketOf(w watcher.What) bucket {
 
 // keySize is the fixed length of a bucket's keys, 0 where it varies.
 func (b bucket) keySize() int {
-	return [buckets]int{0, 8, 12, 12, 14, 10, 0, 2, 4, 32, 4, 4, 8, 12, 17, 8}[b]
+	return [buckets]int{0, 8, 12, 12, 14, 10, 0, 2, 4, 32, 4, 4, 8, 12, 17, 8, 8, 32, 0, 0}[b]
 }
 
 // layered says whether the last four bytes of a key are the step that wrote it.
@@ -136,6 +140,14 @@ func placeOfRow(b bucket, key []byte) string {
 		return fmt.Sprintf("index of flags: %s, series %d, flag %d", unordered(get32(key)), get32(key[4:]), get64(key[9:]))
 	case inOpen:
 		return fmt.Sprintf("index of open flags: flag %d", get64(key))
+	case inOutbox:
+		return fmt.Sprintf("notice %d", get64(key))
+	case inQueue:
+		if len(key) >= 10 {
+			return fmt.Sprintf("queue of channel %q: notice %d", key[2:len(key)-8], get64(key[len(key)-8:]))
+		}
+	case inSlots:
+		return fmt.Sprintf("slots of job %q", key)
 	}
 	return fmt.Sprintf("%s: key %x", b, key)
 }

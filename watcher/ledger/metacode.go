@@ -41,12 +41,13 @@ type head struct {
 	passes   uint32
 	nextRef  uint64
 	records  uint64
+	notices  uint64
 	chain    [32]byte // hash of the last entry of the record, zero when there is none
 }
 
 func packHead(dst []byte, h head) []byte {
 	p := packer{dst}
-	for _, v := range []uint64{uint64(h.step), uint64(h.names), uint64(h.settings), uint64(h.passes), h.nextRef, h.records} {
+	for _, v := range []uint64{uint64(h.step), uint64(h.names), uint64(h.settings), uint64(h.passes), h.nextRef, h.records, h.notices} {
 		p.uint(v)
 	}
 	p.raw(h.chain[:])
@@ -56,7 +57,7 @@ func packHead(dst []byte, h head) []byte {
 func unpackHead(v []byte) (h head, ok bool) {
 	u := unpacker{b: v}
 	h.step, h.names, h.settings, h.passes = uint32(u.uint()), uint32(u.uint()), uint32(u.uint()), uint32(u.uint())
-	h.nextRef, h.records = u.uint(), u.uint()
+	h.nextRef, h.records, h.notices = u.uint(), u.uint(), u.uint()
 	copy(h.chain[:], u.raw(32))
 	return h, u.whole()
 }

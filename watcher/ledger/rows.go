@@ -51,7 +51,10 @@ func (w *writer) rows(p *plan) error {
 			return err
 		}
 	}
-	return nil
+	if err := w.withdraw(p.batch.Withdraw); err != nil {
+		return err
+	}
+	return w.enqueue(p.batch.Notices)
 }
 
 func (w *writer) openFlag(f *watcher.FlagRow) error {

@@ -161,6 +161,8 @@ func (c *verifier) counts() error {
 		{inNames, c.seen[inNames].count, (uint64(h.names) + watcher.BlockSize - 1) / watcher.BlockSize},
 		{inFlagAt, c.seen[inFlagAt].count, uint64(c.flagged)},
 		{inOpen, c.seen[inOpen].count, uint64(c.open)},
+		{inOutbox, c.seen[inOutbox].count, h.notices},
+		{inOutboxKey, c.seen[inOutboxKey].count, h.notices},
 	} {
 		if n.got != n.want {
 			return &Damaged{Where: n.in.String(), Why: fmt.Sprintf("%d values are there, and the rest of the ledger says %d", n.got, n.want)}

@@ -27,6 +27,8 @@ func (c *verifier) value(in bucket, key, body []byte) error {
 		return c.entry(key, body)
 	case inFlags, inFlagAt, inOpen:
 		return c.flag(in, key, body)
+	case inOutbox, inOutboxKey, inQueue:
+		return c.outbox(in, key, body)
 	}
 	return c.row(in, key, body)
 }
@@ -40,6 +42,10 @@ func (c *verifier) row(in bucket, key, body []byte) error {
 	case inPasses:
 		_, ok = unpackPass(body)
 		ok = ok && get32(key) >= 1 && get32(key) <= c.v.head.passes
+	case inSlots:
+		u := unpacker{b: body}
+		u.time()
+		ok = u.whole()
 	case inSettings:
 		ok = get32(key) >= 1 && get32(key) <= c.v.head.settings
 	}
