@@ -182,7 +182,12 @@ const (
 	Refused  Outcome = "refused"
 	// Changed is the outcome of a step that holds no file: the settings changed.
 	Changed Outcome = "settings changed"
+	// Overdue is the outcome of a step that holds no file: a feed was not whole by its deadline.
+	Overdue Outcome = "overdue"
 )
+
+// Fileless says that the row's step was made by no file.
+func (r *FileRow) Fileless() bool { return r.Outcome == Changed || r.Outcome == Overdue }
 
 // Counts are the figures of a file or a pass.
 type Counts struct {

@@ -77,7 +77,7 @@ func (w *writer) fileRow(p *plan) error {
 	if err := w.put(inFiles, step, func(dst []byte) []byte { return packFile(dst, &f) }); err != nil {
 		return err
 	}
-	if f.Outcome == watcher.Changed { // there is no file to find again
+	if f.Fileless() { // there is no file to find again
 		return nil
 	}
 	return w.replace(inFileAt, fileDigest(f.File.Feed, f.File.SHA256, f.FeedKey), func(dst []byte) []byte { return append(dst, step...) })

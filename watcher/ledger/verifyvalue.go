@@ -132,7 +132,7 @@ func (c *verifier) file(in bucket, key, body []byte) error {
 		if !ok || get32(key) > c.v.head.step {
 			return malformed(in, key, "it cannot be read, or its step is not published")
 		}
-		if f.Outcome == watcher.Changed {
+		if f.Fileless() {
 			return nil
 		}
 		step, err := c.v.get(inFileAt, fileDigest(f.File.Feed, f.File.SHA256, f.FeedKey))
