@@ -156,12 +156,26 @@ func manyNames(n int) *watcher.Names {
 	return names
 }
 
+// benchSeries is how many series the long files have: 2,000, or STRAYD_BENCH_SERIES.
+func benchSeries() int {
+	if n, err := strconv.Atoi(os.Getenv("STRAYD_BENCH_SERIES")); err == nil {
+		return n
+	}
+	return 2000
+}
+
 // The files lie in the folder of STRAYD_BENCH_DIR and stay there, or else in a folder that is taken away again.
-func BenchmarkLongByDate(b *testing.B) { bench(b, longFeed(), layLong(b, 2000, 5000, byDate), nil) }
+func BenchmarkLongByDate(b *testing.B) {
+	bench(b, longFeed(), layLong(b, benchSeries(), 5000, byDate), nil)
+}
 
-func BenchmarkLongBySeries(b *testing.B) { bench(b, longFeed(), layLong(b, 2000, 5000, bySeries), nil) }
+func BenchmarkLongBySeries(b *testing.B) {
+	bench(b, longFeed(), layLong(b, benchSeries(), 5000, bySeries), nil)
+}
 
-func BenchmarkLongShuffled(b *testing.B) { bench(b, longFeed(), layLong(b, 2000, 5000, shuffled), nil) }
+func BenchmarkLongShuffled(b *testing.B) {
+	bench(b, longFeed(), layLong(b, benchSeries(), 5000, shuffled), nil)
+}
 
 func BenchmarkLongDay(b *testing.B) {
 	bench(b, longFeed(), layLong(b, 1_000_000, 1, byDate), manyNames(1_000_000))

@@ -83,32 +83,7 @@ func (s *dateStyle) date(cell []byte) (rules.Date, string) {
 	if len(cell) != s.width {
 		return rules.NoDate, "date is not written " + s.text
 	}
-	var year, month, day int
-	ok, at := true, 0
-	for _, t := range s.tokens {
-		part := cell[at : at+t.width]
-		at += t.width
-		var v int
-		switch t.kind {
-		case 0:
-			ok = ok && part[0] == t.literal
-		case 'N':
-			month = monthNamed(part)
-			ok = ok && month > 0
-		default:
-			v, ok = digitsOnly(part, ok)
-		}
-		switch t.kind {
-		case 'Y':
-			year = v
-		case 'y':
-			year = fullYear(v)
-		case 'M':
-			month = v
-		case 'D':
-			day = v
-		}
-	}
+	year, month, day, ok := s.fields(cell)
 	if !ok {
 		return rules.NoDate, "date is not written " + s.text
 	}
@@ -117,6 +92,32 @@ func (s *dateStyle) date(cell []byte) (rules.Date, string) {
 		return rules.NoDate, "the calendar has no such day (read as " + s.text + ")"
 	}
 	return d, ""
+}
+
+// fields takes a cell of the style's width apart.
+func (s *dateStyle) fields(cell []byte) (year, month, day int, ok bool) {
+	ok = true
+	for _, t := range s.tokens {
+		part := cell[:t.width]
+		cell = cell[t.width:]
+		switch t.kind {
+		case 'Y':
+			year, ok = digitsOnly(part, ok)
+		case 'y':
+			year, ok = digitsOnly(part, ok)
+			year = fullYear(year)
+		case 'M':
+			month, ok = digitsOnly(part, ok)
+		case 'D':
+			day, ok = digitsOnly(part, ok)
+		case 'N':
+			month = monthNamed(part)
+			ok = ok && month > 0
+		default:
+			ok = ok && part[0] == t.literal
+		}
+	}
+	return year, month, day, ok
 }
 
 func digitsOnly(part []byte, ok bool) (int, bool) {
