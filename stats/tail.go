@@ -31,7 +31,7 @@ func RawT(df float64) (Tail, error) {
 	if !(df >= 1 && df <= MaxDF) {
 		return Tail{}, fmt.Errorf("degrees of freedom %v: need 1 to %d", df, int(MaxDF))
 	}
-	return Tail{df, 1, peak(df)}, nil
+	return Tail{df: df, factor: 1, peak: peak(df)}, nil
 }
 
 // ScaledT is Student's t scaled to unit variance: t = z sqrt(df/(df-2)). df is above 2, at most MaxDF.
@@ -39,7 +39,7 @@ func ScaledT(df float64) (Tail, error) {
 	if !(df > 2 && df <= MaxDF) {
 		return Tail{}, fmt.Errorf("degrees of freedom %v of a t scaled to unit variance: need more than 2, at most %d", df, int(MaxDF))
 	}
-	return Tail{df, math.Sqrt(df / (df - 2)), peak(df)}, nil
+	return Tail{df: df, factor: math.Sqrt(df / (df - 2)), peak: peak(df)}, nil
 }
 
 // half is the probability on one side of a z >= 0, kept so that neither end loses its digits.
