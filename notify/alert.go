@@ -14,7 +14,8 @@ func (t *Teller) alert(news rules.News, e event, read time.Time) []string {
 	for _, f := range e {
 		lines = append(lines, rangeLine(f))
 	}
-	return append(lines, noteLine(e), pendingLine(e), t.fileLine(news, e), t.ownerLine(e[0], read), answerLine(e))
+	lines = append(lines, noteLines(e)...)
+	return append(lines, pendingLine(e), t.fileLine(news, e), t.ownerLine(e[0], read), answerLine(e))
 }
 
 // head is the first line, complete alone: what, which series, the value, the valuation date and the ref. The word before the value
@@ -92,8 +93,8 @@ func rangeLine(f *rules.FlagNews) string {
 	return s
 }
 
-// noteLine joins what the flags say beside their figures.
-func noteLine(e event) string {
+// noteLines join what the flags say beside their figures: in one line, or in up to three where a file or feed has names to tell.
+func noteLines(e event) []string {
 	var notes []string
 	for _, f := range e {
 		if f.Note != "" {
@@ -102,9 +103,12 @@ func noteLine(e event) string {
 	}
 	s := strings.Join(notes, "; ")
 	if e[0].Kind == rules.KindRefused {
-		return "Nothing of it was taken: " + s
+		s = "nothing of it was taken: " + s
 	}
-	return upperFirst(s)
+	if !wholeFeed(e[0].Kind) {
+		return []string{upperFirst(s)}
+	}
+	return wrap(upperFirst(s), 3)
 }
 
 // pendingLine says what the window makes of the value until somebody decides.

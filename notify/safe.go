@@ -40,8 +40,29 @@ func cut(s string, most int) string {
 	return strings.TrimRight(string(runes[:most-3]), " ") + "..."
 }
 
-// name makes a name from a file safe and short enough to stand within a line.
-func name(s string) string { return cut(safe(s), nameRunes) }
+// name makes a name from a file safe and short enough to stand within a line. A name that shows nothing is quoted.
+func name(s string) string {
+	s = cut(strings.TrimSpace(safe(s)), nameRunes)
+	if s == "" {
+		return `""`
+	}
+	return s
+}
+
+// wrap breaks a text into so many lines, at spaces where there are any. What goes beyond is left to the last line's cut.
+func wrap(s string, most int) []string {
+	var lines []string
+	for len(lines) < most-1 && utf8.RuneCountInString(s) > lineRunes {
+		runes := []rune(s)
+		line := string(runes[:lineRunes])
+		if at := strings.LastIndexByte(line, ' '); at > 0 {
+			line = line[:at]
+		}
+		lines = append(lines, line)
+		s = strings.TrimSpace(s[len(line):])
+	}
+	return append(lines, s)
+}
 
 // fit holds the lines of a notice to its bounds. Empty lines are left out.
 func fit(lines []string) []string {
