@@ -77,8 +77,7 @@ func (l *Ledger) rewrite() (temp string, err error) {
 		return "", err
 	}
 	defer guard(l.path, debug.SetPanicOnFault(true), &err)
-	db, err := bolt.Open(temp, 0o600, &bolt.Options{FreelistType: bolt.FreelistMapType, NoStatistics: true,
-		InitialMmapSize: addressRoom(l.path, reserve)})
+	db, err := bolt.Open(temp, 0o600, &bolt.Options{FreelistType: bolt.FreelistMapType, NoStatistics: true})
 	if err != nil {
 		return temp, err
 	}

@@ -9,5 +9,6 @@
 // Traps. Values handed to bbolt must stay untouched until the commit, so the arena of encoded values is reused only between
 // commits. A leaf holds two keys at least and splits only above four: column values are sized so that two of them fill eight
 // pages. What bbolt panics about, and faults in the mapped file, come back as *Damaged from every method, on whichever
-// goroutine it runs. Slices into the map never leave the package.
+// goroutine it runs. Slices into the map never leave the package. A file that outgrows the address space set aside on opening
+// (16 GiB, less under a limit of the process) is mapped anew, and that waits for every open reading.
 package ledger

@@ -3,6 +3,7 @@ package ledger
 import (
 	"errors"
 	"fmt"
+	"math"
 	"os"
 	"path/filepath"
 	"runtime/debug"
@@ -51,7 +52,10 @@ type Ledger struct {
 
 // reserve is how much address space is set aside, so that a growing file is not mapped anew: a writer would have to wait for
 // every open reading. Only addresses are used up.
-const reserve = int64(16) << 30
+const (
+	reserve      = int64(16) << 30
+	leastReserve = 64 << 20
+)
 
 // Open opens a ledger. Errors: ErrMissing, ErrEmpty, ErrHeld, ErrExists, ErrFilesystem (each wrapped with the path), *Foreign,
 // *Newer, *Damaged.
@@ -123,9 +127,14 @@ func (l *Ledger) sameFile() error {
 	return nil
 }
 
+// open asks for less address space each time that it is refused (a limit of the process); the last time for no more than the
+// file takes.
 func open(path string, o Options) (*Ledger, error) {
-	for _, room := range []int64{reserve, 0} {
-		l, err := tryOpen(path, o, room)
+	for room := addressRoom(path); ; room /= 4 {
+		if room < leastReserve {
+			room = 0
+		}
+		l, err := tryOpen(path, o, int(room))
 		switch {
 		case err == nil:
 			return l, nil
@@ -135,7 +144,6 @@ func open(path string, o Options) (*Ledger, error) {
 			return nil, err
 		}
 	}
-	return nil, nil
 }
 
 func isDamaged(err error) bool {
@@ -144,7 +152,7 @@ func isDamaged(err error) bool {
 }
 
 // tryOpen opens the file with room bytes of address space.
-func tryOpen(path string, o Options, room int64) (l *Ledger, err error) {
+func tryOpen(path string, o Options, room int) (l *Ledger, err error) {
 	l = &Ledger{path: path, commitSize: commitSize}
 	defer func() {
 		if err != nil && l.file != nil {
@@ -158,7 +166,7 @@ func tryOpen(path string, o Options, room int64) (l *Ledger, err error) {
 		FreelistType:    bolt.FreelistMapType,
 		PreLoadFreelist: true,
 		NoStatistics:    true,
-		InitialMmapSize: addressRoom(path, room),
+		InitialMmapSize: room,
 		OpenFile:        l.openFile,
 	})
 	if errors.Is(err, bolterrors.ErrInvalid) || errors.Is(err, bolterrors.ErrChecksum) || errors.Is(err, bolterrors.ErrVersionMismatch) {
@@ -174,14 +182,16 @@ func (l *Ledger) openFile(name string, flag int, mode os.FileMode) (*os.File, er
 	return f, err
 }
 
-func addressRoom(path string, room int64) int {
+// addressRoom is the address space to ask for first.
+func addressRoom(path string) int64 {
+	room := reserve
 	if strconv.IntSize == 32 {
 		room /= 64
 	}
-	if info, err := os.Stat(path); err == nil && room > 0 {
+	if info, err := os.Stat(path); err == nil {
 		room = max(room, 4*info.Size())
 	}
-	return int(room)
+	return min(room, math.MaxInt)
 }
 
 // identify checks that the file is a ledger, and not of a later schema than own.
