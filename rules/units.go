@@ -4,7 +4,6 @@ import (
 	"errors"
 	"fmt"
 	"math"
-	"math/bits"
 	"strconv"
 	"strings"
 )
@@ -68,50 +67,6 @@ var (
 	ErrTooLarge = errors.New("too large")
 )
 
-// Fixed turns mantissa x 10^-decimals into an integer at the given number of places, rounding half to even.
-// decimals may be negative. ErrTooLarge is returned when the result does not fit in 63 bits.
-func Fixed(mantissa int64, decimals, places int) (int64, error) {
-	shift := places - decimals
-	if mantissa == 0 {
-		return 0, nil
-	}
-	neg := mantissa < 0
-	m := uint64(mantissa)
-	if neg {
-		m = -m
-	}
-	switch {
-	case shift > 18:
-		return 0, ErrTooLarge
-	case shift >= 0:
-		hi, lo := bits.Mul64(m, pow10[shift])
-		if hi != 0 || lo > math.MaxInt64 {
-			return 0, ErrTooLarge
-		}
-		m = lo
-	case shift < -19:
-		m = 0
-	default:
-		m = divHalfEven(m, pow10[-shift])
-	}
-	if m > math.MaxInt64 {
-		return 0, ErrTooLarge
-	}
-	if neg {
-		return -int64(m), nil
-	}
-	return int64(m), nil
-}
-
-func divHalfEven(m, d uint64) uint64 {
-	q, r := m/d, m%d
-	half := d / 2 // every divisor is a power of ten, so even (or 1, with no remainder)
-	if r > half || r == half && d > 1 && q&1 == 1 {
-		q++
-	}
-	return q
-}
-
 var pow10 = func() (p [20]uint64) {
 	p[0] = 1
 	for i := 1; i < len(p); i++ {
@@ -133,38 +88,58 @@ func ParseUnits(s string) (Units, error) {
 	} else if rest, ok := strings.CutSuffix(body, "bp"); ok {
 		body, shift = strings.TrimSpace(rest), 4
 	}
-	mantissa, decimals, err := ParseDecimal(body)
+	neg, digits, decimals, err := splitDecimal(body)
 	if err != nil {
 		return 0, fmt.Errorf("%q: %w", s, err)
 	}
-	v, err := Fixed(mantissa, decimals+shift, Places)
-	if err != nil || Units(v) == Missing {
+	v, ok := roundAt(digits, len(digits)+Places-decimals-shift)
+	if !ok {
 		return 0, fmt.Errorf("%q: %w", s, ErrTooLarge)
+	}
+	if neg {
+		v = -v
 	}
 	return Units(v), nil
 }
 
-// ParseDecimal splits a plain or exponent decimal ("-12.34", "1.5e-3") into an integer mantissa and its number of decimals.
-// Digits beyond the eighteenth significant one are cut, leaving a trace in the last kept digit, so that rounding the result
-// once more (Fixed) is correct to the last place.
-func ParseDecimal(s string) (mantissa int64, decimals int, err error) {
-	body, neg := s, false
+// roundAt keeps so many of the digits, zeros added where they are fewer, and rounds half to even by the rest. digits has no leading
+// zero. ok is false when the result does not fit in 63 bits.
+func roundAt(digits string, keep int) (v int64, ok bool) {
+	switch {
+	case keep < 0 || digits == "":
+		return 0, true
+	case keep > 19:
+		return 0, false
+	case keep > len(digits):
+		digits += strings.Repeat("0", keep-len(digits))
+	}
+	m, rest := uint64(0), digits[keep:]
+	for _, c := range []byte(digits[:keep]) {
+		m = m*10 + uint64(c-'0') // at most 19 digits fit in 64 bits
+	}
+	if rest != "" && (rest[0] > '5' || rest[0] == '5' && (m&1 == 1 || strings.Trim(rest[1:], "0") != "")) {
+		m++
+	}
+	return int64(m), m <= math.MaxInt64
+}
+
+// splitDecimal takes a plain or exponent decimal ("-12.34", "1.5e-3") apart: its value is digits x 10^-decimals. digits has no leading
+// zero and is "" for zero.
+func splitDecimal(s string) (neg bool, digits string, decimals int, err error) {
+	body := s
 	if len(body) > 0 && (body[0] == '-' || body[0] == '+') {
 		neg = body[0] == '-'
 		body = body[1:]
 	}
 	body, exp, err := cutExponent(body)
 	if err != nil {
-		return 0, 0, err
+		return false, "", 0, err
 	}
-	m, decimals, err := digits(body)
-	if err != nil {
-		return 0, 0, err
+	whole, frac, point := strings.Cut(body, ".")
+	if whole == "" || point && frac == "" || strings.Trim(whole+frac, "0123456789") != "" {
+		return false, "", 0, ErrNotNumber
 	}
-	if neg {
-		m = -m
-	}
-	return m, decimals - exp, nil
+	return neg, strings.TrimLeft(whole+frac, "0"), len(frac) - exp, nil
 }
 
 func cutExponent(s string) (body string, exp int, err error) {
@@ -181,35 +156,6 @@ func cutExponent(s string) (body string, exp int, err error) {
 		return "", 0, ErrNotNumber
 	}
 	return s[:i], exp, nil
-}
-
-// digits reads digits with at most one point and at least one digit on each side that is there.
-func digits(s string) (m int64, decimals int, err error) {
-	whole, frac, point := strings.Cut(s, ".")
-	if whole == "" || point && frac == "" {
-		return 0, 0, ErrNotNumber
-	}
-	text := whole + frac
-	for i := range len(text) {
-		if text[i] < '0' || text[i] > '9' {
-			return 0, 0, ErrNotNumber
-		}
-	}
-	decimals = len(frac)
-	text = strings.TrimLeft(text, "0")
-	if len(text) <= 18 {
-		if text == "" {
-			return 0, 0, nil
-		}
-		m, err = strconv.ParseInt(text, 10, 64)
-		return m, decimals, err
-	}
-	m, _ = strconv.ParseInt(text[:18], 10, 64)
-	decimals -= len(text) - 18
-	if strings.Trim(text[18:], "0") != "" && m%5 == 0 {
-		m++ // a trace of what was cut, so that rounding at a coarser place still sees which side of the half it lies on
-	}
-	return m, decimals, nil
 }
 
 // unitsUp and unitsDown turn a line into whole units, rounding up and down. Lines beyond the window limit are held to it.
