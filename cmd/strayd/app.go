@@ -26,6 +26,10 @@ type app struct {
 	out, err   io.Writer
 	configPath string
 	nowText    string
+	held       *daemon // the daemon that carries this command out, nil on its own
+	who        string  // who called the daemon
+	dir        string  // the caller's folder
+	args       []string
 	started    bool // a command's own code has begun: errors before it are wrong usage
 }
 
@@ -45,9 +49,19 @@ func (a *app) now() (time.Time, error) {
 	return time.Time{}, usagef("--now %q is not a time such as 2026-03-13 or 2026-03-13T07:00:00Z", a.nowText)
 }
 
-// load reads the configuration and says on stderr what is set for a later version.
+// configOptions are what reading a configuration needs from other rooms.
+func configOptions() config.Options { return config.Options{Cron: schedule.Check} }
+
+// load reads the configuration; beside a daemon it is the one in force there.
 func (a *app) load() (*config.Config, error) {
-	c, err := config.Load(a.configPath, config.Options{Cron: schedule.Check})
+	if a.held != nil {
+		if a.nowText != "" {
+			return nil, usagef("--now does not go with a running daemon, which goes by the clock")
+		}
+		c, _, _ := a.held.inForce()
+		return c, nil
+	}
+	c, err := config.Load(a.configPath, configOptions())
 	if errors.Is(err, os.ErrNotExist) {
 		fmt.Fprintf(a.err, "strayd: no configuration %s here; name yours with --config, or begin with `strayd check --example > %s`\n", a.configPath, a.configPath)
 		return nil, quiet{exitConfig}
@@ -67,21 +81,31 @@ func openLedger(c *config.Config, mode ledger.Mode) (*ledger.Ledger, error) {
 	return ledger.Open(c.Ledger, ledger.Options{Mode: mode})
 }
 
-// reading loads the configuration, opens a view of its ledger and calls do with it.
-func (a *app) reading(do func(c *config.Config, v watcher.View) error) error {
+// withLedger loads the configuration, opens its ledger, or takes the daemon's, and calls do with it.
+func (a *app) withLedger(mode ledger.Mode, do func(*config.Config, *ledger.Ledger) error) error {
 	c, err := a.load()
 	if err != nil {
 		return err
 	}
-	l, err := openLedger(c, ledger.ReadOnly)
+	if a.held != nil {
+		return do(c, a.held.ledger)
+	}
+	l, err := openLedger(c, mode)
 	if err != nil {
 		return err
 	}
-	v, err := l.View()
-	if err != nil {
-		return errors.Join(err, l.Close())
-	}
-	return errors.Join(do(c, v), v.Close(), l.Close())
+	return errors.Join(do(c, l), l.Close())
+}
+
+// reading opens a view of the configuration's ledger and calls do with it.
+func (a *app) reading(do func(c *config.Config, v watcher.View) error) error {
+	return a.withLedger(ledger.ReadOnly, func(c *config.Config, l *ledger.Ledger) error {
+		v, err := l.View()
+		if err != nil {
+			return err
+		}
+		return errors.Join(do(c, v), v.Close())
+	})
 }
 
 // settings are what decides verdicts, from the configuration and its register.
@@ -116,8 +140,11 @@ func reader(c *config.Config, v watcher.View) (*watcher.Reader, error) {
 	return r, err
 }
 
-// actor is who acts: the operating system's user, never an option.
-func actor() string {
+// actor is who acts: the operating system's user, or the peer of the daemon's socket; never an option.
+func (a *app) actor() string {
+	if a.who != "" {
+		return a.who
+	}
 	uid := fmt.Sprint(os.Getuid())
 	if u, err := user.Current(); err == nil {
 		return fmt.Sprintf("%s (uid %s)", u.Username, uid)

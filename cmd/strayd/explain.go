@@ -33,7 +33,7 @@ Without --range, the range of the flag, or the one whose verdict weighs most, is
 	}
 	cmd.Flags().StringVar(&rangeName, "range", "", "explain the verdict under this `RANGE`")
 	cmd.Flags().StringVar(&format, "format", "table", "`FORMAT`: table, csv or json")
-	return cmd
+	return beside(cmd)
 }
 
 // explained is one verdict with all that stands behind it.

@@ -50,7 +50,7 @@ With --blocking GROUP, exit code 1 while a flag of that group holds its release 
 	s.StringVar(&f.feed, "feed", "", "of this `FEED`")
 	s.StringVar(&f.blocking, "blocking", "", "of this `GROUP`, exit code 1 when there is one")
 	s.StringVar(&f.format, "format", "table", "`FORMAT`: table, csv or json")
-	return cmd
+	return beside(cmd)
 }
 
 func (f *flagFilter) check() (err error) {

@@ -28,7 +28,7 @@ the configuration. Returns are fractions in CSV and JSON; low and high are the b
 	cmd.Flags().StringVar(&from, "from", "", "first valuation `DATE`")
 	cmd.Flags().StringVar(&to, "to", "", "last valuation `DATE`")
 	cmd.Flags().StringVar(&format, "format", "table", "`FORMAT`: table, csv or json")
-	return cmd
+	return beside(cmd)
 }
 
 func (a *app) history(series, from, to, format string) error {

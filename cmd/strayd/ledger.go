@@ -37,7 +37,7 @@ With --head, the hash that was noted before must occur in the record, so that a 
 		RunE:    func(*cobra.Command, []string) error { return a.verify(head) },
 	}
 	cmd.Flags().StringVar(&head, "head", "", "`HASH` of the record that was noted before")
-	return cmd
+	return beside(cmd)
 }
 
 func (a *app) verify(head string) error {
@@ -70,38 +70,25 @@ func (a *app) verify(head string) error {
 	})
 }
 
-// withLedger loads the configuration, opens its ledger and calls do with it.
-func (a *app) withLedger(mode ledger.Mode, do func(*config.Config, *ledger.Ledger) error) error {
-	c, err := a.load()
-	if err != nil {
-		return err
-	}
-	l, err := openLedger(c, mode)
-	if err != nil {
-		return err
-	}
-	return errors.Join(do(c, l), l.Close())
-}
-
 func (a *app) backupCommand() *cobra.Command {
-	return &cobra.Command{
+	return beside(&cobra.Command{
 		Use:     "backup FILE",
 		Short:   "Copy the ledger, verified, to a new file",
 		Example: "  strayd ledger backup /backup/ledger-2026-03-13.db",
 		Args:    takes(1, 1),
 		RunE: func(_ *cobra.Command, args []string) error {
-			if _, err := os.Lstat(args[0]); err == nil {
+			if _, err := os.Lstat(a.path(args[0])); err == nil {
 				return fmt.Errorf("%s is there already; a backup never replaces a file", args[0])
 			}
 			return a.withLedger(ledger.ReadOnly, func(_ *config.Config, l *ledger.Ledger) error {
-				r, err := l.Backup(a.ctx, args[0])
+				r, err := l.Backup(a.ctx, a.path(args[0]))
 				if err == nil {
 					fmt.Fprintf(a.out, "Backed up step %d to %s, verified.\n", r.Step, args[0])
 				}
 				return err
 			})
 		},
-	}
+	})
 }
 
 func (a *app) restoreCommand() *cobra.Command {
@@ -169,7 +156,7 @@ With --what prices, the prices of price feeds instead.`,
 	}
 	cmd.Flags().StringVar(&format, "format", "csv", "`FORMAT`: csv")
 	cmd.Flags().StringVar(&what, "what", "returns", "`WHAT`: returns or prices")
-	return cmd
+	return beside(cmd)
 }
 
 func (a *app) export(what string) error {

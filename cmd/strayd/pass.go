@@ -31,27 +31,28 @@ Exit code 1 when a file was refused or could not be read; flags do not change it
 		},
 	}
 	cmd.Flags().BoolVar(&settled, "settled", false, "take my word that every file is whole")
-	return cmd
+	return beside(cmd)
 }
 
 func (a *app) pass(only string, settled bool) error {
-	c, err := a.load()
-	if err != nil {
-		return err
-	}
-	a.sayLater(c)
-	if only != "" && c.FeedKey(only) == "" {
-		return usagef("no feed %q in %s", only, c.File)
-	}
-	l, err := openLedger(c, ledger.ReadWrite)
-	if err != nil {
-		return err
-	}
-	return errors.Join(a.passOver(c, l, only, settled), l.Close())
+	return a.withLedger(ledger.ReadWrite, func(c *config.Config, l *ledger.Ledger) error {
+		a.sayLater(c)
+		if only != "" && c.FeedKey(only) == "" {
+			return usagef("no feed %q in %s", only, c.File)
+		}
+		if d := a.held; d != nil { // the daemon delivers, and makes one pass at a time
+			d.passing.Lock()
+			defer d.passing.Unlock()
+			defer d.wake()
+			return a.passOver(c, l, only, settled)
+		}
+		err := a.passOver(c, l, only, settled)
+		return errors.Join(err, a.deliver(c, l))
+	})
 }
 
 // passOver runs one pass over an open ledger and prints what became of each file.
-func (a *app) passOver(c *config.Config, l watcher.Store, only string, settled bool) error {
+func (a *app) passOver(c *config.Config, l *ledger.Ledger, only string, settled bool) error {
 	p, err := a.newPass(c, l)
 	if err != nil {
 		return err
@@ -78,8 +79,9 @@ func (a *app) newPass(c *config.Config, l watcher.Store) (*watcher.Pass, error) 
 	if err != nil {
 		return nil, err
 	}
-	return &watcher.Pass{Store: l, Source: source{}, Settings: s, Feeds: c.Feeds, FeedKey: config.FeedKey, Now: now, Who: actor(),
-		Program: version}, nil
+	teller := newTeller(c, ownersOf(s.Register))
+	return &watcher.Pass{Store: l, Source: source{}, Settings: s, Feeds: c.Feeds, FeedKey: config.FeedKey, Now: now, Who: a.actor(),
+		Program: version, Tell: teller.Notices}, nil
 }
 
 func (a *app) sayFile(r watcher.FileReport) {

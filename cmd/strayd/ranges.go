@@ -1,7 +1,6 @@
 package main
 
 import (
-	"errors"
 	"fmt"
 
 	"github.com/spf13/cobra"
@@ -35,19 +34,11 @@ low and high are the breach line's.`,
 		},
 	}
 	cmd.Flags().StringVar(&format, "format", "table", "`FORMAT`: table, csv or json")
-	return cmd
+	return beside(cmd)
 }
 
 func (a *app) ranges(only, format string) error {
-	c, err := a.load()
-	if err != nil {
-		return err
-	}
-	l, err := openLedger(c, ledger.ReadOnly)
-	if err != nil {
-		return err
-	}
-	return errors.Join(a.rangesOf(c, l, only, format), l.Close())
+	return a.withLedger(ledger.ReadOnly, func(c *config.Config, l *ledger.Ledger) error { return a.rangesOf(c, l, only, format) })
 }
 
 func (a *app) rangesOf(c *config.Config, l watcher.Store, only, format string) error {

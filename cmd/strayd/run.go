@@ -34,29 +34,33 @@ type usageError struct{ error }
 func usagef(format string, args ...any) error { return usageError{fmt.Errorf(format, args...)} }
 
 // run carries out one command line and gives its exit code. No stack trace reaches a person.
-func run(ctx context.Context, args []string, stdout, stderr io.Writer) (code int) {
+func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
+	return (&app{ctx: ctx, out: stdout, err: stderr}).execute(args)
+}
+
+func (a *app) execute(args []string) (code int) {
 	defer func() {
 		if r := recover(); r != nil {
-			fmt.Fprintf(stderr, "strayd: internal error: %v\nThis is a fault of the program, not of your data. What was published before it stands; `strayd ledger verify` checks it.\n", r)
+			fmt.Fprintf(a.err, "strayd: internal error: %v\nThis is a fault of the program, not of your data. What was published before it stands; `strayd ledger verify` checks it.\n", r)
 			code = exitFailed
 		}
 	}()
-	a := &app{ctx: ctx, out: stdout, err: stderr}
+	a.args = args
 	root := a.root()
 	root.SetArgs(args)
-	root.SetOut(stdout)
-	root.SetErr(stderr)
-	err := root.ExecuteContext(ctx)
+	root.SetOut(a.out)
+	root.SetErr(a.err)
+	err := root.ExecuteContext(a.ctx)
 	if err == nil {
 		return exitDone
 	}
 	code = a.codeOf(err)
 	var q quiet
 	if !errors.As(err, &q) {
-		fmt.Fprintf(stderr, "strayd: %v\n", err)
+		fmt.Fprintf(a.err, "strayd: %v\n", err)
 	}
 	if code == exitUsage {
-		fmt.Fprintln(stderr, "See `strayd help`, or `strayd COMMAND --help`.")
+		fmt.Fprintln(a.err, "See `strayd help`, or `strayd COMMAND --help`.")
 	}
 	return code
 }
@@ -105,8 +109,9 @@ A flag is a statistical statement about past data: neither advice nor a finding 
 		SilenceErrors: true,
 		SilenceUsage:  true,
 		Args:          cobra.NoArgs,
-		PersistentPreRun: func(*cobra.Command, []string) {
+		PersistentPreRunE: func(cmd *cobra.Command, _ []string) error {
 			a.started = true
+			return a.handOver(cmd)
 		},
 		RunE: func(cmd *cobra.Command, _ []string) error { return cmd.Help() },
 	}
@@ -114,7 +119,7 @@ A flag is a statistical statement about past data: neither advice nor a finding 
 	root.PersistentFlags().StringVar(&a.configPath, "config", "strayd.yaml", "configuration `FILE`")
 	root.PersistentFlags().StringVar(&a.nowText, "now", "", "take this `TIME` for the clock: 2026-03-13 or 2026-03-13T07:00:00Z")
 	root.AddCommand(a.demoCommand(), a.initCommand(), a.checkCommand(), a.passCommand(), a.flagsCommand(), a.explainCommand(),
-		a.historyCommand(), a.rangesCommand(), a.ledgerCommand())
+		a.historyCommand(), a.rangesCommand(), a.runCommand(), a.noticesCommand(), a.ledgerCommand())
 	return root
 }
 
