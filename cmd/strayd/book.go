@@ -16,6 +16,8 @@ ledger: ledger.db
 feeds:
   - name: administrator
     files: inbox/*.csv
+    schedule: "*/10 17-20 * * mon-fri"
+    due: {at: "19:30"}            # whole by then, or the feed is late
     unit: percent                 # 1.25 in the file is a return of 1.25 %
 series: series.csv                # who is in which group
 groups:
@@ -105,10 +107,14 @@ func (b *book) day() []float64 {
 	return out
 }
 
-// bookFile is one file that arrives, with what happens in it.
-type bookFile struct {
-	name, content, story string
-	at                   time.Time
+// scene is one thing that happens in the demo's week.
+type scene struct {
+	at      time.Time
+	story   string
+	name    string     // of a file that arrives; "" for none
+	content string     // of it
+	due     rules.Date // the date whose deadline passes; NoDate for none
+	line    bool       // the daily line is due
 }
 
 const bookHeader = "date,series,return\n"
@@ -128,44 +134,64 @@ func (b *book) at(id string) int {
 	panic("no fund " + id)
 }
 
-// files invents the history and the week. Each day of the week has something planted.
-func (b *book) files() []bookFile {
-	var history strings.Builder
-	history.WriteString(bookHeader)
+// file invents the file of a day, with something planted in its values.
+func (b *book) file(d rules.Date, plant func(values []float64)) string {
+	values := b.day()
+	plant(values)
+	var s strings.Builder
+	s.WriteString(bookHeader)
+	b.rows(&s, d, values)
+	return s.String()
+}
+
+func (b *book) past() string {
+	var s strings.Builder
+	s.WriteString(bookHeader)
 	for _, d := range b.history {
-		b.rows(&history, d, b.day())
+		b.rows(&s, d, b.day())
 	}
-	out := []bookFile{{"history.csv", history.String(), "The first load: a year of history.", b.week[0].Time().Add(7 * time.Hour)}}
-	plants := []struct {
-		story string
-		plant func(values []float64)
-	}{
-		{"An ordinary day.", func([]float64) {}},
-		{"One row arrives a hundred times too large (planted).", func(v []float64) { v[b.at("cedar-growth")] = 128.4071 }},
-		{"A distribution of 3.9 % is missing from one fund (planted).", func(v []float64) { v[b.at("birch-income")] -= 3.9 }},
-		{"The file breaks off in the middle of a row (planted), and is sent again whole.", func([]float64) {}},
-		{"Tuesday's row is corrected by its sender; a cash fund makes a move that is small, but not for cash (planted).",
-			func(v []float64) { v[b.at("hazel-reserve")] = -0.4210 }},
+	return s.String()
+}
+
+// scenes invent the history and the week. Each day of the week has something planted.
+func (b *book) scenes() []scene {
+	out := []scene{{at: clock(b.week[0], 7, 0), story: "The first load: a year of history.", name: "history.csv", content: b.past(), due: rules.NoDate}}
+	arrives := func(day, hour, minute int, story, content string) {
+		d := b.week[day]
+		out = append(out, scene{clock(d, hour, minute), story, fmt.Sprintf("returns-%s.csv", d), content, rules.NoDate, false})
 	}
-	for n, d := range b.week {
-		values := b.day()
-		plants[n].plant(values)
-		var s strings.Builder
-		s.WriteString(bookHeader)
-		b.rows(&s, d, values)
-		at := d.Time().Add(18*time.Hour + 30*time.Minute)
-		name := fmt.Sprintf("returns-%s.csv", d)
-		switch n {
-		case 3:
-			whole := s.String()
-			broken := whole[:len(whole)-len("hazel-reserve,0.0000\n")] + "hazel-res"
-			out = append(out, bookFile{name, broken, plants[n].story, at})
-			out = append(out, bookFile{name, whole, "The same file, whole.", at.Add(20 * time.Minute)})
-			continue
-		case 4:
-			fmt.Fprintf(&s, "%s,cedar-growth,1.2841\n", b.week[1])
+	line := func(day int) {
+		out = append(out, scene{at: clock(b.week[day], 20, 30), story: "The day's last word.", due: rules.NoDate, line: true})
+	}
+	nothing := func([]float64) {}
+	arrives(0, 18, 30, "An ordinary day.", b.file(b.week[0], nothing))
+	line(0)
+	arrives(1, 18, 30, "One row is a hundred times too large (planted).", b.file(b.week[1], func(v []float64) { v[b.at("cedar-growth")] = 128.4071 }))
+	line(1)
+	whole := b.file(b.week[2], nothing)
+	arrives(2, 18, 30, "The file breaks off in the middle of a row (planted).", whole[:len(whole)-len("hazel-reserve,0.0000\n")]+"hazel-res")
+	arrives(2, 18, 50, "It is sent again, whole.", whole)
+	line(2)
+	out = append(out, scene{at: clock(b.week[3], 19, 30), story: "The deadline passes and no file is there (planted).", due: b.week[3]})
+	arrives(3, 19, 50, "It comes; a distribution of 3.9 % is missing from one fund (planted).",
+		b.file(b.week[3], func(v []float64) { v[b.at("birch-income")] -= 3.9 }))
+	line(3)
+	storm := b.file(b.week[4], func(v []float64) {
+		for i, f := range b.funds {
+			if f.group == "equity" {
+				v[i] -= 6.5 * (0.7 + 0.08*float64(i))
+			}
+			if f.group == "bond" {
+				v[i] += 1.6
+			}
 		}
-		out = append(out, bookFile{name, s.String(), plants[n].story, at})
-	}
+	})
+	arrives(4, 18, 30, "Shares fall and bonds rise (planted); the sender also corrects Tuesday's row.",
+		storm+fmt.Sprintf("%s,cedar-growth,1.2841\n", b.week[1]))
+	line(4)
 	return out
+}
+
+func clock(d rules.Date, hour, minute int) time.Time {
+	return d.Time().Add(time.Duration(hour)*time.Hour + time.Duration(minute)*time.Minute)
 }

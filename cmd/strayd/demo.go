@@ -3,15 +3,16 @@ package main
 import (
 	"errors"
 	"fmt"
+	"io"
 	"os"
 	"path/filepath"
+	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
 
 	"strayd/config"
 	"strayd/rules"
-	"strayd/watcher"
 	"strayd/watcher/ledger"
 )
 
@@ -59,29 +60,48 @@ func (a *app) demo(folder string) error {
 	return errors.Join(a.demoWeek(c, l, folder), l.Close())
 }
 
-// demoWeek drops one file after the other into the inbox and runs a pass on each.
+// demoWeek runs a week as the daemon would, without waiting for it: what arrives is read, deadlines pass, notices go to the console.
 func (a *app) demoWeek(c *config.Config, l *ledger.Ledger, folder string) error {
-	fmt.Fprintf(a.out, "An invented book in %s: 24 funds in 3 groups, a year of history, then one week, a file a day.\n", folder)
-	for _, f := range newBook().files() {
-		if err := os.WriteFile(filepath.Join(folder, "inbox", f.name), []byte(f.content), 0o644); err != nil {
+	fmt.Fprintf(a.out, "An invented book in %s: 24 funds in 3 groups, a year of history, then one week. What the desk would read is set off by a bar.\n", folder)
+	for _, s := range newBook().scenes() {
+		a.nowText = s.at.Format(time.RFC3339)
+		fmt.Fprintf(a.out, "\n%s  %s\n", s.at.Format("Mon 2 Jan 2006 15:04"), s.story)
+		if err := a.play(c, l, folder, s); err != nil {
 			return err
 		}
-		a.nowText = f.at.Format(time.RFC3339)
-		fmt.Fprintf(a.out, "\n%s  %s\n", f.at.Format("Mon 2 Jan 2006 15:04"), f.story)
-		first, err := nextRef(l)
-		if err != nil {
+		if err := a.chat(c, l, s.at); err != nil {
+			return err
+		}
+	}
+	fmt.Fprintf(a.out, "\n%s\n\nLook further (from the source, write go run ./cmd/strayd for strayd):\n", caution)
+	for _, next := range []string{"flags", "explain 10", "history birch-income --from 2026-03-09", "ranges --now 2026-03-16", "ledger verify"} {
+		fmt.Fprintf(a.out, "  strayd --config %s %s\n", filepath.Join(folder, "strayd.yaml"), next)
+	}
+	return nil
+}
+
+// play lets one scene happen.
+func (a *app) play(c *config.Config, l *ledger.Ledger, folder string, s scene) error {
+	switch {
+	case s.name != "":
+		if err := os.WriteFile(filepath.Join(folder, "inbox", s.name), []byte(s.content), 0o644); err != nil {
 			return err
 		}
 		if err := a.passOver(c, l, "", true); err != nil && !isQuiet(err) {
 			return err
 		}
-		if err := a.sayNew(l, first); err != nil {
+	case s.due != rules.NoDate:
+		p, err := a.newPass(c, l)
+		if err != nil {
 			return err
 		}
-	}
-	fmt.Fprintf(a.out, "\n%s\n\nLook further (from the source, write go run ./cmd/strayd for strayd):\n", caution)
-	for _, next := range []string{"flags", "explain 11", "history birch-income --from 2026-03-09", "ranges --now 2026-03-16", "ledger verify"} {
-		fmt.Fprintf(a.out, "  strayd --config %s %s\n", filepath.Join(folder, "strayd.yaml"), next)
+		return p.Deadline(c.Feeds[0], s.due, s.at)
+	case s.line:
+		news, err := dayNews(c, l, nil, s.at)
+		if err != nil {
+			return err
+		}
+		return l.Add(newTeller(c, nil).Daily(news))
 	}
 	return nil
 }
@@ -91,56 +111,27 @@ func isQuiet(err error) bool {
 	return errors.As(err, &q)
 }
 
-func nextRef(l watcher.Store) (uint64, error) {
-	v, err := l.View()
-	if err != nil {
-		return 0, err
+// chat prints the waiting notices as the desk would see them.
+func (a *app) chat(c *config.Config, l *ledger.Ledger, now time.Time) error {
+	bar := &prefixed{w: a.out, prefix: "  | "}
+	desk := &app{ctx: a.ctx, out: bar, err: a.err}
+	for _, ch := range c.Channels {
+		if err := desk.toConsole(l, ch, now); err != nil {
+			return err
+		}
 	}
-	return v.NextRef(), v.Close()
+	return nil
 }
 
-// sayNew prints the flags from a ref on that ask something of a person, each in two lines; the rest are counted.
-func (a *app) sayNew(l watcher.Store, first uint64) error {
-	v, err := l.View()
-	if err != nil {
-		return err
-	}
-	past := 0
-	err = v.Flags(true, func(f rules.Flag) bool {
-		switch {
-		case f.Ref < first:
-		case !f.Standing.Asks():
-			past++
-		default:
-			a.sayFlag(&f)
-		}
-		return true
-	})
-	if past > 0 {
-		fmt.Fprintf(a.out, "  %s of the first load stand as history and ask nothing of anyone.\n", plural(past, "flag"))
-	}
-	return errors.Join(err, v.Close())
+// prefixed writes each line behind a prefix. Every write ends a line.
+type prefixed struct {
+	w      io.Writer
+	prefix string
 }
 
-// sayFlag is a flag in two lines, the first complete alone.
-func (a *app) sayFlag(f *rules.Flag) {
-	if f.Series == "" {
-		fmt.Fprintf(a.out, "  Ref %d  %s: %s\n", f.Ref, f.Kind, printable(f.Note))
-		return
-	}
-	fmt.Fprintf(a.out, "  Ref %d  %s: %s  %s  for %s\n", f.Ref, f.Kind, printable(f.Series), percent(f.Return.Float()), day(f.Date))
-	detail := ""
-	if f.Low.OK || f.High.OK {
-		detail = "expected " + between(f.Low, f.High)
-	}
-	if f.Z.OK {
-		detail += fmt.Sprintf("; z %+.1f, %s", f.Z.V, onceIn(f.Tail))
-	}
-	if f.Note != "" {
-		if detail != "" {
-			detail += "; "
-		}
-		detail += printable(f.Note)
-	}
-	fmt.Fprintf(a.out, "         %s\n", detail)
+// Write writes whole lines.
+func (p *prefixed) Write(b []byte) (int, error) {
+	lines := strings.Split(strings.TrimSuffix(string(b), "\n"), "\n")
+	_, err := io.WriteString(p.w, p.prefix+strings.Join(lines, "\n"+p.prefix)+"\n")
+	return len(b), err
 }

@@ -163,9 +163,16 @@ func array(objects []string) string {
 	return "[\n" + strings.Join(objects, ",\n") + "\n  ]"
 }
 
+// explainFile explains a flag that is about a file or a feed, not an observation.
 func (a *app) explainFile(f *rules.Flag) error {
-	fmt.Fprintf(a.out, "Ref %d: file %s of feed %s was refused on %s, and nothing of it is kept.\n  %s\n", f.Ref, printable(f.File), f.Feed,
-		f.RaisedAt.Format(time.RFC3339), printable(f.Note))
+	at := f.RaisedAt.Format(time.RFC3339)
+	if f.Kind == rules.KindLate {
+		fmt.Fprintf(a.out, "Ref %d: feed %s was not whole for %s when its deadline passed (raised %s).\n  %s\n", f.Ref, f.Feed, day(f.Date), at, printable(f.Note))
+		fmt.Fprintln(a.out, "What has come since is in `strayd flags` and `strayd history SERIES`.")
+		return nil
+	}
+	fmt.Fprintf(a.out, "Ref %d: file %s of feed %s was refused on %s, and nothing of it is kept.\n  %s\n", f.Ref, printable(f.File), f.Feed, at,
+		printable(f.Note))
 	fmt.Fprintln(a.out, "It is tried again when its content or the feed's settings change.")
 	return nil
 }

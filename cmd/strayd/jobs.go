@@ -10,6 +10,7 @@ import (
 	"time"
 
 	"strayd/config"
+	"strayd/notify"
 	"strayd/rules"
 	"strayd/watcher"
 	"strayd/watcher/health"
@@ -176,7 +177,11 @@ func (d *daemon) deadline(ctx context.Context, f rules.Feed, date rules.Date, du
 // daily enqueues the line that says that all was checked.
 func (d *daemon) daily(_ context.Context, slot time.Time) error {
 	c, teller, post := d.inForce()
-	news, err := d.dayNews(c, slot)
+	channels, err := post.sender.Health()
+	if err != nil {
+		return err
+	}
+	news, err := dayNews(c, d.ledger, notify.Troubles(channels), slot)
 	if err != nil {
 		return err
 	}

@@ -92,9 +92,9 @@ func passReport(row watcher.PassRow) health.Pass {
 		Verdicts: map[rules.Finding]int{rules.Inside: n.Inside, rules.Watch: n.Watch, rules.Breach: n.Breach, rules.NotJudged: n.NotJudged}}
 }
 
-// dayNews gathers what the daily line of a slot says.
-func (d *daemon) dayNews(c *config.Config, slot time.Time) (news rules.DayNews, err error) {
-	v, err := d.ledger.View()
+// dayNews gathers what the daily line of a slot says. dead are the channels that do not deliver.
+func dayNews(c *config.Config, l watcher.Store, dead []string, slot time.Time) (news rules.DayNews, err error) {
+	v, err := l.View()
 	if err != nil {
 		return news, err
 	}
@@ -127,11 +127,8 @@ func (d *daemon) dayNews(c *config.Config, slot time.Time) (news rules.DayNews, 
 	if err := countFlags(v, since, &news); err != nil {
 		return news, err
 	}
+	news.Dead = dead
 	news.Head, err = v.Head()
-	_, _, post := d.inForce()
-	if channels, err := post.sender.Health(); err == nil {
-		news.Dead = notify.Troubles(channels)
-	}
 	return news, err
 }
 
