@@ -36,7 +36,7 @@ func (a Access) String() string {
 func (c *Channel) Check(ctx context.Context) (Access, error) {
 	var a Access
 	ctx, connected := traced(ctx)
-	auth, err := c.s.api.AuthTestContext(ctx)
+	auth, err := c.s.api().AuthTestContext(ctx)
 	if err != nil {
 		return a, errors.New(c.s.classify(err, connected.Load()).Reason)
 	}
@@ -57,7 +57,7 @@ func (c *Channel) Check(ctx context.Context) (Access, error) {
 }
 
 func (c *Channel) checkChannel(ctx context.Context, a *Access) error {
-	info, err := c.s.api.GetConversationInfoContext(ctx, &slack.GetConversationInfoInput{ChannelID: c.id})
+	info, err := c.s.api().GetConversationInfoContext(ctx, &slack.GetConversationInfoInput{ChannelID: c.id})
 	var answer slack.SlackErrorResponse
 	switch {
 	case errors.As(err, &answer) && answer.Err == "missing_scope":

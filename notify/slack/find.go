@@ -25,7 +25,7 @@ func (c *Channel) Find(ctx context.Context, n rules.Notice) (notify.Found, strin
 		IncludeAllMetadata: true}
 	readable := false
 	for range pagesMost {
-		page, err := c.s.api.GetConversationHistoryContext(ctx, params)
+		page, err := c.s.api().GetConversationHistoryContext(ctx, params)
 		if err != nil || !page.Ok {
 			return notify.FoundUnknown, ""
 		}

@@ -33,7 +33,7 @@ func (c *Channel) PostPlain(ctx context.Context, n rules.Notice) (string, error)
 
 func (c *Channel) post(ctx context.Context, n rules.Notice, more ...slack.MsgOption) (string, error) {
 	ctx, connected := traced(ctx)
-	channel, stamp, err := c.s.api.PostMessageContext(ctx, c.id, append(more,
+	channel, stamp, err := c.s.api().PostMessageContext(ctx, c.id, append(more,
 		slack.MsgOptionText(fallback(n.Lines), false), // escaped already
 		slack.MsgOptionDisableMarkdown(), slack.MsgOptionDisableLinkUnfurl(), slack.MsgOptionDisableMediaUnfurl())...)
 	switch {

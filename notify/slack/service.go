@@ -23,7 +23,7 @@ type Options struct {
 
 // Service is one workspace, reached with one token.
 type Service struct {
-	api    *slack.Client
+	api    func() *slack.Client // behind a function, since the client holds the token as plain text
 	token  Secret
 	scopes atomic.Pointer[[]string] // of the token, as the last answer that said so named them
 }
@@ -38,8 +38,9 @@ func New(token Secret, o Options) (*Service, error) {
 		return nil, err
 	}
 	s := &Service{token: token}
-	s.api = slack.New(token.reveal(), slack.OptionHTTPClient(httpClient(o)), slack.OptionAPIURL(base),
+	client := slack.New(token.reveal(), slack.OptionHTTPClient(httpClient(o)), slack.OptionAPIURL(base),
 		slack.OptionOnResponseHeaders(func(_ string, h http.Header) { s.noteScopes(h) }))
+	s.api = func() *slack.Client { return client }
 	return s, nil
 }
 
