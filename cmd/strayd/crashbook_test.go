@@ -23,7 +23,6 @@ type delivery struct {
 	dates   []time.Time
 	flags   string        // what `flags --all` lists in the end, from a pass that nobody disturbed
 	lasting time.Duration // of that pass
-	step    uint32        // of the ledger before
 }
 
 // deliveredFile is one file in the order in which a pass takes it.
