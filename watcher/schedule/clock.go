@@ -18,30 +18,39 @@ func (l *Loop) now() time.Time {
 // look reads the clocks, and notes a step when one went further than the other since the last look. A machine that slept looks
 // like a step forward. Slots in a future that the clock has left again are owed anew, except those that ran.
 func (l *Loop) look() time.Time {
-	l.mu.Lock()
-	defer l.mu.Unlock()
 	now, mono := l.now(), time.Now()
 	var step time.Duration
 	if !l.wall.IsZero() {
 		step = now.Sub(l.wall) - mono.Sub(l.mono)
 	}
 	l.wall, l.mono = now, mono
-	back := step < -jump
+	switch owed := l.owe(now); {
+	case owed || step < -jump:
+		l.stepped("the clock went back: slots that ran do not run again", now, step)
+	case step > jump:
+		l.stepped("the clock went forward, or the machine slept", now, step)
+	}
+	return now
+}
+
+// owe makes the slots after now owed again, and says whether there was a job that was done with some of them.
+func (l *Loop) owe(now time.Time) (owed bool) {
+	l.mu.Lock()
+	defer l.mu.Unlock()
 	for _, s := range l.jobs {
 		if s.upto.Sub(now) > jump {
 			s.done(now)
-			back = true
+			owed = true
 		}
 	}
-	switch {
-	case back:
-		l.steps++
-		l.log().Warn("the clock went back: slots that ran do not run again", "now", now, "step", step)
-	case step > jump:
-		l.steps++
-		l.log().Warn("the clock went forward, or the machine slept", "now", now, "step", step)
-	}
-	return now
+	return owed
+}
+
+func (l *Loop) stepped(how string, now time.Time, step time.Duration) {
+	l.mu.Lock()
+	l.steps++
+	l.mu.Unlock()
+	l.log().Warn(how, "now", now, "step", step)
 }
 
 // sleep waits until the next slot, a nudge or the end, but never long.

@@ -1,6 +1,7 @@
 package schedule
 
 import (
+	"strings"
 	"testing"
 	"time"
 )
@@ -77,6 +78,33 @@ func TestClockGoesBackALittle(t *testing.T) {
 	})
 }
 
+// A step is seen although no slot is affected, and a long run is none.
+func TestStepsAreOfTheClockOnly(t *testing.T) {
+	in(t, "2026-06-01T11:00:00Z", func(d *desk) {
+		d.start(d.job("a", parse(t, "0 12 * * *", nil), lasting(3*time.Hour)))
+		after(6 * time.Hour)
+		d.check("a run of three hours", "a Mon 01 12:00:00")
+		d.steps(0)
+		d.set(-2 * time.Hour)
+		after(longestSleep)
+		d.steps(1)
+		d.set(2 * time.Hour)
+		after(longestSleep)
+		d.steps(2)
+		d.check("no slot passed")
+		d.end()
+	})
+}
+
+// The wall clock alone counts: a reading of the monotonic clock, which time.Time prints as m=, would hide a sleep of the machine.
+func TestNowIsTheWallClock(t *testing.T) {
+	for _, l := range []*Loop{{}, {Now: time.Now}} {
+		if now := l.now().String(); strings.Contains(now, "m=") {
+			t.Errorf("now is %s", now)
+		}
+	}
+}
+
 // The clock runs a year ahead for an hour. What ran meanwhile is no reason to be silent for a year.
 func TestClockGoesForwardAndBack(t *testing.T) {
 	in(t, "2026-06-01T12:30:00Z", func(d *desk) {
@@ -144,7 +172,7 @@ func TestLatest(t *testing.T) {
 // checkLatest holds the newest run at some times against the runs that Upcoming lists.
 func checkLatest(t *testing.T, s Schedule, around time.Time) {
 	t.Helper()
-	runs := s.Upcoming(around.Add(-30*time.Hour), 90)
+	runs := s.Upcoming(around.Add(-10*time.Hour), 30)
 	for i, run := range runs[1:] {
 		for _, at := range []time.Time{runs[i], run.Add(-time.Nanosecond)} {
 			if got := s.Latest(at); !got.Equal(runs[i]) {

@@ -43,9 +43,10 @@ type Loop struct {
 	Panicked func(job string, value any) // told of each panic of a run; may be nil
 	Beat     func()                      // called at each wake and after each run; may be nil
 
+	swap  sync.Mutex // held while jobs change, which may take as long as the slots take to read
 	mu    sync.Mutex
 	on    bool
-	jobs  []*state
+	jobs  []*state // changed under both locks
 	steps int
 	wake  chan struct{}
 
@@ -74,23 +75,34 @@ func (l *Loop) Run(ctx context.Context) error {
 // Swap replaces the jobs, also while one of them runs; that run goes on to its end. Jobs that keep their name keep their slots
 // and figures. On an error the old jobs stay.
 func (l *Loop) Swap(jobs []Job) error {
-	l.mu.Lock()
-	defer l.mu.Unlock()
-	if !l.on {
-		return errors.New("the schedule is not running")
+	l.swap.Lock()
+	defer l.swap.Unlock()
+	if !l.running() {
+		return errNotRunning
 	}
-	next, err := l.enrol(jobs)
+	fresh, err := l.enrol(jobs)
 	if err != nil {
 		return err
 	}
-	for _, s := range l.jobs {
-		if find(next, s.Name) == nil {
+	l.mu.Lock()
+	defer l.mu.Unlock()
+	old := l.jobs
+	l.seat(jobs, fresh)
+	for _, s := range old {
+		if find(l.jobs, s.Name) == nil {
 			s.answer(fmt.Errorf("job %q was taken out of the schedule", s.Name))
 		}
 	}
-	l.jobs = next
 	l.nudge()
 	return nil
+}
+
+var errNotRunning = errors.New("the schedule is not running")
+
+func (l *Loop) running() bool {
+	l.mu.Lock()
+	defer l.mu.Unlock()
+	return l.on
 }
 
 // Kick asks for a run of a job now, or after the run in progress. While one is waiting, whatever asks for another gets the same.
@@ -100,7 +112,7 @@ func (l *Loop) Kick(job string) (*Asked, error) {
 	s := find(l.jobs, job)
 	switch {
 	case !l.on:
-		return nil, errors.New("the schedule is not running")
+		return nil, errNotRunning
 	case s == nil:
 		return nil, fmt.Errorf("no job %q in the schedule", job)
 	case s.asked != nil:
@@ -126,18 +138,21 @@ func (a *Asked) Done() <-chan struct{} { return a.done }
 func (a *Asked) Err() error { return a.err }
 
 func (l *Loop) start() error {
-	l.mu.Lock()
-	defer l.mu.Unlock()
-	jobs, err := l.enrol(l.Jobs)
+	l.swap.Lock()
+	defer l.swap.Unlock()
+	fresh, err := l.enrol(l.Jobs)
 	if err != nil {
 		return err
 	}
-	l.jobs, l.on, l.wake = jobs, true, make(chan struct{}, 1)
+	l.mu.Lock()
+	defer l.mu.Unlock()
+	l.seat(l.Jobs, fresh)
+	l.on, l.wake = true, make(chan struct{}, 1)
 	return nil
 }
 
-// enrol makes the states of jobs: those held by name go on, new ones begin where the slots say, or now.
-func (l *Loop) enrol(jobs []Job) ([]*state, error) {
+// enrol makes the states of the jobs that are not held yet. They begin where the slots say, or now.
+func (l *Loop) enrol(jobs []Job) (fresh []*state, err error) {
 	for i, j := range jobs {
 		for _, other := range jobs[:i] {
 			if other.Name == j.Name {
@@ -145,24 +160,31 @@ func (l *Loop) enrol(jobs []Job) ([]*state, error) {
 			}
 		}
 	}
-	var fresh []*state
 	for _, j := range jobs {
-		if find(l.jobs, j.Name) == nil {
-			s, err := l.recall(j)
-			if err != nil {
-				return nil, fmt.Errorf("slots of job %q: %w", j.Name, err)
-			}
-			fresh = append(fresh, s)
+		if find(l.jobs, j.Name) != nil {
+			continue
 		}
+		s, err := l.recall(j)
+		if err != nil {
+			return nil, fmt.Errorf("slots of job %q: %w", j.Name, err)
+		}
+		fresh = append(fresh, s)
 	}
+	return fresh, nil
+}
+
+// seat makes the states of the jobs, held or fresh, those of the loop.
+func (l *Loop) seat(jobs []Job, fresh []*state) {
 	next := make([]*state, len(jobs))
 	for i, j := range jobs {
-		if next[i] = find(l.jobs, j.Name); next[i] == nil {
-			next[i] = find(fresh, j.Name)
+		s := find(l.jobs, j.Name)
+		if s == nil {
+			s = find(fresh, j.Name)
 		}
-		next[i].Job, next[i].ahead = j, time.Time{}
+		s.Job, s.ahead = j, time.Time{}
+		next[i] = s
 	}
-	return next, nil
+	l.jobs = next
 }
 
 func (l *Loop) recall(j Job) (*state, error) {

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"strings"
+	"sync/atomic"
 	"testing"
 	"testing/synctest"
 	"time"
@@ -236,6 +237,23 @@ func TestStop(t *testing.T) {
 	})
 }
 
+// A run that comes to its end although the loop ends has done its slot.
+func TestStopDuringARunThatSucceeds(t *testing.T) {
+	in(t, "2026-06-01T11:59:00Z", func(d *desk) {
+		a := d.job("a", parse(t, "0 * * * *", nil), lasting(10*time.Minute))
+		d.start(a)
+		after(2 * time.Minute)
+		d.end()
+		if s := d.status("a"); s.Outcome != Succeeded || s.Error != "" {
+			t.Errorf("outcome %s, %q", s.Outcome, s.Error)
+		}
+		d.start(a)
+		after(time.Minute)
+		d.end()
+		d.check("not again", "a Mon 01 12:00:00")
+	})
+}
+
 func TestStopWithoutRunIsAtOnce(t *testing.T) {
 	in(t, "2026-06-01T11:59:00Z", func(d *desk) {
 		d.start(d.job("a", parse(t, "0 * * * *", nil), nil))
@@ -263,6 +281,20 @@ func TestSwapWhileWaiting(t *testing.T) {
 		swap(t, d, d.job("b", hourly, nil))
 		after(50 * time.Minute)
 		d.check("a job that comes back goes on from its last slot", "b Mon 01 14:00:00")
+		d.end()
+	})
+}
+
+// A new job does not wait until the loop wakes by itself.
+func TestSwapWakes(t *testing.T) {
+	in(t, "2026-06-01T12:59:35Z", func(d *desk) {
+		d.start()
+		after(10 * time.Second)
+		swap(t, d, d.job("a", parse(t, "0 * * * *", nil), nil))
+		after(time.Minute)
+		if begun := d.runs[0].begun; !begun.Equal(moment(t, "2026-06-01T13:00:00Z")) {
+			t.Errorf("began at %s", begun)
+		}
 		d.end()
 	})
 }
@@ -333,27 +365,27 @@ func TestRunRefuses(t *testing.T) {
 // The longest wait between two beats is what a watchdog sees. A run that advances beats by itself, one that hangs does not.
 func TestBeats(t *testing.T) {
 	in(t, "2026-06-01T12:30:00Z", func(d *desk) {
-		var last, worst int64
-		beats := func() {
+		var last, worst atomic.Int64
+		last.Store(time.Now().Unix())
+		d.beat = func() {
 			now := time.Now().Unix()
-			worst, last = max(worst, now-last), now
+			worst.Store(max(worst.Load(), now-last.Swap(now)))
 		}
 		advancing := func(context.Context, time.Time) error {
 			for range 60 {
 				time.Sleep(10 * time.Second)
-				beats()
+				d.beat()
 			}
 			return nil
 		}
-		last, d.beat = time.Now().Unix(), beats
 		d.start(d.job("a", parse(t, "0 * * * *", nil), advancing), d.job("b", parse(t, "30 * * * *", nil), lasting(10*time.Minute)))
-		time.Sleep(45 * time.Minute)
-		if worst > 30 {
-			t.Errorf("%d s without a beat though all went well", worst)
+		after(45 * time.Minute)
+		if n := worst.Load(); n > 30 {
+			t.Errorf("%d s without a beat though all went well", n)
 		}
 		after(time.Hour)
-		if worst != 600 {
-			t.Errorf("%d s without a beat while a run hung for 600 s", worst)
+		if n := worst.Load(); n != 600 {
+			t.Errorf("%d s without a beat while a run hung for 600 s", n)
 		}
 		d.end()
 	})

@@ -59,7 +59,6 @@ func (l *Loop) take(ctx context.Context, t turn) {
 		}
 	}
 	l.end(t, outcome, err)
-	l.beat()
 }
 
 // attempt runs the job and turns a panic into an error.
