@@ -183,6 +183,11 @@ func (p *Pass) work(j *judging, todo []task, outs []outcome, next, done *atomic.
 // assemble puts the workers' outcomes into the batch, in an order that does not depend on who did what when.
 func (p *Pass) assemble(b *Batch, j *judging, outs []outcome) {
 	var states []partState
+	flags, used := 0, 0
+	for _, o := range outs {
+		flags, used = flags+len(o.flags), used+len(o.used)
+	}
+	b.Flags, b.Used = make([]*FlagRow, 0, flags), make([]UsedColumn, 0, used)
 	for _, o := range outs {
 		b.File.Counts.Add(o.counts)
 		b.Flags = append(b.Flags, o.flags...)
@@ -202,8 +207,8 @@ func (p *Pass) assemble(b *Batch, j *judging, outs []outcome) {
 
 // joinUsed sorts used columns by range, date and block, and joins the parts of one block.
 func joinUsed(used []UsedColumn) []UsedColumn {
-	slices.SortStableFunc(used, func(a, b UsedColumn) int {
-		return cmp.Or(cmp.Compare(a.Range, b.Range), cmp.Compare(a.Date, b.Date), cmp.Compare(a.Block, b.Block))
+	slices.SortFunc(used, func(a, b UsedColumn) int {
+		return cmp.Or(cmp.Compare(a.Range, b.Range), cmp.Compare(a.Date, b.Date), cmp.Compare(a.Block, b.Block), cmp.Compare(a.Offsets[0], b.Offsets[0]))
 	})
 	out := used[:0]
 	for _, u := range used {
@@ -220,12 +225,11 @@ func joinUsed(used []UsedColumn) []UsedColumn {
 // numberFlags orders the flags by date, series and kind, gives the new ones their refs, and turns flags of a first load into
 // history once a newer date has come in within the same pass.
 func (p *Pass) numberFlags(b *Batch, j *judging) {
-	slices.SortFunc(b.Flags, func(x, y FlagRow) int {
+	slices.SortFunc(b.Flags, func(x, y *FlagRow) int {
 		return cmp.Or(cmp.Compare(x.Date, y.Date), cmp.Compare(x.SeriesID, y.SeriesID), cmp.Compare(x.Kind, y.Kind))
 	})
 	ref := j.nextRef
-	for n := range b.Flags {
-		f := &b.Flags[n]
+	for _, f := range b.Flags {
 		if f.Step == 0 {
 			f.Step = b.Step
 		}

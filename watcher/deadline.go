@@ -49,7 +49,7 @@ func (p *Pass) lateStep(v View, f rules.Feed, date rules.Date, due time.Time) (*
 	flag.Ref, flag.Step = v.NextRef(), b.Step
 	b.File = FileRow{Step: b.Step, Outcome: Overdue, Received: p.Now, First: date, Last: date, Counts: Counts{Flags: 1}}
 	b.File.File.Feed = f.Name
-	b.Flags = []FlagRow{{Flag: flag, SeriesID: NoSeries, New: true}}
+	b.Flags = []*FlagRow{{Flag: flag, SeriesID: NoSeries, New: true}}
 	return b, nil
 }
 

@@ -22,7 +22,9 @@ type lane struct {
 
 	gate stats.Gate // nil where every value must be judged one by one
 
-	values []int64 // scratch for one series' window
+	known  rules.Past // of the series at hand, see past
+	at     int        // that series
+	values []int64    // scratch for one series' window
 	used   []int64 // scratch for one date
 }
 
@@ -52,7 +54,22 @@ func newLane(index int, id uint16, g *rules.Gauge, width int) *lane {
 	default:
 		l.windows = stats.NewPanel(width, r.Window)
 	}
+	l.lend()
 	return l
+}
+
+// lend gives the past its ways to the values of a window: made once, since a past is asked for at every hit.
+func (l *lane) lend() {
+	switch w := l.windows.(type) {
+	case *stats.SortedPanel:
+		l.known.Sorted = func() stats.Sorted { return w.Sorted(l.at) }
+		l.known.Values = func() []int64 { return w.Sorted(l.at) }
+	case *stats.Panel:
+		l.known.Values = func() []int64 {
+			l.values = w.Values(l.at, l.values[:0])
+			return l.values
+		}
+	}
 }
 
 func (l *lane) reset() {
@@ -100,15 +117,16 @@ func (l *lane) push(date rules.Date, used []int64) {
 	}
 }
 
-// past is what the lane knows of series i before the date at hand.
+// past is what the lane knows of series i before the date at hand, valid until it is asked for another.
 func (l *lane) past(i int) *rules.Past {
-	p := &rules.Past{N: l.windows.N(i), Dormant: l.dormant[i]}
+	p := &l.known
+	l.at = i
+	p.N, p.Dormant, p.Group = l.windows.N(i), l.dormant[i], rules.Num{}
 	switch w := l.windows.(type) {
 	case *stats.WeightedPanel:
 		p.Var = w.State(i).V
 	case *stats.SortedPanel:
-		p.Sorted = func() stats.Sorted { return w.Sorted(i) }
-		p.Values = func() []int64 { return w.Sorted(i) }
+		p.Sums = stats.Sums{}
 		if l.gauge.Range.Scale == rules.Plain {
 			for _, k := range w.Sorted(i) {
 				p.Sums.Add(k)
@@ -116,10 +134,6 @@ func (l *lane) past(i int) *rules.Past {
 		}
 	case *stats.Panel:
 		p.Sums = w.Sums(i)
-		p.Values = func() []int64 {
-			l.values = w.Values(i, l.values[:0])
-			return l.values
-		}
 	}
 	return p
 }

@@ -32,7 +32,7 @@ type Pass struct {
 
 	firstNames int        // names held when the pass began
 	newest     rules.Date // newest date of the files taken so far
-	opened     []FlagRow  // open flags of first loads, which become history when a newer date comes in
+	opened     []*FlagRow // open flags of first loads, which become history when a newer date comes in
 	row        PassRow
 }
 
@@ -236,11 +236,11 @@ func (p *Pass) refuse(bad *BadFile, f rules.Feed, c Candidate) error {
 	}
 	b.File = FileRow{Step: b.Step, File: bad.File, Stamp: c.Stamp, FeedKey: p.FeedKey(f), Outcome: Refused, Received: p.Now,
 		Reason: bad.Error(), Line: uint32(bad.Line), First: bad.Date, Last: bad.Date, Counts: Counts{Flags: 1}}
-	flag := FlagRow{SeriesID: NoSeries, New: true}
+	flag := &FlagRow{SeriesID: NoSeries, New: true}
 	flag.Ref, flag.Step, flag.RaisedAt, flag.Date = ref, b.Step, p.Now, bad.Date
 	flag.Kind, flag.Standing, flag.Return = rules.KindRefused, rules.Open, rules.Missing
 	flag.Feed, flag.File, flag.Line, flag.Note = f.Name, bad.File.Name, uint32(bad.Line), bad.Error()
-	b.Flags = []FlagRow{flag}
+	b.Flags = []*FlagRow{flag}
 	p.tell(b, 0)
 	if err := p.Store.Publish(b); err != nil {
 		return err

@@ -17,16 +17,20 @@ func (w *worker) raise(t task, d *day, fresh []int64, out *outcome) {
 		if !h.fresh {
 			continue
 		}
-		f := w.blank(t, d, int(h.at))
+		restated := d.restated(t, h)
 		if k := worst(h.verdicts); k >= 0 {
-			w.keep(w.breachFlag(f, w.lanes[k], h, &h.verdicts[k]), d.restated(t, h), out)
-		} else if d.restated(t, h) {
-			w.amend(f, rules.KindBreach, out)
+			f := w.blank(t, d, int(h.at))
+			w.fillBreach(f, w.lanes[k], h, &h.verdicts[k])
+			w.keep(f, restated, out)
+		} else if restated {
+			w.amend(w.blank(t, d, int(h.at)), rules.KindBreach, out)
 		}
 		if len(h.broken) > 0 || h.outsize {
-			w.keep(w.limitFlag(f, h), d.restated(t, h), out)
-		} else if d.restated(t, h) {
-			w.amend(f, rules.KindLimit, out)
+			f := w.blank(t, d, int(h.at))
+			w.fillLimit(f, h)
+			w.keep(f, restated, out)
+		} else if restated {
+			w.amend(w.blank(t, d, int(h.at)), rules.KindLimit, out)
 		}
 	}
 }
@@ -36,7 +40,7 @@ func (d *day) restated(t task, h *hit) bool {
 }
 
 // keep notes a flag. One that a restated value had before is replaced under its ref, and reopened where it had been settled.
-func (w *worker) keep(f FlagRow, restated bool, out *outcome) {
+func (w *worker) keep(f *FlagRow, restated bool, out *outcome) {
 	if restated {
 		old, ok, err := w.view.FlagAt(f.SeriesID, f.Date, f.Kind)
 		if err != nil {
@@ -53,19 +57,23 @@ func (w *worker) keep(f FlagRow, restated bool, out *outcome) {
 }
 
 // amend notes on the flag of a value that was restated that it would not be raised now. What it was raised for stands.
-func (w *worker) amend(f FlagRow, kind rules.Kind, out *outcome) {
+func (w *worker) amend(f *FlagRow, kind rules.Kind, out *outcome) {
 	old, ok, err := w.view.FlagAt(f.SeriesID, f.Date, kind)
 	if err != nil {
 		w.failed = err
 	}
 	if ok {
 		old.Note = "restated to " + f.Return.String() + ", for which it would not be raised"
-		out.flags = append(out.flags, FlagRow{Flag: old, SeriesID: f.SeriesID})
+		out.flags = append(out.flags, &FlagRow{Flag: old, SeriesID: f.SeriesID})
 	}
 }
 
 // countArrivals counts new, late and restated values, and flags the restated ones.
 func (w *worker) countArrivals(t task, d *day, fresh []int64, out *outcome) {
+	if d.old == nil && !w.behind {
+		out.counts.New += count(fresh)
+		return
+	}
 	for i, v := range fresh {
 		if v == Missing64 {
 			continue
@@ -73,7 +81,9 @@ func (w *worker) countArrivals(t task, d *day, fresh []int64, out *outcome) {
 		switch {
 		case d.old != nil && d.old[t.from+i] != Missing64:
 			out.counts.Restated++
-			w.keep(w.restatedFlag(w.blank(t, d, i), rules.Units(d.old[t.from+i])), true, out)
+			f, old := w.blank(t, d, i), rules.Units(d.old[t.from+i])
+			f.Kind, f.Note = rules.KindRestated, RestatedNote(old, f.Return)
+			w.keep(f, true, out)
 		case w.late[i] > d.date:
 			out.counts.Late++
 		default:
@@ -94,9 +104,10 @@ func worst(verdicts []rules.Verdict) int {
 }
 
 // blank is a flag with what every flag of an observation carries.
-func (w *worker) blank(t task, d *day, i int) FlagRow {
+func (w *worker) blank(t task, d *day, i int) *FlagRow {
 	id := t.series(i)
-	f := FlagRow{SeriesID: id, New: true}
+	f := w.newFlag()
+	f.SeriesID, f.New = id, true
 	f.RaisedAt, f.Date = w.j.now, d.date
 	f.Series, f.Group = string(w.j.names.Name(id)), w.group(i)
 	f.Return, f.Used, f.WindowTo = rules.Units(w.raw[i]), rules.Missing, rules.NoDate
@@ -109,32 +120,34 @@ func (w *worker) blank(t task, d *day, i int) FlagRow {
 	return f
 }
 
-func (w *worker) breachFlag(f FlagRow, l *lane, h *hit, v *rules.Verdict) FlagRow {
+// newFlag is an empty flag; they are made by the piece, a page or so at a time.
+func (w *worker) newFlag() *FlagRow {
+	if len(w.flags) == 0 {
+		w.flags = make([]FlagRow, 32)
+	}
+	f := &w.flags[0]
+	w.flags = w.flags[1:]
+	return f
+}
+
+func (w *worker) fillBreach(f *FlagRow, l *lane, h *hit, v *rules.Verdict) {
 	r := &l.gauge.Range
 	f.Kind, f.Range = rules.KindBreach, r.Name
 	f.Low, f.High, f.Z, f.Tail, f.Log10 = v.Low, v.High, v.Z, v.Tail, v.Log10
 	f.Note = v.Why
 	f.Window, f.WindowTo = v.N, l.last[h.at]
 	f.Used, _ = rules.UsedValue(r.Pending, f.Return, v, h.limits)
-	return f
 }
 
-func (w *worker) limitFlag(f FlagRow, h *hit) FlagRow {
+func (w *worker) fillLimit(f *FlagRow, h *hit) {
 	f.Kind = rules.KindLimit
 	if len(h.broken) == 0 {
 		f.Note = fmt.Sprintf("beyond +-%d, never enters a window", rules.WindowLimit/rules.One)
-		return f
+		return
 	}
 	r := w.j.gauges[h.broken[0]].Range
 	f.Range = r.Name
 	f.Low, f.High = rules.Some(r.Limit.Low.Float()), rules.Some(r.Limit.High.Float())
-	return f
-}
-
-func (w *worker) restatedFlag(f FlagRow, old rules.Units) FlagRow {
-	f.Kind = rules.KindRestated
-	f.Note = RestatedNote(old, f.Return)
-	return f
 }
 
 // RestatedNote says by how much a value changed: "changed by +12.3 bp from 0.0012".

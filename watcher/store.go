@@ -89,7 +89,7 @@ type Batch struct {
 	NewRanges []RangeKey
 	Settings  []byte // new settings text, nil when unchanged; the ledger gives it the next number
 	Record    []RecordEntry
-	Flags     []FlagRow
+	Flags     []*FlagRow
 	Notices   []rules.Notice // of this step's flags; one whose key is there already is passed over
 	Withdraw  []uint64       // flags that ask nothing any more: a waiting notice of these alone is not sent
 }

@@ -22,7 +22,7 @@ type day struct {
 // outcome is what judging a task found.
 type outcome struct {
 	counts Counts
-	flags  []FlagRow
+	flags  []*FlagRow
 	used   []UsedColumn
 	states []partState
 }
@@ -42,6 +42,8 @@ type worker struct {
 	late             []rules.Date // newest date held before, of each series
 	upto             rules.Date   // newest date taken
 	replayed         bool         // dates that were held before were gone through again
+	behind           bool         // there are dates held from the first changed one on
+	flags            []FlagRow    // made and not yet used
 	failed           error        // of looking up a flag
 	stored           []*State     // by lane: what a recheck holds against the replay
 }
@@ -155,6 +157,7 @@ func (w *worker) noteNewest(t task, replay []rules.Date) error {
 	for i := range w.late {
 		w.late[i] = rules.NoDate
 	}
+	w.behind = len(replay) > 0
 	for _, d := range replay {
 		vals := w.held[:t.width]
 		ok, err := w.view.Fill(Returns, d, t.block, t.from, vals)

@@ -187,9 +187,9 @@ func BenchmarkNames(b *testing.B) {
 
 // BenchmarkFlags publishes a hundred thousand flags of a first load and reads them all.
 func BenchmarkFlags(b *testing.B) {
-	rows := make([]watcher.FlagRow, 100_000)
+	rows := make([]*watcher.FlagRow, 100_000)
 	for i := range rows {
-		rows[i] = watcher.FlagRow{SeriesID: uint32(i % 2000), New: true, Flag: rules.Flag{Ref: uint64(i + 1), Step: 1, RaisedAt: noon,
+		rows[i] = &watcher.FlagRow{SeriesID: uint32(i % 2000), New: true, Flag: rules.Flag{Ref: uint64(i + 1), Step: 1, RaisedAt: noon,
 			Date: rules.Date(i / 20), Group: "equity", Kind: rules.KindBreach, Range: "own", Return: rules.Units(i) * 1e9, Low: rules.Some(-0.1),
 			High: rules.Some(0.1), Z: rules.Some(4), Tail: rules.Some(1e-4), Log10: rules.Some(-4), Standing: rules.OfHistory, Feed: "admin",
 			File: "nav-1.csv", Line: uint32(i)}}

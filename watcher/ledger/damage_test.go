@@ -75,12 +75,12 @@ func furnish(rng *rand.Rand, step uint32, ref *uint64) *watcher.Batch {
 		}
 		b.Used = append(b.Used, watcher.UsedColumn{Range: 1, Date: date, Offsets: []uint16{3, 9}, Values: []int64{5, watcher.Missing64}})
 		b.Scales = append(b.Scales, watcher.GroupScale{Range: 1, Group: "g", Date: date, Step: step, Deviation: 0.5, Series: 9})
-		b.Flags = append(b.Flags, watcher.FlagRow{New: true, SeriesID: uint32(date), Flag: rules.Flag{Ref: *ref, Step: step, RaisedAt: noon, Date: date,
+		b.Flags = append(b.Flags, &watcher.FlagRow{New: true, SeriesID: uint32(date), Flag: rules.Flag{Ref: *ref, Step: step, RaisedAt: noon, Date: date,
 			Kind: rules.KindBreach, Return: 1, Range: "own", Standing: rules.Standings[*ref%3], Feed: "admin", File: "x.csv"}})
 		*ref++
 	}
 	if step > 1 {
-		b.Flags = append(b.Flags, watcher.FlagRow{Flag: rules.Flag{Ref: 1, Step: 1, Date: 1, Kind: rules.KindBreach, Standing: rules.Decided}})
+		b.Flags = append(b.Flags, &watcher.FlagRow{Flag: rules.Flag{Ref: 1, Step: 1, Date: 1, Kind: rules.KindBreach, Standing: rules.Decided}})
 	}
 	s := watcher.State{Range: 1, Step: step, Upto: 5}
 	for i := range series {

@@ -264,7 +264,7 @@ func TestFlags(t *testing.T) {
 		Standing: rules.OfHistory, Feed: "other", Note: "late"}
 	restated := rules.Flag{Ref: 3, Step: 1, RaisedAt: noon, Date: 7, Series: "series-2", Kind: rules.KindRestated, Return: 0, Standing: rules.Open,
 		Feed: "admin", File: "nav-1.csv"}
-	publish(t, l, &watcher.Batch{Step: 1, File: fileRow(1), NewNames: names(0, 3), Flags: []watcher.FlagRow{{Flag: restated, SeriesID: 2, New: true},
+	publish(t, l, &watcher.Batch{Step: 1, File: fileRow(1), NewNames: names(0, 3), Flags: []*watcher.FlagRow{{Flag: restated, SeriesID: 2, New: true},
 		{Flag: open, SeriesID: 1, New: true}, {Flag: late, SeriesID: watcher.NoSeries, New: true}}})
 	expect := func(all bool, want ...rules.Flag) {
 		t.Helper()
@@ -281,14 +281,14 @@ func TestFlags(t *testing.T) {
 	}
 	decided := open
 	decided.Standing, decided.Note = rules.Decided, "seen"
-	publish(t, l, &watcher.Batch{Step: 2, File: fileRow(2), Flags: []watcher.FlagRow{{Flag: decided}}})
+	publish(t, l, &watcher.Batch{Step: 2, File: fileRow(2), Flags: []*watcher.FlagRow{{Flag: decided}}})
 	expect(true, decided, late, restated)
 	expect(false, restated)
 	got, ok, err := read(t, l).FlagAt(1, 7, rules.KindBreach)
 	if err != nil || !ok || !reflect.DeepEqual(got, decided) {
 		t.Error(got, ok, err)
 	}
-	if err := l.Publish(&watcher.Batch{Step: 3, Flags: []watcher.FlagRow{{Flag: rules.Flag{Ref: 9, Kind: rules.KindLate, Standing: rules.Open}, New: true}}}); err == nil {
+	if err := l.Publish(&watcher.Batch{Step: 3, Flags: []*watcher.FlagRow{{Flag: rules.Flag{Ref: 9, Kind: rules.KindLate, Standing: rules.Open}, New: true}}}); err == nil {
 		t.Error("a flag whose ref is not the next one was taken")
 	}
 }

@@ -123,8 +123,7 @@ func (p *plan) planScales() {
 }
 
 func (p *plan) planFlags() error {
-	for i := range p.batch.Flags {
-		f := &p.batch.Flags[i]
+	for _, f := range p.batch.Flags {
 		if !slices.Contains(rules.Kinds, f.Kind) || !slices.Contains(rules.Standings, f.Standing) {
 			return fmt.Errorf("flag %d: kind %q or standing %q is not known", f.Ref, f.Kind, f.Standing)
 		}
