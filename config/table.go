@@ -33,8 +33,6 @@ func unless(value, text string) func(*yaml.Node) string {
 	}
 }
 
-const laterTalk = "checked now; delivery to this channel comes in a later version"
-
 // table is the one list of keys: Parse walks it, and Schema is made of it.
 var table = object{what: "keys: ledger, feeds and ranges at least", fields: []field{
 	{key: "ledger", required: true, shape: file("the ledger's file, such as ledger.db", false),
@@ -91,11 +89,9 @@ var feedTable = object{what: "keys: name and files at least", fields: []field{
 	{key: "files", required: true, shape: files(), doc: "Folder and pattern of the files, relative to this one; also .csv.gz.",
 		at: in(func(f *rules.Feed) any { return func(p pattern) { f.Dir, f.Pattern = p.dir, p.name } })},
 	{key: "schedule", shape: cron(), doc: "When the folder is looked at, as cron text in the configuration's time zone.",
-		later: always("checked now; the daemon that runs it comes in a later version, until then use the pass command"),
-		at:    in(func(f *rules.Feed) any { return &f.Schedule })},
+		at: in(func(f *rules.Feed) any { return &f.Schedule })},
 	{key: "due", shape: dueTable, doc: "When the feed must be whole, or it is late.",
-		later: always("checked now; late flags come in a later version"),
-		at:    in(func(f *rules.Feed) any { f.Due = &rules.Due{}; return f.Due })},
+		at: in(func(f *rules.Feed) any { f.Due = &rules.Due{}; return f.Due })},
 	{key: "layout", initial: "long", shape: named(rules.Long, rules.Wide),
 		doc: "long: one row an observation; wide: one row a date, one column a series.",
 		at:  in(func(f *rules.Feed) any { return &f.Layout })},

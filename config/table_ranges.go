@@ -17,18 +17,18 @@ var groupTable = object{what: "keys: name at least", fields: []field{
 		later: unless(noReference, "checked now; references come in a later version"),
 		at:    in(func(g *rules.Group) any { return &g.Reference })},
 	{key: "owner", shape: text("who looks after the group", filledPattern, filled), doc: "Who looks after the group.",
-		later: always(laterPeople), at: in(func(g *rules.Group) any { return &g.Owner })},
+		at: in(func(g *rules.Group) any { return &g.Owner })},
 	{key: "reply", shape: duration(time.Minute, 31*24*time.Hour), doc: "How soon an open flag asks for an answer.",
-		later: always(laterPeople), at: in(func(g *rules.Group) any { return &g.Reply })},
+		at: in(func(g *rules.Group) any { return &g.Reply })},
 	{key: "release", shape: dueTable, doc: "The release that an open flag of this group blocks.",
-		later: always(laterPeople), at: in(func(g *rules.Group) any { g.Release = &rules.Due{}; return g.Release })},
+		at: in(func(g *rules.Group) any { g.Release = &rules.Due{}; return g.Release })},
 	{key: "four_eyes", initial: "false", shape: yes(), doc: "Whether a second person must sign a decision off.",
 		later: when("true", laterPeople), at: in(func(g *rules.Group) any { return &g.FourEyes })},
 }}
 
 const (
 	noReference = "none"
-	laterPeople = "checked now; decisions, deadlines and sign-off come in a later version"
+	laterPeople = "checked now; decisions and sign-off come in a later version"
 	hard        = "limit" // the key beside which a range has none of its estimates
 	beyondLine  = "line"
 )
@@ -110,22 +110,20 @@ var channelTable = object{what: "keys: name, and slack or console", fields: []fi
 	{key: "name", required: true, shape: name(), doc: "What the channel is called.",
 		at: in(func(c *rules.Channel) any { return &c.Name })},
 	{key: "slack", choice: "channel", shape: slackTable, doc: "A chat channel; its token comes from the environment or a file, never from here.",
-		later: always(laterTalk), at: in(func(c *rules.Channel) any { c.Kind = "slack"; return c })},
+		at: in(func(c *rules.Channel) any { c.Kind = "slack"; return c })},
 	{key: "console", choice: "channel", shape: object{what: "{}"}, doc: "The standard output of the run.",
 		at: in(func(c *rules.Channel) any { c.Kind, c.Console = "console", true; return c })},
 	{key: "for", doc: "Names of groups; everything when left out.",
 		shape: list[string]{item: name(), least: 1, unique: true, what: "a list of groups' names"},
-		later: always(laterRoute), at: in(func(c *rules.Channel) any { return &c.For })},
+		at:    in(func(c *rules.Channel) any { return &c.For })},
 	{key: "kinds", doc: "Kinds of flag; all when left out.",
 		shape: list[rules.Kind]{item: named(rules.Kinds...), least: 1, unique: true, what: "a list of kinds of flag"},
-		later: always(laterRoute), at: in(func(c *rules.Channel) any { return &c.Kinds })},
+		at:    in(func(c *rules.Channel) any { return &c.Kinds })},
 	{key: "hours", shape: hours(), doc: "Part of the day in which notices are delivered; outside it they are held. Always when left out.",
-		later: always(laterRoute), at: in(func(c *rules.Channel) any { return func(s span) { c.From, c.To = s.from, s.to } })},
+		at: in(func(c *rules.Channel) any { return func(s span) { c.From, c.To = s.from, s.to } })},
 	{key: "form", initial: "full", shape: words(word[bool]{"full", false}, word[bool]{"short", true}), doc: "full, or short: ref and series only.",
-		later: when("short", laterRoute), at: in(func(c *rules.Channel) any { return &c.Short })},
+		at: in(func(c *rules.Channel) any { return &c.Short })},
 }}
-
-const laterRoute = "checked now; which notices a channel takes, and when, comes in a later version"
 
 var slackTable = object{what: "{channel: C0000000000}", fields: []field{
 	{key: "channel", required: true, shape: slackChannel(), doc: "The channel's id.",
