@@ -92,7 +92,7 @@ func randomFiles(r *rand.Rand, series, dates int, rough bool) map[string][]entry
 		for s := range series {
 			name := fmt.Sprintf("group%d-%05d", s%3, s)
 			switch {
-			case r.IntN(25) == 0, s%7 == 3 && n < dates/2, s%11 == 5 && n > dates/4 && n < dates/4+22:
+			case r.IntN(25) == 0, s%7 == 3 && n < dates/2, s%5 == 2 && n > dates/4 && n <= dates/4+18+s/5%4: // gaps of 19 to 22 business days
 				continue
 			}
 			e := entry{d, name, draw(r, place[s])}
@@ -112,9 +112,9 @@ func randomFiles(r *rand.Rand, series, dates int, rough bool) map[string][]entry
 	return files
 }
 
-func add(files map[string][]entry, at int, e entry) {
+func add(files map[string][]entry, at int, e ...entry) {
 	name := fmt.Sprintf("f%04d", at)
-	files[name] = append(files[name], e)
+	files[name] = append(files[name], e...)
 }
 
 func draw(r *rand.Rand, deviation float64) rules.Units {
