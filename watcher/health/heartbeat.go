@@ -28,7 +28,6 @@ func NewSecret(s string) Secret { return Secret{func() string { return s }} }
 const hidden = "***"
 
 func (s Secret) String() string               { return hidden }
-func (s Secret) Format(f fmt.State, _ rune)   { io.WriteString(f, hidden) } //nolint:errcheck // nowhere to report it
 func (s Secret) MarshalText() ([]byte, error) { return []byte(hidden), nil }
 
 // Empty says whether there is nothing to hide.
@@ -53,6 +52,10 @@ func CheckHeartbeat(address Secret) error {
 // Any answer of 200 to 299 within 10 seconds will do. It follows no redirect, which would tell the address to another host. Its
 // error names what went wrong in words of its own and nothing of the address.
 func Heartbeat(ctx context.Context, address Secret) error {
+	return heartbeat(ctx, address, http.DefaultTransport)
+}
+
+func heartbeat(ctx context.Context, address Secret, by http.RoundTripper) error {
 	if err := CheckHeartbeat(address); err != nil {
 		return err
 	}
@@ -65,7 +68,7 @@ func Heartbeat(ctx context.Context, address Secret) error {
 	req.Header.Set("User-Agent", "strayd")
 	req.Close = true // the next one is minutes away
 	stay := func(*http.Request, []*http.Request) error { return http.ErrUseLastResponse }
-	resp, err := (&http.Client{CheckRedirect: stay}).Do(req)
+	resp, err := (&http.Client{Transport: by, CheckRedirect: stay}).Do(req)
 	if err != nil {
 		return fmt.Errorf("heartbeat: %s", cause(err))
 	}
@@ -88,7 +91,7 @@ func cause(err error) string {
 	switch {
 	case errors.Is(err, context.Canceled):
 		return "it was called off"
-	case errors.As(err, &timeout) && timeout.Timeout():
+	case errors.Is(err, context.DeadlineExceeded), errors.As(err, &timeout) && timeout.Timeout():
 		return "no answer in time"
 	case errors.As(err, &name):
 		return "its host's name was not found"

@@ -63,14 +63,14 @@ func Reloading() error {
 // any, nothing is said, and in the end the manager ends the daemon and starts it anew. log is told of silence and of signs that
 // did not get through; nobody when nil.
 func Watchdog(ctx context.Context, progressed func() bool, log *slog.Logger) error {
-	every, err := watchdogInterval(os.Getenv("WATCHDOG_USEC"), os.Getenv("WATCHDOG_PID"))
+	every, err := signEvery(os.Getenv("WATCHDOG_USEC"), os.Getenv("WATCHDOG_PID"))
 	if err != nil || every == 0 {
 		return err
 	}
 	if log == nil {
 		log = slog.New(slog.DiscardHandler)
 	}
-	watch(ctx, every/2, progressed, func() error { return Notify("WATCHDOG=1") }, log)
+	watch(ctx, every, progressed, func() error { return Notify("WATCHDOG=1") }, log)
 	return nil
 }
 
@@ -91,9 +91,9 @@ func watch(ctx context.Context, every time.Duration, progressed func() bool, pin
 	}
 }
 
-// watchdogInterval is within what time the manager wants a sign, from its two variables; 0 when it wants none of this process.
-// The process may be left out, and then every one is meant.
-func watchdogInterval(usec, pid string) (time.Duration, error) {
+// signEvery is half the time within which the manager wants a sign, from its two variables; 0 when it wants none of this process.
+// The process may be left out, and then every one is meant: sd_watchdog_enabled(3).
+func signEvery(usec, pid string) (time.Duration, error) {
 	if usec == "" {
 		return 0, nil
 	}
@@ -104,5 +104,5 @@ func watchdogInterval(usec, pid string) (time.Duration, error) {
 	if err != nil || n <= 0 || n > int64(time.Duration(1<<63-1)/time.Microsecond) {
 		return 0, fmt.Errorf("service manager: WATCHDOG_USEC %q is no number of microseconds", usec)
 	}
-	return time.Duration(n) * time.Microsecond, nil
+	return time.Duration(n) * time.Microsecond / 2, nil
 }

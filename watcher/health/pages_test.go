@@ -104,6 +104,19 @@ func TestPagesRefuseForTheirOwnReasons(t *testing.T) {
 	}
 }
 
+// A page gives its own reasons and not those of another.
+func TestReasonsOfTwoPages(t *testing.T) {
+	for path, want := range map[string]string{
+		"/alive":   "not alive\nthe loop has not begun\n",
+		"/ready":   "not ready\nthe ledger is not open\nno valid configuration is in force\n",
+		"/healthy": "not healthy\nthe loop has not begun\nthe ledger is not open\nno valid configuration is in force\n",
+	} {
+		if got := get(Report{}, path).Body.String(); got != want {
+			t.Errorf("%s: %q, want %q", path, got, want)
+		}
+	}
+}
+
 func TestClockThatIsSetMakesNobodyLookDead(t *testing.T) {
 	r := sound()
 	r.Beat = time.Now()
