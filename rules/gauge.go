@@ -137,23 +137,40 @@ func (l Line) Probability() float64 {
 	return l.Level
 }
 
-// Gate is what a fast scan may rely on: values that it holds are surely inside. ok is false when every value must be judged one
-// by one.
-func (g *Gauge) Gate() (gate stats.Gate, ok bool) {
+// Gate is what a fast scan may rely on: values that it holds are surely inside. With thin, it also holds provisional values; that a
+// group would lend them a wider deviation keeps them inside. ok is false when every value must be judged one by one.
+func (g *Gauge) Gate(thin bool) (gate stats.Gate, ok bool) {
 	r := g.Range
-	z := math.Min(g.cut.watch, g.cut.breach)
+	least := LeastNormal
+	if thin {
+		least = LeastJudged
+	}
 	switch {
 	case r.Limit != nil, r.Of == Residual, r.Tail.Name == "rank":
 		return nil, false
-	case r.Tail.Name == "predictive-t":
-		t, err := g.thinAt(r.Window)
-		return stats.PlainGate(r.Window, max(r.Window, LeastNormal), stats.Fixed(math.Min(t.cut.watch, t.cut.breach)), true), err == nil
 	case r.Scale == Weighted:
-		return stats.WeightedGate(r.Window, LeastNormal, stats.Fixed(z)), true
+		return stats.WeightedGate(r.Window, least, g.inner), true
 	case r.Scale == MAD:
-		return stats.MADGate(r.Window, LeastNormal, stats.Fixed(z)), true
+		return stats.MADGate(r.Window, least, g.inner), true
 	}
-	return stats.PlainGate(r.Window, LeastNormal, stats.Fixed(z), r.Predictive), true
+	return stats.PlainGate(r.Window, least, g.inner, r.Predictive || r.Tail.Name == "predictive-t"), true
+}
+
+// inner is the inner line for a window of n values, in deviations; 0, which holds nothing, for those of a predictive t that are
+// neither thin nor full: to find each would cost more than it saves.
+func (g *Gauge) inner(n int) float64 {
+	c := g.cut
+	if n < LeastNormal || g.Range.Tail.Name == "predictive-t" {
+		if n >= LeastNormal && n != g.Range.Window {
+			return 0
+		}
+		t, err := g.thinAt(n)
+		if err != nil {
+			return 0
+		}
+		c = t.cut
+	}
+	return math.Min(c.watch, c.breach)
 }
 
 // thinAt is the tail of a predictive t with n-1 degrees of freedom and its cuts.

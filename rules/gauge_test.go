@@ -324,7 +324,7 @@ func TestLimit(t *testing.T) {
 	if v := g.Expect(nil); v.Finding != rules.Inside || v.High.V != 0.025 {
 		t.Errorf("expects %+v", v)
 	}
-	if _, ok := g.Gate(); ok {
+	if _, ok := g.Gate(true); ok {
 		t.Error("a limit has a gate")
 	}
 }

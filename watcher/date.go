@@ -22,7 +22,7 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 		l.rest(d.date, raw)
 		w.cand = l.candidates(fresh, w.cand[:0])
 		for _, i := range w.cand {
-			if l.judges(int(i)) {
+			if l.judges(int(i)) && l.windows.N(int(i)) >= rules.LeastJudged {
 				w.hitAt(i, true)
 			}
 		}
@@ -198,7 +198,8 @@ func (w *worker) judge(date rules.Date, h *hit) {
 
 func (l *lane) judges(i int) bool { return l.applies == nil || l.applies[i] }
 
-// tally counts the verdicts of a date. Values that are no hits are inside every range that judges them.
+// tally counts the verdicts of a date. Values that are no hits are inside every range that judges them, but for those whose window
+// holds too little to judge by.
 func (w *worker) tally(present int, fresh []int64, out *outcome) {
 	if present == 0 {
 		return
@@ -214,8 +215,32 @@ func (w *worker) tally(present int, fresh []int64, out *outcome) {
 				}
 			}
 		}
-		c.Inside += judged - w.tallyHits(k, l, c)
+		c.Inside += judged - w.tallyHits(k, l, c) - w.tallyThin(l, fresh, c)
 	}
+}
+
+// tallyThin counts the values of thin windows that are no hits, and says how many of them are not judged.
+func (w *worker) tallyThin(l *lane, fresh []int64, c *Counts) (unjudged int) {
+	if !l.thin {
+		return 0
+	}
+	l.thin = false
+	for i, v := range fresh {
+		n := l.windows.N(i)
+		if n >= rules.LeastNormal {
+			continue
+		}
+		l.thin = true
+		switch {
+		case v == Missing64 || w.slot[i] >= 0 || !l.judges(i):
+		case n < rules.LeastJudged:
+			unjudged++
+		default:
+			c.Provisional++
+		}
+	}
+	c.NotJudged += unjudged
+	return unjudged
 }
 
 // tallyHits counts the hits of one lane and says how many of them are not inside.

@@ -21,11 +21,12 @@ type lane struct {
 	applies []bool       // nil when the range judges every series
 
 	gate stats.Gate // nil where every value must be judged one by one
+	thin bool       // a window may hold fewer than rules.LeastNormal values
 
 	known  rules.Past // of the series at hand, see past
 	at     int        // that series
 	values []int64    // scratch for one series' window
-	used   []int64 // scratch for one date
+	used   []int64    // scratch for one date
 }
 
 // windows are the windows of many series side by side: the plain, weighted or sorted panel of stats.
@@ -43,9 +44,9 @@ type loader interface {
 	Full(i int) bool
 }
 
-func newLane(index int, id uint16, g *rules.Gauge, width int) *lane {
+func newLane(index int, id uint16, g *rules.Gauge, width int, groupless bool) *lane {
 	l := &lane{index: index, id: id, gauge: g, last: make([]rules.Date, width), dormant: make([]bool, width), used: make([]int64, width)}
-	l.gate, _ = g.Gate()
+	l.gate, _ = g.Gate(groupless) // what a group lends to a provisional verdict must be noted, so that one is judged
 	switch r := g.Range; {
 	case r.Scale == rules.Weighted:
 		l.windows = stats.NewWeightedPanel(width, r.Window, r.Decay, float64(rules.One))
@@ -78,6 +79,7 @@ func (l *lane) reset() {
 		l.last[i] = rules.NoDate
 	}
 	clear(l.dormant)
+	l.thin = true
 }
 
 // candidates appends the series whose value on a date is not surely inside.
@@ -100,6 +102,7 @@ func (l *lane) rest(date rules.Date, vals []int64) {
 	for i, v := range vals {
 		if last[i] < edge && v != Missing64 && last[i] != rules.NoDate && rules.Weekdays(last[i], date) > rules.DormantAfter {
 			l.windows.Clear(i)
+			l.thin = true
 			last[i] = rules.NoDate
 			l.dormant[i] = true
 		}

@@ -63,7 +63,7 @@ func newWorker(j *judging, v View) *worker {
 	w := &worker{j: j, view: v}
 	for n, g := range j.gauges {
 		if g.Range.Limit == nil && j.ids[n] != 0 {
-			w.lanes = append(w.lanes, newLane(n, j.ids[n], g, j.width))
+			w.lanes = append(w.lanes, newLane(n, j.ids[n], g, j.width, j.members.Groupless()))
 		}
 	}
 	w.raw, w.fresh, w.held = make([]int64, j.width), make([]int64, j.width), make([]int64, j.width)
