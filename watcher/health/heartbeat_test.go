@@ -86,13 +86,9 @@ func TestHeartbeatAddresses(t *testing.T) {
 	}
 }
 
-// Each way to fail, over real connections: the error says which it was and nothing of the address.
-func TestHeartbeatOverTheWire(t *testing.T) {
-	var elsewhere atomic.Int32
-	other := httptest.NewServer(http.HandlerFunc(func(http.ResponseWriter, *http.Request) { elsewhere.Add(1) }))
-	defer other.Close()
-	asked := make(chan string, 100)
-	answers := httptest.NewServer(http.HandlerFunc(func(w http.ResponseWriter, r *http.Request) {
+// keeper answers heartbeats as their query asks it to.
+func keeper(asked chan<- string, other string) http.HandlerFunc {
+	return func(w http.ResponseWriter, r *http.Request) {
 		asked <- r.Method + " " + r.URL.Path + " " + r.Header.Get("User-Agent")
 		switch r.URL.Query().Get("do") {
 		case "404":
@@ -100,7 +96,7 @@ func TestHeartbeatOverTheWire(t *testing.T) {
 		case "500":
 			http.Error(w, token, 500)
 		case "302":
-			http.Redirect(w, r, other.URL+"/"+token, http.StatusFound)
+			http.Redirect(w, r, other+"/"+token, http.StatusFound)
 		case "204":
 			w.WriteHeader(204)
 		case "nowhere":
@@ -109,7 +105,16 @@ func TestHeartbeatOverTheWire(t *testing.T) {
 		case "hang up":
 			panic(http.ErrAbortHandler)
 		}
-	}))
+	}
+}
+
+// Each way to fail, over real connections: the error says which it was and nothing of the address.
+func TestHeartbeatOverTheWire(t *testing.T) {
+	var elsewhere atomic.Int32
+	other := httptest.NewServer(http.HandlerFunc(func(http.ResponseWriter, *http.Request) { elsewhere.Add(1) }))
+	defer other.Close()
+	asked := make(chan string, 100)
+	answers := httptest.NewServer(keeper(asked, other.URL))
 	defer answers.Close()
 	secure := httptest.NewUnstartedServer(http.HandlerFunc(func(http.ResponseWriter, *http.Request) {}))
 	secure.Config.ErrorLog = slog.NewLogLogger(slog.DiscardHandler, slog.LevelError)
