@@ -141,6 +141,15 @@ func (l *lane) past(i int) *rules.Past {
 	return p
 }
 
+// whole says that every value is there and may enter a window.
+func whole(vals []int64) bool {
+	most := uint64(0)
+	for _, v := range vals {
+		most = max(most, uint64(v+int64(rules.WindowLimit)))
+	}
+	return most <= uint64(2*rules.WindowLimit)
+}
+
 // outsize leaves out of a row of values those that may never enter a window.
 func outsize(vals []int64) {
 	for i, v := range vals {

@@ -45,14 +45,19 @@ func (w *worker) load(t task, before rules.Date) (err error) {
 	return nil
 }
 
-// usedOf is the used values of a lane on a date whose returns stand in raw.
+// usedOf is the used values of a lane on a date whose returns stand in raw; it takes raw over where no other lane needs it.
 func (w *worker) usedOf(t task, l *lane, date rules.Date) ([]int64, error) {
-	used := l.used[:t.width]
-	copy(used, w.raw)
+	used := w.raw[:t.width]
+	if len(w.lanes) > 1 {
+		used = l.used[:t.width]
+		copy(used, w.raw)
+	}
 	if err := w.view.Patch(l.id, date, t.block, t.from, used); err != nil {
 		return nil, err
 	}
-	outsize(used)
+	if !whole(used) {
+		outsize(used)
+	}
 	return used, nil
 }
 
@@ -90,16 +95,14 @@ type backward struct {
 	l     *lane
 	into  loader
 	later []rules.Date // the oldest used date found so far; the date at hand where none is found yet
+	even  rules.Date   // that of every series, while they all have the same and none is done; else NoDate
 	done  []bool
 	open  int
 	steps int
 }
 
 func newBackward(l *lane, into loader, before rules.Date, width int) *backward {
-	b := &backward{l: l, into: into, later: make([]rules.Date, width), done: make([]bool, width), open: width}
-	for i := range b.later {
-		b.later[i] = before
-	}
+	b := &backward{l: l, into: into, later: make([]rules.Date, width), done: make([]bool, width), open: width, even: before}
 	return b
 }
 
@@ -118,6 +121,36 @@ func (w *worker) stepBack(t task, b *backward, date rules.Date) error {
 
 // take puts the used values of a date in front of the windows that are not done.
 func (b *backward) take(date rules.Date, used []int64) {
+	if b.even == rules.NoDate || !b.takeEven(date, used) {
+		b.takeEach(date, used)
+	}
+	b.into.Prepend(used)
+	if b.steps++; b.steps >= b.l.gauge.Range.Window && b.steps%8 == 0 || b.steps == b.l.gauge.Range.Window {
+		b.finishFull()
+	}
+}
+
+// takeEven notes a date on which every series has a value, where all stand alike and the gap makes none dormant. When it is not so, it
+// writes out how the series stand and is false.
+func (b *backward) takeEven(date rules.Date, used []int64) bool {
+	if b.even-date > dormantDays || !whole(used) {
+		for i := range b.later {
+			b.later[i] = b.even
+		}
+		b.even = rules.NoDate
+		return false
+	}
+	if b.steps == 0 {
+		for i := range used {
+			b.l.last[i] = date
+		}
+	}
+	b.even = date
+	return true
+}
+
+// takeEach notes a date series by series, and takes out the values that a window must not have.
+func (b *backward) takeEach(date rules.Date, used []int64) {
 	edge := date + dormantDays
 	last := b.l.last
 	for i, v := range used {
@@ -133,10 +166,6 @@ func (b *backward) take(date rules.Date, used []int64) {
 				last[i] = date
 			}
 		}
-	}
-	b.into.Prepend(used)
-	if b.steps++; b.steps >= b.l.gauge.Range.Window && b.steps%8 == 0 || b.steps == b.l.gauge.Range.Window {
-		b.finishFull()
 	}
 }
 

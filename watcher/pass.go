@@ -30,7 +30,8 @@ type Pass struct {
 	// Progress is told of long work by its name; nil for nobody.
 	Progress func(work string, done, total int64)
 
-	firstNames int        // names held when the pass began
+	names      *Names     // those held
+	firstNames int        // how many were held when the pass began
 	newest     rules.Date // newest date of the files taken so far
 	opened     []*FlagRow // open flags of first loads, which become history when a newer date comes in
 	row        PassRow
@@ -104,7 +105,7 @@ func (p *Pass) begin() (*seenFiles, error) {
 	if err != nil {
 		return nil, err
 	}
-	p.firstNames = names.Len()
+	p.names, p.firstNames = names, names.Len()
 	s := &seenFiles{map[string]bool{}, map[int64]bool{}}
 	return s, v.Files(func(r FileRow) bool {
 		s.stamps[stampKey(r.File.Feed, r.File.Name, r.Stamp, r.FeedKey)] = true
@@ -185,23 +186,19 @@ func (p *Pass) file(ctx context.Context, f rules.Feed, c Candidate, seen *seenFi
 		}
 	}
 	seen.sizes[c.Size] = true
-	v, err := p.Store.View()
-	if err != nil {
-		return err
-	}
-	names, err := v.Names()
-	if err := errors.Join(err, v.Close()); err != nil {
-		return err
-	}
-	sheet, err := p.Source.Read(ctx, c, f, names, p.Now, p.progress("reading "+c.Name))
+	held := p.names.Len()
+	sheet, err := p.Source.Read(ctx, c, f, p.names, p.Now, p.progress("reading "+c.Name))
 	if ctx.Err() != nil {
 		return ctx.Err()
 	}
 	if err != nil {
+		p.names.Cut(held)
 		return unreadable{err}
 	}
 	sheet.File.Feed = f.Name
-	err = p.accept(sheet, f, c)
+	if err = p.accept(sheet, f, c); err != nil {
+		p.names.Cut(held)
+	}
 	var bad *BadFile
 	if errors.As(err, &bad) {
 		return p.refuse(bad, f, c)

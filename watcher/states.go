@@ -34,7 +34,9 @@ type partState struct {
 
 // state is a lane's state for a task's series.
 func (l *lane) state(t task, upto rules.Date) partState {
-	s := State{Range: l.id, Block: t.block, Upto: upto}
+	n := t.width
+	s := State{Range: l.id, Block: t.block, Upto: upto, N: make([]uint32, 0, n), Last: make([]rules.Date, 0, n), Sum: make([]Int128, 0, n),
+		Sq: make([]Int128, 0, n)}
 	for i := range t.width {
 		s.N = append(s.N, uint32(l.windows.N(i)))
 		s.Last = append(s.Last, l.last[i])

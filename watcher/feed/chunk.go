@@ -30,6 +30,7 @@ type fault struct {
 type chunk struct {
 	buf    []byte // reused
 	text   []byte // within buf; ends in a newline
+	at     int64  // where text begins in the file, about
 	stride uint32 // lines from one value of a run to the next
 
 	runs    []run

@@ -23,6 +23,8 @@ type parser struct {
 	dateNow   int            // the last row's
 
 	next   uint32 // one after the series of the last row
+	ended  int64  // where the last chunk ended in the file
+	guess  int64  // the series of the chunk's first row, if the rows between the chunks went on in order; -1 for none
 	hint   uint32 // 1 when rows repeat the series of the row before, else 0
 	recent *[recentNames]uint32
 	seed   maphash.Seed
@@ -43,6 +45,7 @@ func (p *plan) parser(names *watcher.Names) *parser {
 func (p *parser) parse(c *chunk) {
 	p.out, p.name = c, nil
 	p.cursor = cursor{text: c.text, sep: p.comma, arena: c.arena}
+	p.guess = p.guessFirst(c)
 	for p.at < len(p.text) {
 		if b := p.text[p.at]; b <= ' ' && p.blank() {
 			continue
@@ -55,7 +58,7 @@ func (p *parser) parse(c *chunk) {
 			break
 		}
 	}
-	c.arena, c.lines = p.arena, p.line
+	c.arena, c.lines, p.ended = p.arena, p.line, c.at+int64(len(c.text))
 }
 
 func (p *parser) row() bool {

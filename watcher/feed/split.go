@@ -11,6 +11,7 @@ type splitter struct {
 	size   int    // bytes a chunk, more where a record is longer
 	most   int    // bytes a record
 	rest   []byte // begun, not yet handed out
+	out    int64  // bytes handed out
 	ended  bool
 	noLast bool // the last line had no newline
 }
@@ -49,7 +50,8 @@ func (s *splitter) next(c *chunk) error {
 			want = 2 * len(buf)
 			continue
 		}
-		c.buf, c.text = buf, buf
+		c.buf, c.text, c.at = buf, buf, s.out
+		s.out += int64(len(buf))
 		return nil
 	}
 }

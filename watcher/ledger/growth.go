@@ -11,14 +11,17 @@ const (
 func (w *writer) grow(coming int64) {
 	share := min(max(w.tx.Size()/64, leastGrowth), mostGrowth)
 	w.l.db.AllocSize = int(max(share, coming-commitSize))
-	if coming > commitSize && cap(w.l.arena) < commitSize {
-		w.l.arena = make([]byte, 0, commitSize+commitSize/8)
+	if room := min(coming, commitSize); int64(cap(w.l.arena)) < room {
+		w.l.arena = make([]byte, 0, room+room/8) // at once: while it grew by appending, every size would touch fresh memory
 	}
 }
 
-// size is about how many bytes the columns and flags of a batch take.
+// size is about how many bytes the columns, states and flags of a batch take.
 func (p *plan) size() (n int64) {
 	n = 150 * int64(len(p.flags))
+	for _, s := range p.states {
+		n += 20*int64(len(s.N)) + 8*int64(len(s.Var)) + 100
+	}
 	for _, columns := range p.columns {
 		for _, c := range columns {
 			cell := 4
