@@ -58,8 +58,7 @@ func (a *app) load() (*config.Config, error) {
 		if a.nowText != "" {
 			return nil, usagef("--now does not go with a running daemon, which goes by the clock")
 		}
-		c, _, _ := a.held.inForce()
-		return c, nil
+		return a.held.inForce().config, nil
 	}
 	c, err := config.Load(a.configPath, configOptions())
 	if errors.Is(err, os.ErrNotExist) {
@@ -104,7 +103,8 @@ func (a *app) reading(do func(c *config.Config, v watcher.View) error) error {
 		if err != nil {
 			return err
 		}
-		return errors.Join(do(c, v), v.Close())
+		defer v.Close() //nolint:errcheck // only read; also when do ends in an internal error, or a daemon could not close its ledger
+		return do(c, v)
 	})
 }
 

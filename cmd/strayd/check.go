@@ -17,7 +17,7 @@ import (
 )
 
 // checking is what check is asked for.
-type checking struct{ settled, schema, example bool }
+type checking struct{ settled, schema, example, send bool }
 
 func (a *app) checkCommand() *cobra.Command {
 	var asked checking
@@ -25,8 +25,9 @@ func (a *app) checkCommand() *cobra.Command {
 		Use:   "check",
 		Short: "Check the configuration and the feeds, and say what each line means",
 		Long: `Checks the configuration, reads what lies in the feeds without storing any of it, and says each line in every form,
-with the flags to expect of it. Exit code 78 when the configuration is wrong, 1 when a file would be refused.`,
-		Example: "  strayd check\n  strayd check --example > strayd.yaml      a configuration to begin with\n" +
+with the flags to expect of it. Asks the chat service, where there is a token for it, whether notices would arrive; with --send a test
+notice tells. Exit code 78 when the configuration is wrong, 1 when a file would be refused or a test did not arrive.`,
+		Example: "  strayd check\n  strayd check --send\n  strayd check --example > strayd.yaml      a configuration to begin with\n" +
 			"  strayd check --schema > strayd.schema.json",
 		Args: takes(0, 0),
 		RunE: func(*cobra.Command, []string) error {
@@ -38,23 +39,24 @@ with the flags to expect of it. Exit code 78 when the configuration is wrong, 1 
 				_, err := io.WriteString(a.out, config.Starter)
 				return err
 			}
-			return a.check(asked.settled)
+			return a.check(asked)
 		},
 	}
 	cmd.Flags().BoolVar(&asked.settled, "settled", false, "take my word that every file is whole")
+	cmd.Flags().BoolVar(&asked.send, "send", false, "post a test notice to every channel")
 	cmd.Flags().BoolVar(&asked.schema, "schema", false, "print the JSON Schema of the configuration, and nothing else")
 	cmd.Flags().BoolVar(&asked.example, "example", false, "print a commented configuration to begin with, and nothing else")
 	return cmd
 }
 
-func (a *app) check(settled bool) error {
+func (a *app) check(asked checking) error {
 	c, err := a.load()
 	if err != nil {
 		return err
 	}
 	a.sayLater(c)
 	fmt.Fprintf(a.out, "%s is right.\n\n", c.File)
-	series, refused, err := a.checkFeeds(c, settled)
+	series, refused, err := a.checkFeeds(c, asked.settled)
 	if err != nil {
 		return err
 	}
@@ -64,6 +66,7 @@ func (a *app) check(settled bool) error {
 		series = max(series, n)
 		fmt.Fprintf(a.out, "ledger: %s, %s held\n", c.Ledger, plural(n, "series"))
 	}
+	refused += a.checkChannels(c, asked.send)
 	if err := a.sayLines(c, series); err != nil {
 		return err
 	}
@@ -133,7 +136,7 @@ func (a *app) sayRuns(c *config.Config, spec string, now time.Time) {
 	if err != nil {
 		return // the configuration's own check has said so
 	}
-	fmt.Fprint(a.out, "  next runs, once a daemon makes them:")
+	fmt.Fprint(a.out, "  next runs of a daemon:")
 	for _, t := range s.Upcoming(now, 3) {
 		fmt.Fprint(a.out, " "+t.In(c.Location).Format("Mon 2006-01-02 15:04 MST")+";")
 	}

@@ -66,10 +66,7 @@ func (a *app) callDaemon() (done bool, err error) {
 
 // command carries out one command line that came over the control socket.
 func (d *daemon) command(ctx context.Context, call desk.Call, stdout, stderr io.Writer) int {
-	d.mu.Lock()
-	hash := d.hash
-	d.mu.Unlock()
-	if call.Settings != hash {
+	if call.Settings != d.inForce().hash {
 		fmt.Fprintln(stderr, "strayd: this configuration is not the one that the running daemon goes by: reload the daemon (SIGHUP), or stop it")
 		return exitConfig
 	}

@@ -23,7 +23,7 @@ const asProgram = "STRAYD_TEST_AS_PROGRAM"
 
 func TestMain(m *testing.M) {
 	if os.Getenv(asProgram) != "" {
-		os.Exit(run(context.Background(), os.Args[1:], os.Stdout, os.Stderr))
+		main()
 	}
 	os.Exit(m.Run())
 }

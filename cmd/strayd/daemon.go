@@ -5,18 +5,16 @@ import (
 	"errors"
 	"fmt"
 	"log/slog"
+	"net"
 	"os"
-	"os/signal"
 	"sync"
 	"sync/atomic"
-	"syscall"
 	"time"
 
 	"github.com/spf13/cobra"
 
 	"strayd/config"
 	"strayd/notify"
-	"strayd/watcher"
 	"strayd/watcher/desk"
 	"strayd/watcher/health"
 	"strayd/watcher/ledger"
@@ -58,27 +56,44 @@ type daemon struct {
 	ledger  *ledger.Ledger
 	loop    *schedule.Loop
 	beats   beats
+	heart   chan struct{} // a pass went well, and the heartbeat's keeper is to know
 	started time.Time
-	listen  string
 	program *app
+	signals *signals
+	passing chan struct{} // full while a pass or anything else that makes notices is under way
 
-	mu      sync.Mutex
-	config  *config.Config // the last good one
-	hash    string         // of it
-	bad     string         // why the last reload was refused
-	badAt   time.Time
-	teller  *notify.Teller
-	post    *postOffice
-	last    watcher.PassRow
-	passing sync.Mutex // one pass at a time, whoever asked for it
+	mu    sync.Mutex
+	setup *setup    // the last good one
+	bad   string    // why the last reload was refused
+	badAt time.Time // when
+	seen  feedsSeen
 
 	stopping atomic.Bool
 }
+
+// setup is a configuration with all that goes with it while it is in force.
+type setup struct {
+	config *config.Config
+	hash   string // of the configuration
+	teller *notify.Teller
+	post   *postOffice
+	jobs   []schedule.Job
+}
+
+// badSetting is an environment in which the configuration cannot be in force: a person must put it right.
+type badSetting struct{ error }
 
 func (a *app) daemon(listen string) error {
 	if a.nowText != "" {
 		return usagef("the daemon goes by the clock: --now is for single commands")
 	}
+	if listen != "" {
+		if err := health.CheckAddress(listen); err != nil {
+			return usageError{err}
+		}
+	}
+	signals := catchSignals()
+	defer signals.release()
 	c, err := a.load()
 	if err != nil {
 		return err
@@ -87,188 +102,149 @@ func (a *app) daemon(listen string) error {
 	if err != nil {
 		return err
 	}
-	d := &daemon{log: slog.New(slog.NewJSONHandler(a.err, nil)), ledger: l, started: time.Now(), listen: listen, program: a}
+	d := &daemon{log: slog.New(slog.NewJSONHandler(a.err, nil)), ledger: l, started: time.Now(), program: a, signals: signals,
+		heart: make(chan struct{}, 1), passing: make(chan struct{}, 1)}
+	d.beats.begun = make(chan struct{})
 	if os.Getuid() == 0 {
 		d.log.Warn("running as root: a user of its own is safer")
 	}
-	return errors.Join(d.serve(a.ctx, c), l.Close())
+	return errors.Join(d.serve(a.ctx, c, listen), l.Close())
 }
 
-// serve starts everything in the order that proves that this is the only daemon, waits for the end, and stops in reverse.
-func (d *daemon) serve(ctx context.Context, c *config.Config) error {
-	if err := d.adopt(c); err != nil {
+// serve opens everything before anything runs. The ledger's lock has proved that this is the only daemon of it, so that a socket
+// that is there already is stale.
+func (d *daemon) serve(ctx context.Context, c *config.Config, listen string) error {
+	s, err := d.prepare(c)
+	if err != nil {
 		return err
+	}
+	if url := heartbeatURL(); !url.Empty() {
+		if err := health.CheckHeartbeat(url); err != nil {
+			return badSetting{fmt.Errorf("STRAYD_HEARTBEAT_URL: %w", err)}
+		}
 	}
 	server := &desk.Server{Run: d.command, Log: d.log}
 	if err := server.Listen(c.Ledger); err != nil {
 		return err
 	}
-	jobs, err := d.jobs(c)
-	if err != nil {
-		return err
-	}
-	d.loop = &schedule.Loop{Jobs: jobs, Slots: d.ledger, Log: d.log, Beat: d.beats.beat, Panicked: d.panicked}
-	ends := make(chan error, 3)
-	running, stop := context.WithCancel(context.WithoutCancel(ctx))
-	defer stop()
-	var parts sync.WaitGroup
-	part := func(f func() error) { parts.Go(func() { ends <- f() }) }
-	part(server.Serve)
-	part(func() error { return d.loop.Run(running) })
-	if d.listen != "" {
-		l, err := health.Listen(d.listen)
-		if err != nil {
+	var pages net.Listener
+	if listen != "" {
+		if pages, err = health.Listen(listen); err != nil {
+			server.Close(0)
 			return err
 		}
-		d.log.Info("health pages", "address", l.Addr().String())
-		part(func() error {
-			return health.Serve(running, l, health.Handler(d.report, health.Options{Log: d.log}), d.log)
-		})
+		d.log.Info("health pages", "address", pages.Addr().String())
 	}
-	parts.Go(func() {
-		if err := health.Watchdog(running, d.beats.progressed, d.log); err != nil {
-			d.log.Warn("the service manager's watchdog cannot be told", "error", err)
-		}
-	})
-	d.reloads(running, &parts)
-	d.sayReady(c)
-	err = d.wait(ctx, ends)
-	d.log.Info("stopping")
-	d.stopping.Store(true)
-	health.Stopping() //nolint:errcheck // nobody to tell
-	stop()
-	d.post.Stop()
-	server.Close(stopCalls)
-	parts.Wait()
-	return err
+	d.loop = &schedule.Loop{Jobs: s.jobs, Slots: d.ledger, Log: d.log, Beat: d.beats.beat, Panicked: d.panicked}
+	d.install(s)
+	return d.run(ctx, server, pages)
 }
 
-// stopCalls is how long commands on the socket may take to end.
-const stopCalls = 3 * time.Second
-
-// wait returns when the context ends or a part fails. From then on a second signal ends the program at once.
-func (d *daemon) wait(ctx context.Context, ends chan error) (err error) {
-	select {
-	case <-ctx.Done():
-	case err = <-ends:
-	}
-	second := make(chan os.Signal, 1)
-	signal.Notify(second, os.Interrupt, syscall.SIGTERM)
-	go func() {
-		<-second
-		d.log.Error("a second signal: ending at once; what was published stands")
-		os.Exit(exitFailed)
-	}()
-	return err
-}
-
-func (d *daemon) sayReady(c *config.Config) {
-	d.log.Info("running", "ledger", c.Ledger, "feeds", len(c.Feeds), "channels", len(c.Channels))
-	if err := health.Ready(); err != nil {
-		d.log.Warn("the service manager cannot be told", "error", err)
-	}
-	for _, n := range c.Later {
-		d.log.Info("set, and not acted on by this version", "key", n.Path, "line", n.Line, "what", n.Text)
-	}
-}
-
-// reloads reads the configuration again at each SIGHUP.
-func (d *daemon) reloads(ctx context.Context, parts *sync.WaitGroup) {
-	hup := make(chan os.Signal, 1)
-	signal.Notify(hup, syscall.SIGHUP)
-	parts.Go(func() {
-		defer signal.Stop(hup)
-		for {
-			select {
-			case <-ctx.Done():
-				return
-			case <-hup:
-				d.reload()
-			}
-		}
-	})
-}
-
-// reload takes a good new configuration over as a whole, and keeps the last good one otherwise.
-func (d *daemon) reload() {
-	health.Reloading()   //nolint:errcheck // nobody to tell
-	defer health.Ready() //nolint:errcheck // as above
-	d.mu.Lock()
-	file, old := d.config.File, d.config
-	d.mu.Unlock()
-	c, err := (&app{configPath: file}).load()
-	if err == nil && c.Ledger != old.Ledger {
-		err = fmt.Errorf("the ledger changed from %s to %s: that takes a restart", old.Ledger, c.Ledger)
-	}
-	var jobs []schedule.Job
-	if err == nil {
-		jobs, err = d.jobs(c)
-	}
-	if err == nil {
-		err = d.loop.Swap(jobs)
-	}
-	if err == nil {
-		err = d.adopt(c)
-	}
-	d.mu.Lock()
-	defer d.mu.Unlock()
-	if err != nil {
-		d.bad, d.badAt = err.Error(), time.Now()
-		d.log.Error("the configuration is wrong: the last good one stays in force", "error", err)
-		return
-	}
-	d.bad, d.badAt = "", time.Time{}
-	d.log.Info("configuration read again")
-}
-
-// adopt makes a configuration the one in force.
-func (d *daemon) adopt(c *config.Config) error {
+// prepare makes all that goes with a configuration; nothing of it runs yet.
+func (d *daemon) prepare(c *config.Config) (*setup, error) {
 	s, err := settings(c)
 	if err != nil {
-		return err
+		return nil, err
+	}
+	jobs, err := d.jobs(c)
+	if err != nil {
+		return nil, err
 	}
 	post, err := openPost(c, d.ledger, d.program.out, d.log, d.delivered)
 	if err != nil {
-		return err
+		return nil, badSetting{err}
 	}
+	return &setup{config: c, hash: configHash(c), teller: newTeller(c, ownersOf(s.Register)), post: post, jobs: jobs}, nil
+}
+
+// install puts a setup in force. The channels of the one before have ended when the new ones begin: two senders of one outbox would
+// both send its notices.
+func (d *daemon) install(s *setup) {
 	d.mu.Lock()
-	old := d.post
-	d.config, d.hash, d.post = c, configHash(c), post
-	d.teller = newTeller(c, ownersOf(s.Register))
+	old := d.setup
+	d.setup = s
 	d.mu.Unlock()
 	if old != nil {
-		old.Stop()
+		old.post.Stop()
 	}
-	post.Start()
-	return nil
+	s.post.Start()
 }
 
-// delivered tells the other channels of one that died.
-func (d *daemon) delivered(e notify.Event) {
-	if !e.Stopped {
-		return
-	}
-	_, teller, post := d.inForce()
-	word := notify.Word{At: time.Now(), Key: "dead " + e.Channel + " " + time.Now().Format(time.DateOnly), But: e.Channel,
-		Lines: []string{fmt.Sprintf("Channel %s delivers nothing: %s", e.Channel, e.Reason), "Its notices wait. `strayd notices` lists them."}}
-	if err := d.ledger.Add(teller.Word(word)); err != nil {
-		d.log.Error("the outbox cannot be written", "error", err)
-	}
-	post.Wake()
-}
-
-func (d *daemon) wake() {
-	_, _, post := d.inForce()
-	post.Wake()
-}
-
-// inForce is the configuration in force with what goes with it.
-func (d *daemon) inForce() (*config.Config, *notify.Teller, *postOffice) {
+// inForce is the setup in force.
+func (d *daemon) inForce() *setup {
 	d.mu.Lock()
 	defer d.mu.Unlock()
-	return d.config, d.teller, d.post
+	return d.setup
 }
 
-func (d *daemon) panicked(job string, value any) {
-	d.log.Error("a pass ended in an internal error; the next one runs as planned", "job", job, "error", fmt.Sprint(value))
+// alone waits until no pass is under way and keeps others from beginning until it is released.
+func (d *daemon) alone(ctx context.Context) (release func(), err error) {
+	select {
+	case d.passing <- struct{}{}:
+	case <-ctx.Done():
+		return nil, ctx.Err()
+	}
+	return func() { <-d.passing }, nil
+}
+
+// run has everything run until the end comes, then stops it.
+func (d *daemon) run(ctx context.Context, server *desk.Server, pages net.Listener) error {
+	ends := make(chan error, 3)
+	working, stopWork := context.WithCancel(context.WithoutCancel(ctx))
+	defer stopWork()
+	telling, stopTelling := context.WithCancel(context.WithoutCancel(ctx))
+	defer stopTelling()
+	var work, tell sync.WaitGroup
+	work.Go(func() { ends <- d.loop.Run(working) })
+	work.Go(func() { ends <- server.Serve() })
+	work.Go(func() { d.reloads(working) })
+	work.Go(func() { d.heartbeats(working) })
+	if pages != nil {
+		tell.Go(func() {
+			ends <- health.Serve(telling, pages, health.Handler(d.report, health.Options{Log: d.log}), d.log)
+		})
+	}
+	tell.Go(func() {
+		if err := health.Watchdog(telling, d.beats.progressed, d.log); err != nil {
+			d.log.Warn("the service manager's watchdog cannot be told", "error", err)
+		}
+	})
+	err := wait(ctx, ends)
+	go d.atMost(stopMost)
+	d.log.Info("stopping")
+	d.stopping.Store(true)
+	health.Stopping() //nolint:errcheck // nobody to tell
+	stopWork()        // slots, the pass under way, reloads
+	server.Close(stopCalls)
+	work.Wait()
+	d.inForce().post.Finish(drainMost)
+	stopTelling()
+	tell.Wait()
+	d.log.Info("stopped")
+	return err
+}
+
+// wait returns when the context ends or a part does.
+func wait(ctx context.Context, ends <-chan error) error {
+	select {
+	case <-ctx.Done():
+		return nil
+	case err := <-ends:
+		return err
+	}
+}
+
+// The parts of a stop, which together stay under the half minute that service managers wait: the pass under way is called off, the
+// commands on the socket end, notices that can go now go, calls in hand end (callGrace), pages end (3 s).
+const (
+	stopCalls = 5 * time.Second
+	drainMost = 5 * time.Second
+	stopMost  = 25 * time.Second
+)
+
+// atMost ends the program when a stop takes too long, as a kill would: what was published stands, and the next start goes on there.
+func (d *daemon) atMost(most time.Duration) {
+	time.Sleep(most)
+	d.log.Error("the stop takes too long: ending at once; what was published stands", "after", most.String())
+	os.Exit(exitFailed)
 }

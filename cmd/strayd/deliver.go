@@ -40,8 +40,7 @@ func (a *app) deliver(c *config.Config, l *ledger.Ledger) error {
 		return nil
 	}
 	post.Start()
-	post.Drain(deliverTime)
-	post.Stop()
+	post.Finish(deliverTime)
 	return nil
 }
 

@@ -6,7 +6,6 @@ import (
 	"errors"
 	"fmt"
 	"os"
-	"sync/atomic"
 	"time"
 
 	"strayd/config"
@@ -80,27 +79,78 @@ func location(c *config.Config, name string) *time.Location {
 	return c.Location
 }
 
-// pass runs one pass over a feed, or over all with "".
+// pass runs one pass over a feed, or over all with "". One that fails is told to the channels, once a day.
 func (d *daemon) pass(ctx context.Context, feed string) error {
-	d.passing.Lock()
-	defer d.passing.Unlock()
-	c, _, post := d.inForce()
-	p, err := d.program.newPass(c, d.ledger)
+	err := d.onePass(ctx, feed)
+	if err != nil && ctx.Err() == nil {
+		d.failed(feedJob+feed, err)
+	}
+	if err == nil {
+		select {
+		case d.heart <- struct{}{}:
+		default: // the keeper is about to know
+		}
+	}
+	return err
+}
+
+func (d *daemon) onePass(ctx context.Context, feed string) error {
+	release, err := d.alone(ctx)
+	if err != nil {
+		return err
+	}
+	defer release()
+	s := d.inForce()
+	defer s.post.Wake()
+	p, err := d.program.newPass(s.config, d.ledger)
 	if err != nil {
 		return err
 	}
 	p.Only = feed
 	p.Progress = func(string, int64, int64) { d.beats.beat() }
-	p.Report = func(r watcher.FileReport) { d.logFile(r); post.Wake() }
-	row, err := p.Run(ctx)
-	d.mu.Lock()
-	d.last = row
-	d.mu.Unlock()
-	post.Wake()
-	if err == nil {
-		d.heartbeat(ctx)
-	}
+	p.Report = func(r watcher.FileReport) { d.logFile(r); s.post.Wake() }
+	_, err = p.Run(ctx)
+	d.sayTroubles(s)
 	return err
+}
+
+// sayTroubles tells of channels that do not deliver, after each pass, so that the log never falls silent about them.
+func (d *daemon) sayTroubles(s *setup) {
+	channels, err := s.post.sender.Health()
+	if err != nil {
+		d.log.Error("the outbox cannot be read", "error", err)
+	}
+	for _, trouble := range notify.Troubles(channels) {
+		d.log.Error("a channel does not deliver", "channel", trouble)
+	}
+}
+
+// failed tells the channels that a job failed, once a day.
+func (d *daemon) failed(job string, err error) {
+	d.say("failed "+job, "", fmt.Sprintf("FAILED: %s: %v", job, err), "It is tried again at its next time. What was published before it stands.")
+}
+
+// say tells every channel but one a word about the program, once a day for each topic.
+func (d *daemon) say(topic, but string, lines ...string) {
+	s := d.inForce()
+	now := time.Now()
+	word := notify.Word{At: now, Key: topic + " " + now.In(s.config.Location).Format(time.DateOnly), But: but, Lines: lines}
+	if err := d.ledger.Add(s.teller.Word(word)); err != nil {
+		d.log.Error("the outbox cannot be written", "error", err)
+	}
+	s.post.Wake()
+}
+
+// delivered tells the other channels of one that died.
+func (d *daemon) delivered(e notify.Event) {
+	if e.Stopped {
+		d.say("dead "+e.Channel, e.Channel, fmt.Sprintf("Channel %s delivers nothing: %s", e.Channel, e.Reason),
+			"Its notices wait. `strayd notices` lists them.")
+	}
+}
+
+func (d *daemon) panicked(job string, value any) {
+	d.failed(job, fmt.Errorf("internal error: %v", value))
 }
 
 func (d *daemon) logFile(r watcher.FileReport) {
@@ -115,9 +165,21 @@ func (d *daemon) logFile(r watcher.FileReport) {
 	}
 }
 
-func (d *daemon) heartbeat(ctx context.Context) {
-	if url := os.Getenv("STRAYD_HEARTBEAT_URL"); url != "" {
-		if err := health.Heartbeat(ctx, health.NewSecret(url)); err != nil {
+func heartbeatURL() health.Secret { return health.NewSecret(os.Getenv("STRAYD_HEARTBEAT_URL")) }
+
+// heartbeats tells the heartbeat's keeper of passes that went well. An address that hangs holds nothing else up.
+func (d *daemon) heartbeats(ctx context.Context) {
+	url := heartbeatURL()
+	for {
+		select {
+		case <-ctx.Done():
+			return
+		case <-d.heart:
+		}
+		if url.Empty() {
+			continue
+		}
+		if err := health.Heartbeat(ctx, url); err != nil && ctx.Err() == nil {
 			d.log.Warn("the heartbeat address does not answer", "error", err)
 		}
 	}
@@ -125,18 +187,17 @@ func (d *daemon) heartbeat(ctx context.Context) {
 
 // deadlines raises a late flag for each feed that was not whole when a valuation date fell due.
 func (d *daemon) deadlines(ctx context.Context, slot time.Time) error {
-	c, _, post := d.inForce()
+	s := d.inForce()
 	var errs []error
-	for _, f := range c.Feeds {
+	for _, f := range s.config.Feeds {
 		if f.Due != nil {
-			errs = append(errs, d.feedDeadlines(ctx, c, f, slot))
+			errs = append(errs, d.feedDeadlines(ctx, s.config, f, slot))
 		}
 	}
-	post.Wake()
 	return errors.Join(errs...)
 }
 
-// feedDeadlines judges the dates of one feed that fell due since the last look.
+// feedDeadlines judges the dates of one feed that fell due since the last one that was judged.
 func (d *daemon) feedDeadlines(ctx context.Context, c *config.Config, f rules.Feed, slot time.Time) error {
 	name := "due " + f.Name
 	since, err := d.ledger.LastSlot(name)
@@ -147,64 +208,54 @@ func (d *daemon) feedDeadlines(ctx context.Context, c *config.Config, f rules.Fe
 		return d.ledger.Done(name, slot)
 	}
 	zone := location(c, f.Due.Timezone)
+	var errs []error
 	for _, date := range rules.DueBetween(*f.Due, since, slot, zone) {
 		due := rules.DueAt(*f.Due, date, zone)
-		if err := d.deadline(ctx, f, date, due); err != nil {
-			return err
+		judged, err := d.deadline(ctx, f, date, due)
+		errs = append(errs, err)
+		if !judged {
+			break
 		}
 		if err := d.ledger.Done(name, due); err != nil {
 			return err
 		}
 	}
-	return d.ledger.Done(name, slot)
+	return errors.Join(errs...)
 }
 
-// deadline looks once more at what has arrived, then judges whether the feed is whole.
-func (d *daemon) deadline(ctx context.Context, f rules.Feed, date rules.Date, due time.Time) error {
-	if err := d.pass(ctx, f.Name); err != nil {
-		return err
-	}
-	d.passing.Lock()
-	defer d.passing.Unlock()
-	c, _, _ := d.inForce()
-	p, err := d.program.newPass(c, d.ledger)
+// deadline looks once more at what has arrived, then judges whether the feed is whole. A feed that cannot be looked at is not whole.
+func (d *daemon) deadline(ctx context.Context, f rules.Feed, date rules.Date, due time.Time) (judged bool, err error) {
+	looked := d.pass(ctx, f.Name)
+	release, err := d.alone(ctx)
 	if err != nil {
-		return err
+		return false, err
 	}
-	return p.Deadline(f, date, due)
+	defer release()
+	s := d.inForce()
+	defer s.post.Wake()
+	p, err := d.program.newPass(s.config, d.ledger)
+	if err == nil {
+		err = p.Deadline(f, date, due)
+	}
+	return err == nil, errors.Join(looked, err)
 }
 
 // daily enqueues the line that says that all was checked.
-func (d *daemon) daily(_ context.Context, slot time.Time) error {
-	c, teller, post := d.inForce()
-	channels, err := post.sender.Health()
+func (d *daemon) daily(ctx context.Context, slot time.Time) error {
+	release, err := d.alone(ctx)
 	if err != nil {
 		return err
 	}
-	news, err := dayNews(c, d.ledger, notify.Troubles(channels), slot)
+	defer release()
+	s := d.inForce()
+	defer s.post.Wake()
+	channels, err := s.post.sender.Health()
 	if err != nil {
 		return err
 	}
-	defer post.Wake()
-	return d.ledger.Add(teller.Daily(news))
+	news, err := dayNews(s.config, d.ledger, notify.Troubles(channels), slot)
+	if err != nil {
+		return err
+	}
+	return d.ledger.Add(s.teller.Daily(news))
 }
-
-// beats counts signs of progress, for the watchdog and the health answer.
-type beats struct {
-	count atomic.Int64
-	seen  atomic.Int64
-	at    atomic.Int64 // of the last one, in unix nanoseconds
-}
-
-func (b *beats) beat() {
-	b.count.Add(1)
-	b.at.Store(time.Now().UnixNano())
-}
-
-// progressed says whether there was a beat since it was asked last.
-func (b *beats) progressed() bool {
-	now := b.count.Load()
-	return b.seen.Swap(now) != now
-}
-
-func (b *beats) last() time.Time { return time.Unix(0, b.at.Load()) }

@@ -1,7 +1,6 @@
 package main
 
 import (
-	"errors"
 	"fmt"
 	"os"
 
@@ -173,7 +172,8 @@ func (a *app) export(what string) error {
 		if err != nil {
 			return err
 		}
-		return errors.Join(a.exportOf(v, w), v.Close())
+		defer v.Close() //nolint:errcheck // only read
+		return a.exportOf(v, w)
 	})
 }
 

@@ -3,6 +3,7 @@ package main
 import (
 	"errors"
 	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -119,7 +120,7 @@ func (a *app) noticesAgain(args []string) error {
 	if err != nil {
 		return err
 	}
-	return a.withLedger(ledger.ReadWrite, func(_ *config.Config, l *ledger.Ledger) error {
+	return a.withLedger(ledger.ReadWrite, func(c *config.Config, l *ledger.Ledger) error {
 		for _, arg := range args {
 			number, err := strconv.ParseUint(arg, 10, 64)
 			if err != nil {
@@ -138,6 +139,8 @@ func (a *app) noticesAgain(args []string) error {
 				return fmt.Errorf("no notice has the number %d; `strayd notices` lists them", number)
 			case n.State == rules.NoticeWaiting || n.State == rules.NoticeSending:
 				return fmt.Errorf("notice %d is %s already", number, n.State)
+			case !slices.ContainsFunc(c.Channels, func(ch rules.Channel) bool { return ch.Name == n.Channel }):
+				return fmt.Errorf("notice %d is for channel %s, which the configuration does not have", number, n.Channel)
 			}
 			if err := l.Mark(notify.Again(n, now)); err != nil {
 				return err
@@ -145,8 +148,7 @@ func (a *app) noticesAgain(args []string) error {
 			fmt.Fprintf(a.out, "Notice %d waits for channel %s again.\n", number, n.Channel)
 		}
 		if a.held != nil {
-			_, _, post := a.held.inForce()
-			post.Wake()
+			a.held.inForce().post.Wake()
 		}
 		return nil
 	})

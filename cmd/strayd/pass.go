@@ -40,15 +40,28 @@ func (a *app) pass(only string, settled bool) error {
 		if only != "" && c.FeedKey(only) == "" {
 			return usagef("no feed %q in %s", only, c.File)
 		}
-		if d := a.held; d != nil { // the daemon delivers, and makes one pass at a time
-			d.passing.Lock()
-			defer d.passing.Unlock()
-			defer d.wake()
-			return a.passOver(c, l, only, settled)
+		if a.held != nil {
+			return a.passBeside(c, only, settled)
 		}
 		err := a.passOver(c, l, only, settled)
 		return errors.Join(err, a.deliver(c, l))
 	})
+}
+
+// passBeside makes a pass in the daemon's turn; its notices are the daemon's to deliver.
+func (a *app) passBeside(c *config.Config, only string, settled bool) error {
+	d := a.held
+	release, err := d.alone(a.ctx)
+	if err != nil {
+		return err
+	}
+	defer release()
+	s := d.inForce()
+	if s.config != c {
+		return badSetting{errors.New("the daemon took another configuration over meanwhile: give the command again")}
+	}
+	defer s.post.Wake()
+	return a.passOver(c, d.ledger, only, settled)
 }
 
 // passOver runs one pass over an open ledger and prints what became of each file.
@@ -59,8 +72,19 @@ func (a *app) passOver(c *config.Config, l *ledger.Ledger, only string, settled 
 	}
 	p.Only, p.Settled = only, settled
 	bars := newBars(a.err)
-	p.Progress = bars.progress
-	p.Report = func(r watcher.FileReport) { bars.clear(); a.sayFile(r) }
+	p.Progress = func(work string, done, total int64) {
+		bars.progress(work, done, total)
+		if a.held != nil {
+			a.held.beats.beat()
+		}
+	}
+	p.Report = func(r watcher.FileReport) {
+		bars.clear()
+		a.sayFile(r)
+		if a.held != nil {
+			a.held.inForce().post.Wake()
+		}
+	}
 	row, err := p.Run(a.ctx)
 	bars.clear()
 	a.sayPass(row)

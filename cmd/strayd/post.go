@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"fmt"
 	"io"
 	"log/slog"
 	"os"
@@ -17,33 +18,63 @@ import (
 // postOffice is the sending loop of a configuration's channels, with what it needs.
 type postOffice struct {
 	sender *notify.Sender
+	outbox notify.Outbox
+	ctx    context.Context
 	cancel context.CancelFunc
-	done   chan struct{}
-	once   sync.Once
+	runs   sync.WaitGroup
 }
+
+// callGrace is how long a call in hand may go on after a stop.
+const callGrace = 5 * time.Second
 
 // openPost prepares the channels of a configuration. A missing chat token is an error only where a channel needs one.
 func openPost(c *config.Config, outbox notify.Outbox, console io.Writer, log *slog.Logger, told func(notify.Event)) (*postOffice, error) {
 	teller := newTeller(c, nil)
-	s := notify.Sending{Outbox: outbox, Zone: c.Location, Report: func(e notify.Event) {
+	s := notify.Sending{Outbox: outbox, Zone: c.Location, Grace: callGrace, Report: func(e notify.Event) {
 		logEvent(log, e)
 		told(e)
 	}}
-	var service *slack.Service
+	to := &addresses{console: console}
 	for _, ch := range c.Channels {
-		r := notify.Route{Name: ch.Name, Hours: teller.Hours(ch), To: notify.NewConsole(console)}
-		if ch.Kind == "slack" {
-			var err error
-			if service == nil {
-				if service, err = openSlack(); err != nil {
-					return nil, err
-				}
-			}
-			r.Service, r.To = "slack", service.Channel(ch.Target)
+		r, err := to.route(ch)
+		if err != nil {
+			return nil, fmt.Errorf("channel %s: %w", ch.Name, err)
 		}
+		r.Hours = teller.Hours(ch)
 		s.Routes = append(s.Routes, r)
 	}
-	return &postOffice{sender: notify.NewSender(s), done: make(chan struct{})}, nil
+	p := &postOffice{sender: notify.NewSender(s), outbox: outbox}
+	p.ctx, p.cancel = context.WithCancel(context.Background())
+	return p, nil
+}
+
+// addresses turns channels of a configuration into what takes their notices. Those of one service share its credentials.
+type addresses struct {
+	console io.Writer
+	service *slack.Service
+}
+
+func (a *addresses) route(ch rules.Channel) (r notify.Route, err error) {
+	r = notify.Route{Name: ch.Name}
+	if ch.Kind == "slack" {
+		to, err := a.slack(ch)
+		if err != nil {
+			return r, err
+		}
+		r.Service, r.To = "slack", to
+		return r, nil
+	}
+	r.To = notify.NewConsole(a.console)
+	return r, nil
+}
+
+func (a *addresses) slack(ch rules.Channel) (to *slack.Channel, err error) {
+	if a.service == nil {
+		if a.service, err = openSlack(); err != nil {
+			return nil, err
+		}
+	}
+	return a.service.Channel(ch.Target), nil
 }
 
 // openSlack finds the token. STRAYD_SLACK_URL names another address of the service's methods, for a relay or a test.
@@ -56,44 +87,37 @@ func openSlack() (*slack.Service, error) {
 }
 
 // Start begins to deliver.
-func (p *postOffice) Start() {
-	ctx, cancel := context.WithCancel(context.Background())
-	p.cancel = cancel
-	go func() {
-		defer close(p.done)
-		p.sender.Run(ctx)
-	}()
-}
+func (p *postOffice) Start() { p.runs.Go(func() { p.sender.Run(p.ctx) }) }
 
 // Wake has every channel look at its queue now.
 func (p *postOffice) Wake() { p.sender.Wake() }
 
-// Stop ends the delivery: calls in hand may go on for the sender's own grace.
+// Stop ends the delivery: calls in hand may go on for callGrace.
 func (p *postOffice) Stop() {
-	p.once.Do(func() {
-		if p.cancel != nil {
-			p.cancel()
-			<-p.done
-		}
-	})
+	p.cancel()
+	p.runs.Wait()
 }
 
-// Drain waits until every channel has nothing more to do now, at most for the given time.
-func (p *postOffice) Drain(most time.Duration) {
-	deadline := time.Now().Add(most)
-	for time.Now().Before(deadline) {
-		health, err := p.sender.Health()
-		if err != nil || !busy(health) {
-			return
-		}
+// Finish delivers what can go now, for at most the given time, then stops.
+func (p *postOffice) Finish(most time.Duration) {
+	defer p.Stop()
+	for end := time.Now().Add(most); time.Now().Before(end) && p.busy(end); {
 		time.Sleep(20 * time.Millisecond)
 	}
 }
 
-// busy says whether a channel has something that it could send without waiting for its hours or for another try.
-func busy(channels []notify.Health) bool {
+// busy says whether a channel has something that it could send before a time.
+func (p *postOffice) busy(before time.Time) bool {
+	channels, err := p.sender.Health()
+	if err != nil {
+		return false
+	}
 	for _, h := range channels {
-		if h.Waiting > 0 && h.State != notify.Held && h.State != notify.Stopped && h.Class == "" {
+		if h.Waiting == 0 || h.State == notify.Held || h.State == notify.Stopped || h.Class != "" && h.Class != notify.BadPayload {
+			continue // nothing there, or nothing that goes before its hours or another try
+		}
+		n, ok, err := p.outbox.Next(h.Channel)
+		if err == nil && (!ok || n.Next.Before(before)) { // without a waiting one, a call is in hand
 			return true
 		}
 	}

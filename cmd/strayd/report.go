@@ -1,7 +1,9 @@
 package main
 
 import (
+	"maps"
 	"os"
+	"sync"
 	"time"
 
 	"strayd/config"
@@ -15,43 +17,41 @@ import (
 // report is how the daemon is now, for the health pages.
 func (d *daemon) report() health.Report {
 	d.mu.Lock()
-	c, last, bad, badAt, hash, post := d.config, d.last, d.bad, d.badAt, d.hash, d.post
+	s, bad, badAt := d.setup, d.bad, d.badAt
 	d.mu.Unlock()
 	r := health.Report{Version: version, Started: d.started, Now: time.Now(), Beat: d.beats.last(), Stopping: d.stopping.Load(),
-		Configuration: health.Configuration{Valid: true, Hash: hash, Error: bad, ErrorAt: badAt}, Pass: passReport(last), ClockSteps: d.loop.Steps()}
-	for _, s := range d.loop.Status() {
-		r.Jobs = append(r.Jobs, jobReport(s))
+		Configuration: health.Configuration{Valid: true, Hash: s.hash, Error: bad, ErrorAt: badAt}, ClockSteps: d.loop.Steps()}
+	for _, status := range d.loop.Status() {
+		r.Jobs = append(r.Jobs, jobReport(status, s.config.Location))
 	}
-	if channels, err := post.sender.Health(); err == nil {
+	if channels, err := s.post.sender.Health(); err == nil {
 		for _, h := range channels {
 			r.Channels = append(r.Channels, channelReport(h))
 		}
 	}
-	r.Ledger = health.Ledger{Path: c.Ledger}
+	r.Ledger = health.Ledger{Path: s.config.Ledger}
 	if v, err := d.ledger.View(); err == nil {
-		d.readLedger(c, v, &r)
-		v.Close() //nolint:errcheck // only read
+		defer v.Close() //nolint:errcheck // only read
+		d.readLedger(s.config, v, &r)
 	}
 	return r
 }
 
+// readLedger tells of the ledger as far as it can be read.
 func (d *daemon) readLedger(c *config.Config, v watcher.View, r *health.Report) {
-	r.Ledger.Open, r.Ledger.Step = true, uint64(v.Step())
+	r.Ledger.Step = uint64(v.Step())
 	if info, err := os.Stat(c.Ledger); err == nil {
 		r.Ledger.Bytes = info.Size()
 	}
-	if names, err := v.Names(); err == nil {
-		r.Ledger.Series = names.Len()
+	names, err := v.Names()
+	if err != nil {
+		return
 	}
-	r.OpenFlags = map[rules.Kind]int{}
-	v.Flags(false, func(f rules.Flag) bool { r.OpenFlags[f.Kind]++; return true }) //nolint:errcheck // counts as far as they go
-	newest := map[string]health.Feed{}
-	v.Files(func(f watcher.FileRow) bool { //nolint:errcheck // as above
-		if f.Outcome == watcher.Accepted {
-			newest[f.File.Feed] = health.Feed{Name: f.File.Feed, File: f.File.Name, Date: f.Last, At: f.Received}
-		}
-		return true
-	})
+	r.Ledger.Series = names.Len()
+	newest, err := d.seen.upTo(v)
+	if err != nil {
+		return
+	}
 	for _, f := range c.Feeds {
 		feed := newest[f.Name]
 		feed.Name = f.Name
@@ -60,13 +60,63 @@ func (d *daemon) readLedger(c *config.Config, v watcher.View, r *health.Report) 
 		}
 		r.Feeds = append(r.Feeds, feed)
 	}
+	last, _, err := v.LastPass()
+	if err != nil {
+		return
+	}
+	r.Pass = passReport(last)
+	r.OpenFlags, r.Pass.Flags = map[rules.Kind]int{}, map[rules.Kind]int{}
+	r.Ledger.Open = v.Flags(false, func(f rules.Flag) bool {
+		r.OpenFlags[f.Kind]++
+		if f.RaisedAt.Equal(last.Started) {
+			r.Pass.Flags[f.Kind]++
+		}
+		return true
+	}) == nil
 }
 
-func jobReport(s schedule.Status) health.Job {
+// feedsSeen keeps the newest accepted file of each feed, so that each answer reads only the steps since the one before.
+type feedsSeen struct {
+	mu     sync.Mutex
+	step   uint32
+	newest map[string]health.Feed
+}
+
+func (s *feedsSeen) upTo(v watcher.View) (map[string]health.Feed, error) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if s.newest == nil {
+		s.newest = map[string]health.Feed{}
+		s.step = v.Step()
+		if err := v.Files(func(f watcher.FileRow) bool { s.see(f); return true }); err != nil {
+			s.newest = nil
+			return nil, err
+		}
+	}
+	for ; s.step < v.Step(); s.step++ {
+		f, err := v.File(s.step + 1)
+		if err != nil {
+			return nil, err
+		}
+		s.see(f)
+	}
+	return maps.Clone(s.newest), nil
+}
+
+func (s *feedsSeen) see(f watcher.FileRow) {
+	if f.Outcome == watcher.Accepted {
+		s.newest[f.File.Feed] = health.Feed{Name: f.File.Feed, File: f.File.Name, Date: f.Last, At: f.Received}
+	}
+}
+
+func jobReport(s schedule.Status, zone *time.Location) health.Job {
 	j := health.Job{Name: s.Job, LastSlot: s.Last, Outcome: string(s.Outcome), Error: s.Error, NextSlot: s.Next, Running: s.Began, Runs: s.Runs,
 		Failed: s.Failed, Panics: s.Panics, Missed: s.Missed, Coalesced: s.Coalesced}
-	if !s.Last.IsZero() && s.Next.After(s.Last) {
-		j.Every = s.Next.Sub(s.Last)
+	if when, err := schedule.Parse(s.Spec, zone); err == nil && !s.Next.IsZero() {
+		j.Every = when.Next(s.Next).Sub(s.Next)
+	}
+	if before := s.Next.Sub(s.Last); !s.Last.IsZero() && before > 0 {
+		j.Every = min(j.Every, before)
 	}
 	return j
 }
@@ -79,7 +129,7 @@ func channelReport(h notify.Health) health.Channel {
 	switch {
 	case h.State == notify.Stopped:
 		c.State, c.Reason = health.ChannelDead, string(h.Class)
-	case h.Class != "":
+	case h.Class != "" && h.Waiting > 0:
 		c.State, c.Reason = health.ChannelWaiting, string(h.Class)
 	}
 	return c

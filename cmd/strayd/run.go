@@ -69,12 +69,13 @@ func (a *app) codeOf(err error) int {
 	var q quiet
 	var usage usageError
 	var bad config.Errors
+	var setting badSetting
 	switch {
 	case errors.As(err, &q):
 		return q.code
 	case errors.As(err, &usage), !a.started:
 		return exitUsage
-	case errors.As(err, &bad):
+	case errors.As(err, &bad), errors.As(err, &setting):
 		return exitConfig
 	case errors.Is(err, ledger.ErrHeld):
 		return exitHeld
