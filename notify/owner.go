@@ -29,33 +29,20 @@ func (t *Teller) releaseWords(g rules.Group, d rules.Date, read time.Time) strin
 	if g.Release == nil || d == rules.NoDate {
 		return ""
 	}
-	at := t.Deadline(*g.Release, d)
+	at := t.dueAt(*g.Release, d)
 	if at.Before(read) {
 		return "the release of " + name(g.Name) + " was at " + clock(at, read, t.Zone)
 	}
 	return "holds back the release of " + name(g.Name) + " at " + clock(at, read, t.Zone)
 }
 
-// Deadline is the moment that a due time means for a valuation date.
-func (t *Teller) Deadline(due rules.Due, d rules.Date) time.Time {
-	for n := 0; n < due.Days; {
-		if d++; t.business(d) {
-			n++
-		}
-	}
+// dueAt is the moment that a due time means for a valuation date.
+func (t *Teller) dueAt(due rules.Due, d rules.Date) time.Time {
 	zone, err := time.LoadLocation(due.Timezone)
 	if err != nil || due.Timezone == "" {
 		zone = zoneOr(t.Zone)
 	}
-	y, m, day := d.Time().Date()
-	return time.Date(y, m, day, 0, due.Minutes, 0, 0, zone)
-}
-
-func (t *Teller) business(d rules.Date) bool {
-	if t.Business != nil {
-		return t.Business(d)
-	}
-	return rules.Weekdays(d-1, d) == 1
+	return rules.DueAt(due, d, zone)
 }
 
 func (t *Teller) group(of string) rules.Group {

@@ -73,6 +73,13 @@ func TestRetries(t *testing.T) {
 			equal(t, jitter, fmt.Sprint(c.posts), want)
 		}
 	})
+	bubble(t, func(t *testing.T) { // a stop and a new start make it no shorter
+		m, c := &memory{}, newChat(fails(Retry, 30*time.Second))
+		m.fill("desk", 1)
+		sendFor(time.Second, Sending{Outbox: m, Routes: one(c)})
+		sendFor(time.Hour, Sending{Outbox: m, Routes: one(c)})
+		equal(t, "posts", c.posts, []string{"n1@0", "n1@30"})
+	})
 	bubble(t, func(t *testing.T) { // an absurd time is held to a day
 		m, c := &memory{}, newChat(fails(Retry, 10000*time.Hour))
 		m.fill("desk", 1)
@@ -85,6 +92,13 @@ func TestRetries(t *testing.T) {
 		sendFor(time.Hour, Sending{Outbox: m, Routes: one(c), Jitter: full})
 		equal(t, "posts", c.posts, []string{"n1@0", "n1@2", "n1@6", "n1@14", "n1@30", "n2@30"})
 		equal(t, "states", m.states(), "failed sent")
+	})
+	bubble(t, func(t *testing.T) { // each notice has five of its own
+		script := append(many(4, ""), func(context.Context, rules.Notice) (bool, error) { return true, nil })
+		m, c := &memory{}, newChat(append(script, many(4, "")...)...)
+		m.fill("desk", 2)
+		sendFor(time.Hour, Sending{Outbox: m, Routes: one(c)})
+		equal(t, "states", m.states(), "sent sent")
 	})
 	bubble(t, func(t *testing.T) { // a panic of the channel is one
 		c := newChat(func(context.Context, rules.Notice) (bool, error) { panic("boom") })
@@ -170,6 +184,23 @@ func TestDeadChannels(t *testing.T) {
 		equal(t, "class", health[1].Class, DeadAll)
 		equal(t, "overdue", health[1].Overdue, time.Hour)
 		equal(t, "console", health[2].State, Idle)
+	})
+}
+
+func TestADeadServiceStopsAtOnce(t *testing.T) {
+	bubble(t, func(t *testing.T) {
+		m := &memory{}
+		m.fill("desk", 1)
+		routes := []Route{{"desk", "chat", newChat(fails(DeadAll, 0)), Hours{}}, {"same", "chat", newChat(), Hours{}}}
+		s := NewSender(Sending{Outbox: m, Routes: routes})
+		ctx, cancel := context.WithCancel(context.Background())
+		done := make(chan struct{})
+		go func() { s.Run(ctx); close(done) }()
+		time.Sleep(time.Second) // less than any nap
+		h, err := s.Health()
+		equal(t, "same", fmt.Sprint(h[1].State, " ", h[1].Reason, " ", err), "stopped dead service told <nil>")
+		cancel()
+		<-done
 	})
 }
 

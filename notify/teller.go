@@ -17,7 +17,6 @@ type Teller struct {
 	Channels []rules.Channel
 	Groups   []rules.Group
 	Owner    func(series string) string // of the register, "" where it names none; nil without a register
-	Business func(rules.Date) bool      // whether a date is a business day; nil for Monday to Friday
 	Zone     *time.Location             // of hours and of the times in messages; nil for UTC
 }
 

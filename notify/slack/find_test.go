@@ -35,6 +35,9 @@ func TestFind(t *testing.T) {
 		if want := stamp(notice.Started.Add(-time.Minute)); form.Get("oldest") != want {
 			t.Errorf("oldest %q, want %q", form.Get("oldest"), want)
 		}
+		if form.Get("limit") != "200" || form.Get("include_all_metadata") != "1" {
+			t.Errorf("asked with %v", form)
+		}
 		if f.count("conversations.history") != 3 {
 			t.Errorf("%d pages", f.count("conversations.history"))
 		}
@@ -75,7 +78,7 @@ func TestFind(t *testing.T) {
 		"not ok":                               {"", nil, answer(200, `{"ok":false}`), notify.FoundUnknown},
 		"empty":                                {"metadata.message:read", nil, answer(200, `{}`), notify.FoundUnknown},
 		"HTML":                                 {"", nil, answer(200, `<html>`), notify.FoundUnknown},
-		"more, without a cursor":               {"metadata.message:read", nil, answer(200, `{"ok":true,"messages":[],"has_more":true}`), notify.FoundUnknown},
+		"more, without a cursor":               {"metadata.message:read", nil, answer(200, `{"ok":true,"messages":[],"has_more":true}`, "X-OAuth-Scopes: metadata.message:read"), notify.FoundUnknown},
 		"cut":                                  {"", nil, hangUp, notify.FoundUnknown},
 	} {
 		t.Run(what, func(t *testing.T) {

@@ -243,3 +243,22 @@ func TestAddresses(t *testing.T) {
 		}
 	}
 }
+
+// Each post has a connection of its own: one kept from before may be closed by the service just then, which would leave it open
+// whether the post got through.
+func TestAConnectionAPost(t *testing.T) {
+	f := newFake(t)
+	from := map[string]bool{} // the addresses of our ends
+	for range 3 {
+		f.then("chat.postMessage", func(w http.ResponseWriter, r *http.Request) { from[r.RemoteAddr] = true; f.standard(w, r) })
+	}
+	c := channelOf(t, f, Options{})
+	for range 3 {
+		if _, err := c.Post(context.Background(), notice); err != nil {
+			t.Fatal(err)
+		}
+	}
+	if len(from) != 3 {
+		t.Errorf("%d connections for 3 posts", len(from))
+	}
+}

@@ -13,8 +13,7 @@ const (
 	textMost    = 3500
 	headerMost  = 140
 	sectionMost = 2900
-	blocksMost  = 40
-	totalMost   = 10000
+	totalMost   = 10000 // which leaves far fewer than the 50 blocks that the service takes
 )
 
 // fallback is the text of a message: what notifications show and screen readers read.
@@ -44,7 +43,7 @@ func sections(lines []string, room int) []string {
 		l = escaped(l, sectionMost)
 		n := len(out) - 1
 		joins := n >= 0 && size(out[n])+1+size(l) <= sectionMost
-		if room -= size(l) + 1; room < note || !joins && len(out) == blocksMost-2 {
+		if room -= size(l) + 1; room < note {
 			return append(out, fmt.Sprintf("and %d more lines: strayd notices", len(lines)-i))
 		}
 		if joins {
