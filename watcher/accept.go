@@ -147,13 +147,22 @@ func (p *Pass) judgeAll(j *judging, blocks []block, b *Batch) ([]outcome, error)
 func (p *Pass) runTasks(j *judging, todo []task) ([]outcome, error) {
 	outs := make([]outcome, len(todo))
 	errs := make([]error, min(p.workers(), max(1, len(todo))))
+	panics := make([]any, len(errs))
 	progress := p.progress("judging")
 	var next, done atomic.Int64
 	var wg sync.WaitGroup
 	for n := range errs {
-		wg.Go(func() { errs[n] = p.work(j, todo, outs, &next, &done, progress) })
+		wg.Go(func() {
+			defer func() { panics[n] = recover() }()
+			errs[n] = p.work(j, todo, outs, &next, &done, progress)
+		})
 	}
 	wg.Wait()
+	for _, value := range panics {
+		if value != nil { // it goes on where whoever runs the pass can catch it
+			panic(value)
+		}
+	}
 	return outs, errors.Join(errs...)
 }
 

@@ -33,18 +33,19 @@ type chunk struct {
 	at     int64  // where text begins in the file, about
 	stride uint32 // lines from one value of a run to the next
 
-	runs    []run
-	vals    []int64
-	fresh   [][]byte // names that were unknown when the chunk was parsed, in the order of the rows
-	arena   []byte   // reused by the cursor
-	lines   uint32
-	missing int
-	cells   int // observations looked at, skipped ones included; under skip
-	skipped int
-	bad     []fault // the first ones; when bad rows are not skipped, one and the last thing
-	stop    bool    // the file ends with bad[len(bad)-1]
-	err     error   // of the reader: there is no text
-	done    chan struct{}
+	runs     []run
+	vals     []int64
+	fresh    [][]byte // names that were unknown when the chunk was parsed, in the order of the rows
+	arena    []byte   // reused by the cursor
+	lines    uint32
+	missing  int
+	cells    int // observations looked at, skipped ones included; under skip
+	skipped  int
+	bad      []fault // the first ones; when bad rows are not skipped, one and the last thing
+	stop     bool    // the file ends with bad[len(bad)-1]
+	err      error   // of the reader: there is no text
+	done     chan struct{}
+	panicked any // what parsing it panicked with
 }
 
 // mostFaults is how many skipped rows are named.
