@@ -106,7 +106,11 @@ func passed(t *testing.T, s *shelf, settings rules.Settings, workers int) *defin
 	t.Helper()
 	m := &memory{}
 	run(t, m, s, settings, workers)
-	return newDefinition(t, m)
+	d := newDefinition(t, m)
+	if err := watcher.Recheck(d.view, nil, nil); err != nil {
+		t.Errorf("the recheck of an honest ledger: %v", err)
+	}
+	return d
 }
 
 // The edges of a block: series on both sides of it, and a file that holds one side only.

@@ -165,6 +165,22 @@ func (v *memoryView) Marked(date rules.Date, block uint32) (out []int, _ error) 
 	return slices.Compact(out), nil
 }
 
+func (v *memoryView) Layers(w watcher.What, date rules.Date, block uint32, each func(step uint32, vals []int64) error) error {
+	for n, b := range v.batches {
+		for _, c := range columnsOf(b, w) {
+			if c.Date != date || c.Block != block {
+				continue
+			}
+			vals := make([]int64, watcher.BlockSize)
+			c.Fill(vals, 0, w.Places())
+			if err := each(uint32(n+1), vals); err != nil {
+				return err
+			}
+		}
+	}
+	return nil
+}
+
 func byDateThenStep(a, b watcher.Version) int {
 	return cmp.Or(cmp.Compare(a.Date, b.Date), cmp.Compare(a.Step, b.Step))
 }

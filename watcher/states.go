@@ -32,34 +32,47 @@ type partState struct {
 	State
 }
 
-// state is a lane's state for a task's series.
+// state is a lane's state for a task's series. A series whose newest used value is too old by then starts anew with its next value,
+// so that it has none.
 func (l *lane) state(t task, upto rules.Date) partState {
 	n := t.width
-	s := State{Range: l.id, Block: t.block, Upto: upto, N: make([]uint32, 0, n), Last: make([]rules.Date, 0, n), Sum: make([]Int128, 0, n),
-		Sq: make([]Int128, 0, n)}
-	for i := range t.width {
-		s.N = append(s.N, uint32(l.windows.N(i)))
-		s.Last = append(s.Last, l.last[i])
-		var sum stats.Int128
-		var sq stats.Uint128
-		switch w := l.windows.(type) {
-		case *stats.WeightedPanel:
-			sq = w.State(i).Q
-			s.Var = append(s.Var, w.State(i).V)
-		case *stats.Panel:
-			sums := w.Sums(i)
-			sum, sq = sums.S, sums.Q
-		case *stats.SortedPanel:
-			var sums stats.Sums
-			for _, k := range w.Sorted(i) {
-				sums.Add(k)
-			}
-			sum, sq = sums.S, sums.Q
+	s := State{Range: l.id, Block: t.block, Upto: upto, N: make([]uint32, n), Last: make([]rules.Date, n), Sum: make([]Int128, n), Sq: make([]Int128, n)}
+	weighted, ok := l.windows.(*stats.WeightedPanel)
+	if ok {
+		s.Var = make([]float64, n)
+	}
+	edge := upto - dormantDays
+	for i := range n {
+		if s.Last[i] = l.last[i]; s.Last[i] < edge && (s.Last[i] == rules.NoDate || rules.Weekdays(s.Last[i], upto) > rules.DormantAfter) {
+			s.Last[i] = rules.NoDate
+			continue
 		}
-		s.Sum = append(s.Sum, Int128{uint64(sum.Hi), sum.Lo})
-		s.Sq = append(s.Sq, Int128{sq.Hi, sq.Lo})
+		s.N[i] = uint32(l.windows.N(i))
+		sum, sq := l.sums(i)
+		s.Sum[i], s.Sq[i] = Int128{uint64(sum.Hi), sum.Lo}, Int128{sq.Hi, sq.Lo}
+		if ok {
+			s.Var[i] = weighted.State(i).V
+		}
 	}
 	return partState{t.from, s}
+}
+
+// sums are the exact sums of one series' window; of a weighted one the squares behind its seed.
+func (l *lane) sums(i int) (sum stats.Int128, sq stats.Uint128) {
+	switch w := l.windows.(type) {
+	case *stats.WeightedPanel:
+		sq = w.State(i).Q
+	case *stats.Panel:
+		sums := w.Sums(i)
+		sum, sq = sums.S, sums.Q
+	case *stats.SortedPanel:
+		var sums stats.Sums
+		for _, k := range w.Sorted(i) {
+			sums.Add(k)
+		}
+		sum, sq = sums.S, sums.Q
+	}
+	return sum, sq
 }
 
 // joinStates puts the parts of each block together, in order.

@@ -220,6 +220,7 @@ func TestSettingsChangeReplays(t *testing.T) {
 		}
 		f.must("pass", "--settled")
 		o.compareExpected(t, f, b.dates[len(b.dates)-1]+1)
+		f.must("ledger", "verify")
 	})
 }
 

@@ -76,6 +76,7 @@ func TestLateAndRestatedEqualTheOracle(t *testing.T) {
 		}
 		o.compare(t, f)
 		o.compareExpected(t, f, b.dates[len(b.dates)-1]+1)
+		f.must("ledger", "verify")
 	})
 }
 
