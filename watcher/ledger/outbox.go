@@ -133,11 +133,25 @@ func (l *Ledger) Add(notices []rules.Notice) error {
 	return l.write(nil, func(w *writer) error { return w.enqueue(notices) })
 }
 
-// Mark records the new state of a notice under its number. It is durable when Mark returns.
+// Mark records the new state of a notice under its number. It is durable when Mark returns. A notice that was withdrawn
+// meanwhile stays so, with an error.
 func (l *Ledger) Mark(n rules.Notice) error {
 	return l.write(nil, func(w *writer) error {
-		if w.buckets[inOutbox].Get(put64(nil, n.Number)) == nil {
+		key := put64(nil, n.Number)
+		value := w.buckets[inOutbox].Get(key)
+		if value == nil {
 			return fmt.Errorf("notice %d %w", n.Number, ErrNone)
+		}
+		body, err := checked(inOutbox, key, value)
+		if err != nil {
+			return err
+		}
+		held, ok := unpackNotice(n.Number, body)
+		switch {
+		case !ok:
+			return malformed(inOutbox, key, "it cannot be read")
+		case held.State == rules.NoticeWithdrawn:
+			return fmt.Errorf("notice %d was withdrawn", n.Number)
 		}
 		return w.notice(&n)
 	})

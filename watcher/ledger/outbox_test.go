@@ -114,6 +114,11 @@ func TestOutboxWithStep(t *testing.T) {
 	if got := numbers(t, l); !reflect.DeepEqual(got, want) {
 		t.Errorf("%q, want %q", got, want)
 	}
+	back := notice("desk", "b", 1, 2)
+	back.Number, back.State = 2, rules.NoticeSending
+	if err := l.Mark(back); err == nil { // whoever took it up before it was withdrawn is told so
+		t.Error("a withdrawn notice can be sent")
+	}
 	if _, err := l.Verify(t.Context(), VerifyOptions{}); err != nil {
 		t.Error(err)
 	}

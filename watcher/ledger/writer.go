@@ -10,8 +10,8 @@ import (
 )
 
 // commitSize is how many bytes of encoded values one commit of a large batch takes. bbolt copies them into fresh pages; past
-// 8 MB first touching those costs more than the fewer commits save.
-const commitSize = 6 << 20
+// that, first touching those costs more than the fewer commits save. A day of a million series fits one commit.
+const commitSize = 8 << 20
 
 // writer is one write: a transaction, or, when it spills, several of which only the last is seen.
 type writer struct {
@@ -24,6 +24,8 @@ type writer struct {
 	plan    *plan  // what is staged, noted at the first spill
 	spilled bool   // something is committed that is not published
 	pending int    // small values put since the last commit, counted as bytes
+	coming  int64  // bytes that the batch takes, about
+	garbage int64  // bytes committed since the last collection
 	dropped []drop // values that a newer layer replaces, removed when it is published
 }
 
@@ -157,14 +159,22 @@ func (w *writer) spill() error {
 	}
 	w.spilled = true
 	w.l.arena, w.pending = w.l.arena[:0], 0
-	// The pages just written are garbage now; collected, they serve the next commit. Otherwise every commit touches fresh
-	// memory, which costs more than the collection.
-	runtime.GC()
+	w.collect()
 	if err := w.open(); err != nil {
 		return err
 	}
 	w.grow(0)
 	return nil
+}
+
+// collect collects garbage after a commit: the pages just written serve the next one. Otherwise every commit touches fresh memory,
+// which costs more than the collection. Where the batch is large, so is what a collection goes through: then it waits until the pages
+// are a share of the batch.
+func (w *writer) collect() {
+	if w.garbage += commitSize; w.garbage >= w.coming/6 {
+		runtime.GC()
+		w.garbage = 0
+	}
 }
 
 // replace stores a value under a key that may be taken.
