@@ -123,6 +123,9 @@ func (d *daemon) serve(ctx context.Context, c *config.Config, listen string) err
 			return badSetting{fmt.Errorf("STRAYD_HEARTBEAT_URL: %w", err)}
 		}
 	}
+	if err := d.beginDeadlines(c); err != nil {
+		return err
+	}
 	server := &desk.Server{Run: d.command, Log: d.log}
 	if err := server.Listen(c.Ledger); err != nil {
 		return err

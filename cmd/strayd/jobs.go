@@ -6,6 +6,7 @@ import (
 	"errors"
 	"fmt"
 	"os"
+	"slices"
 	"time"
 
 	"strayd/config"
@@ -16,15 +17,17 @@ import (
 	"strayd/watcher/schedule"
 )
 
-// The jobs of the daemon beside those of the feeds, which bear the feeds' names after this prefix.
+// The jobs of the daemon. Those of a feed bear its name after the word.
 const (
 	feedJob      = "feed "
-	deadlineJob  = "deadlines"
+	deadlineJob  = "deadline "
 	dailyJob     = "daily line"
-	everyMinute  = "* * * * *"
 	dailyMargin  = 5 // minutes after the day's last deadline or slot
 	lastOfTheDay = 23*60 + 59
 )
+
+// judged is the slot that holds up to where a feed's deadlines are judged.
+const judged = "due "
 
 // jobs are what the daemon does by schedule under a configuration.
 func (d *daemon) jobs(c *config.Config) ([]schedule.Job, error) {
@@ -34,20 +37,27 @@ func (d *daemon) jobs(c *config.Config) ([]schedule.Job, error) {
 		if err != nil {
 			return nil, fmt.Errorf("feed %s: schedule: %w", f.Name, err)
 		}
-		jobs = append(jobs, schedule.Job{Name: feedJob + f.Name, When: when, Run: func(ctx context.Context, _ time.Time) error {
-			return d.pass(ctx, f.Name)
+		jobs = append(jobs, schedule.Job{Name: feedJob + f.Name, When: when, Run: func(ctx context.Context, slot time.Time) error {
+			return errors.Join(d.pass(ctx, f.Name), d.deadlines(ctx, f.Name, slot))
 		}})
-	}
-	minute, err := schedule.Parse(everyMinute, c.Location)
-	if err != nil {
-		return nil, err
 	}
 	daily, err := schedule.Parse(dailySpec(c, jobs), c.Location)
 	if err != nil {
 		return nil, err
 	}
-	return append(jobs, schedule.Job{Name: deadlineJob, When: minute, Run: d.deadlines},
-		schedule.Job{Name: dailyJob, When: daily, Run: d.daily}), nil
+	for _, f := range c.Feeds {
+		if f.Due == nil {
+			continue
+		}
+		when, err := schedule.Parse(fmt.Sprintf("%d %d * * mon-fri", f.Due.Minutes%60, f.Due.Minutes/60), location(c, f.Due.Timezone))
+		if err != nil {
+			return nil, fmt.Errorf("feed %s: due: %w", f.Name, err)
+		}
+		jobs = append(jobs, schedule.Job{Name: deadlineJob + f.Name, When: when, Run: func(ctx context.Context, slot time.Time) error {
+			return d.deadlines(ctx, f.Name, slot)
+		}})
+	}
+	return append(jobs, schedule.Job{Name: dailyJob, When: daily, Run: d.daily}), nil
 }
 
 // dailySpec is when the daily line is due, Monday to Friday: a little after the last deadline and the last look at a feed of a day.
@@ -185,38 +195,46 @@ func (d *daemon) heartbeats(ctx context.Context) {
 	}
 }
 
-// deadlines raises a late flag for each feed that was not whole when a valuation date fell due.
-func (d *daemon) deadlines(ctx context.Context, slot time.Time) error {
-	s := d.inForce()
-	var errs []error
-	for _, f := range s.config.Feeds {
-		if f.Due != nil {
-			errs = append(errs, d.feedDeadlines(ctx, s.config, f, slot))
+// beginDeadlines notes from when on the deadlines of feeds count that are new: none lies behind them.
+func (d *daemon) beginDeadlines(c *config.Config) error {
+	for _, f := range c.Feeds {
+		if f.Due == nil {
+			continue
+		}
+		since, err := d.ledger.LastSlot(judged + f.Name)
+		if err == nil && since.IsZero() {
+			err = d.ledger.Done(judged+f.Name, time.Now())
+		}
+		if err != nil {
+			return err
 		}
 	}
-	return errors.Join(errs...)
+	return nil
 }
 
-// feedDeadlines judges the dates of one feed that fell due since the last one that was judged.
-func (d *daemon) feedDeadlines(ctx context.Context, c *config.Config, f rules.Feed, slot time.Time) error {
-	name := "due " + f.Name
-	since, err := d.ledger.LastSlot(name)
-	if err != nil {
-		return err
+// deadlines judges the dates of one feed that fell due since the last one that was judged. A feed that was not whole then gets a late
+// flag.
+func (d *daemon) deadlines(ctx context.Context, feed string, slot time.Time) error {
+	c := d.inForce().config
+	at := slices.IndexFunc(c.Feeds, func(f rules.Feed) bool { return f.Name == feed })
+	if at < 0 || c.Feeds[at].Due == nil {
+		return nil
 	}
-	if since.IsZero() { // a feed that is new has no deadlines behind it
-		return d.ledger.Done(name, slot)
+	f := c.Feeds[at]
+	since, err := d.ledger.LastSlot(judged + feed)
+	if err != nil || since.IsZero() {
+		return err
 	}
 	zone := location(c, f.Due.Timezone)
 	var errs []error
 	for _, date := range rules.DueBetween(*f.Due, since, slot, zone) {
 		due := rules.DueAt(*f.Due, date, zone)
-		judged, err := d.deadline(ctx, f, date, due)
+		ok, err := d.deadline(ctx, f, date, due)
 		errs = append(errs, err)
-		if !judged {
-			break
+		if !ok {
+			break // the next pass comes back to it
 		}
-		if err := d.ledger.Done(name, due); err != nil {
+		if err := d.ledger.Done(judged+feed, due); err != nil {
 			return err
 		}
 	}
@@ -224,7 +242,7 @@ func (d *daemon) feedDeadlines(ctx context.Context, c *config.Config, f rules.Fe
 }
 
 // deadline looks once more at what has arrived, then judges whether the feed is whole. A feed that cannot be looked at is not whole.
-func (d *daemon) deadline(ctx context.Context, f rules.Feed, date rules.Date, due time.Time) (judged bool, err error) {
+func (d *daemon) deadline(ctx context.Context, f rules.Feed, date rules.Date, due time.Time) (ok bool, err error) {
 	looked := d.pass(ctx, f.Name)
 	release, err := d.alone(ctx)
 	if err != nil {

@@ -113,6 +113,9 @@ func (d *daemon) takeOver(ctx context.Context) error {
 		return err
 	}
 	defer release()
+	if err := d.beginDeadlines(c); err != nil {
+		return err
+	}
 	if err := d.loop.Swap(next.jobs); err != nil {
 		return err
 	}
