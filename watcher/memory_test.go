@@ -40,7 +40,6 @@ type memoryView struct {
 	batches []*watcher.Batch
 	passes  []watcher.PassRow
 	columns map[cellDate][]*watcher.Column // returns by date and block, oldest first; filled when first asked for
-	names   *watcher.Names
 }
 
 type cellDate struct {

@@ -16,7 +16,7 @@ import (
 type invented struct {
 	random *rand.Rand
 	dates  []rules.Date
-	rows   []cell3
+	rows   []bookRow
 }
 
 // invent makes a book of 10 to 40 series and 30 to 200 dates with what real books bring: series that start late, go dormant and come
@@ -36,7 +36,7 @@ func invent(seed uint64) *invented {
 	return b
 }
 
-func inOrder(x, y cell3) int {
+func inOrder(x, y bookRow) int {
 	return cmp.Or(cmp.Compare(x.date, y.date), strings.Compare(x.series, y.series))
 }
 
@@ -66,7 +66,7 @@ func (b *invented) invent(name string) {
 				constant = r.IntN(80)
 			}
 		}
-		b.rows = append(b.rows, cell3{d, name, value})
+		b.rows = append(b.rows, bookRow{d, name, value})
 	}
 }
 
@@ -91,7 +91,7 @@ func (b *invented) value(deviation float64, places int) rules.Units {
 }
 
 // daily is the book as one file a date.
-func (b *invented) daily() (files [][]cell3) {
+func (b *invented) daily() (files [][]bookRow) {
 	for _, c := range b.rows {
 		if n := len(files); n == 0 || files[n-1][0].date != c.date {
 			files = append(files, nil)
@@ -102,7 +102,7 @@ func (b *invented) daily() (files [][]cell3) {
 }
 
 // chunks is the same content, in order, in files of random numbers of dates.
-func (b *invented) chunks() (files [][]cell3) {
+func (b *invented) chunks() (files [][]bookRow) {
 	room := 0
 	for _, day := range b.daily() {
 		if room--; room < 0 {
@@ -116,10 +116,10 @@ func (b *invented) chunks() (files [][]cell3) {
 
 // rough is the book as it may arrive: some values days late, some whole dates late, some wrong at first and restated later, once or
 // twice, some repeated unchanged.
-func (b *invented) rough() (files [][]cell3) {
+func (b *invented) rough() (files [][]bookRow) {
 	days := b.daily()
-	files = make([][]cell3, len(days)+40)
-	put := func(at int, c cell3) {
+	files = make([][]bookRow, len(days)+40)
+	put := func(at int, c bookRow) {
 		at = min(at, len(files)-1)
 		for _, have := range files[at] {
 			if have.date == c.date && have.series == c.series {
@@ -158,11 +158,11 @@ func (b *invented) rough() (files [][]cell3) {
 	for _, f := range files {
 		slices.SortFunc(f, inOrder)
 	}
-	return slices.DeleteFunc(files, func(f []cell3) bool { return len(f) == 0 })
+	return slices.DeleteFunc(files, func(f []bookRow) bool { return len(f) == 0 })
 }
 
 // fileText writes rows as a long file of fractions.
-func fileText(rows []cell3) string {
+func fileText(rows []bookRow) string {
 	var b strings.Builder
 	b.WriteString("date,series,return\n")
 	for _, c := range rows {

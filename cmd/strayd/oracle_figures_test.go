@@ -48,7 +48,7 @@ func weightedDeviation(values []rules.Units, window int) *big.Float {
 	decay, rest := new(big.Float).SetPrec(bits).SetRat(keep), new(big.Float).SetPrec(bits).SetRat(take)
 	v := bigFloat(0)
 	for i, x := range values {
-		u := units3(x)
+		u := bigUnits(x)
 		square := new(big.Float).SetPrec(bits).Mul(u, u)
 		switch {
 		case i < window:
@@ -98,7 +98,7 @@ func tickDeviation(values []rules.Units) *big.Float {
 		for _, x := range values {
 			if x%(step*10) != 0 {
 				root := bigFloat(12)
-				return new(big.Float).SetPrec(bits).Quo(units3(step), root.Sqrt(root))
+				return new(big.Float).SetPrec(bits).Quo(bigUnits(step), root.Sqrt(root))
 			}
 		}
 		step *= 10

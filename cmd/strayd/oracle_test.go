@@ -53,8 +53,8 @@ type oracle struct {
 	series map[string][]*oracleObservation // by date
 }
 
-// cell is one row of a file.
-type cell3 struct {
+// bookRow is one row of a file.
+type bookRow struct {
 	date   rules.Date
 	series string
 	value  rules.Units
@@ -66,7 +66,7 @@ func newOracle(ranges []oracleRange) *oracle {
 
 // take accepts the rows of one file: values equal to those held change nothing; the rest are judged date by date against what comes
 // before them, and every window is replayed from the first change on.
-func (o *oracle) take(file []cell3) {
+func (o *oracle) take(file []bookRow) {
 	fresh := map[string]map[rules.Date]bool{}
 	for _, c := range file {
 		if o.put(c) {
@@ -82,7 +82,7 @@ func (o *oracle) take(file []cell3) {
 }
 
 // put stores a value and says whether it changes anything.
-func (o *oracle) put(c cell3) bool {
+func (o *oracle) put(c bookRow) bool {
 	held := o.series[c.series]
 	at, ok := slices.BinarySearchFunc(held, c.date, func(h *oracleObservation, d rules.Date) int { return int(h.date) - int(d) })
 	if ok {
@@ -236,7 +236,7 @@ const bits = 200
 
 func bigFloat(v float64) *big.Float { return new(big.Float).SetPrec(bits).SetFloat64(v) }
 
-func units3(x rules.Units) *big.Float {
+func bigUnits(x rules.Units) *big.Float {
 	return new(big.Float).SetPrec(bits).Quo(new(big.Float).SetPrec(bits).SetInt64(int64(x)), bigFloat(1e15))
 }
 
@@ -256,7 +256,7 @@ func judgeBy(r *oracleRange, v *oracleVerdict, values []rules.Units, centre, dev
 		f := new(big.Float).SetPrec(bits).Quo(bigFloat(float64(v.n+1)), bigFloat(float64(v.n)))
 		spread.Mul(spread, f.Sqrt(f))
 	}
-	z := new(big.Float).SetPrec(bits).Sub(units3(x), centre)
+	z := new(big.Float).SetPrec(bits).Sub(bigUnits(x), centre)
 	v.z, _ = z.Quo(z, spread).Float64()
 	s, _ := spread.Float64()
 	if r.tail == "rank" && !thin {
@@ -295,72 +295,4 @@ func judgeBy(r *oracleRange, v *oracleVerdict, values []rules.Units, centre, dev
 	case out > watch:
 		v.finding = "watch"
 	}
-}
-
-// rankBy judges by order statistics: the tail is twice the smaller of (n_le+1)/(n+1) and (n_ge+1)/(n+1), at most 1; a line at level p
-// is the order statistic at which the tail first falls to p or below, just beyond.
-func rankBy(r *oracleRange, v *oracleVerdict, values []rules.Units, x rules.Units) {
-	sorted := slices.Sorted(slices.Values(values))
-	tailOf := func(x rules.Units) float64 {
-		le, ge := 0, 0
-		for _, w := range sorted {
-			if w <= x {
-				le++
-			}
-			if w >= x {
-				ge++
-			}
-		}
-		n := float64(len(sorted))
-		down, up := float64(le+1)/(n+1), float64(ge+1)/(n+1)
-		switch r.side {
-		case "lower":
-			return down
-		case "upper":
-			return up
-		}
-		return min(1, 2*min(down, up))
-	}
-	v.tail = tailOf(x)
-	v.log10 = math.Log10(v.tail)
-	if v.finding == "not judged" {
-		return
-	}
-	// A value beyond every one of the window has the smallest tail there is.
-	floor := 1 / float64(len(sorted)+1)
-	if r.side == "both" {
-		floor *= 2
-	}
-	if r.breach.p < floor-1e-15 {
-		v.finding = "not judged"
-		return
-	}
-	v.low, v.high = rankLines(r, sorted, r.breach.p)
-	v.watchLow, v.watchHigh = rankLines(r, sorted, r.watch.p)
-	switch {
-	case v.tail <= r.breach.p+1e-15:
-		v.finding = "breach"
-	case v.tail <= r.watch.p+1e-15:
-		v.finding = "watch"
-	}
-}
-
-// rankLines are the order statistics beyond which the tail is at most p: with k-1 values allowed beyond or at, the k-th from each end.
-func rankLines(r *oracleRange, sorted []rules.Units, p float64) (low, high float64) {
-	low, high = math.NaN(), math.NaN()
-	n := len(sorted)
-	if r.side == "both" {
-		p /= 2
-	}
-	k := int(math.Floor(p*float64(n+1) + 1e-9)) // (k-1 values at or beyond) + 1 <= p (n+1)
-	if k < 1 {
-		return low, high
-	}
-	if r.side != "upper" {
-		low = float64(sorted[k-1]) / 1e15
-	}
-	if r.side != "lower" {
-		high = float64(sorted[n-k]) / 1e15
-	}
-	return low, high
 }

@@ -78,8 +78,8 @@ func TestSplitIntoFilesDoesNotMatter(t *testing.T) {
 		for n, split := range []struct {
 			what    string
 			workers int
-			files   [][]cell3
-		}{{"one file", 1, [][]cell3{b.rows}}, {"one file, 5 workers", 5, [][]cell3{b.rows}}, {"chunks", 3, b.chunks()}, {"a file a date", 2, b.daily()}} {
+			files   [][]bookRow
+		}{{"one file", 1, [][]bookRow{b.rows}}, {"one file, 5 workers", 5, [][]bookRow{b.rows}}, {"chunks", 3, b.chunks()}, {"a file a date", 2, b.daily()}} {
 			runtime.GOMAXPROCS(split.workers)
 			f := newFolder(t, rangesText(ranges))
 			f.deliver(b, split.files)

@@ -33,7 +33,7 @@ func forBooks(t *testing.T, property func(t *testing.T, b *invented, ranges []or
 }
 
 // deliver puts files into the inbox, with a pass after every few of them.
-func (f *folder) deliver(b *invented, files [][]cell3) {
+func (f *folder) deliver(b *invented, files [][]bookRow) {
 	f.t.Helper()
 	for n, rows := range files {
 		f.write(fmt.Sprintf("inbox/f%04d.csv", n), fileText(rows))
