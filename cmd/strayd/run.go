@@ -56,9 +56,10 @@ func (a *app) execute(args []string) (code int) {
 	}
 	code = a.codeOf(err)
 	var q quiet
-	if !errors.As(err, &q) {
-		fmt.Fprintf(a.err, "strayd: %v\n", err)
+	if errors.As(err, &q) {
+		return code
 	}
+	fmt.Fprintf(a.err, "strayd: %v\n", err)
 	if code == exitUsage {
 		fmt.Fprintln(a.err, "See `strayd help`, or `strayd COMMAND --help`.")
 	}
