@@ -202,7 +202,7 @@ func (g *Gauge) Judge(x Units, p *Past) Verdict {
 	if !m.scored {
 		return v
 	}
-	z := m.distance(x) / m.spread
+	z := g.distance(p, x) / m.spread
 	v.Z = Some(z)
 	if g.Range.Tail.Name == "rank" && m.tail == nil {
 		g.judgeRank(&v, x, p)

@@ -10,18 +10,17 @@ import (
 // measure is the yardstick that a past gives: centre, spread, tail and lines, with the verdict as far as it stands without the
 // observation.
 type measure struct {
-	verdict  Verdict
-	scored   bool // a z-score can be had
-	spread   float64
-	distance func(Units) float64
-	tail     *stats.Tail // nil for rank
-	cut      cuts
+	verdict Verdict
+	scored  bool // a z-score can be had
+	spread  float64
+	tail    *stats.Tail // nil for rank
+	cut     cuts
 }
 
 func (g *Gauge) measure(p *Past) (m measure) {
 	v := &m.verdict
 	v.N = p.N
-	v.Mean, v.Deviation, m.distance = g.estimate(p)
+	v.Mean, v.Deviation = g.estimate(p)
 	v.Finding, v.Why = g.standing(p, v)
 	v.Provisional = v.Finding == Inside && p.N < LeastNormal
 	if !v.Deviation.OK || v.Deviation.V == 0 || p.N < 2 { // one value gives no degree of freedom
@@ -73,26 +72,36 @@ func (g *Gauge) standing(p *Past, v *Verdict) (Finding, string) {
 	return Inside, ""
 }
 
-// estimate gives centre and deviation as the range's scale defines them, and the distance of a return from the centre.
-func (g *Gauge) estimate(p *Past) (mean, deviation Num, distance func(Units) float64) {
+// estimate gives centre and deviation as the range's scale defines them.
+func (g *Gauge) estimate(p *Past) (mean, deviation Num) {
 	if p.N == 0 {
-		return Num{}, Num{}, nil
+		return Num{}, Num{}
 	}
 	switch g.Range.Scale {
 	case Weighted: // zero mean by definition
-		return Some(0), Some(math.Sqrt(p.Var)), func(x Units) float64 { return x.Float() }
+		return Some(0), Some(math.Sqrt(p.Var))
 	case MAD:
 		sorted := p.Sorted()
 		median, _ := sorted.Median(one)
 		mad, _ := sorted.MAD(one)
-		return Some(median), Some(stats.NormalMAD * mad), func(x Units) float64 { return sorted.Distance(int64(x), one) }
+		return Some(median), Some(stats.NormalMAD * mad)
 	}
-	sums := p.Sums
-	mean = Some(sums.Mean(one))
-	if d, ok := sums.Deviation(one); ok {
+	mean = Some(p.Sums.Mean(one))
+	if d, ok := p.Sums.Deviation(one); ok {
 		deviation = Some(d)
 	}
-	return mean, deviation, func(x Units) float64 { return sums.Distance(int64(x), one) }
+	return mean, deviation
+}
+
+// distance is how far a return lies from the centre.
+func (g *Gauge) distance(p *Past, x Units) float64 {
+	switch g.Range.Scale {
+	case Weighted:
+		return x.Float()
+	case MAD:
+		return p.Sorted().Distance(int64(x), one)
+	}
+	return p.Sums.Distance(int64(x), one)
 }
 
 // spread is the deviation that a z-score divides by:

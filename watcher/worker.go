@@ -1,6 +1,8 @@
 package watcher
 
 import (
+	"slices"
+
 	"strayd/rules"
 )
 
@@ -44,6 +46,7 @@ type worker struct {
 	replayed         bool         // dates that were held before were gone through again
 	behind           bool         // there are dates held from the first changed one on
 	flags            []FlagRow    // made and not yet used
+	room             outcome      // lists that the next task fills
 	failed           error        // of looking up a flag
 	stored           []*State     // by lane: what a recheck holds against the replay
 }
@@ -77,7 +80,7 @@ func newWorker(j *judging, v View) *worker {
 
 // run judges a task: it loads the windows as they were before the first changed date, then goes forward date by date.
 func (w *worker) run(t task) (outcome, error) {
-	var out outcome
+	out := outcome{flags: w.room.flags[:0], used: w.room.used[:0]}
 	first := t.since
 	if first == rules.NoDate {
 		first = t.days[0].date
@@ -102,6 +105,8 @@ func (w *worker) run(t task) (outcome, error) {
 		}
 	}
 	w.keepStates(t, &out)
+	w.room = out
+	out.flags, out.used = slices.Clone(out.flags), slices.Clone(out.used)
 	return out, w.failed
 }
 

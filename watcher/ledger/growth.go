@@ -9,7 +9,9 @@ const (
 // to come of a large batch, so that a first load grows it once; else by a share of its size, so that a day seldom pays for
 // growing and little lies idle.
 func (w *writer) grow(coming int64) {
-	w.coming = max(w.coming, coming)
+	if coming > 0 {
+		w.coming, w.garbage = coming, coming
+	}
 	share := min(max(w.tx.Size()/64, leastGrowth), mostGrowth)
 	w.l.db.AllocSize = int(max(share, coming-commitSize))
 	if room := min(coming, commitSize); int64(cap(w.l.arena)) < room {

@@ -25,7 +25,7 @@ type writer struct {
 	spilled bool   // something is committed that is not published
 	pending int    // small values put since the last commit, counted as bytes
 	coming  int64  // bytes that the batch takes, about
-	garbage int64  // bytes committed since the last collection
+	garbage int64  // bytes committed since the last collection; of a new batch, all that made it may be garbage
 	dropped []drop // values that a newer layer replaces, removed when it is published
 }
 
@@ -158,8 +158,8 @@ func (w *writer) spill() error {
 		return err
 	}
 	w.spilled = true
-	w.l.arena, w.pending = w.l.arena[:0], 0
 	w.collect()
+	w.l.arena, w.pending = w.l.arena[:0], 0
 	if err := w.open(); err != nil {
 		return err
 	}
@@ -171,7 +171,8 @@ func (w *writer) spill() error {
 // which costs more than the collection. Where the batch is large, so is what a collection goes through: then it waits until the pages
 // are a share of the batch.
 func (w *writer) collect() {
-	if w.garbage += commitSize; w.garbage >= w.coming/6 {
+	w.garbage += int64(len(w.l.arena) + 3*w.pending)
+	if w.garbage >= w.coming/8 {
 		runtime.GC()
 		w.garbage = 0
 	}
