@@ -57,9 +57,10 @@ func (p *parser) judgeSeries(cell []byte) string {
 }
 
 // guessFirst reckons how many rows lie between the last chunk and this one. In a file of very many series in the order of their
-// numbers that finds the first row's name nearby, and no table of all names need be made, which takes longer than to read the file.
+// numbers that finds the first row's name nearby, and no table of all names need be made, which takes longer than to read the file; where they
+// are fewer it makes no difference.
 func (p *parser) guessFirst(c *chunk) int64 {
-	if p.wide || len(c.text) == 0 {
+	if p.wide || len(c.text) == 0 || p.names.Len() <= 2*recentNames {
 		return -1
 	}
 	rows := int64(bytes.Count(c.text, []byte{'\n'}))
