@@ -30,13 +30,13 @@ func TestBesideDaemonSameAnswers(t *testing.T) {
 	f := deskFolder(t)
 	series, out := storm()
 	f.arrive("a.csv", csvDays(append(series, hostile), 0, 30, out))
-	f.write("inbox/bad.csv", "date,series,return\n2026-03-02,fund-00,1,5\n")
+	f.write("inbox/bad.csv", "date,series,return\n2019-03-04,fund-00,1,5\n")
 	if code, _, _ := f.try("pass", "--settled"); code != exitFailed {
 		t.Fatalf("exit code %d of a pass over a bad file", code)
 	}
 	var lines []string
 	for _, format := range []string{"table", "csv", "json"} {
-		for _, command := range []string{"flags", "flags --all", "flags --kind breach --from 2026-02-01", "flags --series nobody", "history fund-03",
+		for _, command := range []string{"flags", "flags --all", "flags --kind breach --from 2019-02-01", "flags --series nobody", "history fund-03",
 			"history nobody", "ranges", "ranges fund-01", "explain 1", "explain 99", "explain fund-02 " + weekday(30),
 			"explain fund-02 " + weekday(60), "notices", "notices --state sent"} {
 			lines = append(lines, command+" --format "+format)

@@ -24,6 +24,7 @@ type chatService struct {
 	script map[string][]http.HandlerFunc // of postMessage, by channel; then it answers as the service does
 	dead   map[string]string             // error code of postMessage, by channel
 	blind  bool                          // the token may not read back what identifies messages
+	loses  bool                          // a call whose maker died at the first hook
 	hook   func(stage string)            // called before a message is taken, after, and after its answer
 }
 
@@ -85,8 +86,28 @@ func (s *chatService) postMessage(w http.ResponseWriter, r *http.Request) {
 		return
 	}
 	hook("before")
+	if s.lost(r) {
+		return
+	}
 	step(w, r)
 	hook("after")
+}
+
+// lost says that a call is to be lost because its maker has gone. That is known only once the connection is seen to end, which takes a
+// moment.
+func (s *chatService) lost(r *http.Request) bool {
+	s.mu.Lock()
+	loses := s.loses
+	s.mu.Unlock()
+	if !loses {
+		return false
+	}
+	select {
+	case <-r.Context().Done():
+		return true
+	case <-time.After(20 * time.Millisecond):
+		return false
+	}
 }
 
 // standard takes the message and says so.
