@@ -51,8 +51,9 @@ type Settings struct {
 	Groups   []Group
 	Doubtful float64
 	Calendar string
-	Register []Series `json:"-"` // who is in which group; its hash stands for it
-	Members  string   // hash of the register's groups, "" without a register
+	// Assigned is the group of each series that the register puts into one: part of the settings, so that a verdict of the past
+	// is explained by the groups of then.
+	Assigned map[string]string `json:",omitempty"`
 }
 
 // Membership answers, for a series id, its group and the ranges that judge it.
@@ -85,7 +86,10 @@ func NewMembership(s *Settings) (*Membership, error) {
 		m.groups = append(m.groups, memberGroup{g.Name, of})
 		names[g.Name] = true
 	}
-	m.addRegister(s.Register, names)
+	m.register = s.Assigned
+	for _, group := range s.Assigned {
+		names[group] = true
+	}
 	for _, r := range s.Ranges {
 		mr := memberRange{all: len(r.For) == 0, groups: map[string]bool{}}
 		for _, f := range r.For {
@@ -102,19 +106,6 @@ func NewMembership(s *Settings) (*Membership, error) {
 		m.ranges = append(m.ranges, mr)
 	}
 	return m, nil
-}
-
-func (m *Membership) addRegister(register []Series, names map[string]bool) {
-	for _, s := range register {
-		if s.Group == "" {
-			continue
-		}
-		if m.register == nil {
-			m.register = map[string]string{}
-		}
-		m.register[s.ID] = s.Group
-		names[s.Group] = true
-	}
 }
 
 func patterns(texts []string) ([]Pattern, error) {

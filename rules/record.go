@@ -1,6 +1,7 @@
 package rules
 
 import (
+	"crypto/sha256"
 	"encoding/json"
 	"fmt"
 	"slices"
@@ -67,7 +68,7 @@ func (s *Settings) Identity(n int) string {
 		Range   Range
 		Limits  []Range // a value without lines of its own is clipped to them
 		Groups  []Group // whom they judge
-		Members string
+		Members [32]byte
 	}{Range: r}
 	for _, l := range s.Ranges {
 		if l.Limit == nil {
@@ -75,7 +76,7 @@ func (s *Settings) Identity(n int) string {
 		}
 		by.Limits = append(by.Limits, Range{For: ordered(l.For), Limit: l.Limit})
 		if len(l.For) > 0 && by.Groups == nil {
-			by.Members = s.Members
+			by.Members = sha256.Sum256(encode(s.Assigned))
 			for _, g := range s.Groups {
 				by.Groups = append(by.Groups, Group{Name: g.Name, Series: ordered(g.Series)})
 			}

@@ -111,7 +111,7 @@ func FuzzPattern(f *testing.F) {
 func TestMembership(t *testing.T) {
 	m, err := rules.NewMembership(&rules.Settings{
 		Groups:   []rules.Group{{Name: "equity", Series: []string{"alder-*", "birch"}}, {Name: "bond", Series: []string{"*-income"}}, {Name: "empty"}},
-		Register: []rules.Series{{ID: "alder-growth", Group: "special"}, {ID: "cedar", Group: "bond"}, {ID: "alder-nobody"}},
+		Assigned: map[string]string{"alder-growth": "special", "cedar": "bond"},
 		Ranges: []rules.Range{{Name: "all"}, {Name: "equity", For: []string{"equity"}}, {Name: "mixed", For: []string{"special", "cash-*", "cedar"}},
 			{Name: "named like a group", For: []string{"bond"}}},
 	})
@@ -145,7 +145,7 @@ func TestMembership(t *testing.T) {
 	if m.Universal() || m.Groupless() {
 		t.Error("there are groups")
 	}
-	plain, _ := rules.NewMembership(&rules.Settings{Ranges: []rules.Range{{Name: "all"}}, Register: []rules.Series{{ID: "x"}}})
+	plain, _ := rules.NewMembership(&rules.Settings{Ranges: []rules.Range{{Name: "all"}}})
 	if !plain.Universal() || !plain.Groupless() {
 		t.Error("one range for all and no group is universal")
 	}

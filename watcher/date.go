@@ -102,7 +102,7 @@ func (w *worker) hitAt(i int32, fresh bool) *hit {
 		w.hits = append(w.hits, hit{})
 	}
 	h := &w.hits[len(w.hits)-1]
-	*h = hit{at: i, fresh: fresh, verdicts: h.verdicts[:0], limits: h.limits[:0], broken: h.broken[:0]}
+	*h = hit{at: i, fresh: fresh, group: w.group(int(i)), verdicts: h.verdicts[:0], limits: h.limits[:0], broken: h.broken[:0]}
 	return h
 }
 
@@ -134,13 +134,13 @@ func (w *worker) applies(rangeIndex, i int) bool {
 func (w *worker) judge(date rules.Date, h *hit) {
 	x := rules.Units(w.raw[h.at])
 	for _, l := range w.lanes {
-		var v rules.Verdict
-		if l.judges(int(h.at)) {
-			past := l.past(int(h.at))
-			if past.N < rules.LeastNormal && past.N >= rules.LeastJudged {
-				past.Group = w.j.scales.lent(l, w.group(int(h.at)), date)
-			}
-			v = l.gauge.Judge(x, past)
+		past := l.past(int(h.at))
+		if past.N < rules.LeastNormal && past.N >= rules.LeastJudged {
+			past.Group = w.j.scales.lent(l, h.group, date)
+		}
+		v := l.gauge.Judge(x, past)
+		if !l.judges(int(h.at)) { // its lines still say what its window takes of a flagged value, whoever is judged by it today
+			v.Finding = rules.NotJudged
 		}
 		h.verdicts = append(h.verdicts, v)
 		h.flagged = h.flagged || h.fresh && v.Finding == rules.Breach
@@ -246,7 +246,7 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 		used = l.used[:t.width]
 		copy(used, w.raw)
 		for n := range w.hits {
-			if h := &w.hits[n]; h.flagged && l.judges(int(h.at)) {
+			if h := &w.hits[n]; h.flagged {
 				x, ok := rules.UsedValue(l.gauge.Range.Pending, rules.Units(used[h.at]), &h.verdicts[k], h.limits)
 				if !ok {
 					x = rules.Missing

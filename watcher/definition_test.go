@@ -106,7 +106,7 @@ func passed(t *testing.T, s *shelf, settings rules.Settings, workers int) *defin
 	m := &memory{}
 	run(t, m, s, settings, workers)
 	d := newDefinition(t, m)
-	if err := watcher.Recheck(d.view, nil, nil); err != nil {
+	if err := watcher.Recheck(d.view, nil); err != nil {
 		t.Errorf("the recheck of an honest ledger: %v", err)
 	}
 	return d

@@ -24,7 +24,6 @@ func (p *Pass) Expect(only string, on rules.Date, each func(Expected) error) err
 	if err != nil || last == 0 {
 		return err
 	}
-	recorded.Register = p.Settings.Register
 	p.Settings = *recorded
 	names, err := v.Names()
 	if err != nil {

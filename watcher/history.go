@@ -36,9 +36,8 @@ type Used struct {
 // Reader recomputes verdicts from what a view holds. It goes by the definition of each figure, value by value, and shares no
 // running state with the pass.
 type Reader struct {
-	View     View
-	Register []rules.Series // who is in which group, as of today
-	Names    *Names
+	View  View
+	Names *Names
 
 	settings map[uint32]*recorded
 	files    map[uint32]FileRow
@@ -369,7 +368,6 @@ func (r *Reader) settingsNumber(id uint32) (*recorded, error) {
 	if err != nil {
 		return nil, err
 	}
-	parsed.Register = r.Register
 	s, err := r.ready(parsed)
 	if err == nil {
 		r.settings[id] = s

@@ -29,12 +29,13 @@ func (w *worker) markedHits(t task, d *day, fresh []int64) error {
 		return err
 	}
 	for n, i := range held {
-		stands, err := w.flagStands(t.series(i), d.date, steps[n])
+		f, stands, err := w.standingFlag(t.series(i), d.date, steps[n])
 		if err != nil {
 			return err
 		}
 		if stands {
-			w.hitAt(int32(i), false).flagged = true
+			h := w.hitAt(int32(i), false)
+			h.flagged, h.group = true, f.Group
 		}
 	}
 	return nil
@@ -54,13 +55,14 @@ func (w *worker) stepsOf(t task, date rules.Date, at []int) ([]uint32, error) {
 	return steps, err
 }
 
-// flagStands says whether a flag about a value out of line was raised for the version that a step wrote.
-func (w *worker) flagStands(series uint32, date rules.Date, step uint32) (bool, error) {
+// standingFlag is a flag about a value out of line that was raised for the version that a step wrote; ok is false when there is
+// none.
+func (w *worker) standingFlag(series uint32, date rules.Date, step uint32) (f rules.Flag, ok bool, err error) {
 	for _, kind := range rules.OutOfLine {
 		f, ok, err := w.view.FlagAt(series, date, kind)
 		if err != nil || ok && f.Step == step {
-			return ok, err
+			return f, ok, err
 		}
 	}
-	return false, nil
+	return rules.Flag{}, false, nil
 }

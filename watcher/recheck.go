@@ -9,12 +9,11 @@ import (
 
 // Recheck recomputes every rolling state and every used value from the returns held, under the settings recorded last, and
 // compares them with what is stored. The error names the first that differs.
-func Recheck(v View, register []rules.Series, progress Progress) error {
+func Recheck(v View, progress Progress) error {
 	last, recorded, err := lastSettings(v)
 	if err != nil || last == 0 {
 		return err
 	}
-	recorded.Register = register
 	names, err := v.Names()
 	if err != nil {
 		return err

@@ -42,11 +42,8 @@ type blockKey struct {
 	block  uint32
 }
 
-// newGroupScales prepares the scales of a step; nil where no series has a group.
+// newGroupScales prepares the scales of a step.
 func newGroupScales(j *judging, v View, blocks []block) *groupScales {
-	if j.members.Groupless() {
-		return nil
-	}
 	g := &groupScales{j: j, view: v, blocks: map[uint32][]*day{}, known: map[scaleKey]GroupScale{}, loaded: map[scaleKey]bool{}, panels: map[int]*stats.Panel{}}
 	for _, b := range blocks {
 		g.blocks[b.number] = b.days

@@ -60,6 +60,7 @@ type hit struct {
 	limits   []rules.Limit
 	broken   []int // indexes of limit ranges that it breaks
 	outsize  bool
+	group    string // of the series, when the value was judged
 }
 
 func newWorker(j *judging, v View) *worker {

@@ -2,8 +2,6 @@ package main
 
 import (
 	"context"
-	"crypto/sha256"
-	"encoding/hex"
 	"errors"
 	"fmt"
 	"io"
@@ -108,36 +106,26 @@ func (a *app) reading(do func(c *config.Config, v watcher.View) error) error {
 	})
 }
 
-// settings are what decides verdicts, from the configuration and its register.
-func settings(c *config.Config) (rules.Settings, error) {
-	s := c.Settings()
+// settings are what decides verdicts, from the configuration and its register, and the owners that the register names by series.
+func settings(c *config.Config) (s rules.Settings, owners map[string]string, err error) {
+	s = c.Settings()
 	if c.Series == "" {
-		return s, nil
+		return s, nil, nil
 	}
 	register, err := feed.ReadRegister(c.Series)
 	if err != nil {
-		return s, err
+		return s, nil, err
 	}
-	s.Register = register
-	h := sha256.New()
+	s.Assigned, owners = map[string]string{}, map[string]string{}
 	for _, r := range register {
-		fmt.Fprintf(h, "%q %q\n", r.ID, r.Group)
+		if r.Group != "" {
+			s.Assigned[r.ID] = r.Group
+		}
+		if r.Owner != "" {
+			owners[r.ID] = r.Owner
+		}
 	}
-	s.Members = hex.EncodeToString(h.Sum(nil))
-	return s, nil
-}
-
-// reader prepares a reader of verdicts.
-func reader(c *config.Config, v watcher.View) (*watcher.Reader, error) {
-	s, err := settings(c)
-	if err != nil {
-		return nil, err
-	}
-	r, err := watcher.NewReader(v)
-	if err == nil {
-		r.Register = s.Register
-	}
-	return r, err
+	return s, owners, nil
 }
 
 // actor is who acts: the operating system's user, or the peer of the daemon's socket; never an option.

@@ -172,7 +172,7 @@ func saySheet(w io.Writer, s *watcher.Sheet) {
 
 // sayLines says each line of each range in every form.
 func (a *app) sayLines(c *config.Config, series int) error {
-	s, err := settings(c)
+	s, _, err := settings(c)
 	if err != nil {
 		return err
 	}

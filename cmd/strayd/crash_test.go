@@ -179,7 +179,7 @@ func (h *crashHome) look(t *testing.T) (files int, left bool) {
 		t.Fatal(err)
 	}
 	defer l.Close()
-	report, err := l.Verify(context.Background(), ledger.VerifyOptions{Recheck: func(v watcher.View) error { return watcher.Recheck(v, nil, nil) }})
+	report, err := l.Verify(context.Background(), ledger.VerifyOptions{Recheck: func(v watcher.View) error { return watcher.Recheck(v, nil) }})
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -145,7 +145,7 @@ func (d *daemon) serve(ctx context.Context, c *config.Config, listen string) err
 
 // prepare makes all that goes with a configuration; nothing of it runs yet.
 func (d *daemon) prepare(c *config.Config) (*setup, error) {
-	s, err := settings(c)
+	_, owners, err := settings(c)
 	if err != nil {
 		return nil, err
 	}
@@ -157,7 +157,7 @@ func (d *daemon) prepare(c *config.Config) (*setup, error) {
 	if err != nil {
 		return nil, badSetting{err}
 	}
-	return &setup{config: c, hash: configHash(c), teller: newTeller(c, ownersOf(s.Register)), post: post, jobs: jobs}, nil
+	return &setup{config: c, hash: configHash(c), teller: newTeller(c, owners), post: post, jobs: jobs}, nil
 }
 
 // install puts a setup in force. The channels of the one before have ended when the new ones begin: two senders of one outbox would

@@ -44,7 +44,7 @@ type explained struct {
 }
 
 func (a *app) explain(c *config.Config, v watcher.View, args []string, rangeName, format string) error {
-	r, err := reader(c, v)
+	r, err := watcher.NewReader(v)
 	if err != nil {
 		return err
 	}

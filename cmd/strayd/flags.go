@@ -86,7 +86,7 @@ func joinWords[T ~string](words []T) string {
 
 // checkGroups refuses a group that nobody has declared, so that a mistyped name never looks like a release that nothing holds back.
 func (f *flagFilter) checkGroups(c *config.Config) error {
-	s, err := settings(c)
+	s, _, err := settings(c)
 	if err != nil {
 		return err
 	}
@@ -94,8 +94,8 @@ func (f *flagFilter) checkGroups(c *config.Config) error {
 	for _, g := range s.Groups {
 		known[g.Name] = true
 	}
-	for _, r := range s.Register {
-		known[r.Group] = true
+	for _, group := range s.Assigned {
+		known[group] = true
 	}
 	for _, option := range [][2]string{{"--group", f.group}, {"--blocking", f.blocking}} {
 		if !known[option[1]] {

@@ -48,7 +48,7 @@ func (a *app) history(series, from, to, format string) error {
 		return err
 	}
 	return a.reading(func(c *config.Config, v watcher.View) error {
-		r, err := reader(c, v)
+		r, err := watcher.NewReader(v)
 		if err != nil {
 			return err
 		}

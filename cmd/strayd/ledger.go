@@ -40,17 +40,13 @@ With --head, the hash that was noted before must occur in the record, so that a 
 }
 
 func (a *app) verify(head string) error {
-	return a.withLedger(ledger.ReadOnly, func(c *config.Config, l *ledger.Ledger) error {
-		s, err := settings(c)
-		if err != nil {
-			return err
-		}
+	return a.withLedger(ledger.ReadOnly, func(_ *config.Config, l *ledger.Ledger) error {
 		bars := newBars(a.err)
 		r, err := l.Verify(a.ctx, ledger.VerifyOptions{
 			Head:     head,
 			Progress: func(done, total int64) { bars.progress("verifying", done, total) },
 			Recheck: func(v watcher.View) error {
-				return watcher.Recheck(v, s.Register, func(done, total int64) { bars.progress("recomputing", done, total) })
+				return watcher.Recheck(v, func(done, total int64) { bars.progress("recomputing", done, total) })
 			},
 		})
 		bars.clear()

@@ -99,11 +99,11 @@ func (a *app) newPass(c *config.Config, l watcher.Store) (*watcher.Pass, error) 
 	if err != nil {
 		return nil, err
 	}
-	s, err := settings(c)
+	s, owners, err := settings(c)
 	if err != nil {
 		return nil, err
 	}
-	teller := newTeller(c, ownersOf(s.Register))
+	teller := newTeller(c, owners)
 	return &watcher.Pass{Store: l, Source: source{}, Settings: s, Feeds: c.Feeds, FeedKey: config.FeedKey, Now: now, Who: a.actor(),
 		Program: version, Tell: teller.Notices}, nil
 }

@@ -144,14 +144,3 @@ func newTeller(c *config.Config, owners map[string]string) *notify.Teller {
 	}
 	return t
 }
-
-// ownersOf is the register's owners by series.
-func ownersOf(register []rules.Series) map[string]string {
-	owners := map[string]string{}
-	for _, s := range register {
-		if s.Owner != "" {
-			owners[s.ID] = s.Owner
-		}
-	}
-	return owners
-}
