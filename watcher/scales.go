@@ -53,7 +53,7 @@ func newGroupScales(j *judging, v View, blocks []block) *groupScales {
 
 // lent is the deviation of a group on a date; absent where too few of its series have one.
 func (g *groupScales) lent(l *lane, group string, date rules.Date) rules.Num {
-	if g == nil || group == "" {
+	if group == "" {
 		return rules.Num{}
 	}
 	g.mu.Lock()
@@ -172,9 +172,6 @@ func (g *groupScales) load(panel *stats.Panel, key blockKey) error {
 
 // stored lists what was lent, for the ledger.
 func (g *groupScales) stored() (out []GroupScale, err error) {
-	if g == nil {
-		return nil, nil
-	}
 	for _, s := range g.known {
 		if s.Series >= leastLenders && s.Step == g.j.step {
 			out = append(out, s)

@@ -192,7 +192,7 @@ func (r *FileRow) Fileless() bool { return r.Outcome == Changed || r.Outcome == 
 // Counts are the figures of a file or a pass.
 type Counts struct {
 	Rows, New, Late, Restated, Same         int
-	Inside, Watch, Breach, NotJudged, Flags int // verdicts over all ranges; flags raised
+	Inside, Watch, Breach, NotJudged, Flags int // verdicts over all ranges but limits; flags raised
 	Provisional                             int
 }
 

@@ -105,6 +105,11 @@ func (f *flagFilter) checkGroups(c *config.Config) error {
 	return nil
 }
 
+// narrow says that other flags than those listed may ask something.
+func (f *flagFilter) narrow() bool {
+	return f.all || f.date+f.from+f.to+f.kind+f.group+f.series+f.stand+f.feed+f.blocking != ""
+}
+
 func (f *flagFilter) takes(g *rules.Flag) bool {
 	is := func(want, have string) bool { return want == "" || want == have }
 	return is(f.kind, string(g.Kind)) && is(f.group, g.Group) && is(f.blocking, g.Group) && is(f.series, g.Series) &&
@@ -184,7 +189,11 @@ func (a *app) flagTable(v watcher.View, all bool, f *flagFilter, blocked *bool) 
 		return err
 	}
 	if n == 0 {
-		fmt.Fprintln(a.out, "No flag asks anything of anyone.")
+		if f.narrow() {
+			fmt.Fprintln(a.out, "No flag fits.")
+		} else {
+			fmt.Fprintln(a.out, "No flag asks anything of anyone.")
+		}
 		return nil
 	}
 	fmt.Fprintf(a.out, "\n%s. `strayd explain REF` shows every figure behind one.\n%s\n", plural(n, "flag"), caution)

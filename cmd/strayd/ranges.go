@@ -46,19 +46,33 @@ func (a *app) rangesOf(c *config.Config, l watcher.Store, only, format string) e
 	if err != nil {
 		return err
 	}
+	if only != "" {
+		if err := knownSeries(l, only); err != nil {
+			return err
+		}
+	}
 	row, end, err := a.rangeWriter(format)
 	if err != nil {
 		return err
 	}
-	found := false
-	err = p.Expect(only, rules.DateFrom(p.Now.In(c.Location)), func(e watcher.Expected) error {
-		found = true
-		return row(e)
-	})
-	if err == nil && only != "" && !found {
-		err = notFound(&watcher.UnknownSeries{Series: only})
+	return firstError(p.Expect(only, rules.DateFrom(p.Now.In(c.Location)), row), end())
+}
+
+// knownSeries is an error when the ledger has no such series.
+func knownSeries(l watcher.Store, series string) error {
+	v, err := l.View()
+	if err != nil {
+		return err
 	}
-	return firstError(err, end())
+	defer v.Close() //nolint:errcheck // only read
+	names, err := v.Names()
+	if err != nil {
+		return err
+	}
+	if _, ok := names.Find([]byte(series)); !ok {
+		return notFound(&watcher.UnknownSeries{Series: series})
+	}
+	return nil
 }
 
 // rangeWriter gives what writes one row, and what ends the list, in the format asked for.
