@@ -154,8 +154,10 @@ func (b book) all(w *writer) {
 		for range b.series {
 			w.price = append(w.price, 100)
 		}
+		w.WriteString("date,series,price\n")
+	default:
+		w.WriteString("date,series,return\n")
 	}
-	w.WriteString("date,series,return\n")
 	perm := make([]int, b.series)
 	for i := range perm {
 		perm[i] = i
