@@ -24,6 +24,7 @@ func rowList() []row {
 		{"prices", loads("prices", 2000, []int{1}, byDate, prices, ", value: price")},
 		{"gzip", loads("gzip", 2000, []int{1}, byDate, long, "")},
 		{"day", (*bench).days},
+		{"daemon", (*bench).daemons},
 		{"commands", (*bench).commands},
 		{"rerun", (*bench).rerun},
 		{"age", (*bench).age},

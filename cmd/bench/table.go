@@ -31,6 +31,8 @@ var bounds = map[string][]bound{
 	"series order 2000 x 5000":                {{"times the load", "2", "1.3"}, {"MB", "600", "-"}},
 	"shuffled 2000 x 5000":                    {{"times the load", "2", "1.3"}, {"MB", "600", "-"}},
 	"one day 1000000 after 80":                {{"s", "0.70 (0.7 of 1.0)", "0.40 (0.4)"}, {"MB written", "25", "12"}},
+	"in daemon 1000000 committed":             {{"s", "0.2", "0.06"}},
+	"in daemon 1000000 told":                  {{"s", "2", "0.5"}},
 	"command [flags]":                         {{"s", "0.3", "0.05"}},
 	"command [explain fund001000 2020-02-28]": {{"s", "0.3", "0.05"}},
 	"command [history fund001000]":            {{"s", "0.3", "0.05"}},
