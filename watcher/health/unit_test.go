@@ -39,7 +39,7 @@ func TestUnitHoldsItsLines(t *testing.T) {
 		t.Fatal(err)
 	}
 	for key, want := range map[string]string{
-		"Type": "notify", "NotifyAccess": "main", "WatchdogSec": "120", "Restart": "on-failure", "RestartPreventExitStatus": "78 2 4",
+		"Type": "notify", "NotifyAccess": "main", "WatchdogSec": "120", "Restart": "on-failure", "RestartPreventExitStatus": "78 4",
 		"ExecStart": "/usr/local/bin/strayd --config /etc/strayd/strayd.yaml run", "ExecReload": "/bin/kill -HUP $MAINPID", "TimeoutStopSec": "30",
 		"User": "strayd", "Group": "strayd", "StateDirectory": "strayd", "StateDirectoryMode": "0700", "RuntimeDirectory": "strayd",
 		"RuntimeDirectoryMode": "0750", "UMask": "0077", "LoadCredential": "slack_token:/etc/strayd/slack_token", "ProtectSystem": "strict",
