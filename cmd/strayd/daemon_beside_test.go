@@ -102,6 +102,7 @@ func TestBesideDaemonReaders(t *testing.T) {
 	for running := true; running; {
 		select {
 		case took := <-ended:
+			readers.Wait()
 			t.Logf("the pass took %v beside %v readings (rows: readings) and %d pages", took, seen, pages)
 			running = false
 		case <-tick.C:
@@ -120,7 +121,6 @@ func TestBesideDaemonReaders(t *testing.T) {
 			}
 		}
 	}
-	readers.Wait()
 	for rows := range seen {
 		if rows != 0 && rows != dates {
 			t.Errorf("a reading saw %d of %d dates", rows, dates)

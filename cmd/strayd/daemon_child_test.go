@@ -11,6 +11,7 @@ import (
 	"os"
 	"os/exec"
 	"path/filepath"
+	"slices"
 	"strings"
 	"sync"
 	"syscall"
@@ -83,6 +84,9 @@ func (f *folder) spawn(env []string, args ...string) *child {
 	f.t.Cleanup(func() {
 		_ = c.cmd.Process.Kill() // an error says that it has ended
 		<-c.done
+		if strings.Contains(c.log.String(), "DATA RACE") {
+			f.t.Error("a race in the daemon")
+		}
 		if f.t.Failed() {
 			f.t.Logf("log of the daemon:\n%s", c.log)
 		}
@@ -220,7 +224,7 @@ func (f *folder) notices(args ...string) []record {
 func (f *folder) allSent() {
 	f.t.Helper()
 	until(f.t, "every notice is sent", func() bool {
-		return len(f.notices("--state", "waiting"))+len(f.notices("--state", "sending")) == 0
+		return !slices.ContainsFunc(f.notices(), func(n record) bool { return n["state"] == "waiting" || n["state"] == "sending" })
 	})
 }
 
