@@ -247,6 +247,41 @@ func TestDaemonCatchesUp(t *testing.T) {
 	f.must("ledger", "verify")
 }
 
+// A feed whose folder cannot be looked into: its passes fail, which is told once a day, and it is late all the same.
+func TestDaemonFailedPass(t *testing.T) {
+	socketFolder(t)
+	s := newChatService(t)
+	f := deskFolder(t, "desk")
+	f.configure(strings.Replace(deskConfig("desk"), `schedule: "0 3 1 1 *"`, `schedule: "0 * * * *", due: {at: "00:01"}`, 1))
+	if err := os.Remove(filepath.Join(f.path, "inbox")); err != nil {
+		t.Fatal(err)
+	}
+	for _, job := range []string{feedJob + "book", judged + "book"} {
+		f.owe(job, time.Now().AddDate(0, 0, -7))
+	}
+	d := f.daemon(s.env()...)
+	until(t, "five dates are late", func() bool { return len(f.list("flags", "--kind", "late")) == 5 })
+	f.allSent()
+	failed, late := 0, 0
+	for _, p := range s.in(channelID("desk")) {
+		switch {
+		case strings.HasPrefix(p.Text, "FAILED: feed book: "):
+			failed++
+		case strings.HasPrefix(p.Text, "LATE feed book"):
+			late++
+		}
+	}
+	if failed != 1 || late != 5 {
+		t.Errorf("the desk is told of %d failed passes and %d late files: %q", failed, late, s.posts)
+	}
+	if err := os.Mkdir(filepath.Join(f.path, "inbox"), 0o755); err != nil {
+		t.Fatal(err)
+	}
+	f.arrive("a.csv", csvDays([]string{"fund"}, 0, 30, map[string]float64{"fund": 0.2}))
+	until(t, "the breach is told", func() bool { return len(s.in(channelID("desk"))) == 7 })
+	d.stop()
+}
+
 // A slot of the schedule's own, on the real clock.
 func TestDaemonSlot(t *testing.T) {
 	if testing.Short() {

@@ -149,3 +149,25 @@ func TestNobodyAndOpenFolder(t *testing.T) {
 		t.Error("a folder that everyone may write to counts as private")
 	}
 }
+
+// A folder of the last resort's name that another user could have made is nobody's.
+func TestLastResortIsOnesOwn(t *testing.T) {
+	begin(t, func(context.Context, Call, io.Writer, io.Writer) int { return 0 })
+	t.Setenv("TMPDIR", os.Getenv("RUNTIME_DIRECTORY"))
+	if err := os.Mkdir(lastResort(), 0o700); err != nil {
+		t.Fatal(err)
+	}
+	l, err := net.Listen("unix", filepath.Join(lastResort(), name("x")))
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer l.Close()
+	for mode, want := range map[os.FileMode]bool{0o700: true, 0o777: false} {
+		if err := os.Chmod(lastResort(), mode); err != nil {
+			t.Fatal(err)
+		}
+		if _, there := Path("x"); there != want {
+			t.Errorf("with mode %v the socket counts: %v", mode, there)
+		}
+	}
+}

@@ -26,8 +26,11 @@ func folders() []string {
 	if d := os.Getenv("XDG_RUNTIME_DIR"); d != "" {
 		out = append(out, filepath.Join(d, "strayd"))
 	}
-	return append(out, "/run/strayd", filepath.Join(os.TempDir(), fmt.Sprintf("strayd-%d", os.Getuid())))
+	return append(out, "/run/strayd", lastResort())
 }
+
+// lastResort is a folder among those for temporary files, which are open to everyone: there may be another user's of its name.
+func lastResort() string { return filepath.Join(os.TempDir(), fmt.Sprintf("strayd-%d", os.Getuid())) }
 
 // serverFolder is the folder for a new socket. It is made where it is not there, and must belong to this user alone.
 func serverFolder() (string, error) {
@@ -45,10 +48,14 @@ func serverFolder() (string, error) {
 	return "", fmt.Errorf("no folder for the control socket: none of %v belongs to this user alone", folders())
 }
 
-// Path is where the daemon of a ledger listens, if one does: the first socket that is there.
+// Path is where the daemon of a ledger listens, if one does: the first socket that is there. The last resort counts only when it is this
+// user's own, or another's daemon could answer in the place of this one's.
 func Path(ledger string) (string, bool) {
 	for _, d := range folders() {
 		p := filepath.Join(d, name(ledger))
+		if d == lastResort() && !private(d) {
+			continue
+		}
 		if info, err := os.Lstat(p); err == nil && info.Mode()&os.ModeSocket != 0 {
 			return p, true
 		}
