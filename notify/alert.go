@@ -24,10 +24,10 @@ func head(e event) string {
 	f := e[0]
 	s := kindWords(e) + " " + subject(f)
 	if f.Return != rules.Missing && f.Series != "" {
-		s += " returned " + percent(f.Return.Float())
+		s += " returned " + rules.InPercent(f.Return.Float())
 	}
 	if f.Date != rules.NoDate {
-		s += " for " + day(f.Date)
+		s += " for " + f.Date.Day()
 	}
 	return s + ", " + refWords(e)
 }
@@ -72,7 +72,7 @@ func refWords(e event) string {
 
 // rangeLine says what was expected instead, and how far out the value lies; nothing for a flag without lines.
 func rangeLine(f *rules.FlagNews) string {
-	lines := between(f.Low, f.High)
+	lines := rules.Between(f.Low, f.High)
 	if lines == "" {
 		return ""
 	}
@@ -81,14 +81,14 @@ func rangeLine(f *rules.FlagNews) string {
 	}
 	s := fmt.Sprintf("Expected %s (range %s", lines, name(f.Range))
 	if f.Window > 0 {
-		s += fmt.Sprintf(", %s to %s", counted(f.Window, "observation"), day(f.WindowTo))
+		s += fmt.Sprintf(", %s to %s", rules.Counted(f.Window, "observation"), f.WindowTo.Day())
 	}
 	s += ")"
 	if f.Z.OK {
 		s += fmt.Sprintf("; z %+.1f", f.Z.V)
 	}
 	if f.Tail.OK && f.Tail.V > 0 {
-		s += ", " + often(f.Tail.V)
+		s += ", " + rules.OnceIn(f.Tail.V)
 	}
 	return s
 }
@@ -121,7 +121,7 @@ func pendingLine(e event) string {
 		case f.Return:
 			s = "Until somebody decides, the window takes it in full."
 		default:
-			s = "Until somebody decides, the window takes it as " + percent(f.Used.Float()) + "."
+			s = "Until somebody decides, the window takes it as " + rules.InPercent(f.Used.Float()) + "."
 		}
 	}
 	for _, f := range e {
@@ -146,7 +146,7 @@ func (t *Teller) fileLine(news rules.News, e event) string {
 	if f.File != news.File || news.Rows == 0 {
 		return s
 	}
-	return s + fmt.Sprintf("; %s, %s on its newest date, %s", counted(news.Rows, "row"), counted(news.Series, "series"),
+	return s + fmt.Sprintf("; %s, %s on its newest date, %s", rules.Counted(news.Rows, "row"), rules.Counted(news.Series, "series"),
 		others(len(news.Flags)-len(e)))
 }
 
@@ -154,7 +154,7 @@ func others(n int) string {
 	if n <= 0 {
 		return "no other flag"
 	}
-	return counted(n, "other flag")
+	return rules.Counted(n, "other flag")
 }
 
 func (t *Teller) arrivalLine(f *rules.FlagNews, at time.Time) string {

@@ -24,7 +24,7 @@ func (t *Teller) Daily(d rules.DayNews) []rules.Notice {
 
 func dailyLines(d *rules.DayNews) []string {
 	lines := []string{dailyHead(d),
-		fmt.Sprintf("%s taken, %d refused; %d beyond a limit, %d restated", counted(d.Files, "file"), d.Refused, d.Limits, d.Restated)}
+		fmt.Sprintf("%s taken, %d refused; %d beyond a limit, %d restated", rules.Counted(d.Files, "file"), d.Refused, d.Limits, d.Restated)}
 	if len(d.Missing) > 0 {
 		lines = append(lines, "Without a value: "+missingNames(d))
 	}
@@ -43,17 +43,17 @@ func dailyHead(d *rules.DayNews) string {
 		s = "CHECKED IN PART"
 	}
 	if d.Date != rules.NoDate {
-		s += " for " + day(d.Date)
+		s += " for " + d.Date.Day()
 	}
-	s += fmt.Sprintf(": %s of %s series, %d of %d feeds, %s", grouped(d.Checked), grouped(d.Expected), d.Feeds, d.FeedsDue,
-		counted(d.Breaches, "breach"))
+	s += fmt.Sprintf(": %s of %s series, %d of %d feeds, %s", rules.Thousands(d.Checked), rules.Thousands(d.Expected), d.Feeds, d.FeedsDue,
+		rules.Counted(d.Breaches, "breach"))
 	if n := len(d.Dead); n > 0 {
-		s += ", " + counted(n, "dead channel")
+		s += ", " + rules.Counted(n, "dead channel")
 	}
 	if d.Open == 0 {
 		return s + "; nothing open"
 	}
-	return s + fmt.Sprintf("; %d open, oldest ref %d (%s)", d.Open, d.OldestRef, counted(d.OldestDays, "day"))
+	return s + fmt.Sprintf("; %d open, oldest ref %d (%s)", d.Open, d.OldestRef, rules.Counted(d.OldestDays, "day"))
 }
 
 func missingNames(d *rules.DayNews) string {
@@ -62,7 +62,7 @@ func missingNames(d *rules.DayNews) string {
 		names = append(names, name(m))
 	}
 	if more := d.Expected - d.Checked - len(names); more > 0 {
-		names = append(names, grouped(more)+" more")
+		names = append(names, rules.Thousands(more)+" more")
 	}
 	return strings.Join(names, ", ")
 }

@@ -56,17 +56,17 @@ func dates(flags []*rules.FlagNews) (first, last rules.Date) {
 
 func (t *Teller) digestHead(flags []*rules.FlagNews, short bool) string {
 	if short {
-		return fmt.Sprintf("To look at: %s", counted(len(flags), "flag"))
+		return fmt.Sprintf("To look at: %s", rules.Counted(len(flags), "flag"))
 	}
-	s := fmt.Sprintf("DIGEST of %s", counted(len(flags), "flag"))
+	s := fmt.Sprintf("DIGEST of %s", rules.Counted(len(flags), "flag"))
 	switch first, last := dates(flags); {
 	case last == rules.NoDate:
 	case first == last:
-		s += " for " + day(last)
+		s += " for " + last.Day()
 	case first == rules.NoDate:
-		s += " up to " + day(last)
+		s += " up to " + last.Day()
 	default:
-		s += " from " + day(first) + " to " + day(last)
+		s += " from " + first.Day() + " to " + last.Day()
 	}
 	return s + ": " + tally(flags, 3, func(f *rules.FlagNews) string { return string(f.Kind) })
 }
@@ -95,7 +95,7 @@ func tally(flags []*rules.FlagNews, most int, word func(*rules.FlagNews) string)
 	rest := words[min(most, len(words)):]
 	words = words[:len(words)-len(rest)]
 	for i, w := range words {
-		words[i] = fmt.Sprintf("%s %s", name(w), grouped(counts[w]))
+		words[i] = fmt.Sprintf("%s %s", name(w), rules.Thousands(counts[w]))
 	}
 	if len(rest) > 0 {
 		words = append(words, fmt.Sprintf("%d more", len(rest)))
@@ -126,7 +126,7 @@ func digestLine(e event, short bool) string {
 	}
 	s := subject(e[0])
 	if f := e[0]; f.Return != rules.Missing && f.Series != "" {
-		s += " returned " + percent(f.Return.Float())
+		s += " returned " + rules.InPercent(f.Return.Float())
 	}
 	if z := e[0].Z; z.OK {
 		s += fmt.Sprintf(", z %+.1f", z.V)
@@ -135,7 +135,7 @@ func digestLine(e event, short bool) string {
 }
 
 func moreLine(more int, first, last rules.Date) string {
-	s := fmt.Sprintf("and %s more: strayd flags", grouped(more))
+	s := fmt.Sprintf("and %s more: strayd flags", rules.Thousands(more))
 	switch {
 	case first == last && last != rules.NoDate:
 		return s + " --date " + last.String()
@@ -150,5 +150,5 @@ func (t *Teller) digestFile(news rules.News) string {
 		return ""
 	}
 	return fmt.Sprintf("File %s of feed %s, taken %s; %s, %s on its newest date", name(news.File), name(news.Feed),
-		clock(news.At, news.At, t.Zone), counted(news.Rows, "row"), counted(news.Series, "series"))
+		clock(news.At, news.At, t.Zone), rules.Counted(news.Rows, "row"), rules.Counted(news.Series, "series"))
 }

@@ -254,16 +254,16 @@ func TestWords(t *testing.T) {
 func TestFigures(t *testing.T) {
 	for v, want := range map[float64]string{0: "+0.00 %", 0.0412: "+4.12 %", -0.0412: "-4.12 %", 0.001: "+0.10 %", 0.00099: "+9.90 bp",
 		-0.00000001: "-0.00 bp", 12: "+1200.00 %"} {
-		equal(t, fmt.Sprint(v), percent(v), want)
+		equal(t, fmt.Sprint(v), rules.InPercent(v), want)
 	}
 	for tail, want := range map[float64]string{1: "about every day", 0.5: "about once in 2 days", 0.0027: "about once in 370 days",
 		1.0 / 4999: "about once in 4,999 days", 1.0 / 5000: "rarer than 1 in 5,000", 5e-324: "rarer than 1 in 5,000"} {
-		equal(t, fmt.Sprint(tail), often(tail), want)
+		equal(t, fmt.Sprint(tail), rules.OnceIn(tail), want)
 	}
 	for n, want := range map[int]string{0: "0 series", 1: "1 series", 1234567: "1,234,567 series"} {
-		equal(t, fmt.Sprint(n), counted(n, "series"), want)
+		equal(t, fmt.Sprint(n), rules.Counted(n, "series"), want)
 	}
-	equal(t, "one side", between(rules.Some(-0.01), rules.Num{})+", "+between(rules.Num{}, rules.Some(0.01)), "-1.00 % or above, +1.00 % or below")
+	equal(t, "one side", rules.Between(rules.Some(-0.01), rules.Num{})+", "+rules.Between(rules.Num{}, rules.Some(0.01)), "-1.00 % or above, +1.00 % or below")
 }
 
 func TestLongNotesAreWrapped(t *testing.T) {

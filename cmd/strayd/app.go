@@ -7,7 +7,6 @@ import (
 	"io"
 	"os"
 	"os/user"
-	"strings"
 	"time"
 
 	"strayd/config"
@@ -156,26 +155,4 @@ func (source) Hash(ctx context.Context, c watcher.Candidate) ([32]byte, error) {
 
 func (source) Read(ctx context.Context, c watcher.Candidate, f rules.Feed, names *watcher.Names, now time.Time, progress watcher.Progress) (*watcher.Sheet, error) {
 	return feed.Read(ctx, c, f, names, feed.Options{Now: now, Progress: progress})
-}
-
-// plural writes a count with its noun.
-func plural(n int, noun string) string {
-	switch {
-	case n == 1, noun == "series":
-		return thousands(n) + " " + noun
-	case strings.HasSuffix(noun, "ch"):
-		return thousands(n) + " " + noun + "es"
-	case strings.HasSuffix(noun, "y"):
-		return thousands(n) + " " + strings.TrimSuffix(noun, "y") + "ies"
-	}
-	return thousands(n) + " " + noun + "s"
-}
-
-// thousands writes a count with commas.
-func thousands(n int) string {
-	s := fmt.Sprint(n)
-	for i := len(s) - 3; i > 0 && s[i-1] != '-'; i -= 3 {
-		s = s[:i] + "," + s[i:]
-	}
-	return s
 }

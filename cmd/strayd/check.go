@@ -64,7 +64,7 @@ func (a *app) check(asked checking) error {
 		fmt.Fprintf(a.out, "ledger: %v\n", err)
 	} else {
 		series = max(series, n)
-		fmt.Fprintf(a.out, "ledger: %s, %s held\n", c.Ledger, plural(n, "series"))
+		fmt.Fprintf(a.out, "ledger: %s, %s held\n", c.Ledger, rules.Counted(n, "series"))
 	}
 	refused += a.checkChannels(c, asked.send)
 	if err := a.sayLines(c, series); err != nil {
@@ -147,7 +147,7 @@ func (a *app) sayRuns(c *config.Config, spec string, now time.Time) {
 }
 
 func saySheet(w io.Writer, s *watcher.Sheet) {
-	fmt.Fprintf(w, "  %s: %s from %s to %s\n", printable(s.File.Name), plural(s.Rows, "row"), s.First(), s.Last())
+	fmt.Fprintf(w, "  %s: %s from %s to %s\n", printable(s.File.Name), rules.Counted(s.Rows, "row"), s.First(), s.Last())
 	for _, note := range s.Notes {
 		fmt.Fprintf(w, "    %s\n", printable(note))
 	}
@@ -159,7 +159,7 @@ func saySheet(w io.Writer, s *watcher.Sheet) {
 	col.Fill(vals, 0, s.What.Places())
 	for i, v := range vals {
 		if v != watcher.Missing64 {
-			value := percent(rules.Units(v).Float())
+			value := rules.InPercent(rules.Units(v).Float())
 			if s.What == watcher.Prices {
 				value = "a price of " + rules.Price(v).String()
 			}

@@ -183,7 +183,7 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 	if e.flag != nil {
 		ref = fmt.Sprintf(", ref %d (%s, %s)", e.flag.Ref, e.flag.Kind, e.flag.Standing)
 	}
-	fmt.Fprintf(a.out, "%s  %s  for %s: %s under range %q%s\n", printable(row.Series), percent(row.Return.Float()), row.Date.Time().Format("Monday 2006-01-02"),
+	fmt.Fprintf(a.out, "%s  %s  for %s: %s under range %q%s\n", printable(row.Series), rules.InPercent(row.Return.Float()), row.Date.Time().Format("Monday 2006-01-02"),
 		row.Finding, row.Range, ref)
 	w := columns(a.out)
 	line := func(name, format string, args ...any) { fields(w, "  "+name, fmt.Sprintf(format, args...)) }
@@ -220,7 +220,7 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 // explainWindow says what the verdict was made of; restated: a newer version of the observation is held.
 func (a *app) explainWindow(line func(name, format string, args ...any), row *watcher.Row, restated bool) {
 	if row.N > 0 {
-		line("made of", "%s from %s to %s", plural(row.N, "observation"), day(row.WindowFrom), day(row.WindowTo))
+		line("made of", "%s from %s to %s", rules.Counted(row.N, "observation"), day(row.WindowFrom), day(row.WindowTo))
 		line("mean, deviation", "%s, %s", percentNum(row.Mean), width(row.Deviation))
 	}
 	if row.Z.OK {
@@ -233,14 +233,14 @@ func (a *app) explainWindow(line func(name, format string, args ...any), row *wa
 		}
 	}
 	if clipped > 0 {
-		line("clipped", "%s of the window held to the line that they broke", plural(clipped, "value"))
+		line("clipped", "%s of the window held to the line that they broke", rules.Counted(clipped, "value"))
 	}
 	switch {
 	case row.Used == rules.Missing:
 		line("window takes", "nothing of it until someone decides")
 	case row.Used != row.Return && restated:
-		line("window takes", "%s, now that it is restated", percent(row.Used.Float()))
+		line("window takes", "%s, now that it is restated", rules.InPercent(row.Used.Float()))
 	case row.Used != row.Return:
-		line("window takes", "%s until someone decides", percent(row.Used.Float()))
+		line("window takes", "%s until someone decides", rules.InPercent(row.Used.Float()))
 	}
 }

@@ -196,14 +196,14 @@ func (a *app) flagTable(v watcher.View, all bool, f *flagFilter, blocked *bool) 
 		}
 		return nil
 	}
-	fmt.Fprintf(a.out, "\n%s. `strayd explain REF` shows every figure behind one.\n%s\n", plural(n, "flag"), caution)
+	fmt.Fprintf(a.out, "\n%s. `strayd explain REF` shows every figure behind one.\n%s\n", rules.Counted(n, "flag"), caution)
 	return nil
 }
 
 func flagFields(g *rules.Flag) []string {
 	value, z, rare := "-", "-", "-"
 	if g.Return != rules.Missing {
-		value = percent(g.Return.Float())
+		value = rules.InPercent(g.Return.Float())
 	}
 	if g.Z.OK {
 		z, rare = fmt.Sprintf("%+.1f", g.Z.V), onceIn(g.Tail)

@@ -95,11 +95,11 @@ func (a *app) historyTable(rows []watcher.Row) error {
 		case r.Used == rules.Missing:
 			used = "left out"
 		case r.Used != r.Return:
-			used = percent(r.Used.Float())
+			used = rules.InPercent(r.Used.Float())
 		default:
 			used = "in full"
 		}
-		fields(w, day(r.Date), percent(r.Return.Float()), r.Range, between(r.Low, r.High), z, onceIn(r.Tail), string(r.Finding), used, printable(r.Why))
+		fields(w, day(r.Date), rules.InPercent(r.Return.Float()), r.Range, between(r.Low, r.High), z, onceIn(r.Tail), string(r.Finding), used, printable(r.Why))
 	}
 	return w.Flush()
 }

@@ -54,7 +54,7 @@ func (a *app) verify(head string) error {
 			return err
 		}
 		fmt.Fprintf(a.out, "The ledger is whole up to step %d: %s, %s checked, %s in the record of settings and decisions.\n", r.Step,
-			plural(int(r.Names), "series"), plural(int(r.Values), "stored piece"), plural(int(r.Records), "entry"))
+			rules.Counted(int(r.Names), "series"), rules.Counted(int(r.Values), "stored piece"), rules.Counted(int(r.Records), "entry"))
 		if r.Head != "" {
 			fmt.Fprintf(a.out, "Head of the record: %s\n", r.Head)
 		}
@@ -127,7 +127,7 @@ func (a *app) compactCommand() *cobra.Command {
 			if err != nil {
 				return err
 			}
-			fmt.Fprintf(a.out, "%s: %s bytes before, %s after.\n", c.Ledger, thousands(int(done.Before)), thousands(int(done.After)))
+			fmt.Fprintf(a.out, "%s: %s bytes before, %s after.\n", c.Ledger, rules.Thousands(int(done.Before)), rules.Thousands(int(done.After)))
 			return nil
 		},
 	}

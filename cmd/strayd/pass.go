@@ -7,6 +7,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"strayd/config"
+	"strayd/rules"
 	"strayd/watcher"
 	"strayd/watcher/ledger"
 )
@@ -113,8 +114,8 @@ func (a *app) sayFile(r watcher.FileReport) {
 	switch r.Fate {
 	case watcher.FateAccepted:
 		n := r.Row.Counts
-		fmt.Fprintf(a.out, "%s: %s, %s new, %s late, %s restated, %s unchanged; %s\n", name, plural(n.Rows, "row"), thousands(n.New), thousands(n.Late),
-			thousands(n.Restated), thousands(n.Same), plural(n.Flags, "flag"))
+		fmt.Fprintf(a.out, "%s: %s, %s new, %s late, %s restated, %s unchanged; %s\n", name, rules.Counted(n.Rows, "row"), rules.Thousands(n.New), rules.Thousands(n.Late),
+			rules.Thousands(n.Restated), rules.Thousands(n.Same), rules.Counted(n.Flags, "flag"))
 		for _, note := range r.Notes {
 			fmt.Fprintf(a.err, "%s: %s\n", name, printable(note))
 		}
@@ -128,11 +129,11 @@ func (a *app) sayFile(r watcher.FileReport) {
 // sayPass prints the pass in one line, with the verdicts counted.
 func (a *app) sayPass(row watcher.PassRow) {
 	n := row.Counts
-	fmt.Fprintf(a.out, "%s accepted, %d refused, %d waiting. ", plural(row.Accepted, "file"), row.Refused, row.Waiting)
+	fmt.Fprintf(a.out, "%s accepted, %d refused, %d waiting. ", rules.Counted(row.Accepted, "file"), row.Refused, row.Waiting)
 	if row.Accepted == 0 {
 		fmt.Fprintln(a.out, "Nothing new to judge.")
 		return
 	}
-	fmt.Fprintf(a.out, "Verdicts: %s inside, %s watch, %s, %s not judged. %s raised.\n", thousands(n.Inside), thousands(n.Watch),
-		plural(n.Breach, "breach"), thousands(n.NotJudged), plural(n.Flags, "flag"))
+	fmt.Fprintf(a.out, "Verdicts: %s inside, %s watch, %s, %s not judged. %s raised.\n", rules.Thousands(n.Inside), rules.Thousands(n.Watch),
+		rules.Counted(n.Breach, "breach"), rules.Thousands(n.NotJudged), rules.Counted(n.Flags, "flag"))
 }

@@ -4,7 +4,6 @@ import (
 	"bufio"
 	"fmt"
 	"io"
-	"math"
 	"strings"
 	"unicode/utf8"
 
@@ -14,19 +13,12 @@ import (
 // caution goes with whatever could be taken for a finding.
 const caution = "A flag is a statistical statement about past data: neither advice nor a finding of error; no flag is no certificate."
 
-// percent writes a return for a person: signed per cent with two decimals, basis points under 0.1 %.
-func percent(v float64) string {
-	if a := math.Abs(v); a != 0 && a < 0.001 {
-		return fmt.Sprintf("%+.2f bp", v*1e4)
-	}
-	return fmt.Sprintf("%+.2f %%", v*100)
-}
-
+// percentNum writes a return that may be absent.
 func percentNum(n rules.Num) string {
 	if !n.OK {
 		return "-"
 	}
-	return percent(n.V)
+	return rules.InPercent(n.V)
 }
 
 // width writes a size, such as a deviation, without a sign.
@@ -35,34 +27,21 @@ func width(n rules.Num) string {
 }
 
 // between writes a range with one or both of its lines.
-func between(low, high rules.Num) string {
-	switch {
-	case low.OK && high.OK:
-		return percent(low.V) + " to " + percent(high.V)
-	case low.OK:
-		return "above " + percent(low.V)
-	case high.OK:
-		return "below " + percent(high.V)
-	}
-	return "-"
-}
-
-// rarest is the longest waiting time that is printed for a person: own data cannot support more.
-const rarest = 5000
+func between(low, high rules.Num) string { return orDash(rules.Between(low, high)) }
 
 // onceIn writes a tail probability as a waiting time.
 func onceIn(tail rules.Num) string {
 	if !tail.OK || tail.V <= 0 {
 		return "-"
 	}
-	days := 1 / tail.V
-	switch {
-	case days >= rarest:
-		return fmt.Sprintf("rarer than 1 in %s", thousands(rarest))
-	case days < 1.5:
-		return "every day"
+	return rules.OnceIn(tail.V)
+}
+
+func orDash(s string) string {
+	if s == "" {
+		return "-"
 	}
-	return fmt.Sprintf("once in %s days", thousands(int(math.Round(days))))
+	return s
 }
 
 // day writes a date with its weekday.
@@ -70,7 +49,7 @@ func day(d rules.Date) string {
 	if d == rules.NoDate {
 		return "-"
 	}
-	return d.Time().Format("Mon 2006-01-02")
+	return d.Day()
 }
 
 // printable makes a text from a file safe for a terminal.
