@@ -148,8 +148,8 @@ func (g *Gauge) Gate(thin bool) (gate stats.Gate, ok bool) {
 	switch {
 	case r.Limit != nil, r.Of == Residual, r.Tail.Name == "rank":
 		return nil, false
-	case r.Scale == Weighted:
-		return stats.WeightedGate(r.Window, least, g.inner), true
+	case r.Scale == Weighted: // it counts on beyond its window
+		return stats.WeightedGate(max(r.Window, LeastNormal), least, g.inner), true
 	case r.Scale == MAD:
 		return stats.MADGate(r.Window, least, g.inner), true
 	}

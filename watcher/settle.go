@@ -38,14 +38,14 @@ func (p *Pass) settingsStep(v View, active int) (b *Batch, again []RangeKey, err
 	}
 	resolveBudgets(&p.Settings, recorded, active)
 	text := p.Settings.Text()
-	if last > 0 && bytes.Equal(text, recorded.Text()) {
-		return nil, nil, nil
+	unknown, again, err := p.newRanges(v, recorded)
+	if err != nil || last > 0 && bytes.Equal(text, recorded.Text()) && len(unknown) == 0 {
+		return nil, nil, err
 	}
-	b = &Batch{Step: v.Step() + 1, Settings: text}
+	b = &Batch{NewRanges: unknown, Step: v.Step() + 1, Settings: text}
 	b.File = FileRow{Step: b.Step, Settings: last + 1, Outcome: Changed, Received: p.Now, First: rules.NoDate, Last: rules.NoDate}
 	b.Record = []RecordEntry{{Kind: "settings", Who: p.Who, At: p.Now, Body: text}}
-	b.NewRanges, again, err = p.newRanges(v, recorded)
-	return b, again, err
+	return b, again, nil
 }
 
 // newRanges numbers the definitions that the ledger does not know, and lists those that need a replay.
@@ -56,7 +56,9 @@ func (p *Pass) newRanges(v View, recorded *rules.Settings) (unknown, again []Ran
 	}
 	kept := map[string]bool{}
 	for n := range recorded.Ranges {
-		kept[recorded.Identity(n)] = true
+		if key := recorded.Identity(n); known[key] != 0 { // another version of the program may have written it otherwise
+			kept[key] = true
+		}
 	}
 	for n, r := range p.Settings.Ranges {
 		key := p.Settings.Identity(n)
