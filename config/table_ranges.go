@@ -112,7 +112,7 @@ var channelTable = object{what: "keys: name, and slack or console", fields: []fi
 	{key: "slack", choice: "channel", shape: slackTable, doc: "A chat channel; its token comes from the environment or a file, never from here.",
 		at: in(func(c *rules.Channel) any { c.Kind = "slack"; return c })},
 	{key: "console", choice: "channel", shape: object{what: "{}"}, doc: "The standard output of the run.",
-		at: in(func(c *rules.Channel) any { c.Kind, c.Console = "console", true; return c })},
+		at: in(func(c *rules.Channel) any { c.Kind = "console"; return c })},
 	{key: "for", doc: "Names of groups; everything when left out.",
 		shape: list[string]{item: name(), least: 1, unique: true, what: "a list of groups' names"},
 		at:    in(func(c *rules.Channel) any { return &c.For })},

@@ -127,7 +127,7 @@ func TestDefaults(t *testing.T) {
 		Tail: rules.TailModel{Name: "t", DF: 5}, Predictive: true, Side: "both", Watch: rules.Line{Tail: 0.01},
 		Breach: rules.Line{Tail: 0.0027}, Pending: "clip"})
 	check("doubtful", c.Doubtful, 0.002)
-	check("channels", c.Channels, []rules.Channel{{Name: "console", Kind: "console", Console: true}})
+	check("channels", c.Channels, []rules.Channel{{Name: "console", Kind: "console"}})
 	check("later", c.Later, []Note(nil))
 	check("weekly", minimal(t, "weekly: {}\n").Weekly, Weekly{Schedule: "0 7 * * mon"})
 }

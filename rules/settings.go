@@ -145,15 +145,14 @@ type Limit struct{ Low, High Units }
 
 // Channel is where notices go.
 type Channel struct {
-	Name    string
-	Kind    string // slack, console
-	Target  string // slack: the channel's id
-	For     []string
-	Kinds   []Kind
-	From    int // minutes of the day; From == To for always
-	To      int
-	Short   bool
-	Console bool
+	Name   string
+	Kind   string // slack, console
+	Target string // slack: the channel's id
+	For    []string
+	Kinds  []Kind
+	From   int // minutes of the day; From == To for always
+	To     int
+	Short  bool
 }
 
 // Series is one row of the register: what is known of a series beyond its name.
