@@ -12,9 +12,14 @@ import (
 type Names struct {
 	list  atomic.Pointer[nameList]
 	mu    sync.RWMutex
-	slots []uint32 // open addressing, number+1; nil until a name is looked up
+	slots []uint32 // open addressing, number+1; nil until names are looked up
+	asked int      // names looked up without it
 	seed  maphash.Seed
 }
+
+// walks is how many names are looked up by walking over all of them before a table is made, which costs as much as many walks: a
+// command that asks for one series of a million needs no table.
+const walks = 2
 
 // nameList is an append-only arena: name i is text[ends[i-1]:ends[i]].
 type nameList struct {
@@ -69,8 +74,24 @@ func (n *Names) Find(name []byte) (uint32, bool) {
 	}
 	n.mu.Lock()
 	defer n.mu.Unlock()
+	if n.slots == nil && n.asked < walks {
+		n.asked++
+		return n.list.Load().walk(name)
+	}
 	n.index(n.Len())
 	return n.find(name)
+}
+
+// walk finds a name without a table.
+func (l *nameList) walk(name []byte) (uint32, bool) {
+	from := uint32(0)
+	for id, end := range l.ends {
+		if int(end-from) == len(name) && bytes.Equal(l.text[from:end], name) {
+			return uint32(id), true
+		}
+		from = end
+	}
+	return 0, false
 }
 
 // Add gives the number of a name, a new one when it is not yet there.

@@ -12,8 +12,11 @@ import (
 	"time"
 )
 
-// readEvery is the pace of the commands that read beside the daemon: 20 a second.
+// readEvery is the pace of the commands that read beside the daemon: 20 a second, as long as the machine keeps up with them.
 const readEvery = 50 * time.Millisecond
+
+// readMost is how many of them may be under way; while there are as many, none is added.
+const readMost = 8
 
 // daemons measures one day of many series inside a running daemon while commands read its ledger: from the file being whole to the end
 // of the command that has it taken, and to its notice being printed by the console channel.
@@ -61,7 +64,7 @@ func (b *bench) daemons() error {
 	}
 	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d committed", series), usage: usage{wall: wallOf(taken)}, rows: series})
 	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d told", series), usage: usage{wall: wallOf(told)}, rows: series})
-	b.print(figures{row: "in daemon", work: "history meanwhile", usage: usage{wall: wallOf(reads)}})
+	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d commands meanwhile", len(reads)), usage: usage{wall: wallOf(reads)}})
 	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d days, all of it", b.runs), usage: all, rows: b.runs * series, disk: true})
 	return os.RemoveAll(d.dir)
 }
@@ -122,28 +125,50 @@ func (r *resident) read(into *[]usage, series string) (stop func() error) {
 	go func() {
 		tick := time.NewTicker(readEvery)
 		defer tick.Stop()
-		var mu sync.Mutex
-		var runs sync.WaitGroup
-		var failed error
-		for reading := true; reading; {
+		reads := readings{room: make(chan struct{}, readMost)}
+		for n := 0; ; n++ {
 			select {
 			case <-end:
-				reading = false
+				reads.runs.Wait()
+				*into = append(*into, reads.took...)
+				done <- reads.failed
+				return
 			case <-tick.C:
-				runs.Go(func() {
-					u, err := r.desk.run("history", series)
-					mu.Lock()
-					defer mu.Unlock()
-					if *into = append(*into, u); err != nil {
-						failed = err
-					}
-				})
+				args := []string{"history", series}
+				if n%2 == 1 {
+					args = []string{"flags", "--kind", "limit"}
+				}
+				reads.add(func() (usage, error) { return r.desk.run(args...) })
 			}
 		}
-		runs.Wait()
-		done <- failed
 	}()
 	return func() error { close(end); return <-done }
+}
+
+// readings are the commands under way, and what those that have ended took.
+type readings struct {
+	room   chan struct{}
+	runs   sync.WaitGroup
+	mu     sync.Mutex
+	took   []usage
+	failed error
+}
+
+func (r *readings) add(run func() (usage, error)) {
+	select {
+	case r.room <- struct{}{}:
+	default:
+		return
+	}
+	r.runs.Go(func() {
+		u, err := run()
+		r.mu.Lock()
+		defer r.mu.Unlock()
+		if r.took = append(r.took, u); err != nil {
+			r.failed = err
+		}
+		<-r.room
+	})
 }
 
 // end stops the daemon and gives what it took in all.

@@ -43,15 +43,11 @@ func (d *daemon) readLedger(c *config.Config, v watcher.View, r *health.Report) 
 	if info, err := os.Stat(c.Ledger); err == nil {
 		r.Ledger.Bytes = info.Size()
 	}
-	names, err := v.Names()
+	newest, series, err := d.seen.upTo(v)
 	if err != nil {
 		return
 	}
-	r.Ledger.Series = names.Len()
-	newest, err := d.seen.upTo(v)
-	if err != nil {
-		return
-	}
+	r.Ledger.Series = series
 	for _, f := range c.Feeds {
 		feed := newest[f.Name]
 		feed.Name = f.Name
@@ -75,32 +71,45 @@ func (d *daemon) readLedger(c *config.Config, v watcher.View, r *health.Report) 
 	}) == nil
 }
 
-// feedsSeen keeps the newest accepted file of each feed, so that each answer reads only the steps since the one before.
+// feedsSeen keeps the newest accepted file of each feed and the number of series, so that an answer reads only the steps since the one
+// before.
 type feedsSeen struct {
 	mu     sync.Mutex
 	step   uint32
 	newest map[string]health.Feed
+	series int
 }
 
-func (s *feedsSeen) upTo(v watcher.View) (map[string]health.Feed, error) {
+func (s *feedsSeen) upTo(v watcher.View) (newest map[string]health.Feed, series int, err error) {
 	s.mu.Lock()
 	defer s.mu.Unlock()
-	if s.newest == nil {
-		s.newest = map[string]health.Feed{}
-		s.step = v.Step()
-		if err := v.Files(func(f watcher.FileRow) bool { s.see(f); return true }); err != nil {
+	if s.newest == nil || s.step < v.Step() {
+		if err := s.read(v); err != nil {
 			s.newest = nil
-			return nil, err
+			return nil, 0, err
 		}
+	}
+	return maps.Clone(s.newest), s.series, nil
+}
+
+func (s *feedsSeen) read(v watcher.View) error {
+	names, err := v.Names()
+	if err != nil {
+		return err
+	}
+	s.series = names.Len()
+	if s.newest == nil {
+		s.newest, s.step = map[string]health.Feed{}, v.Step()
+		return v.Files(func(f watcher.FileRow) bool { s.see(f); return true })
 	}
 	for ; s.step < v.Step(); s.step++ {
 		f, err := v.File(s.step + 1)
 		if err != nil {
-			return nil, err
+			return err
 		}
 		s.see(f)
 	}
-	return maps.Clone(s.newest), nil
+	return nil
 }
 
 func (s *feedsSeen) see(f watcher.FileRow) {
