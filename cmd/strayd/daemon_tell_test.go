@@ -282,16 +282,21 @@ func TestDaemonFailedPass(t *testing.T) {
 	d.stop()
 }
 
-// A slot of the schedule's own, on the real clock.
+// A slot of the schedule's own, on the real clock. It waits beside other tests, so that its sockets' folder is for its daemon alone.
 func TestDaemonSlot(t *testing.T) {
 	if testing.Short() {
 		t.Skip("waits for the next minute")
 	}
-	socketFolder(t)
+	t.Parallel()
+	dir, err := os.MkdirTemp("", "sd")
+	if err != nil {
+		t.Fatal(err)
+	}
+	t.Cleanup(func() { os.RemoveAll(dir) })
 	s := newChatService(t)
 	f := deskFolder(t, "desk")
 	f.configure(strings.Replace(deskConfig("desk"), `"0 3 1 1 *"`, `"* * * * *", settle: 1s`, 1))
-	d := f.daemon(s.env()...)
+	d := f.daemon(append(s.env(), "RUNTIME_DIRECTORY="+dir)...)
 	f.write("inbox/a.csv", csvDays([]string{"fund"}, 0, 30, map[string]float64{"fund": 0.2}))
 	until(t, "the breach is told", func() bool { return len(s.in(channelID("desk"))) == 1 })
 	d.stop()
