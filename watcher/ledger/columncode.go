@@ -105,7 +105,7 @@ func appendColumn(dst []byte, c *watcher.Column) []byte {
 	} else {
 		dst = appendDense(dst, c)
 	}
-	return lines.append(dst, c)
+	return lines.append(dst)
 }
 
 func missing(c *watcher.Column) (n int) {
@@ -226,6 +226,7 @@ func bitsAt(b []byte, i, width int) uint32 {
 
 // linePlan is how the lines of a column are stored.
 type linePlan struct {
+	lines         []uint32 // of the present cells; nil when first and stride say it all
 	first, stride uint32
 	width         int
 	summed        bool
@@ -236,7 +237,7 @@ func measure(c *watcher.Column, present int) linePlan {
 	if c.Lines.At == nil || present == 0 {
 		return linePlan{first: c.Lines.First, stride: c.Lines.Stride}
 	}
-	lines := presentLines(c)
+	lines := presentLines(c, present)
 	low, high := lines[0], lines[0]
 	least, most := uint32(1<<32-1), uint32(0)
 	rising := true
@@ -245,19 +246,22 @@ func measure(c *watcher.Column, present int) linePlan {
 		rising = rising && v >= lines[i]
 		least, most = min(least, v-lines[i]), max(most, v-lines[i])
 	}
-	flat := linePlan{first: low, width: bits.Len32(high - low)}
+	flat := linePlan{lines: lines, first: low, width: bits.Len32(high - low)}
 	if !rising || len(lines) == 1 {
 		return flat
 	}
-	steps := linePlan{first: lines[0], stride: least, width: bits.Len32(most - least), summed: most > least}
+	steps := linePlan{lines: lines, first: lines[0], stride: least, width: bits.Len32(most - least), summed: most > least}
 	if flat.width < steps.width {
 		return flat
 	}
 	return steps
 }
 
-func presentLines(c *watcher.Column) []uint32 {
-	lines := make([]uint32, 0, c.Len())
+func presentLines(c *watcher.Column, present int) []uint32 {
+	if present == c.Len() {
+		return c.Lines.At[:present]
+	}
+	lines := make([]uint32, 0, present)
 	for i := range c.Len() {
 		if has(c, i) {
 			lines = append(lines, c.Line(i))
@@ -266,13 +270,13 @@ func presentLines(c *watcher.Column) []uint32 {
 	return lines
 }
 
-func (p linePlan) append(dst []byte, c *watcher.Column) []byte {
+func (p linePlan) append(dst []byte) []byte {
 	if p.width == 0 {
 		return dst
 	}
 	var word uint64
 	used, last := 0, p.first-p.stride
-	for _, line := range presentLines(c) {
+	for _, line := range p.lines {
 		v := line - p.first
 		if p.summed {
 			v, last = line-last-p.stride, line

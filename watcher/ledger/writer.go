@@ -172,7 +172,7 @@ func (w *writer) spill() error {
 // are a share of the batch.
 func (w *writer) collect() {
 	w.garbage += int64(len(w.l.arena) + 3*w.pending)
-	if w.garbage >= w.coming/8 {
+	if w.garbage >= w.coming/16 {
 		runtime.GC()
 		w.garbage = 0
 	}
