@@ -30,6 +30,7 @@ var topFolders = []string{"cmd", "config", "notify", "rules", "stats", "testdata
 var mayImport = map[string][]string{
 	"stats":     nil,
 	"rules":     {"stats"},
+	"rules/*":   {"rules", "stats"},
 	"watcher":   {"rules", "stats"},
 	"notify":    {"rules", "stats"},
 	"config":    {"rules", "stats"},

@@ -1,0 +1,120 @@
+// Package causes weighs what may lie behind a value that does not fit: a wrong scale, a lost sign, a value sent twice, a missed
+// distribution, a move of the whole market, or something that happened.
+//
+// A Pool holds the series that are judged together, with their references and currencies, and goes forward one date at a time. What it
+// says of a date depends on the values of that date and on the Memory dates before it, on nothing else: a pool that is made anew and led
+// through the last Memory dates says the same.
+package causes
+
+import "strayd/rules"
+
+// Memory is how many of the newest dates a pool's state depends on.
+const Memory = 500
+
+// Member is one series of a pool. Benchmarks and currencies are members too.
+type Member struct {
+	ID        string
+	Group     int // index into the names of groups, -1 for none
+	Reference Reference
+	FX        int           // the member whose return is that of the foreign currency in the base, -1 for none
+	Events    []rules.Event // of this series, by date
+}
+
+// Reference is what a member's residual is taken against.
+type Reference struct {
+	Kind   ReferenceKind
+	Series int // the member, for Series
+}
+
+// ReferenceKind says where a reference comes from.
+type ReferenceKind uint8
+
+const (
+	None   ReferenceKind = iota
+	Series               // another member
+	Peers                // the median of the group without the member itself
+)
+
+// Day is the values of one date.
+type Day struct {
+	Date   rules.Date
+	Values []rules.Units // by member; rules.Missing where there is none
+	// Known says what was concluded of values of this date before: for dates that are gone through again, and after decisions. A pool
+	// takes it over instead of its own conclusion.
+	Known []Known
+}
+
+// Known is what was concluded of one value.
+type Known struct {
+	Member int
+	Use    Use
+	Value  rules.Units // for Instead
+}
+
+// Use is how a value enters the windows of a pool.
+type Use uint8
+
+const (
+	AsIs    Use = iota // in full: nothing was flagged, or somebody decided that it is genuine
+	Clipped            // flagged and undecided
+	Out                // an error without a value, or one that more than half speaks for
+	Instead            // corrected to another value
+)
+
+// Result is what a pool says of one date.
+type Result struct {
+	Views   []View        // of the members whose value is not plainly ordinary, by member
+	Earlier []View        // what this date settles about a value of the date before, such as a spike that is reversed now
+	Markets []Market      // common moves, by group
+	Wrong   []WrongSeries // references that do not fit the series which are held against them
+	Shifted []int         // members whose values belong to another date, together: a whole file is a day off
+}
+
+// View is what a pool says of one value. Figures of the reference are absent where there is none.
+type View struct {
+	Member          int
+	Date            rules.Date
+	Kind            rules.Kind    // doubtful, stale or repeat where the posterior lies beyond its line, else ""
+	Causes          []rules.Share // the most probable first
+	LooksLike       rules.Cause   // that which holds more than half, "" for none
+	Share           float64       // of LooksLike
+	Implied         rules.Num     // by LooksLike
+	Out             bool          // an error holds more than half: the windows leave the value out
+	LogOdds, Line   float64       // of an error against anything else, and where doubt begins
+	Reference       string        // id of the benchmark, or "peers"
+	ReferenceReturn rules.Num
+	Residual        rules.Num // return less what the reference foresees
+	Deviation       rules.Num // of the residual
+	Explained       bool      // beyond its own range, and the reference foresees it
+}
+
+// Market is a common move of a group.
+type Market struct {
+	Group     int
+	Median    float64 // return, of the members that have a value
+	MedianZ   float64 // of |z| under each member's own past
+	Reporting int     // members with a value
+	NotMoved  []int   // members that did not take part
+}
+
+// WrongSeries is a reference that its followers agree is wrong.
+type WrongSeries struct {
+	Member    int
+	Followers int       // how many were held against it
+	Implied   rules.Num // what they imply for it
+}
+
+// Pool is the state of series that are judged together.
+type Pool struct {
+	members  []Member
+	groups   []string
+	doubtful float64
+}
+
+// NewPool makes an empty pool. doubtful is the share of ordinary values that may be flagged doubtful, stale or repeat, together.
+func NewPool(members []Member, groups []string, doubtful float64) *Pool {
+	return &Pool{members: members, groups: groups, doubtful: doubtful}
+}
+
+// Step judges a date, later than every one before, and takes it into the state.
+func (p *Pool) Step(d Day) *Result { return &Result{} }
