@@ -74,9 +74,16 @@ type Flag struct {
 	Z        Num
 	Tail     Num
 	Log10    Num
-	Standing Standing
-	Feed     string
-	File     string
-	Line     uint32 // 0 where there is none
-	Note     string
+	// What it looks like, and what its reference says. The share and the implied return are of LooksLike.
+	LooksLike       Cause
+	Share           Num
+	Implied         Num
+	Reference       string // id of the benchmark, or "peers"; "" for none
+	ReferenceReturn Num
+	Residual        Num
+	Standing        Standing
+	Feed            string
+	File            string
+	Line            uint32 // 0 where there is none
+	Note            string
 }

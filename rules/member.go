@@ -54,18 +54,49 @@ type Settings struct {
 	// Assigned is the group of each series that the register puts into one: part of the settings, so that a verdict of the past
 	// is explained by the groups of then.
 	Assigned map[string]string `json:",omitempty"`
+	// References names the reference of each series of which the register names one: a series, "peers" or "none".
+	References map[string]string `json:",omitempty"`
+	// Currencies names for a series the one whose return is that of its foreign currency.
+	Currencies map[string]string `json:",omitempty"`
+	// Lives says from when to when a series is expected, where the register does.
+	Lives  map[string]Life `json:",omitempty"`
+	Events []Event         `json:",omitempty"`
 }
+
+// Register takes over what the register says of its series.
+func (s *Settings) Register(register []Series) {
+	s.Assigned, s.References, s.Currencies, s.Lives = map[string]string{}, map[string]string{}, map[string]string{}, map[string]Life{}
+	set := func(m map[string]string, id, value string) {
+		if value != "" {
+			m[id] = value
+		}
+	}
+	for _, r := range register {
+		set(s.Assigned, r.ID, r.Group)
+		set(s.References, r.ID, r.Reference)
+		set(s.Currencies, r.ID, r.FX)
+		if r.Start != NoDate || r.End != NoDate {
+			s.Lives[r.ID] = Life{r.Start, r.End}
+		}
+	}
+}
+
+// Life is the first and the last date on which a series is expected, NoDate where it is open.
+type Life struct{ Start, End Date }
 
 // Membership answers, for a series id, its group and the ranges that judge it.
 type Membership struct {
 	groups   []memberGroup
 	register map[string]string // id to group, where the register names one
 	ranges   []memberRange
+
+	references, currencies map[string]string
 }
 
 type memberGroup struct {
-	name string
-	of   []Pattern
+	name      string
+	of        []Pattern
+	reference string
 }
 
 type memberRange struct {
@@ -83,10 +114,10 @@ func NewMembership(s *Settings) (*Membership, error) {
 		if err != nil {
 			return nil, err
 		}
-		m.groups = append(m.groups, memberGroup{g.Name, of})
+		m.groups = append(m.groups, memberGroup{g.Name, of, g.Reference})
 		names[g.Name] = true
 	}
-	m.register = s.Assigned
+	m.register, m.references, m.currencies = s.Assigned, s.References, s.Currencies
 	for _, group := range s.Assigned {
 		names[group] = true
 	}
@@ -131,7 +162,7 @@ func (m *Membership) Universal() bool {
 }
 
 // Groupless says that no series has a group.
-func (m *Membership) Groupless() bool { return len(m.groups) == 0 && m.register == nil }
+func (m *Membership) Groupless() bool { return len(m.groups)+len(m.register) == 0 }
 
 // Group is the group of a series: the register's where it names one, else the first whose patterns fit, else "".
 func (m *Membership) Group(id string) string {
@@ -145,6 +176,41 @@ func (m *Membership) Group(id string) string {
 	}
 	return ""
 }
+
+// The words for a reference that is not a series.
+const (
+	PeersReference = "peers" // the median of the group without the series itself
+	NoReference    = "none"
+)
+
+// Reference is what the residual of a series of the given group is taken against: the id of another series, PeersReference, or "" for
+// none.
+func (m *Membership) Reference(id, group string) string {
+	r, ok := m.references[id]
+	for i := 0; !ok && group != "" && i < len(m.groups); i++ {
+		if m.groups[i].name == group {
+			r, ok = m.groups[i].reference, true
+		}
+	}
+	if !ok && group != "" { // a group that only the register names
+		r = PeersReference
+	}
+	if r == NoReference || r == id || r == PeersReference && group == "" {
+		return ""
+	}
+	return r
+}
+
+// Currency is the series whose return is that of a series' foreign currency, "" for none.
+func (m *Membership) Currency(id string) string {
+	if c := m.currencies[id]; c != id {
+		return c
+	}
+	return ""
+}
+
+// Lone says that no series has a group, a reference or a currency.
+func (m *Membership) Lone() bool { return m.Groupless() && len(m.references)+len(m.currencies) == 0 }
 
 // Applies says whether the range at an index of the settings judges a series of the given group.
 func (m *Membership) Applies(rangeIndex int, id, group string) bool {

@@ -1,6 +1,7 @@
 package rules
 
 import (
+	"cmp"
 	"crypto/sha256"
 	"encoding/json"
 	"fmt"
@@ -18,7 +19,12 @@ func (s *Settings) Text() []byte {
 	for _, g := range s.Groups {
 		c.Groups = append(c.Groups, Group{Name: g.Name, Series: ordered(g.Series), Reference: g.Reference})
 	}
+	c.Events = slices.SortedFunc(slices.Values(s.Events), compareEvents)
 	return encode(c)
+}
+
+func compareEvents(a, b Event) int {
+	return cmp.Or(cmp.Compare(a.Date, b.Date), cmp.Compare(a.Series, b.Series), cmp.Compare(a.Kind, b.Kind), cmp.Compare(a.Amount, b.Amount))
 }
 
 // canonical leaves out what a range does not use.

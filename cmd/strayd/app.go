@@ -108,6 +108,11 @@ func (a *app) reading(do func(c *config.Config, v watcher.View) error) error {
 // settings are what decides verdicts, from the configuration and its register, and the owners that the register names by series.
 func settings(c *config.Config) (s rules.Settings, owners map[string]string, err error) {
 	s = c.Settings()
+	if c.Events != "" {
+		if s.Events, err = feed.ReadEvents(c.Events); err != nil {
+			return s, nil, err
+		}
+	}
 	if c.Series == "" {
 		return s, nil, nil
 	}
@@ -115,15 +120,13 @@ func settings(c *config.Config) (s rules.Settings, owners map[string]string, err
 	if err != nil {
 		return s, nil, err
 	}
-	s.Assigned, owners = map[string]string{}, map[string]string{}
+	owners = map[string]string{}
 	for _, r := range register {
-		if r.Group != "" {
-			s.Assigned[r.ID] = r.Group
-		}
 		if r.Owner != "" {
 			owners[r.ID] = r.Owner
 		}
 	}
+	s.Register(register)
 	return s, owners, nil
 }
 

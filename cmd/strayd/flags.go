@@ -166,8 +166,8 @@ func flagCells(g *rules.Flag) []cell {
 		line = integer(g.Line)
 	}
 	return []cell{text(fmt.Sprint(g.Ref)), moment(g.RaisedAt), date(g.Date), text(g.Series), text(g.Group), text(string(g.Kind)), text(g.Range),
-		units(g.Return), number(g.Low), number(g.High), number(g.Z), number(g.Tail), null, null, null, null, null, null,
-		text(string(g.Standing)), null, text(g.Feed), text(g.File), line, text(g.Note)}
+		units(g.Return), number(g.Low), number(g.High), number(g.Z), number(g.Tail), text(g.Reference), number(g.ReferenceReturn),
+		number(g.Residual), text(string(g.LooksLike)), number(g.Share), number(g.Implied), text(string(g.Standing)), null, text(g.Feed), text(g.File), line, text(g.Note)}
 }
 
 // flagTable prints flags as the desk reads them, newest date last, and says how many there are. blocked becomes true when one of

@@ -39,6 +39,9 @@ const (
 type Day struct {
 	Date   rules.Date
 	Values []rules.Units // by member; rules.Missing where there is none
+	// Fresh says by member which values are judged now; nil for all. The others are gone through once more: they enter the state as Known
+	// says, in full where it says nothing, and need no view.
+	Fresh []bool
 	// Known says what was concluded of values of this date before: for dates that are gone through again, and after decisions. A pool
 	// takes it over instead of its own conclusion.
 	Known []Known
@@ -63,11 +66,14 @@ const (
 
 // Result is what a pool says of one date.
 type Result struct {
-	Views   []View        // of the members whose value is not plainly ordinary, by member
-	Earlier []View        // what this date settles about a value of the date before, such as a spike that is reversed now
-	Markets []Market      // common moves, by group
-	Wrong   []WrongSeries // references that do not fit the series which are held against them
-	Shifted []int         // members whose values belong to another date, together: a whole file is a day off
+	Views []View // of the members whose value is not plainly ordinary, by member
+	// Foreseen is by member what its reference foresees of the return, by what was known before the date and the reference's value on it;
+	// absent where there is none. It is there for every member that has a reference, whatever its own value.
+	Foreseen []rules.Num
+	Earlier  []View        // what this date settles about a value of the date before, such as a spike that is reversed now
+	Markets  []Market      // common moves, by group
+	Wrong    []WrongSeries // references that do not fit the series which are held against them
+	Shifted  []int         // members whose values belong to another date, together: a whole file is a day off
 }
 
 // View is what a pool says of one value. Figures of the reference are absent where there is none.
@@ -80,6 +86,7 @@ type View struct {
 	Share           float64       // of LooksLike
 	Implied         rules.Num     // by LooksLike
 	Out             bool          // an error holds more than half: the windows leave the value out
+	Use             Use           // how the pool's own windows take it; what is not AsIs comes back as Known when the date is gone through again
 	LogOdds, Line   float64       // of an error against anything else, and where doubt begins
 	Reference       string        // id of the benchmark, or "peers"
 	ReferenceReturn rules.Num

@@ -17,6 +17,12 @@ const (
 	flagReceived // raised when the file was received
 	flagLine
 	flagNote
+	flagLooksLike
+	flagShare
+	flagImplied
+	flagReference
+	flagReferenceReturn
+	flagResidual
 )
 
 // flagRow is a flag as stored. With the bits flagOwnFile and flagReceived, feed, file and time stand in the file row.
@@ -34,22 +40,50 @@ func rowOf(flag *rules.Flag, series uint32, step uint32, f *watcher.FileRow) fla
 			r.bits |= bit
 		}
 	}
-	set(flagLow, flag.Low.OK)
-	set(flagHigh, flag.High.OK)
-	set(flagZ, flag.Z.OK)
-	set(flagTail, flag.Tail.OK)
-	set(flagLog10, flag.Log10.OK)
+	for _, n := range append(figures(flag), weights(flag)...) {
+		set(n.bit, n.num.OK)
+	}
 	set(flagReturn, flag.Return != rules.Missing)
 	own := flag.Step == step && f.Outcome != ""
 	set(flagOwnFile, own && flag.Feed == f.File.Feed && flag.File == f.File.Name)
 	set(flagReceived, own && nanos(flag.RaisedAt) == nanos(f.Received))
 	set(flagLine, flag.Line != 0)
 	set(flagNote, flag.Note != "")
+	set(flagLooksLike, flag.LooksLike != "")
+	set(flagReference, flag.Reference != "")
 	return r
 }
 
-func nums(f *rules.Flag) []*rules.Num {
-	return []*rules.Num{&f.Low, &f.High, &f.Z, &f.Tail, &f.Log10}
+// figure is a number of a flag that may be absent, with its bit.
+type figure struct {
+	bit uint64
+	num *rules.Num
+}
+
+// figures are the numbers that a range gives.
+func figures(f *rules.Flag) []figure {
+	return []figure{{flagLow, &f.Low}, {flagHigh, &f.High}, {flagZ, &f.Z}, {flagTail, &f.Tail}, {flagLog10, &f.Log10}}
+}
+
+// weights are the numbers that the weighing of causes gives.
+func weights(f *rules.Flag) []figure {
+	return []figure{{flagShare, &f.Share}, {flagImplied, &f.Implied}, {flagReferenceReturn, &f.ReferenceReturn}, {flagResidual, &f.Residual}}
+}
+
+func (p *packer) figures(bits uint64, list []figure) {
+	for _, n := range list {
+		if bits&n.bit != 0 {
+			p.float(n.num.V)
+		}
+	}
+}
+
+func (u *unpacker) figures(bits uint64, list []figure) {
+	for _, n := range list {
+		if bits&n.bit != 0 {
+			*n.num = rules.Some(u.float())
+		}
+	}
 }
 
 func packFlag(dst []byte, r *flagRow) []byte {
@@ -62,11 +96,7 @@ func packFlag(dst []byte, r *flagRow) []byte {
 	p.uint(uint64(r.series + 1)) // no series is 0
 	p.text(f.Group)
 	p.text(f.Range)
-	for i, n := range nums(f) {
-		if r.bits>>i&1 == 1 {
-			p.float(n.V)
-		}
-	}
+	p.figures(r.bits, figures(f))
 	if r.bits&flagReturn != 0 {
 		p.int(int64(f.Return))
 	}
@@ -83,6 +113,13 @@ func packFlag(dst []byte, r *flagRow) []byte {
 	if r.bits&flagNote != 0 {
 		p.text(f.Note)
 	}
+	if r.bits&flagLooksLike != 0 {
+		p.byte(byte(indexOf(rules.Causes, f.LooksLike)))
+	}
+	if r.bits&flagReference != 0 {
+		p.text(f.Reference)
+	}
+	p.figures(r.bits, weights(f))
 	return p.b
 }
 
@@ -100,17 +137,31 @@ func unpackFlag(ref uint64, v []byte) (r flagRow, ok bool) {
 	r.series = uint32(u.uint()) - 1
 	f.Group = u.text()
 	f.Range = u.text()
-	for i, n := range nums(f) {
-		if r.bits>>i&1 == 1 {
-			*n = rules.Some(u.float())
-		}
-	}
+	u.figures(r.bits, figures(f))
 	f.Return = rules.Missing
 	if r.bits&flagReturn != 0 {
 		f.Return = rules.Units(u.int())
 	}
 	r.unpackSource(&u)
+	if !r.unpackCause(&u) {
+		return r, false
+	}
 	return r, u.whole()
+}
+
+func (r *flagRow) unpackCause(u *unpacker) (ok bool) {
+	if r.bits&flagLooksLike != 0 {
+		cause := int(u.byte())
+		if cause >= len(rules.Causes) {
+			return false
+		}
+		r.flag.LooksLike = rules.Causes[cause]
+	}
+	if r.bits&flagReference != 0 {
+		r.flag.Reference = u.text()
+	}
+	u.figures(r.bits, weights(&r.flag))
+	return true
 }
 
 func (r *flagRow) unpackSource(u *unpacker) {
