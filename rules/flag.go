@@ -86,4 +86,6 @@ type Flag struct {
 	File            string
 	Line            uint32 // 0 where there is none
 	Note            string
+	Last            *Act // what a person did last about it as it stands, nil when nobody did
+	Decided         *Act // what was decided of it as it stands, nil when nothing is
 }

@@ -247,11 +247,7 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 		copy(used, w.raw)
 		for n := range w.hits {
 			if h := &w.hits[n]; h.flagged {
-				x, ok := rules.UsedValue(l.gauge.Range.Pending, rules.Units(used[h.at]), &h.verdicts[k], h.limits)
-				if !ok {
-					x = rules.Missing
-				}
-				used[h.at] = int64(x)
+				used[h.at] = int64(h.used(l, k, rules.Units(used[h.at])))
 			}
 		}
 		outsize(used)
@@ -259,6 +255,18 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 	w.patch(t, d, l, used, stored, out)
 	l.push(d.date, used)
 	return nil
+}
+
+// used is what a lane's window takes of a flagged value.
+func (h *hit) used(l *lane, k int, x rules.Units) rules.Units {
+	if h.decided != nil {
+		return h.decided.Uses(x)
+	}
+	x, ok := rules.UsedValue(l.gauge.Range.Pending, x, &h.verdicts[k], h.limits)
+	if !ok {
+		return rules.Missing
+	}
+	return x
 }
 
 func (w *worker) hasOutsize(vals []int64) bool {

@@ -156,7 +156,7 @@ func (v *memoryView) newest() map[uint64]*watcher.FlagRow {
 
 func (v *memoryView) Marked(date rules.Date, block uint32) (out []int, _ error) {
 	for _, f := range v.newest() {
-		if f.Date == date && f.SeriesID/watcher.BlockSize == block && slices.Contains(rules.OutOfLine, f.Kind) {
+		if f.Date == date && f.SeriesID/watcher.BlockSize == block && slices.Contains(rules.Concluded, f.Kind) {
 			out = append(out, int(f.SeriesID%watcher.BlockSize))
 		}
 	}

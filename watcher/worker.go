@@ -55,7 +55,8 @@ type worker struct {
 type hit struct {
 	at       int32
 	fresh    bool
-	flagged  bool
+	flagged  bool            // what windows take of it is not simply the value
+	decided  *rules.Act      // what somebody decided of it, nil for nothing
 	verdicts []rules.Verdict // by lane
 	limits   []rules.Limit
 	broken   []int // indexes of limit ranges that it breaks

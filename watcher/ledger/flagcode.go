@@ -1,6 +1,8 @@
 package ledger
 
 import (
+	"slices"
+
 	"strayd/rules"
 	"strayd/watcher"
 )
@@ -23,6 +25,13 @@ const (
 	flagReference
 	flagReferenceReturn
 	flagResidual
+)
+
+// What people did about it has bits of its own.
+const (
+	flagActed   = 1 << (20 + iota) // somebody did something
+	flagDecided                    // something is decided
+	flagDecides                    // the last act is what decided it
 )
 
 // flagRow is a flag as stored. With the bits flagOwnFile and flagReceived, feed, file and time stand in the file row.
@@ -51,6 +60,7 @@ func rowOf(flag *rules.Flag, series uint32, step uint32, f *watcher.FileRow) fla
 	set(flagNote, flag.Note != "")
 	set(flagLooksLike, flag.LooksLike != "")
 	set(flagReference, flag.Reference != "")
+	r.bits |= actBits(flag)
 	return r
 }
 
@@ -120,6 +130,7 @@ func packFlag(dst []byte, r *flagRow) []byte {
 		p.text(f.Reference)
 	}
 	p.figures(r.bits, weights(f))
+	r.packActs(&p)
 	return p.b
 }
 
@@ -146,6 +157,7 @@ func unpackFlag(ref uint64, v []byte) (r flagRow, ok bool) {
 	if !r.unpackCause(&u) {
 		return r, false
 	}
+	r.unpackActs(&u)
 	return r, u.whole()
 }
 
@@ -180,11 +192,7 @@ func (r *flagRow) unpackSource(u *unpacker) {
 	}
 }
 
-// marks says whether a flag of this kind is about a value that is out of line.
+// marks says whether a flag of this kind is about a value itself.
 func marks(kind byte) bool {
-	switch rules.Kinds[kind] {
-	case rules.KindBreach, rules.KindLimit, rules.KindDoubtful, rules.KindStale, rules.KindRepeat:
-		return true
-	}
-	return false
+	return slices.Contains(rules.Concluded, rules.Kinds[kind])
 }

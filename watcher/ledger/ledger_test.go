@@ -276,11 +276,14 @@ func TestFlags(t *testing.T) {
 	}
 	expect(true, open, late, restated)
 	expect(false, open, restated)
-	if marked, err := read(t, l).Marked(7, 0); err != nil || !reflect.DeepEqual(marked, []int{1}) {
+	if marked, err := read(t, l).Marked(7, 0); err != nil || !reflect.DeepEqual(marked, []int{1, 2}) {
 		t.Error(marked, err)
 	}
 	decided := open
 	decided.Standing, decided.Note = rules.Decided, "seen"
+	decided.Last = &rules.Act{Deed: rules.SignOff, Step: 2, By: rules.Person{UID: 1002}, At: noon.Add(time.Minute), Value: rules.Missing, Until: rules.NoDate}
+	decided.Decided = &rules.Act{Deed: rules.Decide, Step: 2, By: rules.Person{UID: 1001, Name: "second"}, At: noon, Conclusion: rules.Corrected, Value: -12,
+		Reason: rules.Unexplained, Note: "said", Override: "why", Until: 9}
 	publish(t, l, &watcher.Batch{Step: 2, File: fileRow(2), Flags: []*watcher.FlagRow{{Flag: decided}}})
 	expect(true, decided, late, restated)
 	expect(false, restated)

@@ -59,7 +59,7 @@ func (w *writer) rows(p *plan) error {
 
 func (w *writer) openFlag(f *watcher.FlagRow) error {
 	key := put64(nil, f.Ref)
-	if !f.Standing.Asks() {
+	if !f.Unfinished() {
 		return w.remove(inOpen, key)
 	}
 	return w.replace(inOpen, key, func(dst []byte) []byte { return dst })

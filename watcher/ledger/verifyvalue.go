@@ -206,7 +206,7 @@ func (c *verifier) indexed(in bucket, key []byte, row *flagRow) error {
 	at := flagAtKey(f.Date, row.series, byte(indexOf(rules.Kinds, f.Kind)), f.Ref)
 	switch in {
 	case inOpen:
-		if !f.Standing.Asks() {
+		if !f.Unfinished() {
 			return malformed(in, key, "the flag asks nothing of anyone")
 		}
 	case inFlagAt:
@@ -230,7 +230,7 @@ func (c *verifier) counted(key []byte, row *flagRow, at []byte) error {
 			return malformed(inFlags, key, "the index of flags does not have it")
 		}
 	}
-	if row.flag.Standing.Asks() {
+	if row.flag.Unfinished() {
 		c.open++
 		if c.v.buckets[inOpen].Get(key[:8]) == nil {
 			return malformed(inFlags, key, "the index of open flags does not have it")
