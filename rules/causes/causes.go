@@ -9,7 +9,7 @@ package causes
 import "strayd/rules"
 
 // Memory is how many of the newest dates a pool's state depends on.
-const Memory = 500
+const Memory = 700
 
 // Member is one series of a pool. Benchmarks and currencies are members too.
 type Member struct {
@@ -110,18 +110,3 @@ type WrongSeries struct {
 	Followers int       // how many were held against it
 	Implied   rules.Num // what they imply for it
 }
-
-// Pool is the state of series that are judged together.
-type Pool struct {
-	members  []Member
-	groups   []string
-	doubtful float64
-}
-
-// NewPool makes an empty pool. doubtful is the share of ordinary values that may be flagged doubtful, stale or repeat, together.
-func NewPool(members []Member, groups []string, doubtful float64) *Pool {
-	return &Pool{members: members, groups: groups, doubtful: doubtful}
-}
-
-// Step judges a date, later than every one before, and takes it into the state.
-func (p *Pool) Step(d Day) *Result { return &Result{} }

@@ -1,0 +1,257 @@
+package causes
+
+import (
+	"math"
+	"slices"
+
+	"strayd/rules"
+)
+
+// Pool is the state of series that are judged together.
+type Pool struct {
+	members  []Member
+	groups   []string
+	doubtful float64
+
+	peers       [][]int // members of each group
+	benchmarks  []int   // members that others are held against
+	followers   map[int][]int
+	isReference []bool
+
+	states []state
+	looks  []look
+	slow   []weighing // of today
+
+	t       int // number of today's date, from 1
+	date    rules.Date
+	before  rules.Date // the date before
+	newWeek bool
+
+	odds []histogram // by group, then of those without one, then of all
+	line []float64
+	lend []lending
+
+	row    []ranked // room for today's work
+	sizes  []float64
+	totals []float64
+	says   []implied
+}
+
+// NewPool makes an empty pool. doubtful is the share of ordinary values that may be flagged doubtful, stale or repeat, together.
+func NewPool(members []Member, groups []string, doubtful float64) *Pool {
+	p := &Pool{members: members, groups: groups, doubtful: doubtful, before: rules.NoDate, date: rules.NoDate, followers: map[int][]int{}}
+	p.peers = make([][]int, len(groups))
+	p.isReference = make([]bool, len(members))
+	p.states, p.looks = make([]state, len(members)), make([]look, len(members))
+	for i, m := range members {
+		p.states[i] = newState()
+		if m.Group >= 0 {
+			p.peers[m.Group] = append(p.peers[m.Group], i)
+		}
+		if m.Reference.Kind == Series {
+			p.followers[m.Reference.Series] = append(p.followers[m.Reference.Series], i)
+			p.isReference[m.Reference.Series] = true
+		}
+		if m.FX >= 0 {
+			p.isReference[m.FX] = true
+		}
+	}
+	for i := range members {
+		if len(p.followers[i]) > 0 {
+			p.benchmarks = append(p.benchmarks, i)
+		}
+	}
+	p.odds = make([]histogram, len(groups)+2)
+	p.line = make([]float64, len(groups)+2)
+	p.lend = make([]lending, len(groups))
+	return p
+}
+
+// Step judges a date, later than every one before, and takes it into the state.
+func (p *Pool) Step(d Day) *Result {
+	r := &Result{}
+	p.open(d)
+	p.references()
+	for i := range p.members {
+		p.refit(i)
+		p.prepare(i)
+	}
+	p.wrongs(r)
+	p.spikes(r)
+	for i := range p.members {
+		if p.plain(i) {
+			p.states[i].chain.broken()
+			continue
+		}
+		p.weigh(i)
+	}
+	p.swaps()
+	p.lines()
+	for k := range p.slow {
+		p.conclude(&p.slow[k], r)
+	}
+	p.markets(r)
+	p.known(d.Known)
+	p.close(d)
+	return r
+}
+
+// open turns to a new date: what is too old is forgotten, today's values are laid out.
+func (p *Pool) open(d Day) {
+	p.t++
+	p.newWeek = p.date == rules.NoDate || weekOf(d.Date) != weekOf(p.date)
+	newMonth := p.date == rules.NoDate || d.Date.Time().Month() != p.date.Time().Month()
+	p.before, p.date = p.date, d.Date
+	p.slow = p.slow[:0]
+	for g := range p.odds {
+		p.odds[g].expire(p.t)
+	}
+	for i := range p.members {
+		st := &p.states[i]
+		st.expire(p.t)
+		st.isOut, st.isWrong = false, false
+		if newMonth {
+			st.sofar = 1
+		}
+		p.looks[i] = look{u: d.Values[i], x: math.NaN()}
+		if u := d.Values[i]; u != rules.Missing {
+			p.looks[i].x, p.looks[i].places = u.Float(), decimals(u)
+		}
+	}
+}
+
+// weekOf numbers weeks that begin on Monday.
+func weekOf(d rules.Date) int { return (int(d) + 1_000_003) / 7 }
+
+// plain says that nothing about a value calls for weighing.
+func (p *Pool) plain(i int) bool {
+	lk, st := &p.looks[i], &p.states[i]
+	if !lk.judged {
+		return true
+	}
+	switch {
+	case st.chain.active, lk.finer, lk.mark != markSeen, p.members[i].FX >= 0, lk.reversal > 0:
+		return false
+	case math.Abs(lk.z) > 2, math.Abs(lk.ownZ) > 2.5:
+		return false
+	case math.Abs(lk.x) < 0.02*(math.Abs(lk.mu)+2*lk.s):
+		return false
+	}
+	for _, e := range p.members[i].Events {
+		if daysApart(e.Date, p.date) >= 0 {
+			return false
+		}
+	}
+	return true
+}
+
+// known takes over what was concluded before.
+func (p *Pool) known(known []Known) {
+	if known == nil {
+		return
+	}
+	for i := range p.states {
+		p.states[i].isOut = false
+	}
+	for _, k := range known {
+		st := &p.states[k.Member]
+		switch k.Use {
+		case Out:
+			st.isOut = true
+		case Instead:
+			p.looks[k.Member].x = k.Value.Float()
+			p.looks[k.Member].replaced = true
+		}
+	}
+}
+
+// close takes today's values into the windows.
+func (p *Pool) close(d Day) {
+	judged := p.odds[:len(p.odds):len(p.odds)]
+	for i := range p.members {
+		st, lk := &p.states[i], &p.looks[i]
+		if h := &st.held; h.is {
+			st.enter(h.t, &h.look, false)
+			h.is = false
+		}
+		st.remember(p.t, d.Values[i], lk.places)
+		if lk.x != lk.x {
+			continue
+		}
+		st.sofar *= 1 + lk.x
+		if lk.judged {
+			judged[p.histogramOf(i)].judged(p.t, 1)
+			judged[len(judged)-1].judged(p.t, 1)
+		}
+		switch {
+		case st.isOut:
+			st.ref[p.t&mask] = lk.m
+		case lk.judged && (math.Abs(lk.z) > 4 || math.Abs(lk.ownZ) > 4):
+			st.held = held{true, p.t, *lk}
+		default:
+			st.enter(p.t, lk, false)
+		}
+	}
+}
+
+func (p *Pool) histogramOf(i int) int {
+	if g := p.members[i].Group; g >= 0 {
+		return g
+	}
+	return len(p.odds) - 2
+}
+
+// lending is what a group lends to members with few values: the medians of its members' variances.
+type lending struct {
+	t         int
+	own, rest float64
+}
+
+func (p *Pool) lends(i int) bool {
+	g := p.members[i].Group
+	return g >= 0 && p.lendingOf(g).own > 0
+}
+
+// lent is the variance of returns or of residuals that a group lends.
+func (p *Pool) lent(i int, rest bool) float64 {
+	g := p.members[i].Group
+	if g < 0 || p.states[i].own.n[2] >= guard {
+		return 0
+	}
+	if rest {
+		return p.lendingOf(g).rest
+	}
+	return p.lendingOf(g).own
+}
+
+func (p *Pool) lendingOf(g int) *lending {
+	l := &p.lend[g]
+	if l.t == p.t {
+		return l
+	}
+	l.t = p.t
+	l.own = p.median(g, func(st *state) *scale { return &st.own })
+	l.rest = p.median(g, func(st *state) *scale { return &st.rest })
+	return l
+}
+
+func (p *Pool) median(g int, of func(*state) *scale) float64 {
+	sizes := p.sizes[:0]
+	for _, i := range p.peers[g] {
+		if s := of(&p.states[i]); s.n[2] >= guard {
+			sizes = append(sizes, s.variance(0))
+		}
+	}
+	p.sizes = sizes
+	if len(sizes) < 3 {
+		return 0
+	}
+	slices.Sort(sizes)
+	return middle(sizes)
+}
+
+// rate is how often something happens to a series.
+func (p *Pool) rate(int) float64 { return 2e-3 }
+
+// bell is the tail of a member.
+func (p *Pool) bell(int) *bell { return &bells[usual] }

@@ -1,0 +1,104 @@
+package causes
+
+import (
+	"math"
+	"slices"
+)
+
+const (
+	slots = 256 // of the rings below: more than the longest window
+	mask  = slots - 1
+
+	span  = 250 // dates that slopes, rates and lines are learnt from
+	guard = 60  // dates behind the scale that values are clipped by
+	long  = 120 // dates of the longest scale
+	short = 20
+)
+
+// Deviations enter the sums as whole numbers of this size, so that adding and dropping are exact. At most 1 in size, 120 squares of
+// 1e16 stay below 2^63.
+const fine = 1e8
+
+// scale follows the deviation of one stream of numbers about 0: returns, or residuals. It goes by dates, so that what it says depends on
+// the last long + guard of them.
+type scale struct {
+	raw    [slots]float64 // by date, NaN where there is none
+	cut    [slots]int64   // clipped, in 1/fine
+	sorted []float64      // |raw| of the last guard dates, ascending
+	n      [3]int         // of the last short, guard and long dates
+	square [3]int64
+}
+
+var boxes = [3]int{short, guard, long}
+
+func newScale() scale {
+	s := scale{sorted: make([]float64, 0, guard+1)}
+	for i := range s.raw {
+		s.raw[i] = math.NaN()
+	}
+	return s
+}
+
+// expire forgets what leaves the windows when date t is about to be judged.
+func (s *scale) expire(t int) {
+	for k, b := range boxes {
+		at := (t - b - 1) & mask
+		if !math.IsNaN(s.raw[at]) {
+			s.n[k]--
+			s.square[k] -= s.cut[at] * s.cut[at]
+		}
+	}
+	if at := (t - guard - 1) & mask; !math.IsNaN(s.raw[at]) {
+		i, _ := slices.BinarySearch(s.sorted, math.Abs(s.raw[at]))
+		s.sorted = slices.Delete(s.sorted, i, i+1)
+	}
+	s.raw[t&mask] = math.NaN()
+}
+
+// take enters the number of date t, clipped to five robust deviations unless it is to count in full. The bound goes by the numbers as
+// they came, so it needs no earlier bound (Hampel 1974, JASA 69:383-393, for the median deviation).
+func (s *scale) take(t int, e, bound float64, full bool) {
+	e = min(max(e, -1), 1)
+	c := e
+	if !full && bound > 0 {
+		c = min(max(e, -bound), bound)
+	}
+	at := t & mask
+	s.raw[at], s.cut[at] = e, int64(math.RoundToEven(c*fine))
+	for k := range boxes {
+		s.n[k]++
+		s.square[k] += s.cut[at] * s.cut[at]
+	}
+	i, _ := slices.BinarySearch(s.sorted, math.Abs(e))
+	s.sorted = slices.Insert(s.sorted, i, math.Abs(e))
+}
+
+// bound is where values are clipped: five times 1.4826 median |e|, 0 for none while there are fewer than ten.
+func (s *scale) bound() float64 {
+	if len(s.sorted) < 10 {
+		return 0
+	}
+	return 5 * 1.4826 * s.sorted[len(s.sorted)/2]
+}
+
+// variance is a mixture of the mean squares over three spans, which follows clusters of volatility without a fit (Corsi 2009, Journal of
+// Financial Econometrics 7:174-196); lent is the variance that a group lends while there are few.
+func (s *scale) variance(lent float64) float64 {
+	var v, weight float64
+	for k := range boxes {
+		if s.n[k] >= 10 || s.n[k] == s.n[2] && s.n[k] > 0 {
+			v += float64(mix[k] * (float64(s.square[k]) / float64(s.n[k])))
+			weight += mix[k]
+		}
+	}
+	if weight == 0 {
+		return lent
+	}
+	v /= weight * fine * fine
+	if n := float64(s.n[2]); n < guard && lent > 0 {
+		v = (float64(n*v) + float64(10*lent)) / (n + 10)
+	}
+	return v
+}
+
+var mix = [3]float64{0.35, 0.35, 0.3}

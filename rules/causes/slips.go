@@ -1,0 +1,176 @@
+package causes
+
+import (
+	"math"
+
+	"strayd/rules"
+)
+
+// factors are the slips of the decimal point: the printed value is factor times the true one.
+var factors = []struct {
+	cause  rules.Cause
+	by     int64
+	digits int
+	prior  float64
+}{
+	{rules.CauseX100, 100, 2, priorX100},
+	{rules.CauseX10000, 10000, 4, priorX10000},
+	{rules.CauseX10, 10, 1, priorX10},
+}
+
+// scales weighs a slipped point and a lost sign. A value may be multiplied after it was rounded to the series' decimals, and then it lies on
+// a coarser grid, or before; each has half the weight. The cell of a value y on a grid of width w has the probability of
+// the true values that are printed so:
+//
+//	after:  P(cell of width w around y/k), y a multiple of k w
+//	before: P(cell of width w/k around y/k)
+func (p *Pool) scales(w *weighing, lk *look, st *state) {
+	b := p.bell(w.member)
+	for _, f := range factors {
+		k := float64(f.by)
+		y := lk.x / k
+		like := 0.5 * lk.width() / k
+		if int(lk.places)+f.digits <= lk.digits {
+			like += 0.5 * lk.tick
+		}
+		p.add(w, f.cause, f.prior, like*b.at((y-lk.mu)/lk.s)/lk.s, rules.Some(y))
+	}
+	y := lk.x * 100
+	p.add(w, rules.CauseDiv100, priorDiv100, p.hundredth(w.member, lk, y), rules.Some(y))
+	p.add(w, rules.CauseSign, priorSign, lk.width()*b.at((-lk.x-lk.mu)/lk.s)/lk.s, rules.Some(-lk.x))
+}
+
+// hundredth is the probability of a printed value y/100: re-rounded to the series' decimals, or with two decimals more.
+func (p *Pool) hundredth(i int, lk *look, y float64) float64 {
+	b := p.bell(i)
+	like := 0.0
+	if !lk.finer {
+		like = 0.5 * b.cell(y, 100*lk.tick, lk.mu, lk.s)
+	}
+	if int(lk.places) <= lk.digits+2 {
+		like += 0.5 * lk.tick * b.at((y-lk.mu)/lk.s) / lk.s
+	}
+	return like
+}
+
+// again weighs yesterday's value sent again, and a zero for a missing value.
+func (p *Pool) again(w *weighing, lk *look, st *state) {
+	switch {
+	case lk.u == 0:
+		p.add(w, rules.CauseZero, priorZero, 1, rules.Num{})
+	case lk.mark&markRepeat != 0:
+		p.add(w, rules.CauseRepeat, priorRepeat, 1, rules.Num{})
+	}
+}
+
+// splits are the usual ratios of new units to old ones, and the inverse for a consolidation.
+var splits = []float64{2, 3, 4, 5, 10, 1.5, 20, 0.5, 1.0 / 3, 0.25, 0.2, 0.1, 0.05}
+
+// least and greatest distribution that is weighed without a calendar, as a share of the net asset value.
+const leastPayout, greatestPayout = 0.002, 0.04
+
+// payouts weighs distributions and splits that the return leaves out, or counts twice.
+func (p *Pool) payouts(w *weighing, lk *look, i int) {
+	for _, e := range p.members[i].Events {
+		off := daysApart(e.Date, p.date)
+		if off < 0 || off > 1 {
+			continue
+		}
+		share := 1.0
+		if off == 1 {
+			share = offByOne
+		}
+		p.listed(w, lk, e, share)
+	}
+	p.unlisted(w, lk)
+}
+
+func (p *Pool) listed(w *weighing, lk *look, e rules.Event, share float64) {
+	switch {
+	case e.Kind == "split" && e.Amount > 0:
+		p.split(w, lk, e.Amount, share*listedSplit)
+	case e.Kind == "distribution":
+		y := lk.x + e.Amount
+		p.add(w, rules.CauseMissed, share*listedMissed, lk.width()*p.fits(w.member, lk, y), rules.Some(y))
+		y = lk.x - e.Amount
+		p.add(w, rules.CauseDoubled, share*listedDoubled, lk.width()*p.fits(w.member, lk, y), rules.Some(y))
+	}
+}
+
+func (p *Pool) split(w *weighing, lk *look, k, prior float64) {
+	y := float64((1+lk.x)*k) - 1
+	p.add(w, rules.CauseSplit, prior, lk.width()*k*p.fits(w.member, lk, y), rules.Some(y))
+}
+
+// unlisted weighs a distribution of unknown size d, with density 1/(d ln(greatest/least)): what is left unexplained is its size.
+func (p *Pool) unlisted(w *weighing, lk *look) {
+	d := lk.mu - lk.x
+	size := math.Abs(d)
+	if size > leastPayout && size < greatestPayout && size > 2*lk.s {
+		like := lk.width() / (size * math.Log(greatestPayout/leastPayout))
+		if d > 0 {
+			p.add(w, rules.CauseMissed, priorMissed, like, rules.Some(lk.mu))
+		} else {
+			p.add(w, rules.CauseDoubled, priorDoubled, like, rules.Some(lk.mu))
+		}
+	}
+	if math.Abs(lk.x) > 0.2 {
+		for _, k := range splits {
+			p.split(w, lk, k, priorSplit)
+		}
+	}
+}
+
+// daysApart is how many business days lie between two dates, -1 for more than one.
+func daysApart(a, b rules.Date) int {
+	if a > b {
+		a, b = b, a
+	}
+	if a == b {
+		return 0
+	}
+	if n := rules.Weekdays(a, b); n <= 1 {
+		return 1
+	}
+	return -1
+}
+
+// currency weighs a currency's return that was left out or applied twice: base = (1 + local)(1 + fx) - 1.
+func (p *Pool) currency(w *weighing, lk *look, i int) {
+	fx := p.members[i].FX
+	if fx < 0 || !(p.looks[fx].x == p.looks[fx].x) || p.states[fx].isOut {
+		return
+	}
+	by := 1 + p.looks[fx].x
+	if by <= 0 {
+		return
+	}
+	y := float64((1+lk.x)*by) - 1
+	p.add(w, rules.CauseFXMissing, priorFX, lk.width()*by*p.fits(i, lk, y), rules.Some(y))
+	y = (1+lk.x)/by - 1
+	p.add(w, rules.CauseFXTwice, priorFX, lk.width()/by*p.fits(i, lk, y), rules.Some(y))
+}
+
+// runs weighs causes that last for days: a return since the start of something instead of since yesterday, and a value of the date before.
+func (p *Pool) runs(w *weighing, lk *look, st *state) {
+	i := w.member
+	like, best, implied := 0.0, 0.0, 0.0
+	for _, base := range []float64{1 + st.printed.Float(), p.month(i)} {
+		if base > 0.2 && base != 1 && st.printed != rules.Missing {
+			y := (1+lk.x)/base - 1
+			l := lk.width() / base * p.fits(i, lk, y) / 2
+			if l > best {
+				best, implied = l, y
+			}
+			like += l
+		}
+	}
+	p.add(w, rules.CauseCumulative, priorCumulative, like, rules.Some(implied))
+	if lk.hasRef && lk.m1 == lk.m1 {
+		mu := st.fit.at(lk.m1, st.ref[(p.t-2)&mask])
+		p.add(w, rules.CauseShifted, priorShifted, lk.width()*p.bell(i).at((lk.x-mu)/lk.s)/lk.s, rules.Num{})
+	}
+}
+
+// month is one plus the return since the month began, up to yesterday.
+func (p *Pool) month(i int) float64 { return p.states[i].sofar }

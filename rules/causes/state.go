@@ -1,0 +1,108 @@
+package causes
+
+import (
+	"math"
+
+	"strayd/rules"
+)
+
+// state is what a pool remembers of one series.
+type state struct {
+	used [slots]float64 // returns as the windows take them, NaN where there is none
+	ref  [slots]float64 // the reference's returns, NaN where there is none
+	mark [slots]uint8   // what a date was: see markZero
+	fit  fit
+	own  scale
+	rest scale
+	grid grid
+
+	zeros, repeats, seen int // within span dates
+
+	printed, before rules.Units // of the last date and the one before it; Missing
+	lastPrinted     rules.Units // the newest value, however old
+	lastAt          int         // its date
+	unchanged       int         // dates in a row with the same value, at most 10
+	sofar           float64     // one plus the return since the month began
+
+	held    held // a value that waits a date before it enters the windows
+	isOut   bool // today's value was concluded to be wrong
+	isWrong bool // by its followers
+
+	chain chain
+}
+
+// marks of a date
+const (
+	markZero = 1 << iota
+	markRepeat
+	markSeen
+)
+
+// held is an extreme value: it enters the windows one date late, so that a spike which the next date takes back never was in them.
+type held struct {
+	is   bool
+	t    int
+	look look
+}
+
+func newState() state {
+	st := state{own: newScale(), rest: newScale(), grid: newGrid(), printed: rules.Missing, before: rules.Missing, lastPrinted: rules.Missing, sofar: 1}
+	for i := range st.used {
+		st.used[i], st.ref[i] = math.NaN(), math.NaN()
+	}
+	return st
+}
+
+// expire forgets what is too old to matter on date t.
+func (st *state) expire(t int) {
+	st.own.expire(t)
+	st.rest.expire(t)
+	st.grid.expire(t)
+	st.count(st.mark[(t-span-1)&mask], -1)
+	at := t & mask
+	st.used[at], st.ref[at], st.mark[at] = math.NaN(), math.NaN(), 0
+}
+
+func (st *state) count(mark uint8, by int) {
+	if mark&markSeen != 0 {
+		st.seen += by
+	}
+	if mark&markZero != 0 {
+		st.zeros += by
+	}
+	if mark&markRepeat != 0 {
+		st.repeats += by
+	}
+}
+
+// enter takes a value into the windows of date t.
+func (st *state) enter(t int, lk *look, full bool) {
+	at := t & mask
+	bound := st.own.bound()
+	x := lk.x
+	st.own.take(t, x, bound, full)
+	if !full && bound > 0 {
+		x = min(max(x, -1.2*bound), 1.2*bound)
+	}
+	st.used[at], st.ref[at] = x, lk.m
+	if lk.hasRef {
+		st.rest.take(t, lk.x-lk.mu, st.rest.bound(), full)
+	}
+	st.mark[at] = lk.mark
+	st.count(lk.mark, 1)
+}
+
+// remember keeps the printed value for tomorrow's comparisons.
+func (st *state) remember(t int, u rules.Units, d uint8) {
+	st.before, st.printed = st.printed, u
+	if u == rules.Missing {
+		return
+	}
+	st.grid.take(t, d)
+	if u == st.lastPrinted {
+		st.unchanged = min(st.unchanged+1, 10)
+	} else {
+		st.unchanged = 0
+	}
+	st.lastPrinted, st.lastAt = u, t
+}

@@ -1,0 +1,124 @@
+package causes
+
+import (
+	"math"
+
+	"strayd/rules"
+)
+
+// Priors: how often a value is wrong in each way, before anything is known of it. They are a judgement from practice, no source: scale and
+// sign slips once in some 3,000 values, a value sent again or left at zero once in 1,000.
+const (
+	priorX100       = 3e-4
+	priorX10000     = 1e-4
+	priorX10        = 1e-4
+	priorDiv100     = 3e-4
+	priorSign       = 3e-4
+	priorRepeat     = 1e-3
+	priorZero       = 1e-3
+	priorSpike      = 3e-4
+	priorMissed     = 2e-4 // without a calendar
+	priorDoubled    = 3e-5
+	priorSplit      = 5e-5
+	priorFX         = 1e-4
+	priorSwap       = 1e-4
+	priorCumulative = 1e-4
+	priorShifted    = 5e-5
+	listedMissed    = 0.05 // on a listed date
+	listedDoubled   = 0.03
+	listedSplit     = 0.2
+	offByOne        = 0.3 // factor of the above a business day beside it
+)
+
+// odd is one way in which a value may not be ordinary.
+type odd struct {
+	cause   rules.Cause
+	weight  float64 // prior x probability of the printed value
+	ratio   float64 // probability over that of an ordinary value
+	implied rules.Num
+	partner int // of a swap
+}
+
+// weighing is a value that is not plainly ordinary, with the causes that compete for it.
+type weighing struct {
+	member   int
+	ordinary float64 // weight
+	genuine  float64
+	odds     []odd
+}
+
+// add enters a cause. like is the probability of the printed value under it.
+func (p *Pool) add(w *weighing, c rules.Cause, prior, like float64, implied rules.Num) {
+	if like <= 0 {
+		return
+	}
+	st := &p.states[w.member]
+	ratio := like / w.ordinary
+	if k := persistent(c); k >= 0 {
+		prior = st.chain.prior(k, prior)
+		st.chain.note(k, ratio)
+	}
+	w.odds = append(w.odds, odd{c, prior * like, ratio, implied, -1})
+}
+
+// weigh lists the causes that may lie behind a member's value, but for those that need the other weighings.
+func (p *Pool) weigh(i int) *weighing {
+	w := p.weighing(i)
+	lk, st := &p.looks[i], &p.states[i]
+	w.ordinary = p.ordinary(i)
+	w.genuine = p.rate(i) * p.genuine(lk)
+	p.scales(w, lk, st)
+	p.again(w, lk, st)
+	p.payouts(w, lk, i)
+	p.currency(w, lk, i)
+	p.runs(w, lk, st)
+	return w
+}
+
+// weighing takes an empty one from the pool's store.
+func (p *Pool) weighing(i int) *weighing {
+	if len(p.slow) < cap(p.slow) {
+		p.slow = p.slow[:len(p.slow)+1]
+	} else {
+		p.slow = append(p.slow, weighing{})
+	}
+	w := &p.slow[len(p.slow)-1]
+	w.member, w.odds = i, w.odds[:0]
+	return w
+}
+
+// fits is the density of a return where the reference foresees it.
+func (p *Pool) fits(i int, lk *look, x float64) float64 {
+	return p.bell(i).at((x-lk.mu)/lk.s) / lk.s
+}
+
+// ordinary is the probability of the printed value on an ordinary day: the cell around it, and the zeros and repeats that the series has
+// beyond chance.
+func (p *Pool) ordinary(i int) float64 {
+	lk, st := &p.looks[i], &p.states[i]
+	like := p.bell(i).cell(lk.x, lk.width(), lk.mu, lk.s)
+	switch {
+	case lk.u == 0:
+		like += beyondChance(st.zeros, st.seen, lk.tick, lk.own)
+	case lk.mark&markRepeat != 0:
+		like += beyondChance(st.repeats, st.seen, lk.tick, lk.own)
+	}
+	return max(like, 1e-300)
+}
+
+// beyondChance is the share of days that have a coincidence beyond what the tick alone brings about, less two deviations of that count.
+// Two draws of a t5 fall into one cell with probability 0.32 tick/deviation, a draw into the cell of zero with 0.49 tick/deviation.
+func beyondChance(count, of int, tick, own float64) float64 {
+	if count < 3 {
+		return 0
+	}
+	chance := float64(of) * min(0.49*tick/own, 1)
+	return max(0, float64(count)-chance-2*math.Sqrt(chance+1)) / float64(of)
+}
+
+// genuine is the probability of the printed value if something happened: half as wide moves of the series' own size, half of its residual.
+func (p *Pool) genuine(lk *look) float64 {
+	b := &bells[heavy]
+	wide, near := 4*lk.own, 4*lk.s
+	return lk.width() * (b.at((lk.x-lk.mu)/wide)/wide + b.at((lk.x-lk.mu)/near)/near) / 2
+}
