@@ -93,6 +93,7 @@ type View struct {
 	Residual        rules.Num // return less what the reference foresees
 	Deviation       rules.Num // of the residual
 	Explained       bool      // beyond its own range, and the reference foresees it
+	Z, OwnZ         float64   // in deviations: of the residual (of the return, without a reference), and of the return
 }
 
 // Market is a common move of a group.

@@ -123,7 +123,7 @@ func explained(lk *look) bool {
 
 // view fills in the figures of the reference.
 func (p *Pool) view(i int, lk *look) View {
-	v := View{Member: i, Date: p.date}
+	v := View{Member: i, Date: p.date, Z: lk.z, OwnZ: lk.ownZ}
 	if !lk.hasRef {
 		return v
 	}
