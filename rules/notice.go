@@ -63,6 +63,15 @@ type FlagNews struct {
 	Window   int   // observations behind the range, 0 where it has none
 	WindowTo Date  // newest of them
 	Used     Units // what the window takes meanwhile, Missing when left out
+	Market   *MarketNews
+	Covered  bool // the notice of a market day of the same news tells of it
+}
+
+// MarketNews is what the message of a market day says beyond its flag, whose return is the median of the group.
+type MarketNews struct {
+	Reporting int      // series with a value
+	MedianZ   float64  // of their distances from their own past, in deviations
+	NotMoved  []string // series that did not take part
 }
 
 // DayNews is what the daily line says.

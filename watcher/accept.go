@@ -83,6 +83,7 @@ func (p *Pass) prepare(j *judging, v View) (err error) {
 			j.limits = append(j.limits, n)
 		}
 	}
+	j.concluded = ids[concludedKey]
 	j.width = p.taskWidth(j.names.Len())
 	return nil
 }
@@ -136,8 +137,19 @@ func (p *Pass) judgeAll(j *judging, blocks []block, b *Batch) ([]outcome, error)
 	}
 	defer v.Close()
 	j.scales = newGroupScales(j, v, blocks)
+	if j.weighed, err = p.weigh(j, v, blocks); err != nil {
+		return nil, err
+	}
 	outs, err := p.runTasks(j, tasks(blocks, j.width, rules.NoDate))
 	if err != nil {
+		return nil, err
+	}
+	concluded, err := j.conclusions(v)
+	if err != nil {
+		return nil, err
+	}
+	b.Used = append(b.Used, concluded...)
+	if b.Flags, err = p.marketFlags(j, v); err != nil {
 		return nil, err
 	}
 	b.Scales, err = j.scales.stored()
@@ -196,7 +208,7 @@ func (p *Pass) assemble(b *Batch, j *judging, outs []outcome) {
 	for _, o := range outs {
 		flags, used = flags+len(o.flags), used+len(o.used)
 	}
-	b.Flags, b.Used = make([]*FlagRow, 0, flags), make([]UsedColumn, 0, used)
+	b.Flags, b.Used = slices.Grow(b.Flags, flags), slices.Grow(b.Used, used)
 	for _, o := range outs {
 		b.File.Counts.Add(o.counts)
 		b.Flags = append(b.Flags, o.flags...)
@@ -235,7 +247,7 @@ func joinUsed(used []UsedColumn) []UsedColumn {
 // history once a newer date has come in within the same pass.
 func (p *Pass) numberFlags(b *Batch, j *judging) {
 	slices.SortFunc(b.Flags, func(x, y *FlagRow) int {
-		return cmp.Or(cmp.Compare(x.Date, y.Date), cmp.Compare(x.SeriesID, y.SeriesID), cmp.Compare(x.Kind, y.Kind))
+		return cmp.Or(cmp.Compare(x.Date, y.Date), cmp.Compare(x.SeriesID, y.SeriesID), cmp.Compare(x.Kind, y.Kind), cmp.Compare(x.Group, y.Group))
 	})
 	ref := j.nextRef
 	for _, f := range b.Flags {
@@ -248,20 +260,38 @@ func (p *Pass) numberFlags(b *Batch, j *judging) {
 			b.File.Counts.Flags++
 		}
 	}
-	kept := p.opened[:0]
-	for _, f := range p.opened {
-		if f.Date >= j.newest {
-			kept = append(kept, f)
-			continue
-		}
-		f.Standing, f.New = rules.OfHistory, false
-		b.Flags = append(b.Flags, f)
-		b.Withdraw = append(b.Withdraw, f.Ref)
-	}
-	p.opened = kept
+	p.age(b, j.newest)
 	for _, f := range b.Flags {
-		if f.New && f.Standing == rules.Open && f.SeriesID != NoSeries && int(f.SeriesID) >= j.firstNames {
+		if f.New && f.Standing == rules.Open && f.First {
 			p.opened = append(p.opened, f)
 		}
 	}
+}
+
+// age turns the flags of first loads on dates before the newest into history.
+func (p *Pass) age(b *Batch, newest rules.Date) {
+	again := map[uint64]*FlagRow{} // rows of this batch that replace an earlier one
+	for _, f := range b.Flags {
+		if !f.New {
+			again[f.Ref] = f
+		}
+	}
+	kept := p.opened[:0]
+	for _, f := range p.opened {
+		if f.Date >= newest {
+			if now := again[f.Ref]; now != nil {
+				f = now
+			}
+			kept = append(kept, f)
+			continue
+		}
+		if now := again[f.Ref]; now != nil {
+			now.Standing = rules.OfHistory
+		} else {
+			f.Standing, f.New = rules.OfHistory, false
+			b.Flags = append(b.Flags, f)
+		}
+		b.Withdraw = append(b.Withdraw, f.Ref)
+	}
+	p.opened = kept
 }

@@ -32,7 +32,11 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 		if err := w.markedHits(t, d, fresh); err != nil {
 			return err
 		}
+		if err := w.outHits(t, d, fresh); err != nil {
+			return err
+		}
 	}
+	w.viewHits(t, d, out)
 	present := count(fresh)
 	for n := range w.hits {
 		w.judge(d.date, &w.hits[n])
@@ -155,7 +159,8 @@ func (w *worker) judge(date rules.Date, h *hit) {
 			h.broken = append(h.broken, n)
 		}
 	}
-	h.flagged = h.flagged || h.fresh && (h.outsize || len(h.broken) > 0)
+	h.flagged = h.flagged || h.fresh && (h.outsize || len(h.broken) > 0 || h.view != nil && h.view.Kind != "")
+	h.flagged = h.flagged && (!h.taken || len(h.broken) > 0)
 }
 
 func (l *lane) judges(i int) bool { return l.applies == nil || l.applies[i] }
@@ -246,7 +251,7 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 		used = l.used[:t.width]
 		copy(used, w.raw)
 		for n := range w.hits {
-			if h := &w.hits[n]; h.flagged {
+			if h := &w.hits[n]; h.flagged || h.out {
 				used[h.at] = int64(h.used(l, k, rules.Units(used[h.at])))
 			}
 		}
@@ -261,6 +266,12 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 func (h *hit) used(l *lane, k int, x rules.Units) rules.Units {
 	if h.decided != nil {
 		return h.decided.Uses(x)
+	}
+	if h.out && l.gauge.Range.Pending != rules.Keep {
+		return rules.Missing
+	}
+	if !h.flagged {
+		return x
 	}
 	x, ok := rules.UsedValue(l.gauge.Range.Pending, x, &h.verdicts[k], h.limits)
 	if !ok {
@@ -304,7 +315,7 @@ func (w *worker) patch(t task, d *day, l *lane, used, stored []int64, out *outco
 func (w *worker) eachFlagged(f func(i int)) {
 	var at []int
 	for n := range w.hits {
-		if w.hits[n].flagged {
+		if w.hits[n].flagged || w.hits[n].out {
 			at = append(at, int(w.hits[n].at))
 		}
 	}

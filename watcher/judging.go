@@ -26,6 +26,8 @@ type judging struct {
 	nextRef    uint64
 	width      int // of the widest task
 	scales     *groupScales
+	concluded  uint16   // number in the ledger of what the pool concluded, 0 where it has none
+	weighed    *weighed // nil where no series of the file is weighed together with others
 }
 
 // heldBefore lists the dates before a date on which a block may hold values, ascending.

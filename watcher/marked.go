@@ -79,7 +79,7 @@ func aboutValue(v View, series uint32, date rules.Date, step uint32) (a about, e
 		if err != nil {
 			return a, err
 		}
-		if !ok || f.Step != step {
+		if !ok || f.Step < step {
 			continue
 		}
 		a.flags = append(a.flags, f)

@@ -7,6 +7,7 @@ import (
 	"time"
 
 	"strayd/rules"
+	"strayd/rules/causes"
 )
 
 // Pass is one run over one or all feeds. Fill in the fields and call Run once.
@@ -35,6 +36,9 @@ type Pass struct {
 	newest     rules.Date // newest date of the files taken so far
 	opened     []*FlagRow // open flags of first loads, which become history when a newer date comes in
 	row        PassRow
+	led        *leader // that of the step before
+
+	newWeigher func([]causes.Member, []string, float64) weigher // nil for the real one
 }
 
 // FileReport is what became of one file in a pass.

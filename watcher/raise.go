@@ -2,6 +2,7 @@ package watcher
 
 import (
 	"fmt"
+	"slices"
 
 	"strayd/rules"
 )
@@ -17,22 +18,42 @@ func (w *worker) raise(t task, d *day, fresh []int64, out *outcome) {
 		if !h.fresh {
 			continue
 		}
+		var raised []rules.Kind
 		restated := d.restated(t, h)
-		if k := worst(h.verdicts); k >= 0 {
-			f := w.blank(t, d, int(h.at))
-			w.fillBreach(f, w.lanes[k], h, &h.verdicts[k])
+		for _, f := range w.flagsOf(t, d, h) {
+			w.fillView(f, d.date, h.view)
 			w.keep(f, restated, out)
-		} else if restated {
-			w.amend(w.blank(t, d, int(h.at)), rules.KindBreach, out)
+			raised = append(raised, f.Kind)
 		}
-		if len(h.broken) > 0 || h.outsize {
-			f := w.blank(t, d, int(h.at))
-			w.fillLimit(f, h)
-			w.keep(f, restated, out)
-		} else if restated {
-			w.amend(w.blank(t, d, int(h.at)), rules.KindLimit, out)
+		if !restated {
+			continue
+		}
+		for _, kind := range rules.OutOfLine {
+			if !slices.Contains(raised, kind) {
+				w.amend(w.blank(t, d, int(h.at)), kind, out)
+			}
 		}
 	}
+}
+
+// flagsOf makes the flags of a hit: breach and limit, or, where it is neither, what the pool finds doubtful.
+func (w *worker) flagsOf(t task, d *day, h *hit) (flags []*FlagRow) {
+	if k := worst(h.verdicts); k >= 0 && !h.taken {
+		f := w.blank(t, d, int(h.at))
+		w.fillBreach(f, k, h)
+		flags = append(flags, f)
+	}
+	if len(h.broken) > 0 || h.outsize {
+		f := w.blank(t, d, int(h.at))
+		w.fillLimit(f, h)
+		flags = append(flags, f)
+	}
+	if len(flags) == 0 && !h.taken && h.view != nil && h.view.Kind != "" {
+		f := w.blank(t, d, int(h.at))
+		w.fillDoubt(f, h)
+		flags = append(flags, f)
+	}
+	return flags
 }
 
 func (d *day) restated(t task, h *hit) bool {
@@ -114,7 +135,8 @@ func (w *worker) blank(t task, d *day, i int) *FlagRow {
 	f.Feed, f.File = w.j.file.Feed, w.j.file.Name
 	f.Line = d.col.Line(t.from + i)
 	f.Standing = rules.Open
-	if int(id) >= w.j.firstNames && d.date < w.j.newest {
+	f.First = int(id) >= w.j.firstNames
+	if f.First && d.date < w.j.newest {
 		f.Standing = rules.OfHistory
 	}
 	return f
@@ -130,13 +152,19 @@ func (w *worker) newFlag() *FlagRow {
 	return f
 }
 
-func (w *worker) fillBreach(f *FlagRow, l *lane, h *hit, v *rules.Verdict) {
-	r := &l.gauge.Range
-	f.Kind, f.Range = rules.KindBreach, r.Name
+func (w *worker) fillBreach(f *FlagRow, k int, h *hit) {
+	f.Kind = rules.KindBreach
+	w.fillLines(f, k, h)
+}
+
+// fillLines notes on a flag what a range expected.
+func (w *worker) fillLines(f *FlagRow, k int, h *hit) {
+	l, v := w.lanes[k], &h.verdicts[k]
+	f.Range = l.gauge.Range.Name
 	f.Low, f.High, f.Z, f.Tail, f.Log10 = v.Low, v.High, v.Z, v.Tail, v.Log10
 	f.Note = v.Why
 	f.Window, f.WindowTo = v.N, l.last[h.at]
-	f.Used, _ = rules.UsedValue(r.Pending, f.Return, v, h.limits)
+	f.Used = h.used(l, k, f.Return)
 }
 
 func (w *worker) fillLimit(f *FlagRow, h *hit) {

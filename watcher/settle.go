@@ -54,6 +54,10 @@ func (p *Pass) newRanges(v View, recorded *rules.Settings) (unknown, again []Ran
 	if err != nil {
 		return nil, nil, err
 	}
+	if known[concludedKey] == 0 {
+		known[concludedKey] = uint16(len(known) + 1)
+		unknown = append(unknown, RangeKey{known[concludedKey], concludedKey})
+	}
 	kept := map[string]bool{}
 	for n := range recorded.Ranges {
 		if key := recorded.Identity(n); known[key] != 0 { // another version of the program may have written it otherwise

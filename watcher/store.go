@@ -149,7 +149,11 @@ type FlagRow struct {
 	SeriesID uint32 // NoSeries when the flag is not about one series
 	New      bool
 
+	// Of a first load: an open one becomes history once a newer date comes in within the same pass. Not stored.
+	First bool
+
 	// For the message only; not stored.
+	Market   *rules.MarketNews
 	Window   int         // observations behind the range
 	WindowTo rules.Date  // newest of them
 	Used     rules.Units // what the window takes meanwhile

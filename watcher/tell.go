@@ -10,9 +10,10 @@ func (p *Pass) tell(b *Batch, series int) {
 	news := rules.News{At: p.Now, Feed: b.File.File.Feed, File: b.File.File.Name, Rows: b.File.Counts.Rows, Series: series}
 	for _, f := range b.Flags {
 		if f.Step == b.Step && f.Standing.Asks() {
-			news.Flags = append(news.Flags, rules.FlagNews{Flag: f.Flag, Window: f.Window, WindowTo: f.WindowTo, Used: f.Used})
+			news.Flags = append(news.Flags, rules.FlagNews{Flag: f.Flag, Window: f.Window, WindowTo: f.WindowTo, Used: f.Used, Market: f.Market})
 		}
 	}
+	cover(news.Flags)
 	if len(news.Flags) > 0 {
 		b.Notices = p.Tell(news)
 	}
@@ -24,4 +25,18 @@ func newestSeries(s *Sheet) (n int) {
 		n += s.Columns[i].rank(s.Columns[i].Len())
 	}
 	return n
+}
+
+// cover marks the breaches that a market day of the same news explains.
+func cover(flags []rules.FlagNews) {
+	market := map[groupDay]bool{}
+	for n := range flags {
+		if f := &flags[n]; f.Kind == rules.KindMarketDay {
+			market[groupDay{f.Group, f.Date}] = true
+		}
+	}
+	for n := range flags {
+		f := &flags[n]
+		f.Covered = f.Kind == rules.KindBreach && f.LooksLike == rules.CauseMarket && market[groupDay{f.Group, f.Date}]
+	}
 }

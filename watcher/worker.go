@@ -4,6 +4,7 @@ import (
 	"slices"
 
 	"strayd/rules"
+	"strayd/rules/causes"
 )
 
 // task is a run of neighbouring series of one block, with the days that a file changes for its block.
@@ -56,6 +57,9 @@ type hit struct {
 	at       int32
 	fresh    bool
 	flagged  bool            // what windows take of it is not simply the value
+	out      bool            // an error holds more than half: windows leave it out
+	taken    bool            // it takes back a flagged value of the date before, and raises no flag of its own
+	view     *causes.View    // what the pool says of it, nil for nothing
 	decided  *rules.Act      // what somebody decided of it, nil for nothing
 	verdicts []rules.Verdict // by lane
 	limits   []rules.Limit

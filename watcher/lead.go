@@ -1,0 +1,277 @@
+package watcher
+
+import (
+	"cmp"
+	"slices"
+
+	"strayd/rules"
+	"strayd/rules/causes"
+)
+
+// concludedKey names what the ledger keeps of the pool's conclusions, as a range of its own: for every value that its windows do not take
+// as it is, the use.
+const concludedKey = "conclusions"
+
+// weighed is what was said of the values that a file changes. It is only read while values are judged.
+type weighed struct {
+	crew *crew
+	days map[rules.Date]*weighedDay
+}
+
+// weighedDay is a date on which a file changes the value of a member.
+type weighedDay struct {
+	*causes.Result
+	fresh []bool // by member
+}
+
+// view is what was said of a member on a date, nil for nothing.
+func (d *weighedDay) view(member int32) *causes.View {
+	n, ok := slices.BinarySearchFunc(d.Views, int(member), func(v causes.View, m int) int { return cmp.Compare(v.Member, m) })
+	if !ok {
+		return nil
+	}
+	return &d.Views[n]
+}
+
+// leader leads a pool through the dates, from the ledger and a file on top of it.
+type leader struct {
+	crew *crew
+	pool weigher
+	upto rules.Date // the newest date that it went through
+
+	j      *judging
+	view   View
+	blocks map[uint32][]*day // what the file changes
+
+	raw    []int64 // of one block
+	values []rules.Units
+	fresh  []bool
+	known  []causes.Known
+}
+
+// weigh leads the pool up to the newest date that a file changes for a member. The one of the file before goes on where the ledger holds
+// nothing that it has not seen; else one is made anew and led through the dates on which its state depends.
+func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
+	crew := newCrew(j.names, j.members, p.Settings.Events)
+	if crew == nil {
+		return nil, nil
+	}
+	l := &leader{crew: crew, j: j, view: v, blocks: map[uint32][]*day{}, upto: rules.NoDate, raw: make([]int64, BlockSize),
+		values: make([]rules.Units, len(crew.members)), fresh: make([]bool, len(crew.members))}
+	for _, b := range blocks {
+		if _, ok := slices.BinarySearch(crew.blocks, b.number); ok {
+			l.blocks[b.number] = b.days
+		}
+	}
+	todo, err := l.changed()
+	if err != nil || len(todo) == 0 {
+		return nil, err
+	}
+	if p.led != nil && p.led.goesOn(crew, j, todo[0]) {
+		l.pool, l.upto = p.led.pool, p.led.upto
+	} else {
+		make := p.newWeigher
+		if make == nil {
+			make = newPool
+		}
+		l.pool = make(crew.members, crew.groups, p.Settings.Doubtful)
+		if err := l.warm(todo[0]); err != nil {
+			return nil, err
+		}
+	}
+	p.led = l
+	return l.lead(todo)
+}
+
+// goesOn says that a leader of a step before stands right before a date.
+func (l *leader) goesOn(c *crew, j *judging, date rules.Date) bool {
+	if l.upto >= date || l.j.step+1 != j.step || !l.crew.same(c) {
+		return false
+	}
+	n, _ := slices.BinarySearch(j.held, l.upto+1)
+	return n == len(j.held) || j.held[n] >= date
+}
+
+// changed lists the dates on which the file changes the value of a member, ascending.
+func (l *leader) changed() (out []rules.Date, err error) {
+	for _, number := range l.crew.blocks {
+		from, to := l.crew.in(task{block: number, width: BlockSize})
+		for _, d := range l.blocks[number] {
+			if d.col == nil {
+				continue
+			}
+			for m := from; m < to; m++ {
+				if at := int(l.crew.series[m] % BlockSize); at < d.col.Len() && d.col.has(at) {
+					out = append(out, d.date)
+					break
+				}
+			}
+		}
+	}
+	slices.Sort(out)
+	return slices.Compact(out), nil
+}
+
+// warm leads a new pool through the newest dates before one, as many as its state depends on.
+func (l *leader) warm(before rules.Date) error {
+	n, _ := slices.BinarySearch(l.j.held, before)
+	var dates []rules.Date
+	for n--; n >= 0 && len(dates) < causes.Memory; n-- {
+		if any, err := l.fill(l.j.held[n]); err != nil {
+			return err
+		} else if any {
+			dates = append(dates, l.j.held[n])
+		}
+	}
+	slices.Reverse(dates)
+	for _, d := range dates {
+		if _, err := l.step(d); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// lead goes from the first changed date to the last, through all that are held between them.
+func (l *leader) lead(todo []rules.Date) (*weighed, error) {
+	out := &weighed{crew: l.crew, days: make(map[rules.Date]*weighedDay, len(todo))}
+	dates := slices.Clone(todo)
+	for _, d := range l.j.held {
+		if d > todo[0] && d < todo[len(todo)-1] {
+			dates = append(dates, d)
+		}
+	}
+	slices.Sort(dates)
+	for _, d := range slices.Compact(dates) {
+		r, err := l.step(d)
+		if err != nil {
+			return nil, err
+		}
+		if _, ok := slices.BinarySearch(todo, d); ok && r != nil {
+			withWrong(d, r)
+			out.days[d] = &weighedDay{r, slices.Clone(l.fresh)}
+		}
+	}
+	return out, nil
+}
+
+// step gathers a date and has the pool go through it; nil when no member has a value.
+func (l *leader) step(date rules.Date) (*causes.Result, error) {
+	any, err := l.fill(date)
+	if err != nil || !any {
+		return nil, err
+	}
+	if err := l.recall(date); err != nil {
+		return nil, err
+	}
+	l.upto = date
+	return l.pool.Step(causes.Day{Date: date, Values: l.values, Fresh: l.fresh, Known: l.known}), nil
+}
+
+// fill gathers the values of a date: those held, overlaid by the file's. It says whether there is any.
+func (l *leader) fill(date rules.Date) (any bool, err error) {
+	_, held := slices.BinarySearch(l.j.held, date)
+	for _, number := range l.crew.blocks {
+		fillMissing(l.raw)
+		if held && int(number)*BlockSize < l.j.heldNames {
+			if _, err := l.view.Fill(Returns, date, number, 0, l.raw); err != nil {
+				return false, err
+			}
+		}
+		col := l.column(number, date)
+		from, to := l.crew.in(task{block: number, width: BlockSize})
+		for m := from; m < to; m++ {
+			at := int(l.crew.series[m] % BlockSize)
+			l.values[m], l.fresh[m] = rules.Units(l.raw[at]), false
+			if col != nil && at < col.Len() && col.has(at) {
+				l.values[m], l.fresh[m] = rules.Units(col.units(at)), true
+			}
+			any = any || l.values[m] != rules.Missing
+		}
+	}
+	return any, nil
+}
+
+// column is what the file changes of a block on a date, nil for nothing.
+func (l *leader) column(number uint32, date rules.Date) *Column {
+	days := l.blocks[number]
+	n, ok := slices.BinarySearchFunc(days, date, func(d *day, at rules.Date) int { return cmp.Compare(d.date, at) })
+	if !ok {
+		return nil
+	}
+	return days[n].col
+}
+
+// units is the value of a cell that is there, as a return.
+func (c *Column) units(offset int) int64 {
+	mul := int64(rules.Pow10(rules.Places - int(c.Decimals)))
+	if c.V32 != nil {
+		return int64(c.V32[offset]) * mul
+	}
+	return c.V64[offset] * mul
+}
+
+// recall gathers what was concluded of the values of a date that are not judged now.
+func (l *leader) recall(date rules.Date) error {
+	l.known = l.known[:0]
+	if _, held := slices.BinarySearch(l.j.held, date); !held || l.j.concluded == 0 {
+		return nil
+	}
+	for _, number := range l.crew.blocks {
+		clear(l.raw)
+		if err := l.view.Patch(l.j.concluded, date, number, 0, l.raw); err != nil {
+			return err
+		}
+		from, to := l.crew.in(task{block: number, width: BlockSize})
+		for m := from; m < to; m++ {
+			if use := causes.Use(l.raw[l.crew.series[m]%BlockSize]); use != causes.AsIs && !l.fresh[m] {
+				l.know(causes.Known{Member: m, Use: use})
+			}
+		}
+		if err := l.decided(date, number); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// know notes what is known of a value, in the place of what was noted before.
+func (l *leader) know(k causes.Known) {
+	if at := slices.IndexFunc(l.known, func(o causes.Known) bool { return o.Member == k.Member }); at >= 0 {
+		l.known[at] = k
+		return
+	}
+	l.known = append(l.known, k)
+}
+
+// decided adds what persons decided of the values of a date and block. It comes after what the pool concluded, and outweighs it.
+func (l *leader) decided(date rules.Date, number uint32) error {
+	marked, err := l.view.Marked(date, number)
+	if err != nil {
+		return err
+	}
+	marked = slices.DeleteFunc(marked, func(at int) bool {
+		m, ok := l.crew.at[number*BlockSize+uint32(at)]
+		return !ok || l.fresh[m] || l.values[m] == rules.Missing
+	})
+	if len(marked) == 0 {
+		return nil
+	}
+	steps, err := versionSteps(l.view, date, number, marked)
+	if err != nil {
+		return err
+	}
+	for n, at := range marked {
+		series := number*BlockSize + uint32(at)
+		about, err := aboutValue(l.view, series, date, steps[n])
+		if err != nil {
+			return err
+		}
+		if about.decided != nil {
+			m := l.crew.at[series]
+			c, _ := about.conclusion(l.values[m], true)
+			l.know(causes.Known{Member: int(m), Use: c.Use, Value: c.Value})
+		}
+	}
+	return nil
+}

@@ -1,0 +1,154 @@
+package watcher
+
+import (
+	"fmt"
+	"slices"
+
+	"strayd/rules"
+	"strayd/rules/causes"
+)
+
+// viewHits makes hits of the fresh values of a date that the pool has a view of, and settles what it now says of the date before.
+func (w *worker) viewHits(t task, d *day, out *outcome) {
+	if w.j.weighed == nil {
+		return
+	}
+	said := w.j.weighed.days[d.date]
+	if said == nil {
+		return
+	}
+	from, to := w.j.weighed.crew.in(t)
+	for n := range said.Views {
+		if v := &said.Views[n]; v.Member >= from && v.Member < to && said.fresh[v.Member] {
+			h := w.hitAt(w.memberAt(t, v), true)
+			h.view, h.out = v, use(v) == causes.Out
+		}
+	}
+	for n := range said.Earlier {
+		if e := &said.Earlier[n]; e.Member >= from && e.Member < to && w.settleEarlier(t, e, d.date, out) && said.fresh[e.Member] {
+			if h := w.hitAt(w.memberAt(t, e), true); h.out {
+				h.taken = true
+			}
+		}
+	}
+}
+
+// memberAt is the place in the task of the series that a view is about.
+func (w *worker) memberAt(t task, v *causes.View) int32 {
+	return int32(w.j.weighed.crew.series[v.Member] - t.series(0))
+}
+
+// outHits finds the values held before that the pool left out.
+func (w *worker) outHits(t task, d *day, fresh []int64) error {
+	if w.j.concluded == 0 {
+		return nil
+	}
+	uses := w.held[:t.width]
+	clear(uses)
+	if err := w.view.Patch(w.j.concluded, d.date, t.block, t.from, uses); err != nil {
+		return err
+	}
+	for i, u := range uses {
+		if causes.Use(u) == causes.Out && fresh[i] == Missing64 && w.raw[i] != Missing64 {
+			w.hitAt(int32(i), false).out = true
+		}
+	}
+	return nil
+}
+
+// fillView is the package's, with a word on a reference that its followers agree is wrong.
+func (w *worker) fillView(f *FlagRow, date rules.Date, v *causes.View) {
+	fillView(f, v)
+	if v == nil {
+		return
+	}
+	if n := w.j.weighed.days[date].followers(v.Member); n > 0 {
+		note := rules.Counted(n, "series") + " held against it agree that it is wrong"
+		if f.Kind == rules.KindBreach && f.Note != "" {
+			note = f.Note + "; " + note
+		}
+		f.Note = note
+	}
+}
+
+// fillView notes on a flag what the value looks like and what its reference says.
+func fillView(f *FlagRow, v *causes.View) {
+	if v == nil {
+		return
+	}
+	f.LooksLike, f.Share, f.Implied = v.LooksLike, rules.Num{}, rules.Num{}
+	if v.LooksLike != "" {
+		f.Share, f.Implied = rules.Num{V: v.Share, OK: v.Share > 0}, v.Implied
+	}
+	f.Reference, f.ReferenceReturn, f.Residual = v.Reference, v.ReferenceReturn, v.Residual
+}
+
+// fillDoubt makes a flag of a value inside its line. The range that it lies farthest out in says what was expected.
+func (w *worker) fillDoubt(f *FlagRow, h *hit) {
+	f.Kind = h.view.Kind
+	f.Note = fmt.Sprintf("log odds of an error %.1f, doubt begins at %.1f", h.view.LogOdds, h.view.Line)
+	farthest := -1
+	for k := range h.verdicts {
+		v := &h.verdicts[k]
+		if v.Tail.OK && v.Finding != rules.NotJudged && (farthest < 0 || v.Log10.V < h.verdicts[farthest].Log10.V) {
+			farthest = k
+		}
+	}
+	if farthest < 0 {
+		return
+	}
+	note := f.Note
+	w.fillLines(f, farthest, h)
+	f.Note = note
+}
+
+// settleEarlier notes on the flag of the date before what it looks like now, and keeps what it looked like. It says whether there is
+// such a flag.
+func (w *worker) settleEarlier(t task, v *causes.View, now rules.Date, out *outcome) (found bool) {
+	series := w.j.weighed.crew.series[v.Member]
+	var flags []*FlagRow
+	for n := len(out.flags) - 1; n >= 0 && out.flags[n].Date >= v.Date; n-- {
+		if f := out.flags[n]; f.Date == v.Date && f.SeriesID == series && slices.Contains(rules.OutOfLine, f.Kind) {
+			flags = append(flags, f)
+		}
+	}
+	for _, kind := range rules.OutOfLine {
+		if len(flags) > 0 {
+			break
+		}
+		f, ok, err := w.view.FlagAt(series, v.Date, kind)
+		if err != nil {
+			w.failed = err
+		}
+		if ok {
+			row := w.newFlag()
+			row.Flag, row.SeriesID = f, series
+			flags = append(flags, row)
+			out.flags = append(out.flags, row)
+		}
+	}
+	for _, f := range flags {
+		if f.Standing.Asks() || f.Standing == rules.OfHistory {
+			relook(f, v, now)
+		}
+	}
+	return len(flags) > 0
+}
+
+// relook gives a flag another cause and notes the one that it had.
+func relook(f *FlagRow, v *causes.View, now rules.Date) {
+	if f.LooksLike == v.LooksLike {
+		fillView(f, v)
+		return
+	}
+	before := "nothing in particular"
+	if f.LooksLike != "" {
+		before = fmt.Sprintf("%s (%.0f %%)", f.LooksLike, 100*f.Share.V)
+	}
+	note := fmt.Sprintf("looked like %s until %s", before, now)
+	if f.Note != "" {
+		note = f.Note + "; " + note
+	}
+	fillView(f, v)
+	f.Note = note
+}
