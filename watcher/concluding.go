@@ -40,6 +40,9 @@ func (j *judging) conclusions(v View) ([]UsedColumn, error) {
 				set(date, m, use(d.view(int32(m))))
 			}
 		}
+		for _, w := range d.Wrong {
+			set(date, w.Member, causes.Out)
+		}
 	}
 	for _, date := range dates {
 		for n := range j.weighed.days[date].Earlier {

@@ -211,12 +211,13 @@ func (c *Column) units(offset int) int64 {
 	return c.V64[offset] * mul
 }
 
-// recall gathers what was concluded of the values of a date that are not judged now.
+// recall gathers what was concluded of the values of a date that are not judged now; nil where there is none of those.
 func (l *leader) recall(date rules.Date) error {
-	l.known = l.known[:0]
-	if _, held := slices.BinarySearch(l.j.held, date); !held || l.j.concluded == 0 {
+	l.known = nil
+	if _, held := slices.BinarySearch(l.j.held, date); !held {
 		return nil
 	}
+	l.known = []causes.Known{}
 	for _, number := range l.crew.blocks {
 		clear(l.raw)
 		if err := l.view.Patch(l.j.concluded, date, number, 0, l.raw); err != nil {

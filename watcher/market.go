@@ -119,6 +119,7 @@ func withWrong(date rules.Date, r *causes.Result) {
 		if v.Kind == "" {
 			v.Kind = rules.KindDoubtful
 		}
+		v.Out = true
 	}
 }
 

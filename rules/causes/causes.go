@@ -43,7 +43,7 @@ type Day struct {
 	// says, in full where it says nothing, and need no view.
 	Fresh []bool
 	// Known says what was concluded of values of this date before: for dates that are gone through again, and after decisions. A pool
-	// takes it over instead of its own conclusion.
+	// takes it over instead of its own conclusion; nil where every value is judged for the first time.
 	Known []Known
 }
 
@@ -68,7 +68,7 @@ const (
 type Result struct {
 	Views []View // of the members whose value is not plainly ordinary, by member
 	// Foreseen is by member what its reference foresees of the return, by what was known before the date and the reference's value on it;
-	// absent where there is none. It is there for every member that has a reference, whatever its own value.
+	// absent where there is none, and where the member has no value.
 	Foreseen []rules.Num
 	Earlier  []View        // what this date settles about a value of the date before, such as a spike that is reversed now
 	Markets  []Market      // common moves, by group

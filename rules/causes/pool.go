@@ -91,7 +91,8 @@ func (p *Pool) Step(d Day) *Result {
 		p.conclude(&p.slow[k], r)
 	}
 	p.markets(r)
-	p.known(d.Known)
+	p.foreseen(r)
+	p.known(d)
 	p.close(d)
 	return r
 }
@@ -145,15 +146,27 @@ func (p *Pool) plain(i int) bool {
 	return true
 }
 
-// known takes over what was concluded before.
-func (p *Pool) known(known []Known) {
-	if known == nil {
+// foreseen lists what the references foresee, as it stood before the values of today were weighed.
+func (p *Pool) foreseen(r *Result) {
+	r.Foreseen = make([]rules.Num, len(p.members))
+	for i := range p.looks {
+		if lk := &p.looks[i]; lk.hasRef {
+			r.Foreseen[i] = rules.Some(lk.mu)
+		}
+	}
+}
+
+// known takes over what was concluded before. A reference that turns out wrong now stays out.
+func (p *Pool) known(d Day) {
+	if d.Known == nil {
 		return
 	}
 	for i := range p.states {
-		p.states[i].isOut = false
+		if st := &p.states[i]; !st.isWrong && (d.Fresh == nil || !d.Fresh[i]) {
+			st.isOut = false
+		}
 	}
-	for _, k := range known {
+	for _, k := range d.Known {
 		st := &p.states[k.Member]
 		switch k.Use {
 		case Out:
