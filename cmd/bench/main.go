@@ -27,7 +27,17 @@ func main() {
 	flag.IntVar(&b.runs, "runs", 3, "runs of each measurement, of which the median is printed")
 	flag.StringVar(&rows, "rows", "all", "which rows, by name, separated by commas: all, "+strings.Join(names(), ", "))
 	flag.Float64Var(&b.scale, "scale", 1, "share of the series of every book")
+	kind := flag.String("book", "", "write a `BOOK` as files and end: funds, or funds-fx with currencies, or funds-index over the open index data")
+	out := flag.String("out", "", "write the book into this `FOLDER`")
+	seed := flag.Uint64("seed", 1, "`NUMBER` that fixes the book")
 	flag.Parse()
+	if *kind != "" {
+		if err := writeBook(*kind, *out, *seed); err != nil {
+			fmt.Fprintln(os.Stderr, "bench:", err)
+			os.Exit(1)
+		}
+		return
+	}
 	if err := b.main(*dir, rows); err != nil {
 		fmt.Fprintln(os.Stderr, "bench:", err)
 		os.Exit(1)

@@ -181,6 +181,9 @@ func (d *drawer) place(k Kind, p *Plant) bool {
 			return false
 		}
 	}
+	if k == TruncatedFile {
+		q.Keep, q.Torn = 0.5+0.4*d.random.Float64(), d.random.IntN(2) == 0
+	}
 	c := &change{book: d.book, random: d.random, p: &q}
 	if !c.make() {
 		return false

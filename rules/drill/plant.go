@@ -17,6 +17,8 @@ type Plant struct {
 	Left    float64 // residual deviations that it leaves on the day when it shows, 0 where there is no reference
 	Cells   []Cell  // the values that it puts
 	Listed  []rules.Event
+	Keep    float64 // share of the rows that a truncated file keeps
+	Torn    bool    // and its last row breaks off
 }
 
 // Cell is one value of the matrix.
@@ -59,12 +61,22 @@ func (p *Plan) Apply(b *Book) *Book {
 	return out
 }
 
-// File gives what is wrong with the file of a feed on a date as such: TruncatedFile, MissingFile, LateFile or "".
-func (p *Plan) File(feed string, at int) Kind {
+// File gives the plant of a feed's file as such on a date, nil when there is none: its kind is TruncatedFile, MissingFile or LateFile.
+func (p *Plan) File(feed string, at int) *Plant {
 	for i := range p.Plants {
 		if q := &p.Plants[i]; q.Feed == feed && q.At == at && natureOf(q.Kind).scope == fileItself {
-			return q.Kind
+			return q
 		}
 	}
-	return ""
+	return nil
+}
+
+// Lasts says that a plant takes the whole file of a feed on a date as one of several days, so that the sender goes on sending it.
+func (p *Plan) Lasts(feed string, at int) bool {
+	for i := range p.Plants {
+		if q := &p.Plants[i]; q.Series < 0 && q.Feed == feed && q.Lasting() && q.At <= at && at <= q.last() {
+			return true
+		}
+	}
+	return false
 }

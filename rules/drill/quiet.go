@@ -12,6 +12,8 @@ type Promise struct {
 	Kinds []rules.Kind
 	Range string // "" for any
 	Share float64
+	// Judges says whether the line judges a series; nil for all.
+	Judges func(*Series) bool
 }
 
 // Quiet is what a line did on untouched days.
@@ -26,17 +28,10 @@ type Quiet struct {
 // none did within the five days before; of a series that is held against a benchmark, also when that was not wrong on the day.
 func Untouched(b *Book, p *Plan, flags []Flag, promises []Promise) []Quiet {
 	u := untouched(b, p)
-	values := 0
-	for t := p.From; t < len(b.Dates); t++ {
-		for s := range b.Series {
-			if u[t][s] && b.Values[t][s] != rules.Missing {
-				values++
-			}
-		}
-	}
 	s := newScorer(b, flags)
 	var out []Quiet
 	for _, promise := range promises {
+		values := judgedValues(b, u, promise.Judges)
 		q := Quiet{Name: promise.Name, Values: values, Promised: promise.Share * float64(values)}
 		for i := range s.flags {
 			if s.falseUnder(u, &s.flags[i], &promise) {
@@ -46,6 +41,20 @@ func Untouched(b *Book, p *Plan, flags []Flag, promises []Promise) []Quiet {
 		out = append(out, q)
 	}
 	return out
+}
+
+func judgedValues(b *Book, u [][]bool, judges func(*Series) bool) (n int) {
+	for s := range b.Series {
+		if judges != nil && !judges(&b.Series[s]) {
+			continue
+		}
+		for t := range b.Dates {
+			if u[t][s] && b.Values[t][s] != rules.Missing {
+				n++
+			}
+		}
+	}
+	return n
 }
 
 func (s *scorer) falseUnder(u [][]bool, f *Flag, p *Promise) bool {

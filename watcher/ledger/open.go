@@ -30,6 +30,7 @@ type Options struct {
 	Mode          Mode
 	Timeout       time.Duration // to wait for the lock, default 1 s
 	AnyFilesystem bool          // also a network or user-space file system
+	Scratch       bool          // nothing of it is needed after a crash: commits do not wait for the disk
 
 	upgrades []upgrade // in place of upgrades(), for tests
 }
@@ -163,6 +164,7 @@ func tryOpen(path string, o Options, room int) (l *Ledger, err error) {
 	l.db, err = bolt.Open(path, 0o600, &bolt.Options{
 		Timeout:         o.Timeout,
 		ReadOnly:        o.Mode == ReadOnly,
+		NoSync:          o.Scratch,
 		FreelistType:    bolt.FreelistMapType,
 		PreLoadFreelist: true,
 		NoStatistics:    true,
