@@ -114,22 +114,29 @@ func (d *driller) print(promises []drill.Promise) error {
 	}
 	for _, s := range sections {
 		for _, r := range s.rows {
-			if err := l.row(text(s.by), text(r.Name), integer(r.Planted), integer(r.SameDay), integer(r.FiveDays), integer(r.Right), integer(r.Wrong),
-				integer(r.Not), integer(r.Single), integer(r.Flags), integer(r.Followed), null, null); err != nil {
+			cells := []cell{text(s.by), text(r.Name)}
+			for _, n := range []int{r.Planted, r.SameDay, r.FiveDays, r.Right, r.Wrong, r.Not, r.Single, r.Flags, r.Followed} {
+				cells = append(cells, integer(n))
+			}
+			if err := l.row(append(cells, null, null)...); err != nil {
 				return err
 			}
 		}
 	}
 	for _, q := range lines {
-		if err := l.row(text("untouched"), text(q.Name), null, null, null, null, null, null, null, integer(q.Flags), null, integer(q.Values),
-			number(rules.Some(q.Promised))); err != nil {
+		if err := l.row(quietCells(q.Name, q.Flags, q.Values, number(rules.Some(q.Promised)))...); err != nil {
 			return err
 		}
 	}
-	if err := l.row(text("untouched"), text("refused files"), null, null, null, null, null, null, null, integer(refused), null, integer(files), null); err != nil {
+	if err := l.row(quietCells("refused files", refused, files, null)...); err != nil {
 		return err
 	}
 	return l.end()
+}
+
+// quietCells are the columns of a line on untouched days.
+func quietCells(name string, flags, values int, promised cell) []cell {
+	return []cell{text("untouched"), text(name), null, null, null, null, null, null, null, integer(flags), null, integer(values), promised}
 }
 
 func (d *driller) table(sections []drillSection, lines []drill.Quiet, refused, files int) error {

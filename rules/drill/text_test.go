@@ -28,7 +28,8 @@ func TestTickOf(t *testing.T) {
 		values []rules.Units
 		want   rules.Units
 	}{
-		{[]rules.Units{5e13, rules.Missing, 25e11}, 1e11}, {[]rules.Units{5e13}, 1e11}, {[]rules.Units{12345e9, 2e13}, 1e9}, {[]rules.Units{1, 1e11}, 1}, {nil, 1e11},
+		{[]rules.Units{5e13, rules.Missing, 25e11}, 1e11},
+		{[]rules.Units{5e13}, 1e11}, {[]rules.Units{12345e9, 2e13}, 1e9}, {[]rules.Units{1, 1e11}, 1}, {nil, 1e11},
 	} {
 		if got := TickOf(c.values); got != c.want {
 			t.Errorf("%v: %d, want %d", c.values, got, c.want)
