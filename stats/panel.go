@@ -151,9 +151,13 @@ func (p *Panel) Prepend(vals []int64) {
 // Scan appends to cand the index of every present value that is not surely inside: the gate does not hold it, all values of
 // the window are equal, or the value is beyond MaxValue. It changes nothing else.
 func (p *Panel) Scan(vals []int64, gate Gate, cand []int32) []int32 {
+	return scan(p.cells, p.narrow, p.small, vals, gate, cand)
+}
+
+func scan(cells []cell, narrow int64, small uint64, vals []int64, gate Gate, cand []int32) []int32 {
 	for i, k := range vals {
-		c := &p.cells[i]
-		if uint64(k+p.narrow) > uint64(2*p.narrow) || c.qHi >= p.small {
+		c := &cells[i]
+		if uint64(k+narrow) > uint64(2*narrow) || c.qHi >= small {
 			if k != Missing && !c.holds(k, gate[c.n]) {
 				cand = append(cand, int32(i))
 			}

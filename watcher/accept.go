@@ -20,6 +20,9 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	if err != nil {
 		return err
 	}
+	if p.Resident != nil {
+		j.kept = p.Resident.begin(j.step-1, j.width)
+	}
 	b := &Batch{Step: j.step}
 	blocks, err := p.changes(j, sheet, b)
 	if err != nil {
@@ -38,6 +41,7 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	if err := p.Store.Publish(b); err != nil {
 		return err
 	}
+	p.Resident.end(b.Step, j.keptNow)
 	p.row.Accepted++
 	p.row.Counts.Add(b.File.Counts)
 	p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateAccepted, Row: b.File, Notes: sheet.Notes})
@@ -186,6 +190,11 @@ func (p *Pass) work(j *judging, todo []task, outs []outcome, next, done *atomic.
 	}
 	defer v.Close()
 	w := newWorker(j, v)
+	defer func() {
+		j.keeping.Lock()
+		defer j.keeping.Unlock()
+		j.keptNow = append(j.keptNow, w.keptNow...)
+	}()
 	for {
 		n := int(next.Add(1)) - 1
 		if n >= len(todo) {

@@ -37,14 +37,10 @@ func (s *shelf) Find(f rules.Feed, _ time.Time, _ bool) (found watcher.Found, _ 
 	return found, nil
 }
 
-func (s *shelf) Hash(_ context.Context, c watcher.Candidate) ([32]byte, error) {
-	return sha256.Sum256(fmt.Append(nil, s.files[c.Name])), nil
-}
-
 // Read lays the rows out in columns by date and block.
 func (s *shelf) Read(_ context.Context, c watcher.Candidate, _ rules.Feed, names *watcher.Names, _ time.Time, _ watcher.Progress) (*watcher.Sheet, error) {
 	sheet := &watcher.Sheet{File: watcher.File{Name: c.Name, Size: c.Size}, Names: names, Held: names.Len(), Rows: len(s.files[c.Name])}
-	sheet.File.SHA256, _ = s.Hash(context.Background(), c)
+	sheet.File.SHA256 = sha256.Sum256(fmt.Append(nil, s.files[c.Name]))
 	type placed struct {
 		date  rules.Date
 		id    uint32
@@ -78,7 +74,13 @@ func (silent) Step(causes.Day) *causes.Result { return &causes.Result{} }
 // run takes every file of the shelf in one pass, judged by its ranges alone.
 func run(t *testing.T, m *memory, s *shelf, settings rules.Settings, workers int) {
 	t.Helper()
-	p := &watcher.Pass{Store: m, Source: s, Settings: settings, Feeds: []rules.Feed{{Name: "book"}}, FeedKey: func(rules.Feed) string { return "key" },
+	runWith(t, m, s, settings, workers, nil)
+}
+
+// runWith is run with what the passes before it left in memory.
+func runWith(t *testing.T, m *memory, s *shelf, settings rules.Settings, workers int, kept *watcher.Resident) {
+	t.Helper()
+	p := &watcher.Pass{Resident: kept, Store: m, Source: s, Settings: settings, Feeds: []rules.Feed{{Name: "book"}}, FeedKey: func(rules.Feed) string { return "key" },
 		Now: time.Date(2026, 1, 1, 0, 0, 0, 0, time.UTC), Settled: true, Workers: workers}
 	p.SetWeigher(func([]causes.Member, []string) watcher.Weigher { return silent{} })
 	if _, err := p.Run(context.Background()); err != nil {

@@ -258,6 +258,9 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 		outsize(used)
 	}
 	w.patch(t, d, l, used, stored, out)
+	if l.kept != nil {
+		return w.pushKept(t, l, d.date, used)
+	}
 	l.push(d.date, used)
 	return nil
 }

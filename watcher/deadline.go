@@ -24,7 +24,11 @@ func (p *Pass) Deadline(f rules.Feed, date rules.Date, due time.Time) error {
 		return err
 	}
 	p.tell(b, 0)
-	return p.Store.Publish(b)
+	if err := p.Store.Publish(b); err != nil {
+		return err
+	}
+	p.Resident.passed(b.Step)
+	return nil
 }
 
 // lateStep is the step that raises a late flag; nil when the feed is whole, or when the flag is there already.

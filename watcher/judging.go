@@ -2,12 +2,14 @@ package watcher
 
 import (
 	"slices"
+	"sync"
 	"time"
 
 	"strayd/rules"
 )
 
-// judging is what all workers of one step share: the settings made ready, and what the ledger holds. It is only read.
+// judging is what all workers of one step share: the settings made ready, and what the ledger holds. It is only read, but for what
+// is to be kept.
 type judging struct {
 	gauges  []*rules.Gauge // by the settings' order
 	ids     []uint16       // the ranges' numbers in the ledger
@@ -28,6 +30,10 @@ type judging struct {
 	scales     *groupScales
 	concluded  uint16   // number in the ledger of what the pool concluded, 0 where it has none
 	weighed    *weighed // nil where no series of the file is weighed together with others
+
+	kept    map[keptKey]*kept // what the resident keeps; nil without one
+	keeping sync.Mutex
+	keptNow []keptTask // what it is to keep after this step
 }
 
 // heldBefore lists the dates before a date on which a block may hold values, ascending.

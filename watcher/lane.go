@@ -27,16 +27,34 @@ type lane struct {
 	at     int        // that series
 	values []int64    // scratch for one series' window
 	used   []int64    // scratch for one date
+
+	// What a resident needs, see there.
+	own     laneState    // the lane's own buffers while it works on what was kept
+	kept    *kept        // what it was resumed from; nil when it was loaded
+	spoilt  bool         // of no use for the next date
+	leaving []int64      // scratch
+	tracked bool         // streak and dates are kept up
+	dates   []rules.Date // on which any series has a used value, ascending
+	streak  []int32      // on how many of the newest of them each series has one
+}
+
+// laneState is what a task's state lies in.
+type laneState struct {
+	windows windows
+	last    []rules.Date
+	dormant []bool
 }
 
 // windows are the windows of many series side by side: the plain, weighted or sorted panel of stats.
 type windows interface {
 	Reset()
-	Push(vals []int64)
 	Scan(vals []int64, gate stats.Gate, cand []int32) []int32
 	Clear(i int)
 	N(i int) int
 }
+
+// pusher is what a panel has that holds its values.
+type pusher interface{ Push(vals []int64) }
 
 // loader is what a panel has that depends on its window alone, so that it can be filled from the newest date backwards.
 type loader interface {
@@ -55,8 +73,16 @@ func newLane(index int, id uint16, g *rules.Gauge, width int, groupless bool) *l
 	default:
 		l.windows = stats.NewPanel(width, r.Window)
 	}
+	l.own = laneState{l.windows, l.last, l.dormant}
 	l.lend()
 	return l
+}
+
+// track has the lane keep up what a resident needs.
+func (l *lane) track() {
+	if _, ok := l.windows.(*stats.Panel); ok {
+		l.tracked, l.streak, l.leaving = true, make([]int32, len(l.last)), make([]int64, len(l.last))
+	}
 }
 
 // lend gives the past its ways to the values of a window: made once, since a past is asked for at every hit.
@@ -73,7 +99,11 @@ func (l *lane) lend() {
 	}
 }
 
+// reset empties the lane's own state and takes it up.
 func (l *lane) reset() {
+	l.windows, l.last, l.dormant, l.kept = l.own.windows, l.own.last, l.own.dormant, nil
+	l.dates = l.dates[:0]
+	clear(l.streak)
 	l.windows.Reset()
 	for i := range l.last {
 		l.last[i] = rules.NoDate
@@ -111,7 +141,42 @@ func (l *lane) rest(date rules.Date, vals []int64) {
 
 // push lets the windows take the used values of a date.
 func (l *lane) push(date rules.Date, used []int64) {
-	l.windows.Push(used)
+	l.windows.(pusher).Push(used)
+	if l.tracked {
+		l.trackForward(date, used)
+	}
+	l.note(date, used)
+}
+
+// trackForward notes who has a value on a date later than all before.
+func (l *lane) trackForward(date rules.Date, used []int64) {
+	if count(used) == 0 {
+		return
+	}
+	l.dates = append(l.dates, date)
+	for i, v := range used {
+		if l.streak[i]++; v == Missing64 {
+			l.streak[i] = 0
+		}
+	}
+}
+
+// trackBack notes who has a value on a date earlier than all before; dates stand in reverse until the load has ended.
+func (l *lane) trackBack(date rules.Date, used []int64) {
+	if len(l.dates) == l.gauge.Range.Window || count(used) == 0 {
+		return
+	}
+	step := int32(len(l.dates))
+	l.dates = append(l.dates, date)
+	for i, v := range used {
+		if v != Missing64 && l.streak[i] == step {
+			l.streak[i]++
+		}
+	}
+}
+
+// note takes down on which date each series had its newest used value.
+func (l *lane) note(date rules.Date, used []int64) {
 	last := l.last[:len(used)]
 	for i, v := range used {
 		if v != Missing64 {
@@ -136,6 +201,8 @@ func (l *lane) past(i int) *rules.Past {
 			}
 		}
 	case *stats.Panel:
+		p.Sums = w.Sums(i)
+	case *stats.Slide:
 		p.Sums = w.Sums(i)
 	}
 	return p

@@ -1,7 +1,7 @@
 package watcher
 
 import (
-	"errors"
+	"slices"
 
 	"strayd/rules"
 	"strayd/stats"
@@ -11,17 +11,36 @@ import (
 // the newest date backwards; the weighted one goes forward from its newest stored state, or from the start.
 func (w *worker) load(t task, before rules.Date) (err error) {
 	held := w.j.heldBefore(t.block, before)
-	if len(held) == 0 {
-		return nil
-	}
-	defer func() { err = errors.Join(err, w.markDormant(t, before)) }()
+	loading := 0
 	var back []*backward
 	for _, l := range w.lanes {
+		if w.resume(t, l) {
+			continue
+		}
+		l.reset()
+		if len(held) == 0 {
+			continue
+		}
+		loading++
 		if p, ok := l.windows.(loader); ok {
 			back = append(back, newBackward(l, p, before, t.width))
 		} else if err := w.loadForward(t, l, held, before); err != nil {
 			return err
 		}
+	}
+	if loading == 0 {
+		return nil
+	}
+	if err := w.loadBack(t, back, held); err != nil {
+		return err
+	}
+	return w.markDormant(t, before)
+}
+
+// loadBack fills lanes from the newest date backwards until all are full.
+func (w *worker) loadBack(t task, back []*backward, held []rules.Date) error {
+	for _, b := range back {
+		defer func() { slices.Reverse(b.l.dates) }()
 	}
 	for i := len(held) - 1; i >= 0 && len(back) > 0; i-- {
 		ok, err := w.view.Fill(Returns, held[i], t.block, t.from, w.raw[:t.width])
@@ -31,7 +50,7 @@ func (w *worker) load(t task, before rules.Date) (err error) {
 		if !ok {
 			continue
 		}
-		open := back[:0]
+		var open []*backward
 		for _, b := range back {
 			if err := w.stepBack(t, b, held[i]); err != nil {
 				return err
@@ -121,6 +140,9 @@ func (w *worker) stepBack(t task, b *backward, date rules.Date) error {
 
 // take puts the used values of a date in front of the windows that are not done.
 func (b *backward) take(date rules.Date, used []int64) {
+	if b.l.tracked {
+		b.l.trackBack(date, used)
+	}
 	if b.even == rules.NoDate || !b.takeEven(date, used) {
 		b.takeEach(date, used)
 	}
@@ -193,7 +215,9 @@ func (w *worker) markDormant(t task, before rules.Date) error {
 			dormant = len(versions) > 0 && versions[0].Date < before
 		}
 		for _, l := range w.lanes {
-			l.dormant[i] = dormant && l.windows.N(i) == 0
+			if l.kept == nil {
+				l.dormant[i] = dormant && l.windows.N(i) == 0
+			}
 		}
 	}
 	return nil

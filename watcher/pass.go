@@ -24,6 +24,8 @@ type Pass struct {
 	Program  string // version of the program
 	Workers  int    // goroutines that judge; 0 for one a processor
 
+	// Resident is what the passes before it left in memory; nil to read everything from the ledger.
+	Resident *Resident
 	// Tell makes the notices of a step, which are recorded with it; nil for none.
 	Tell func(rules.News) []rules.Notice
 	// Report is told of every file as it is done with; nil for nobody.
@@ -86,6 +88,7 @@ func (p *Pass) run(ctx context.Context) error {
 			return fmt.Errorf("feed %s: %w", f.Name, err)
 		}
 	}
+	p.Resident.giveBack(p.names)
 	return nil
 }
 
@@ -105,9 +108,11 @@ func (p *Pass) begin() (*seenFiles, error) {
 		return nil, err
 	}
 	defer v.Close()
-	names, err := v.Names()
-	if err != nil {
-		return nil, err
+	names := p.Resident.lend(v.Step())
+	if names == nil {
+		if names, err = v.Names(); err != nil {
+			return nil, err
+		}
 	}
 	p.names, p.firstNames = names, names.Len()
 	s := &seenFiles{map[string]bool{}, map[int64]bool{}}
@@ -179,17 +184,6 @@ func (p *Pass) file(ctx context.Context, f rules.Feed, c Candidate, seen *seenFi
 		p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateSeen})
 		return nil
 	}
-	if seen.sizes[c.Size] { // only a file of a size that has occurred can have been taken before under another name
-		sha, err := p.Source.Hash(ctx, c)
-		if err != nil {
-			return unreadable{err}
-		}
-		if known, err := p.known(f, sha, key); known || err != nil {
-			p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateSeen})
-			return err
-		}
-	}
-	seen.sizes[c.Size] = true
 	held := p.names.Len()
 	sheet, err := p.Source.Read(ctx, c, f, p.names, p.Now, p.progress("reading "+c.Name))
 	if ctx.Err() != nil {
@@ -200,6 +194,15 @@ func (p *Pass) file(ctx context.Context, f rules.Feed, c Candidate, seen *seenFi
 		return unreadable{err}
 	}
 	sheet.File.Feed = f.Name
+	if seen.sizes[sheet.File.Size] { // only content of a size that has occurred can have been taken before, under another name
+		known, err := p.known(f, sheet.File.SHA256, key)
+		if known || err != nil {
+			p.names.Cut(held)
+			p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateSeen})
+			return err
+		}
+	}
+	seen.sizes[sheet.File.Size] = true
 	if err = p.accept(sheet, f, c); err != nil {
 		p.names.Cut(held)
 	}
@@ -246,6 +249,7 @@ func (p *Pass) refuse(bad *BadFile, f rules.Feed, c Candidate) error {
 	if err := p.Store.Publish(b); err != nil {
 		return err
 	}
+	p.Resident.passed(b.Step)
 	p.row.Refused++
 	p.row.Counts.Add(b.File.Counts)
 	p.report(FileReport{Feed: f.Name, Name: bad.File.Name, Fate: FateRefused, Why: bad.Error(), Row: b.File})

@@ -16,8 +16,6 @@ type Source interface {
 	// Find lists the files of a feed: those ready to be read in the order of the dates in their names, then names; those that
 	// still wait; and those that are refused unread. settled takes the person's word that nothing is being written.
 	Find(f rules.Feed, now time.Time, settled bool) (Found, error)
-	// Hash is the SHA-256 of a file's bytes as they lie on disk.
-	Hash(ctx context.Context, c Candidate) ([32]byte, error)
 	// Read validates a whole file and returns its content, adding names that it has not seen to names. A file that is
 	// refused gives a *BadFile, one that is still being written ErrChanged.
 	Read(ctx context.Context, c Candidate, f rules.Feed, names *Names, now time.Time, progress Progress) (*Sheet, error)

@@ -65,6 +65,9 @@ func (l *lane) sums(i int) (sum stats.Int128, sq stats.Uint128) {
 	case *stats.Panel:
 		sums := w.Sums(i)
 		sum, sq = sums.S, sums.Q
+	case *stats.Slide:
+		sums := w.Sums(i)
+		sum, sq = sums.S, sums.Q
 	case *stats.SortedPanel:
 		var sums stats.Sums
 		for _, k := range w.Sorted(i) {

@@ -49,6 +49,7 @@ type worker struct {
 	flags            []FlagRow    // made and not yet used
 	room             outcome      // lists that the next task fills
 	failed           error        // of looking up a flag
+	keptNow          []keptTask   // for the resident
 	stored           []*State     // by lane: what a recheck holds against the replay
 }
 
@@ -72,7 +73,11 @@ func newWorker(j *judging, v View) *worker {
 	w := &worker{j: j, view: v}
 	for n, g := range j.gauges {
 		if g.Range.Limit == nil && j.ids[n] != 0 {
-			w.lanes = append(w.lanes, newLane(n, j.ids[n], g, j.width, j.members.Groupless()))
+			l := newLane(n, j.ids[n], g, j.width, j.members.Groupless())
+			if j.kept != nil {
+				l.track()
+			}
+			w.lanes = append(w.lanes, l)
 		}
 	}
 	w.raw, w.fresh, w.held = make([]int64, j.width), make([]int64, j.width), make([]int64, j.width)
@@ -111,6 +116,7 @@ func (w *worker) run(t task) (outcome, error) {
 		}
 	}
 	w.keepStates(t, &out)
+	w.leave(t)
 	w.room = out
 	out.flags, out.used = slices.Clone(out.flags), slices.Clone(out.used)
 	return out, w.failed
@@ -137,7 +143,6 @@ func next(days *[]*day, replay *[]rules.Date) (d *day, old bool) {
 func (w *worker) begin(t task) {
 	w.ids, w.groups, w.replayed = w.ids[:0], w.groups[:0], false
 	for _, l := range w.lanes {
-		l.reset()
 		l.applies = nil
 	}
 	if w.j.members.Universal() {

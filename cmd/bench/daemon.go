@@ -37,11 +37,22 @@ func (b *bench) daemons() error {
 	if err != nil {
 		return err
 	}
-	var taken, told, reads []usage
-	for n := range b.runs {
+	var alone, taken, told, reads []usage
+	for n := range 2 * b.runs {
 		k := book{series: series, from: age + n, dates: 1}
 		if err := d.deliver(fmt.Sprintf("day-%d.csv", n), k); err != nil {
 			return err
+		}
+		if n < b.runs { // nobody reads meanwhile
+			u, err := d.run("pass", "--settled")
+			if err != nil {
+				return err
+			}
+			alone = append(alone, u)
+			if err := r.notice(); err != nil {
+				return err
+			}
+			continue
 		}
 		stop := r.read(&reads, string(name(nil, series/2)))
 		start := time.Now()
@@ -62,10 +73,11 @@ func (b *bench) daemons() error {
 	if err != nil {
 		return err
 	}
-	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d committed", series), usage: usage{wall: wallOf(taken)}, rows: series})
+	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d committed", series), usage: usage{wall: wallOf(alone)}, rows: series})
+	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d beside readers", series), usage: usage{wall: wallOf(taken)}, rows: series})
 	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d told", series), usage: usage{wall: wallOf(told)}, rows: series})
 	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d commands meanwhile", len(reads)), usage: usage{wall: wallOf(reads)}})
-	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d days, all of it", b.runs), usage: all, rows: b.runs * series, disk: true})
+	b.print(figures{row: "in daemon", work: fmt.Sprintf("%d days, all of it", 2*b.runs), usage: all, rows: 2 * b.runs * series, disk: true})
 	return os.RemoveAll(d.dir)
 }
 

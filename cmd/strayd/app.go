@@ -152,10 +152,6 @@ func (source) Find(f rules.Feed, now time.Time, settled bool) (watcher.Found, er
 	return feed.Find(f, now, settled)
 }
 
-func (source) Hash(ctx context.Context, c watcher.Candidate) ([32]byte, error) {
-	return feed.Hash(ctx, c)
-}
-
 func (source) Read(ctx context.Context, c watcher.Candidate, f rules.Feed, names *watcher.Names, now time.Time, progress watcher.Progress) (*watcher.Sheet, error) {
 	return feed.Read(ctx, c, f, names, feed.Options{Now: now, Progress: progress})
 }

@@ -15,6 +15,7 @@ import (
 
 	"strayd/config"
 	"strayd/notify"
+	"strayd/watcher"
 	"strayd/watcher/desk"
 	"strayd/watcher/health"
 	"strayd/watcher/ledger"
@@ -60,7 +61,8 @@ type daemon struct {
 	started time.Time
 	program *app
 	signals *signals
-	passing chan struct{} // full while a pass or anything else that makes notices is under way
+	kept    watcher.Resident // between passes; for whoever holds passing
+	passing chan struct{}    // full while a pass or anything else that makes notices is under way
 
 	mu    sync.Mutex
 	setup *setup    // the last good one

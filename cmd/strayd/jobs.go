@@ -112,7 +112,7 @@ func (d *daemon) onePass(ctx context.Context, feed string) error {
 	defer release()
 	s := d.inForce()
 	defer s.post.Wake()
-	p, err := d.program.newPass(s.config, d.ledger)
+	p, err := d.newPass(s.config)
 	if err != nil {
 		return err
 	}
@@ -251,7 +251,7 @@ func (d *daemon) deadline(ctx context.Context, f rules.Feed, date rules.Date, du
 	defer release()
 	s := d.inForce()
 	defer s.post.Wake()
-	p, err := d.program.newPass(s.config, d.ledger)
+	p, err := d.newPass(s.config)
 	if err == nil {
 		err = p.Deadline(f, date, due)
 	}
@@ -276,4 +276,13 @@ func (d *daemon) daily(ctx context.Context, slot time.Time) error {
 		return err
 	}
 	return d.ledger.Add(s.teller.Daily(news))
+}
+
+// newPass is a pass that goes on from what the one before left in memory.
+func (d *daemon) newPass(c *config.Config) (*watcher.Pass, error) {
+	p, err := d.program.newPass(c, d.ledger)
+	if err == nil {
+		p.Resident = &d.kept
+	}
+	return p, err
 }

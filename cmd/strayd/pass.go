@@ -105,8 +105,12 @@ func (a *app) newPass(c *config.Config, l watcher.Store) (*watcher.Pass, error) 
 		return nil, err
 	}
 	teller := newTeller(c, owners)
-	return &watcher.Pass{Store: l, Source: source{}, Settings: s, Feeds: c.Feeds, FeedKey: config.FeedKey, Now: now, Who: a.actor(),
-		Program: version, Tell: teller.Notices}, nil
+	p := &watcher.Pass{Store: l, Source: source{}, Settings: s, Feeds: c.Feeds, FeedKey: config.FeedKey, Now: now, Who: a.actor(),
+		Program: version, Tell: teller.Notices}
+	if a.held != nil {
+		p.Resident = &a.held.kept
+	}
+	return p, nil
 }
 
 func (a *app) sayFile(r watcher.FileReport) {

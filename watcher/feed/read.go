@@ -59,20 +59,6 @@ func unchanged(file *os.File, c watcher.Candidate, read int64) error {
 	return nil
 }
 
-// Hash is the SHA-256 of a file's bytes. Errors: watcher.ErrChanged, a *watcher.BadFile when it must not be opened, or what went wrong in reading.
-func Hash(ctx context.Context, c watcher.Candidate) (sum [32]byte, err error) {
-	file, err := openFile(c)
-	if err != nil {
-		return sum, err
-	}
-	defer file.Close()
-	d := newDisk(ctx, file, c.Size, nil)
-	if err := d.rest(make([]byte, 1<<18)); err != nil {
-		return sum, err
-	}
-	return d.sum(), unchanged(file, c, d.done)
-}
-
 // Read reads a file as its feed declares it. New series are added to names in the order of their first appearance, and
 // forgotten again when there is an error. Errors: a *watcher.BadFile when the file is refused, watcher.ErrChanged when it must wait,
 // else what went wrong in reading, or the feed's declaration.
