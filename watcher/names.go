@@ -34,6 +34,12 @@ func NewNames(text []byte, ends []uint32) *Names {
 	return n
 }
 
+// Copy is a dictionary of the same names to add to.
+func (n *Names) Copy() *Names {
+	l := n.list.Load()
+	return NewNames(l.text[:len(l.text):len(l.text)], l.ends[:len(l.ends):len(l.ends)])
+}
+
 // Len is how many names there are.
 func (n *Names) Len() int { return len(n.list.Load().ends) }
 

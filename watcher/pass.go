@@ -113,6 +113,7 @@ func (p *Pass) begin() (*seenFiles, error) {
 		if names, err = v.Names(); err != nil {
 			return nil, err
 		}
+		names = names.Copy()
 	}
 	p.names, p.firstNames = names, names.Len()
 	s := &seenFiles{map[string]bool{}, map[int64]bool{}}

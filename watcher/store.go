@@ -19,9 +19,9 @@ type Store interface {
 // View is a reading of the ledger at one step. Close it before publishing.
 type View interface {
 	Close() error
-	Step() uint32    // the last published step, 0 in a new ledger
-	NextRef() uint64 // the ref that the next flag gets
-	Names() (*Names, error)
+	Step() uint32           // the last published step, 0 in a new ledger
+	NextRef() uint64        // the ref that the next flag gets
+	Names() (*Names, error) // to read only; Copy what you add to
 	// Dates lists the dates on which anything is held, ascending.
 	Dates(What) ([]rules.Date, error)
 	// Fill writes the newest values of one date for the series Block*BlockSize+from+i into dst (see Column.Fill) and says

@@ -14,6 +14,8 @@ import (
 
 	bolt "go.etcd.io/bbolt"
 	bolterrors "go.etcd.io/bbolt/errors"
+
+	"strayd/watcher"
 )
 
 // Mode is what a ledger is opened for.
@@ -42,11 +44,12 @@ type Ledger struct {
 	file     *os.File // bbolt's own, to let go of the lock when bbolt panics on opening
 	identity identity
 
-	mu         sync.Mutex   // held by whoever writes
-	arena      []byte       // of encoded values, reused between commits
-	broken     error        // why writing is off: a panic left a transaction half done
-	commitSize int          // as the constant, smaller in tests
-	readings   atomic.Int64 // open ones
+	mu         sync.Mutex                    // held by whoever writes
+	arena      []byte                        // of encoded values, reused between commits
+	broken     error                         // why writing is off: a panic left a transaction half done
+	commitSize int                           // as the constant, smaller in tests
+	readings   atomic.Int64                  // open ones
+	names      atomic.Pointer[watcher.Names] // loaded last
 
 	left bool // staged values of a failed batch are still there
 }

@@ -85,11 +85,14 @@ func (v *View) chunk(c uint32) (chunk, error) {
 	return list, nil
 }
 
-// Names loads the dictionary of series.
+// Names gives the dictionary of series. It is loaded once for all readings until there are more names, so nobody may add to it.
 func (v *View) Names() (n *watcher.Names, err error) {
 	defer v.leave(v.enter(&err), &err)
 	if err != nil {
 		return nil, err
+	}
+	if n = v.l.names.Load(); n != nil && n.Len() == int(v.head.names) {
+		return n, nil
 	}
 	var parts []chunk
 	size := 0
@@ -106,7 +109,9 @@ func (v *View) Names() (n *watcher.Names, err error) {
 		ends = p.appendEnds(ends, uint32(len(text)))
 		text = append(text, p.text...)
 	}
-	return watcher.NewNames(text, ends), nil
+	n = watcher.NewNames(text, ends)
+	v.l.names.Store(n)
+	return n, nil
 }
 
 // Flags calls each with every flag by ref, or only with those that ask something of a person, until it returns false.
