@@ -201,6 +201,21 @@ func (m *Membership) Reference(id, group string) string {
 	return r
 }
 
+// Held lists the series that others are held against: references and currencies.
+func (m *Membership) Held() map[string]bool {
+	out := map[string]bool{}
+	for _, r := range m.references {
+		out[r] = true
+	}
+	for _, g := range m.groups {
+		out[g.reference] = true
+	}
+	for _, c := range m.currencies {
+		out[c] = true
+	}
+	return out
+}
+
 // Currency is the series whose return is that of a series' foreign currency, "" for none.
 func (m *Membership) Currency(id string) string {
 	if c := m.currencies[id]; c != id {

@@ -121,13 +121,14 @@ type block struct {
 	number uint32
 	series int // how many series of the block exist
 	days   []*day
+	since  rules.Date // replay from here even where nothing changed; NoDate for the first day
 }
 
 // tasks cuts blocks into runs of series.
-func tasks(blocks []block, width int, since rules.Date) (out []task) {
+func tasks(blocks []block, width int) (out []task) {
 	for _, b := range blocks {
 		for from := 0; from < b.series; from += width {
-			out = append(out, task{block: b.number, from: from, width: min(width, b.series-from), days: b.days, since: since})
+			out = append(out, task{block: b.number, from: from, width: min(width, b.series-from), days: b.days, since: b.since})
 		}
 	}
 	return out
@@ -144,16 +145,17 @@ func (p *Pass) judgeAll(j *judging, blocks []block, b *Batch) ([]outcome, error)
 	if j.weighed, err = p.weigh(j, v, blocks); err != nil {
 		return nil, err
 	}
-	outs, err := p.runTasks(j, tasks(blocks, j.width, rules.NoDate))
-	if err != nil {
-		return nil, err
+	if j.weighed != nil {
+		if b.Used, err = j.conclusions(v); err != nil {
+			return nil, err
+		}
+		blocks = j.replays(blocks, b.Used)
+		if b.Flags, err = j.marketFlags(v); err != nil {
+			return nil, err
+		}
 	}
-	concluded, err := j.conclusions(v)
+	outs, err := p.runTasks(j, tasks(blocks, j.width))
 	if err != nil {
-		return nil, err
-	}
-	b.Used = append(b.Used, concluded...)
-	if b.Flags, err = p.marketFlags(j, v); err != nil {
 		return nil, err
 	}
 	b.Scales, err = j.scales.stored()

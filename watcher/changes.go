@@ -32,7 +32,7 @@ func (p *Pass) changes(j *judging, sheet *Sheet, b *Batch) ([]block, error) {
 		b.Returns = append(b.Returns, d.col)
 		if blocks[c.Block] == nil {
 			n := j.names.Len() - int(c.Block)*BlockSize
-			blocks[c.Block] = &block{number: c.Block, series: min(BlockSize, n)}
+			blocks[c.Block] = &block{number: c.Block, series: min(BlockSize, n), since: rules.NoDate}
 		}
 		blocks[c.Block].days = append(blocks[c.Block].days, d)
 	}

@@ -36,7 +36,7 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 			return err
 		}
 	}
-	w.viewHits(t, d, out)
+	w.viewHits(t, d, fresh, out)
 	present := count(fresh)
 	for n := range w.hits {
 		w.judge(d.date, &w.hits[n])
@@ -159,7 +159,7 @@ func (w *worker) judge(date rules.Date, h *hit) {
 			h.broken = append(h.broken, n)
 		}
 	}
-	h.flagged = h.flagged || h.fresh && (h.outsize || len(h.broken) > 0 || h.view != nil && h.view.Kind != "")
+	h.flagged = h.flagged || h.fresh && (h.outsize || len(h.broken) > 0) || h.view != nil && h.view.Kind != ""
 	h.flagged = h.flagged && (!h.taken || len(h.broken) > 0)
 }
 

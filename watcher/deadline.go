@@ -72,7 +72,7 @@ func arrival(v View, feed string, date rules.Date) (*rules.Arrival, error) {
 	if err != nil {
 		return nil, err
 	}
-	for _, bl := range allBlocks(names.Len()) {
+	for _, bl := range allBlocks(names.Len(), rules.NoDate) {
 		vals := make([]int64, bl.series)
 		held, err := v.Fill(Returns, date, bl.number, 0, vals)
 		if err != nil {
@@ -126,7 +126,7 @@ func expectedOf(v View, names *Names, of map[uint32]bool, date rules.Date) (map[
 	n, _ := slices.BinarySearch(dates, date)
 	expected := map[uint32]bool{}
 	for i := n - 1; i >= max(0, n-lookBack) && len(expected) == 0; i-- {
-		for _, bl := range allBlocks(names.Len()) {
+		for _, bl := range allBlocks(names.Len(), rules.NoDate) {
 			err := v.Layers(Returns, dates[i], bl.number, func(step uint32, vals []int64) error {
 				for k, x := range vals {
 					if x != Missing64 && of[step] {
@@ -155,7 +155,7 @@ func Day(v View, date rules.Date) (checked, expected int, missing []string, err 
 		return 0, 0, nil, err
 	}
 	n, _ := slices.BinarySearch(dates, date)
-	for _, bl := range allBlocks(names.Len()) {
+	for _, bl := range allBlocks(names.Len(), rules.NoDate) {
 		now, before := make([]int64, bl.series), make([]int64, bl.series)
 		fillMissing(now)
 		fillMissing(before)

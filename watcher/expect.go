@@ -35,7 +35,7 @@ func (p *Pass) Expect(only string, on rules.Date, each func(Expected) error) err
 	}
 	j.scales = newGroupScales(j, v, nil)
 	w := newWorker(j, v)
-	todo := tasks(allBlocks(names.Len()), j.width, rules.NoDate)
+	todo := tasks(allBlocks(names.Len(), rules.NoDate), j.width)
 	if only != "" {
 		todo = taskOf(names, only)
 	}

@@ -16,12 +16,14 @@ const concludedKey = "conclusions"
 type weighed struct {
 	crew *crew
 	days map[rules.Date]*weighedDay
+	uses map[rules.Date]map[int]causes.Use // by date and member: how the pool takes values, see conclude
 }
 
 // weighedDay is a date on which a file changes the value of a member.
 type weighedDay struct {
 	*causes.Result
-	fresh []bool // by member
+	fresh []bool // by member: judged now
+	woken []bool // by member: judged now although the file does not change it; nil for none
 }
 
 // view is what was said of a member on a date, nil for nothing.
@@ -46,6 +48,8 @@ type leader struct {
 	raw    []int64 // of one block
 	values []rules.Units
 	fresh  []bool
+	woken  []bool
+	first  []bool // the ledger has no value
 	known  []causes.Known
 }
 
@@ -57,7 +61,7 @@ func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 		return nil, nil
 	}
 	l := &leader{crew: crew, j: j, view: v, blocks: map[uint32][]*day{}, upto: rules.NoDate, raw: make([]int64, BlockSize),
-		values: make([]rules.Units, len(crew.members)), fresh: make([]bool, len(crew.members))}
+		values: make([]rules.Units, len(crew.members)), fresh: make([]bool, len(crew.members)), woken: make([]bool, len(crew.members)), first: make([]bool, len(crew.members))}
 	for _, b := range blocks {
 		if _, ok := slices.BinarySearch(crew.blocks, b.number); ok {
 			l.blocks[b.number] = b.days
@@ -149,9 +153,10 @@ func (l *leader) lead(todo []rules.Date) (*weighed, error) {
 		}
 		if _, ok := slices.BinarySearch(todo, d); ok && r != nil {
 			withWrong(d, r)
-			out.days[d] = &weighedDay{r, slices.Clone(l.fresh)}
+			out.days[d] = &weighedDay{r, slices.Clone(l.fresh), l.wokenNow(d, r)}
 		}
 	}
+	out.conclude(l.j.held)
 	return out, nil
 }
 
@@ -182,13 +187,14 @@ func (l *leader) fill(date rules.Date) (any bool, err error) {
 		from, to := l.crew.in(task{block: number, width: BlockSize})
 		for m := from; m < to; m++ {
 			at := int(l.crew.series[m] % BlockSize)
-			l.values[m], l.fresh[m] = rules.Units(l.raw[at]), false
+			l.values[m], l.fresh[m], l.first[m] = rules.Units(l.raw[at]), false, l.raw[at] == Missing64
 			if col != nil && at < col.Len() && col.has(at) {
 				l.values[m], l.fresh[m] = rules.Units(col.units(at)), true
 			}
 			any = any || l.values[m] != rules.Missing
 		}
 	}
+	l.wake()
 	return any, nil
 }
 

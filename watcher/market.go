@@ -15,10 +15,7 @@ import (
 const mostNamed = 10
 
 // marketFlags raises one flag a group and date of which a file changes a value and whose members moved together.
-func (p *Pass) marketFlags(j *judging, v View) (flags []*FlagRow, err error) {
-	if j.weighed == nil {
-		return nil, nil
-	}
+func (j *judging) marketFlags(v View) (flags []*FlagRow, err error) {
 	var before map[groupDay]rules.Flag // raised for the date before
 	for _, date := range j.weighed.dates() {
 		d := j.weighed.days[date]

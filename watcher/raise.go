@@ -9,12 +9,14 @@ import (
 
 // raise makes the flags of the fresh hits and of the restated values of a date.
 func (w *worker) raise(t task, d *day, fresh []int64, out *outcome) {
-	if d.col == nil {
-		return
+	if d.col != nil {
+		w.countArrivals(t, d, fresh, out)
 	}
-	w.countArrivals(t, d, fresh, out)
 	for n := range w.hits {
 		h := &w.hits[n]
+		if h.woken {
+			w.raiseWoken(t, d, h, out)
+		}
 		if !h.fresh {
 			continue
 		}
@@ -34,6 +36,57 @@ func (w *worker) raise(t task, d *day, fresh []int64, out *outcome) {
 			}
 		}
 	}
+}
+
+// raiseWoken makes the flag of a value that is judged anew, or notes on the flags that it has what it looks like now.
+func (w *worker) raiseWoken(t task, d *day, h *hit, out *outcome) {
+	steps, err := w.stepsOf(t, d.date, []int{int(h.at)})
+	if err != nil {
+		w.failed = err
+		return
+	}
+	about, err := aboutValue(w.view, t.series(int(h.at)), d.date, steps[0])
+	if err != nil {
+		w.failed = err
+		return
+	}
+	for n := range about.flags {
+		if f := about.flags[n]; f.Kind != rules.KindRestated && f.Standing.Asks() {
+			row := w.newFlag()
+			row.Flag, row.SeriesID = f, t.series(int(h.at))
+			relook(row, h.view, w.j.newest)
+			out.flags = append(out.flags, row)
+		}
+	}
+	if about.flagged || about.decided != nil {
+		return
+	}
+	for _, f := range w.flagsOf(t, d, h) {
+		if err := w.source(f, steps[0]); err != nil {
+			w.failed = err
+		}
+		if f.First = w.j.weighed.reference(f.SeriesID) >= w.j.firstNames; f.First && f.Date < w.j.newest {
+			f.Standing = rules.OfHistory
+		}
+		w.fillView(f, d.date, h.view)
+		out.flags = append(out.flags, f)
+	}
+}
+
+// source notes on a flag which file brought the version of its value that a step wrote.
+func (w *worker) source(f *FlagRow, step uint32) error {
+	row, err := w.view.File(step)
+	if err != nil {
+		return err
+	}
+	f.Feed, f.File = row.File.Feed, row.File.Name
+	versions, err := w.view.Series(Returns, f.SeriesID)
+	for _, v := range versions {
+		if v.Date == f.Date && v.Step == step {
+			f.Line = v.Line
+		}
+	}
+	return err
 }
 
 // flagsOf makes the flags of a hit: breach and limit, or, where it is neither, what the pool finds doubtful.
@@ -133,7 +186,9 @@ func (w *worker) blank(t task, d *day, i int) *FlagRow {
 	f.Series, f.Group = string(w.j.names.Name(id)), w.group(i)
 	f.Return, f.Used, f.WindowTo = rules.Units(w.raw[i]), rules.Missing, rules.NoDate
 	f.Feed, f.File = w.j.file.Feed, w.j.file.Name
-	f.Line = d.col.Line(t.from + i)
+	if d.col != nil {
+		f.Line = d.col.Line(t.from + i)
+	}
 	f.Standing = rules.Open
 	f.First = int(id) >= w.j.firstNames
 	if f.First && d.date < w.j.newest {

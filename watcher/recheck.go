@@ -25,7 +25,7 @@ func Recheck(v View, progress Progress) error {
 	}
 	j.scales = newGroupScales(j, v, nil)
 	w := newWorker(j, v)
-	todo := tasks(allBlocks(names.Len()), j.width, j.held[0])
+	todo := tasks(allBlocks(names.Len(), j.held[0]), j.width)
 	for n, t := range todo {
 		if err := w.recheck(t); err != nil {
 			return err

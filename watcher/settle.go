@@ -158,7 +158,7 @@ func (p *Pass) replayAll(v View, b *Batch, again []RangeKey) error {
 	}
 	p.only(j, again)
 	j.scales = newGroupScales(j, v, nil)
-	outs, err := p.runTasks(j, tasks(allBlocks(names.Len()), j.width, j.held[0]))
+	outs, err := p.runTasks(j, tasks(allBlocks(names.Len(), j.held[0]), j.width))
 	if err != nil {
 		return err
 	}
@@ -178,9 +178,9 @@ func (p *Pass) only(j *judging, ranges []RangeKey) {
 	}
 }
 
-func allBlocks(series int) (out []block) {
+func allBlocks(series int, since rules.Date) (out []block) {
 	for n := 0; n*BlockSize < series; n++ {
-		out = append(out, block{number: uint32(n), series: min(BlockSize, series-n*BlockSize)})
+		out = append(out, block{number: uint32(n), series: min(BlockSize, series-n*BlockSize), since: since})
 	}
 	return out
 }

@@ -11,7 +11,7 @@ import (
 
 // plainPool stands in for the pool, with rules that are easy to tell. It keeps the newest span values of each member that it took, and
 // takes none that it finds odd. A value beyond four times their mean size is doubtful, beyond eight times it is out. One that takes back
-// an out value of the date before looks like a spike and is out too. A group whose median size is beyond three times is a market day.
+// such a value of the date before looks like a spike and is out too. A group whose median size is beyond three times is a market day.
 type plainPool struct {
 	members []causes.Member
 	groups  []string
@@ -22,7 +22,7 @@ type plainPool struct {
 const span = 20
 
 type oddity struct {
-	out   bool
+	odd   bool
 	value float64
 	date  rules.Date
 }
@@ -66,7 +66,7 @@ func (p *plainPool) Step(d causes.Day) *causes.Result {
 				}
 			}
 		}
-		p.last[m] = oddity{use == causes.Out, x.Float(), d.Date}
+		p.last[m] = oddity{use != causes.AsIs && use != causes.Instead, x.Float(), d.Date}
 		if use == causes.AsIs || use == causes.Instead {
 			p.kept[m] = append(p.kept[m], value)
 			p.kept[m] = p.kept[m][max(0, len(p.kept[m])-span):]
@@ -81,10 +81,13 @@ func (p *plainPool) look(date rules.Date, m int, x float64, r *causes.Result) ca
 	size := p.size(m)
 	before := p.last[m]
 	switch {
-	case before.out && math.Abs(x+before.value) < math.Abs(before.value)/4:
+	case before.odd && math.Abs(x+before.value) < math.Abs(before.value)/4:
 		spike := causes.View{Member: m, Date: before.date, LooksLike: rules.CauseSpike, Share: 0.9, Out: true, Use: causes.Out}
 		r.Earlier = append(r.Earlier, spike)
 		v.LooksLike, v.Share, v.Out, v.Use = rules.CauseSpike, 0.9, true, causes.Out
+	case r.Foreseen[m].OK && math.Abs(x) < 4*size && math.Abs(x-r.Foreseen[m].V) > 2*size:
+		v.Kind, v.LooksLike, v.Share, v.Implied, v.Reference = rules.KindDoubtful, rules.CauseSign, 0.8, rules.Some(-x), "index"
+		v.ReferenceReturn, v.Residual, v.Use = rules.Some(2*r.Foreseen[m].V), rules.Some(x-r.Foreseen[m].V), causes.Clipped
 	case math.Abs(x) > 8*size:
 		v.Kind, v.LooksLike, v.Share, v.Implied, v.Out, v.Use = rules.KindDoubtful, rules.CauseX100, 0.7, rules.Some(x/100), true, causes.Out
 	case math.Abs(x) > 4*size:

@@ -8,37 +8,59 @@ import (
 	"strayd/rules/causes"
 )
 
-// viewHits makes hits of the fresh values of a date that the pool has a view of, and settles what it now says of the date before.
-func (w *worker) viewHits(t task, d *day, out *outcome) {
+// viewHits makes hits of the values of a date that the pool has a view of, and settles what it now says of the date before.
+func (w *worker) viewHits(t task, d *day, fresh []int64, out *outcome) {
 	if w.j.weighed == nil {
 		return
 	}
+	from, to := w.j.weighed.crew.in(t)
+	w.leftOut(t, d.date, from, to, fresh)
 	said := w.j.weighed.days[d.date]
 	if said == nil {
 		return
 	}
-	from, to := w.j.weighed.crew.in(t)
 	for n := range said.Views {
-		if v := &said.Views[n]; v.Member >= from && v.Member < to && said.fresh[v.Member] {
-			h := w.hitAt(w.memberAt(t, v), true)
-			h.view, h.out = v, use(v) == causes.Out
+		v := &said.Views[n]
+		if v.Member < from || v.Member >= to {
+			continue
+		}
+		switch at := w.memberAt(t, v.Member); {
+		case said.woken != nil && said.woken[v.Member]:
+			h := w.hitAt(at, false)
+			h.view, h.woken = v, true
+		case said.fresh[v.Member]:
+			w.hitAt(at, true).view = v
 		}
 	}
 	for n := range said.Earlier {
-		if e := &said.Earlier[n]; e.Member >= from && e.Member < to && w.settleEarlier(t, e, d.date, out) && said.fresh[e.Member] {
-			if h := w.hitAt(w.memberAt(t, e), true); h.out {
+		e := &said.Earlier[n]
+		if e.Member >= from && e.Member < to && w.settleEarlier(t, e, d.date, out) && said.fresh[e.Member] {
+			if h := w.hitAt(w.memberAt(t, e.Member), true); h.out {
 				h.taken = true
 			}
 		}
 	}
 }
 
-// memberAt is the place in the task of the series that a view is about.
-func (w *worker) memberAt(t task, v *causes.View) int32 {
-	return int32(w.j.weighed.crew.series[v.Member] - t.series(0))
+// leftOut makes hits of the fresh values of a date that the pool leaves out.
+func (w *worker) leftOut(t task, date rules.Date, from, to int, fresh []int64) {
+	uses := w.j.weighed.uses[date]
+	if len(uses) == 0 {
+		return
+	}
+	for m := from; m < to; m++ {
+		if at := w.memberAt(t, m); uses[m] == causes.Out && fresh[at] != Missing64 {
+			w.hitAt(at, true).out = true
+		}
+	}
 }
 
-// outHits finds the values held before that the pool left out.
+// memberAt is the place in the task of the series that is a member.
+func (w *worker) memberAt(t task, member int) int32 {
+	return int32(w.j.weighed.crew.series[member] - t.series(0))
+}
+
+// outHits finds the values held before that the pool left out, or leaves out now.
 func (w *worker) outHits(t task, d *day, fresh []int64) error {
 	if w.j.concluded == 0 {
 		return nil
@@ -48,12 +70,26 @@ func (w *worker) outHits(t task, d *day, fresh []int64) error {
 	if err := w.view.Patch(w.j.concluded, d.date, t.block, t.from, uses); err != nil {
 		return err
 	}
+	w.usesNow(t, d.date, uses)
 	for i, u := range uses {
 		if causes.Use(u) == causes.Out && fresh[i] == Missing64 && w.raw[i] != Missing64 {
 			w.hitAt(int32(i), false).out = true
 		}
 	}
 	return nil
+}
+
+// usesNow overlays what the pool concluded before with what it concludes now.
+func (w *worker) usesNow(t task, date rules.Date, uses []int64) {
+	if w.j.weighed == nil || len(w.j.weighed.uses[date]) == 0 {
+		return
+	}
+	from, to := w.j.weighed.crew.in(t)
+	for m := from; m < to; m++ {
+		if u, ok := w.j.weighed.uses[date][m]; ok {
+			uses[w.memberAt(t, m)] = int64(u)
+		}
+	}
 }
 
 // fillView is the package's, with a word on a reference that its followers agree is wrong.

@@ -33,14 +33,13 @@ func newCrew(names *Names, m *rules.Membership, events []rules.Event) *crew {
 	}
 	c := &crew{at: map[uint32]int32{}}
 	var group, reference, currency []string
-	named := map[string]bool{}
+	named := m.Held()
 	all := make([]string, names.Len())
 	for id := range uint32(names.Len()) {
 		name := string(names.Name(id))
 		g := m.Group(name)
 		all[id] = name
 		group, reference, currency = append(group, g), append(reference, m.Reference(name, g)), append(currency, m.Currency(name))
-		named[reference[id]], named[currency[id]] = true, true
 	}
 	for id, name := range all {
 		if group[id] != "" || reference[id] != "" || currency[id] != "" || named[name] {

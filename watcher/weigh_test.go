@@ -185,3 +185,46 @@ func differ(t *testing.T, what string, got, want []string) {
 		}
 	}
 }
+
+// A reference that comes in a file after its followers' has them judged anew: the same flags stand as where it comes before, whether all
+// history comes in two files or each day in two.
+func TestLateReference(t *testing.T) {
+	for seed := range uint64(4) {
+		r := rand.New(rand.NewPCG(seed, 9))
+		rows := quiet(8, 60, r)
+		index := quiet(1, 60, r)
+		for n := range index {
+			index[n][0].series = "index"
+			if r.IntN(6) == 0 {
+				index[n][0].value *= 6
+			}
+		}
+		settings := weighSettings()
+		settings.Groups[0].Reference = "index"
+		var want []string
+		for _, dates := range []int{1, 60} {
+			for _, first := range []string{"a", "z"} { // the reference before or after
+				s := byFile(rows, dates)
+				for n, day := range index {
+					name := fmt.Sprintf("f%04d+", n/dates)
+					if first == "a" {
+						name = fmt.Sprintf("f%04d-", n/dates-1) // right after the day before's
+					}
+					s.files[name] = append(s.files[name], day...)
+				}
+				m := &memory{}
+				weighRun(t, m, s, settings, 2)
+				got := told(t, m)
+				if want == nil {
+					if want = got; !strings.Contains(strings.Join(want, "\n"), "doubtful sign {0.8 true}") {
+						t.Fatalf("seed %d: no value is doubtful by its reference", seed)
+					}
+				}
+				differ(t, fmt.Sprintf("seed %d, %d dates a file, reference %s", seed, dates, first), got, want)
+				if v, _ := m.View(); watcher.Recheck(v, nil) != nil {
+					t.Errorf("seed %d: %v", seed, watcher.Recheck(v, nil))
+				}
+			}
+		}
+	}
+}

@@ -59,6 +59,7 @@ type hit struct {
 	fresh    bool
 	flagged  bool            // what windows take of it is not simply the value
 	out      bool            // an error holds more than half: windows leave it out
+	woken    bool            // judged anew although the file does not change it
 	taken    bool            // it takes back a flagged value of the date before, and raises no flag of its own
 	view     *causes.View    // what the pool says of it, nil for nothing
 	decided  *rules.Act      // what somebody decided of it, nil for nothing
@@ -93,7 +94,7 @@ func newWorker(j *judging, v View) *worker {
 func (w *worker) run(t task) (outcome, error) {
 	out := outcome{flags: w.room.flags[:0], used: w.room.used[:0]}
 	first := t.since
-	if first == rules.NoDate {
+	if first == rules.NoDate || len(t.days) > 0 && t.days[0].date < first {
 		first = t.days[0].date
 	}
 	w.begin(t)
