@@ -11,10 +11,10 @@ import (
 
 // A column's value, little endian, after its seal:
 //
-//	shape u8, decimals u8, n u16, present u16, width u8, 0 u8, first u32, stride u32, offsets, values, lines
+//	shape u8, decimals u8, n u16, present u16, width u8, longs u8, first u32, stride u32, offsets, values, lines
 //
 // Dense: no offsets, n values. Sparse: n offsets of u16, ascending, then n values. Values are int32, or int64 in a wide
-// column. present counts the cells that have a value; the cell of rank r (from 0, in the order of offsets) came from line
+// column, or of three bytes in a short one, with a list of the few that need more behind them. present counts the cells that have a value; the cell of rank r (from 0, in the order of offsets) came from line
 //
 //	first + r stride                             width 0
 //	first + bits[r]                              width > 0
@@ -29,6 +29,7 @@ const (
 	shapeSparse
 	shapeFull // no cell up to the length is missing
 	shapeSummed
+	shapeShort // dense only
 	shapeEnd
 )
 
@@ -41,12 +42,16 @@ type layer struct {
 	first, stride uint32
 	offsets       []byte
 	values        []byte
+	long          []byte // of a short column: what does not fit its cells
 	lines         []byte
 }
 
 func (l *layer) cell() int {
-	if l.shape&shapeWide != 0 {
+	switch {
+	case l.shape&shapeWide != 0:
 		return 8
+	case l.shape&shapeShort != 0:
+		return shortCell
 	}
 	return 4
 }
@@ -63,12 +68,14 @@ func parseLayer(v []byte) (l layer, why string) {
 		offsets = 2 * l.n
 	}
 	values := offsets + l.n*l.cell()
+	long := values + longCell*int(v[7])
 	v = v[columnHead:]
 	if l.shape >= shapeEnd || l.width > 32 || l.n > watcher.BlockSize || l.present > l.n || l.decimals > rules.Places ||
-		len(v) != values+(l.present*l.width+7)/8 {
+		l.shape&shapeShort != 0 && l.shape&(shapeWide|shapeSparse) != 0 || l.shape&shapeShort == 0 && long != values ||
+		len(v) != long+(l.present*l.width+7)/8 {
 		return l, "column does not have the length that its head says"
 	}
-	l.offsets, l.values, l.lines = v[:offsets:offsets], v[offsets:values:values], v[values:]
+	l.offsets, l.values, l.long, l.lines = v[:offsets:offsets], v[offsets:values:values], v[values:long:long], v[long:]
 	return l, ""
 }
 
@@ -87,8 +94,14 @@ func appendColumn(dst []byte, c *watcher.Column) []byte {
 		shape |= shapeSparse
 	}
 	n := c.Len()
-	if shape&shapeSparse != 0 {
-		n = present
+	longs, short := longs(c)
+	switch {
+	case shape&shapeSparse != 0:
+		n, longs = present, 0
+	case short:
+		shape |= shapeShort
+	default:
+		longs = 0
 	}
 	lines := measure(c, present)
 	if lines.summed {
@@ -97,12 +110,15 @@ func appendColumn(dst []byte, c *watcher.Column) []byte {
 	dst = append(dst, shape, c.Decimals)
 	dst = binary.LittleEndian.AppendUint16(dst, uint16(n))
 	dst = binary.LittleEndian.AppendUint16(dst, uint16(present))
-	dst = append(dst, byte(lines.width), 0)
+	dst = append(dst, byte(lines.width), byte(longs))
 	dst = binary.LittleEndian.AppendUint32(dst, lines.first)
 	dst = binary.LittleEndian.AppendUint32(dst, lines.stride)
-	if shape&shapeSparse != 0 {
+	switch {
+	case shape&shapeSparse != 0:
 		dst = appendSparse(dst, c)
-	} else {
+	case shape&shapeShort != 0:
+		dst = appendShort(dst, c, longs)
+	default:
 		dst = appendDense(dst, c)
 	}
 	return lines.append(dst)
@@ -179,8 +195,11 @@ func (l *layer) find(offset int) (v int64, rank int, ok bool) {
 
 // value is the i-th stored value, Missing64 where it is missing.
 func (l *layer) value(i int) int64 {
-	if l.shape&shapeWide != 0 {
+	switch {
+	case l.shape&shapeWide != 0:
 		return int64(binary.LittleEndian.Uint64(l.values[8*i:]))
+	case l.shape&shapeShort != 0:
+		return l.shortValue(i)
 	}
 	if v := int32(binary.LittleEndian.Uint32(l.values[4*i:])); v != watcher.Missing32 {
 		return int64(v)

@@ -30,6 +30,8 @@ func (l *layer) writeDense(dst []int64, from int, mul int64) {
 	switch {
 	case l.shape&shapeWide != 0:
 		wide(dst, l.values[8*from:], mul)
+	case l.shape&shapeShort != 0:
+		l.writeShort(dst, from, mul)
 	case l.shape&shapeFull != 0:
 		full(dst, l.values[4*from:], mul)
 	default:

@@ -84,7 +84,7 @@ func TestDiskFull(t *testing.T) {
 	if err := os.WriteFile(filepath.Join(dir, "ballast"), make([]byte, 2<<20), 0o600); err != nil {
 		t.Fatal(err)
 	}
-	large := &watcher.Batch{Step: 2, File: fileRow(2), NewNames: names(60, 2000), Returns: history(2000, 120)}
+	large := &watcher.Batch{Step: 2, File: fileRow(2), NewNames: names(60, 2000), Returns: history(2000, 160)}
 	err = l.Publish(large)
 	if !errors.Is(err, unix.ENOSPC) || isDamaged(err) {
 		t.Fatalf("on a full disk: %v", err)

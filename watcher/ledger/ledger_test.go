@@ -7,6 +7,7 @@ import (
 	"os"
 	"path/filepath"
 	"reflect"
+	"slices"
 	"testing"
 	"time"
 
@@ -123,7 +124,10 @@ func TestColumnsComeBack(t *testing.T) {
 			t.Fatalf("cells differ from %d on: %v, want %v", from, got, want)
 		}
 		for i := range c.Len() + 2 {
-			_, rank, ok := l.find(i)
+			v, rank, ok := l.find(i)
+			if ok && (c.V32 != nil && v != int64(c.V32[i]) || c.V64 != nil && v != c.V64[i]) {
+				t.Fatalf("offset %d: %d is not its value", i, v)
+			}
 			line := c.Line(i)
 			if ok != (i < c.Len() && has(c, i)) || ok && l.line(rank) != line {
 				t.Fatalf("offset %d: line %d, want %d", i, l.line(rank), line)
@@ -142,6 +146,9 @@ func randomColumn(rng *rand.Rand) *watcher.Column {
 	wide := rng.IntN(2) == 0
 	for i := range n {
 		v := int64(rng.Int32N(1e6)) - 5e5
+		if rng.IntN(60) == 0 { // at and beyond the ends of a short cell
+			v = []int64{-1 << 23, -1<<23 + 1, -1<<23 + 2, 1<<23 - 1, 1 << 23, 1<<31 - 1, -1<<31 + 1}[rng.IntN(7)]
+		}
 		gone := rng.Float64() < holes && i < n-1
 		switch {
 		case wide && gone:
@@ -179,10 +186,10 @@ func randomLines(rng *rand.Rand, c *watcher.Column, kind int) []uint32 {
 	return at
 }
 
-// TestFullColumnFillsPages: two full int32 columns with their keys must fill eight pages of 4 KiB, where bbolt takes 16 bytes for
-// a page's header and 16 for each element.
+// TestFullColumnFillsPages: two full columns of int32 cells too large for short ones must fill eight pages of 4 KiB with their keys,
+// where bbolt takes 16 bytes for a page's header and 16 for each element.
 func TestFullColumnFillsPages(t *testing.T) {
-	c := &watcher.Column{V32: make([]int32, watcher.BlockSize), Lines: watcher.Lines{First: 1, Stride: 1}}
+	c := &watcher.Column{V32: slices.Repeat([]int32{1 << 30}, watcher.BlockSize), Lines: watcher.Lines{First: 1, Stride: 1}}
 	value := sealSize + len(appendColumn(nil, c))
 	if size := 16 + 2*(16+12+value); size > 8*4096 {
 		t.Errorf("two full columns take %d bytes, %d too many", size, size-8*4096)

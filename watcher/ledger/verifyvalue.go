@@ -87,6 +87,9 @@ func (c *verifier) column(in bucket, key, body []byte) error {
 		}
 		last = offset
 	}
+	if !l.longsFit() {
+		return malformed(in, key, "its long values do not belong to its cells")
+	}
 	if l.shape&shapeSparse == 0 {
 		last = l.n - 1
 	}
