@@ -2,8 +2,6 @@ package rules
 
 import (
 	"fmt"
-	"slices"
-	"strings"
 	"time"
 )
 
@@ -17,25 +15,11 @@ type Arrival struct {
 	Others  int    // series that have a value and were not expected
 	Refused string // name of a refused file of the date, "" when there is none
 
-	missed int
-	names  []string // of the missed, in order, at most mostNamed
+	missed Naming
 }
-
-// mostNamed is how many series a note names.
-const mostNamed = 10
 
 // Miss counts an expected series that has no value.
-func (a *Arrival) Miss(series string) {
-	a.missed++
-	at, _ := slices.BinarySearch(a.names, series)
-	if at == mostNamed {
-		return
-	}
-	if len(a.names) == mostNamed {
-		a.names = a.names[:mostNamed-1]
-	}
-	a.names = slices.Insert(a.names, at, series)
-}
+func (a *Arrival) Miss(series string) { a.missed.Add(series) }
 
 // Completeness is how much of a feed is there for a date.
 type Completeness string
@@ -51,7 +35,7 @@ func (a *Arrival) Completeness() Completeness {
 	switch {
 	case a.Came+a.Others == 0:
 		return Late
-	case a.missed > 0:
+	case a.missed.Count > 0:
 		return Partial
 	}
 	return Whole
@@ -68,24 +52,16 @@ func (a *Arrival) Flag(now time.Time) (f Flag, ok bool) {
 func (a *Arrival) note() string {
 	by := a.Due.Format("2006-01-02 15:04 -07:00")
 	var note string
-	switch expected := a.Came + a.missed; {
+	switch expected := a.Came + a.missed.Count; {
 	case expected == 0:
 		note = fmt.Sprintf("nothing came by %s, and no date of this feed is held to say which series to expect", by)
 	case a.Completeness() == Late:
-		note = fmt.Sprintf("nothing came by %s; expected %d series: %s", by, expected, a.named())
+		note = fmt.Sprintf("nothing came by %s; expected %d series: %s", by, expected, &a.missed)
 	default:
-		note = fmt.Sprintf("no value of %d of %d expected series by %s: %s", a.missed, expected, by, a.named())
+		note = fmt.Sprintf("no value of %d of %d expected series by %s: %s", a.missed.Count, expected, by, &a.missed)
 	}
 	if a.Refused != "" {
 		note += "; " + a.Refused + " was refused"
 	}
 	return note
-}
-
-func (a *Arrival) named() string {
-	names := strings.Join(a.names, ", ")
-	if more := a.missed - len(a.names); more > 0 {
-		names += fmt.Sprintf(" and %d more", more)
-	}
-	return names
 }

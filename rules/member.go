@@ -50,7 +50,11 @@ type Settings struct {
 	Ranges   []Range
 	Groups   []Group
 	Doubtful float64
-	Calendar string
+	Calendar string // name of the calendar of all series but those of CalendarOf
+	// Calendars are the business days of each calendar that is not simply Monday to Friday, by name; CalendarOf names that of each
+	// series whose register row has one.
+	Calendars  map[string]*Calendar `json:",omitempty"`
+	CalendarOf map[string]string    `json:",omitempty"`
 	// Assigned is the group of each series that the register puts into one: part of the settings, so that a verdict of the past
 	// is explained by the groups of then.
 	Assigned map[string]string `json:",omitempty"`
@@ -66,6 +70,7 @@ type Settings struct {
 // Register takes over what the register says of its series.
 func (s *Settings) Register(register []Series) {
 	s.Assigned, s.References, s.Currencies, s.Lives = map[string]string{}, map[string]string{}, map[string]string{}, map[string]Life{}
+	s.CalendarOf = map[string]string{}
 	set := func(m map[string]string, id, value string) {
 		if value != "" {
 			m[id] = value
@@ -75,10 +80,17 @@ func (s *Settings) Register(register []Series) {
 		set(s.Assigned, r.ID, r.Group)
 		set(s.References, r.ID, r.Reference)
 		set(s.Currencies, r.ID, r.FX)
+		set(s.CalendarOf, r.ID, r.Calendar)
 		if r.Start != NoDate || r.End != NoDate {
 			s.Lives[r.ID] = Life{r.Start, r.End}
 		}
 	}
+}
+
+// Expects says whether a series is expected to have a value on a date: a business day of its calendar, within its life.
+func (s *Settings) Expects(series string, d Date) bool {
+	life, known := s.Lives[series]
+	return (!known || d >= life.Start && (life.End == NoDate || d <= life.End)) && s.CalendarFor(series).Business(d)
 }
 
 // Life is the first and the last date on which a series is expected, NoDate where it is open.

@@ -75,7 +75,12 @@ func (s *Settings) Identity(n int) string {
 		Limits  []Range // a value without lines of its own is clipped to them
 		Groups  []Group // whom they judge
 		Members [32]byte
+		Days    *[32]byte `json:",omitempty"` // the calendars, where one is not plain: they say when a series is dormant
 	}{Range: r}
+	if len(s.Calendars) > 0 {
+		days := sha256.Sum256(encode(Settings{Calendar: s.Calendar, Calendars: s.Calendars, CalendarOf: s.CalendarOf}))
+		by.Days = &days
+	}
 	for _, l := range s.Ranges {
 		if l.Limit == nil {
 			continue

@@ -28,12 +28,18 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	if err != nil {
 		return err
 	}
+	missing, err := p.gate(j, f, sheet, blocks)
+	if err != nil {
+		return err
+	}
+	p.newest = j.newest
 	out, err := p.judgeAll(j, blocks, b)
 	if err != nil {
 		return err
 	}
 	b.File = FileRow{Step: b.Step, File: sheet.File, Stamp: c.Stamp, FeedKey: p.FeedKey(f), Settings: j.settings, Outcome: Accepted,
 		Received: p.Now, First: sheet.First(), Last: sheet.Last()}
+	b.Flags = append(b.Flags, missing...)
 	p.assemble(b, j, out)
 	b.File.Counts.Rows = sheet.Rows
 	b.File.Counts.Same = sheet.Rows - b.File.Counts.New - b.File.Counts.Late - b.File.Counts.Restated
@@ -42,6 +48,7 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 		return err
 	}
 	p.Resident.end(b.Step, j.keptNow)
+	p.noteTaken(b.File)
 	p.row.Accepted++
 	p.row.Counts.Add(b.File.Counts)
 	p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateAccepted, Row: b.File, Notes: sheet.Notes})
@@ -57,7 +64,6 @@ func (p *Pass) judging(sheet *Sheet) (*judging, error) {
 	defer v.Close()
 	j := &judging{names: sheet.Names, heldNames: sheet.Held, firstNames: p.firstNames, file: sheet.File, now: p.Now, step: v.Step() + 1, nextRef: v.NextRef()}
 	j.newest = max(sheet.Last(), p.newest)
-	p.newest = j.newest
 	return j, p.prepare(j, v)
 }
 

@@ -20,12 +20,16 @@ func (b *BadFile) Place() string {
 	return s
 }
 
-// Message is the reason and the cell, without the place.
+// Message is the reason, the cell and what to ask for, without the place.
 func (b *BadFile) Message() string {
-	if b.Cell == "" {
-		return b.Reason
+	s := b.Reason
+	if b.Cell != "" {
+		s += ": " + QuoteCell(b.Cell)
 	}
-	return b.Reason + ": " + QuoteCell(b.Cell)
+	if b.Ask != "" {
+		s += "; " + b.Ask
+	}
+	return s
 }
 
 // QuoteCell shows a cell's text quoted, cut on a rune boundary, control characters escaped.

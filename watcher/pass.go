@@ -26,6 +26,9 @@ type Pass struct {
 
 	// Resident is what the passes before it left in memory; nil to read everything from the ledger.
 	Resident *Resident
+	// Released are the contents of refused files that a person released: what is held is not held against them. Their form is.
+	Released map[[32]byte]bool
+
 	// Tell makes the notices of a step, which are recorded with it; nil for none.
 	Tell func(rules.News) []rules.Notice
 	// Report is told of every file as it is done with; nil for nobody.
@@ -33,10 +36,12 @@ type Pass struct {
 	// Progress is told of long work by its name; nil for nobody.
 	Progress func(work string, done, total int64)
 
-	names      *Names     // those held
-	firstNames int        // how many were held when the pass began
-	newest     rules.Date // newest date of the files taken so far
-	opened     []*FlagRow // open flags of first loads, which become history when a newer date comes in
+	names      *Names               // those held
+	firstNames int                  // how many were held when the pass began
+	newest     rules.Date           // newest date of the files taken so far
+	opened     []*FlagRow           // open flags of first loads, which become history when a newer date comes in
+	gateText   string               // see gateKey
+	taken      map[string][]FileRow // the newest accepted files of each feed that brought something new, in their order
 	row        PassRow
 	led        *leader // that of the step before
 
@@ -117,9 +122,11 @@ func (p *Pass) begin() (*seenFiles, error) {
 	}
 	p.names, p.firstNames = names, names.Len()
 	s := &seenFiles{map[string]bool{}, map[int64]bool{}}
+	p.taken, p.gateText = map[string][]FileRow{}, gateText(&p.Settings)
 	return s, v.Files(func(r FileRow) bool {
-		s.stamps[stampKey(r.File.Feed, r.File.Name, r.Stamp, r.FeedKey)] = true
+		s.stamps[stampKey(r.File.Feed, r.File.Name, r.Stamp, r.FeedKey)] = !p.Released[r.File.SHA256] || r.Outcome != Refused
 		s.sizes[r.File.Size] = true
+		p.noteTaken(r)
 		return true
 	})
 }
@@ -181,7 +188,7 @@ func (p *Pass) unread(f rules.Feed, c Candidate, err error) error {
 // file takes one file: nothing happens when it was taken before, a bad one is refused, and the rest is judged and published.
 func (p *Pass) file(ctx context.Context, f rules.Feed, c Candidate, seen *seenFiles) error {
 	key := p.FeedKey(f)
-	if c.Stamp != "" && seen.stamps[stampKey(f.Name, c.Name, c.Stamp, key)] {
+	if c.Stamp != "" && (seen.stamps[stampKey(f.Name, c.Name, c.Stamp, key)] || seen.stamps[stampKey(f.Name, c.Name, c.Stamp, p.gateKey(f))]) {
 		p.report(FileReport{Feed: f.Name, Name: c.Name, Fate: FateSeen})
 		return nil
 	}
@@ -221,6 +228,10 @@ func (p *Pass) known(f rules.Feed, sha [32]byte, key string) (bool, error) {
 	}
 	defer v.Close()
 	_, ok, err := v.FileSeen(f.Name, sha, key)
+	if ok || err != nil || p.Released[sha] {
+		return ok, err
+	}
+	_, ok, err = v.FileSeen(f.Name, sha, p.gateKey(f))
 	return ok, err
 }
 
@@ -239,12 +250,17 @@ func (p *Pass) refuse(bad *BadFile, f rules.Feed, c Candidate) error {
 	if err := v.Close(); err != nil {
 		return err
 	}
-	b.File = FileRow{Step: b.Step, File: bad.File, Stamp: c.Stamp, FeedKey: p.FeedKey(f), Outcome: Refused, Received: p.Now,
+	key := p.FeedKey(f)
+	if bad.Gate {
+		key = p.gateKey(f)
+	}
+	b.File = FileRow{Step: b.Step, File: bad.File, Stamp: c.Stamp, FeedKey: key, Outcome: Refused, Received: p.Now,
 		Reason: bad.Error(), Line: uint32(bad.Line), First: bad.Date, Last: bad.Date, Counts: Counts{Flags: 1}}
 	flag := &FlagRow{SeriesID: NoSeries, New: true}
 	flag.Ref, flag.Step, flag.RaisedAt, flag.Date = ref, b.Step, p.Now, bad.Date
 	flag.Kind, flag.Standing, flag.Return = rules.KindRefused, rules.Open, rules.Missing
 	flag.Feed, flag.File, flag.Line, flag.Note = f.Name, bad.File.Name, uint32(bad.Line), bad.Error()
+	flag.LooksLike = bad.LooksLike
 	b.Flags = []*FlagRow{flag}
 	p.tell(b, 0)
 	if err := p.Store.Publish(b); err != nil {

@@ -48,6 +48,10 @@ type BadFile struct {
 	Cell   string
 	Date   rules.Date // the file's date where it is known, else NoDate
 	Reason string
+
+	Ask       string      // what to ask the provider for; "" where the reason says it all
+	LooksLike rules.Cause // "" for nothing
+	Gate      bool        // refused by what is held, not by its form: a person may release it
 }
 
 // Error is file:line:column: reason, with the cell's text quoted and cut.
