@@ -2,6 +2,7 @@ package main
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 
 	"strayd/rules"
@@ -21,10 +22,11 @@ type tally struct {
 	rows  []drill.Row
 	named []map[rules.Cause]int // by row, of those caught
 	quiet []drill.Quiet
+	false map[rules.Cause]int // doubts on untouched days
 }
 
 func newTally() *tally {
-	t := &tally{rows: make([]drill.Row, len(drill.Floors())), quiet: make([]drill.Quiet, len(promises))}
+	t := &tally{rows: make([]drill.Row, len(drill.Floors())), quiet: make([]drill.Quiet, len(promises)), false: map[rules.Cause]int{}}
 	for range t.rows {
 		t.named = append(t.named, map[rules.Cause]int{})
 	}
@@ -47,6 +49,10 @@ func (t *tally) book(seed uint64) {
 					t.named[i][o[0].Named]++
 				}
 			}
+		}
+		for _, c := range append(rules.Causes, "") {
+			of := slices.DeleteFunc(slices.Clone(all), func(f drill.Flag) bool { return f.LooksLike != c })
+			t.false[c] += drill.Untouched(planted, plan, of, promises[:1])[0].Flags
 		}
 		for i, q := range drill.Untouched(planted, plan, all, promises) {
 			t.quiet[i].Name = q.Name
@@ -87,5 +93,6 @@ func (t *tally) String() string {
 	for _, q := range t.quiet {
 		fmt.Fprintf(&s, "%-50s %7d values, %d flags, %.0f promised: %.2f times\n", q.Name, q.Values, q.Flags, q.Promised, float64(q.Flags)/q.Promised)
 	}
+	fmt.Fprintf(&s, "doubts on untouched days look like %v\n", t.false)
 	return s.String()
 }

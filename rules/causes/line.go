@@ -2,34 +2,29 @@ package causes
 
 import "math"
 
-// The line of doubt is the quantile of the log odds over the newest span dates. Histograms hold them: each value counts by the probability
-// that it was no error after all,
+// The line of doubt is the quantile of the log odds over the newest span dates. A history may hold errors that nobody has decided, so each
+// value counts by the probability that it was none,
 //
-//	1 / (1 + odds)
+//	1 / (1 + rate odds)
 //
-// so that true errors in the history do not raise the line. Values beyond a range's own line do not count: they are flagged anyway.
+// where rate, how much more or less often than the priors say values are wrong, is learnt from the same history (the two-groups model of
+// Efron 2008, Statistical Science 23:1-22). Values beyond a range's own line do not count: they are flagged anyway.
 const (
 	bins    = 160
 	binSize = 0.125
 	lowest  = -12.0 // log odds of the first bin's lower edge
-	whole   = 256   // the weight of a value that is surely no error
 )
 
 // histogram is the log odds of one group over the newest span dates.
 type histogram struct {
-	weight [bins]int32
-	n      int32 // values judged
-	days   [slots]dayOdds
+	count [bins]int32
+	n     int32 // values judged
+	days  [slots]dayOdds
 }
 
 type dayOdds struct {
 	judged int32
-	odd    []oddBin
-}
-
-type oddBin struct {
-	bin    uint8
-	weight int16
+	bins   []uint8
 }
 
 func binOf(logOdds float64) int {
@@ -39,17 +34,17 @@ func binOf(logOdds float64) int {
 func (h *histogram) expire(t int) {
 	day := &h.days[(t-span-1)&mask]
 	h.n -= day.judged
-	for _, o := range day.odd {
-		h.weight[o.bin] -= int32(o.weight)
+	for _, b := range day.bins {
+		h.count[b]--
 	}
-	day.judged, day.odd = 0, day.odd[:0]
+	day.judged, day.bins = 0, day.bins[:0]
 }
 
 func (h *histogram) take(t int, logOdds float64) {
 	day := &h.days[t&mask]
-	o := oddBin{uint8(binOf(logOdds)), int16(math.RoundToEven(whole / (1 + math.Exp(min(logOdds, 50)))))}
-	day.odd = append(day.odd, o)
-	h.weight[o.bin] += int32(o.weight)
+	b := uint8(binOf(logOdds))
+	day.bins = append(day.bins, b)
+	h.count[b]++
 }
 
 func (h *histogram) judged(t int, n int32) {
@@ -61,14 +56,45 @@ const (
 	poolLends  = 4000 // values that the whole pool counts for beside a group's own
 	guessLends = 2000 // values that the guess counts for beside the pool's own
 	guessEdge  = -1.0 // where the guess has its line: the tail of the log odds falls as 1/odds
+	wrongShare = 6e-3 // of all values, by the priors
 )
 
 // lines works out where doubt begins in each group: the lowest edge beyond which at most the configured share of values lies. It is never
 // above even odds.
 func (p *Pool) lines() {
+	rate := p.odds[len(p.odds)-1].rate()
+	for b := range p.sound {
+		p.sound[b] = 1 / (1 + float64(rate*math.Exp(lowest+(float64(b)+0.5)*binSize)))
+	}
 	for g := range p.odds {
 		p.line[g] = p.lineOf(g)
 	}
+}
+
+// rate is the likeliest factor of the priors, between 0.01 and 10: where
+//
+//	sum odds/(1 + rate odds) = n share/(1 + rate share)
+//
+// found by bisection of its logarithm; the left side less the right falls in it.
+func (h *histogram) rate() float64 {
+	low, high := math.Log(0.01), math.Log(10)
+	for range 12 {
+		mid := (low + high) / 2
+		rate := math.Exp(mid)
+		left := 0.0
+		for b, n := range h.count {
+			if n > 0 {
+				odds := math.Exp(lowest + (float64(b)+0.5)*binSize)
+				left += float64(n) * (odds / (1 + float64(rate*odds)))
+			}
+		}
+		if n := float64(h.n) + guessLends; left > n*wrongShare/(1+float64(rate*wrongShare)) {
+			low = mid
+		} else {
+			high = mid
+		}
+	}
+	return math.Exp((low + high) / 2)
 }
 
 func (p *Pool) lineOf(g int) float64 {
@@ -77,8 +103,8 @@ func (p *Pool) lineOf(g int) float64 {
 	n, m := float64(all.n), float64(own.n)
 	for b := bins - 1; b >= 0; b-- {
 		edge := lowest + float64(b)*binSize
-		beyondAll += float64(all.weight[b]) / whole
-		beyondOwn += float64(own.weight[b]) / whole
+		beyondAll += float64(float64(all.count[b]) * p.sound[b])
+		beyondOwn += float64(float64(own.count[b]) * p.sound[b])
 		guess := p.doubtful * math.Exp(guessEdge-edge)
 		share := (beyondAll + float64(guessLends*guess)) / (n + guessLends)
 		share = (beyondOwn + float64(poolLends*share)) / (m + poolLends)

@@ -8,25 +8,26 @@ import (
 
 // look is one value of today with all that it is held against.
 type look struct {
-	u        rules.Units
-	x        float64 // NaN where there is no value
-	places   uint8   // decimals that u is written with
-	m, m1    float64 // the reference today and on the date before, NaN where there is none
-	hasRef   bool    // the reference takes part in judging
-	traces   bool    // there is a residual to remember
-	judged   bool
-	mu, s    float64 // what is foreseen, and the deviation about it
-	own      float64 // deviation of the returns themselves
-	z        float64 // (x - mu) / s
-	ownZ     float64
-	digits   int     // decimals that the series is written with
-	tick     float64 // width of the last of them
-	finer    bool    // x has more decimals than the series
-	rare     float64 // share of ordinary values that have more
-	mark     uint8
-	total    float64 // weight of all that may explain it, 0 where it was not weighed
-	reversal float64 // odds that it takes back a spike of the date before
-	replaced bool    // by a corrected value
+	u         rules.Units
+	x         float64 // NaN where there is no value
+	places    uint8   // decimals that u is written with
+	m, m1     float64 // the reference today and on the date before, NaN where there is none
+	hasRef    bool    // the reference takes part in judging
+	traces    bool    // there is a residual to remember
+	judged    bool
+	mu, s     float64 // what is foreseen, and the deviation about it
+	own       float64 // deviation of the returns themselves
+	z         float64 // (x - mu) / s
+	ownZ      float64
+	digits    int     // decimals that the series is written with
+	tick      float64 // width of the last of them
+	finer     bool    // x has more decimals than the series
+	rare      float64 // share of ordinary values that have more
+	mark      uint8
+	total     float64 // weight of all that may explain it, 0 where it was not weighed
+	reversal  float64 // odds that it takes back a spike of the date before
+	replaced  bool    // by a corrected value
+	elsewhere bool    // it belongs to another date, as those of the whole file
 }
 
 // leastSeen is how many values a series has before it is judged on its own; before, a group lends its scale.

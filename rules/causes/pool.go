@@ -27,14 +27,18 @@ type Pool struct {
 	before  rules.Date // the date before
 	newWeek bool
 
-	odds []histogram // by group, then of those without one, then of all
-	line []float64
-	lend []lending
+	odds  []histogram // by group, then of those without one, then of all
+	line  []float64
+	sound [bins]float64 // by log odds: how probably a value is no error
+	lend  []lending
 
-	row    []ranked // room for today's work
-	sizes  []float64
-	totals []float64
-	says   []implied
+	row     []ranked // room for today's work
+	triples []triple
+	shift   shift
+	contra  []contradiction
+	sizes   []float64
+	totals  []float64
+	says    []implied
 }
 
 // NewPool makes an empty pool. doubtful is the share of ordinary values that may be flagged doubtful, stale or repeat, together.
@@ -76,7 +80,7 @@ func (p *Pool) Step(d Day) *Result {
 		p.refit(i)
 		p.prepare(i)
 	}
-	p.wrongs(r)
+	p.contradictions(r)
 	p.spikes(r)
 	for i := range p.members {
 		if p.plain(i) {
@@ -91,9 +95,12 @@ func (p *Pool) Step(d Day) *Result {
 		p.conclude(&p.slow[k], r)
 	}
 	p.markets(r)
+	slices.SortStableFunc(r.Views, func(a, b View) int { return a.Member - b.Member })
 	p.foreseen(r)
 	p.known(d)
 	p.close(d)
+	now := p.shift.today
+	p.shift = shift{late: now.late, early: now.early, contradicted: now.contradicted}
 	return r
 }
 
@@ -127,7 +134,7 @@ func weekOf(d rules.Date) int { return (int(d) + 1_000_003) / 7 }
 // plain says that nothing about a value calls for weighing.
 func (p *Pool) plain(i int) bool {
 	lk, st := &p.looks[i], &p.states[i]
-	if !lk.judged {
+	if !lk.judged || lk.elsewhere {
 		return true
 	}
 	switch {
@@ -184,10 +191,13 @@ func (p *Pool) close(d Day) {
 	for i := range p.members {
 		st, lk := &p.states[i], &p.looks[i]
 		if h := &st.held; h.is {
-			st.enter(h.t, &h.look, false)
+			if !h.out {
+				st.enter(h.t, &h.look, false)
+			}
 			h.is = false
 		}
 		st.remember(p.t, d.Values[i], lk.places)
+		st.yesterday = lk.x
 		if lk.x != lk.x {
 			continue
 		}
@@ -197,10 +207,14 @@ func (p *Pool) close(d Day) {
 			judged[len(judged)-1].judged(p.t, 1)
 		}
 		switch {
-		case st.isOut:
+		case lk.judged && !lk.elsewhere && (math.Abs(lk.z) > 4 || math.Abs(lk.ownZ) > 4):
+			st.held = held{true, st.isOut, p.t, *lk}
 			st.ref[p.t&mask] = lk.m
-		case lk.judged && (math.Abs(lk.z) > 4 || math.Abs(lk.ownZ) > 4):
-			st.held = held{true, p.t, *lk}
+			if st.isOut {
+				st.leaveOut(p.t, lk.m)
+			}
+		case st.isOut:
+			st.leaveOut(p.t, lk.m)
 		default:
 			st.enter(p.t, lk, false)
 		}

@@ -1,8 +1,10 @@
 package causes
 
 import (
+	"fmt"
 	"math/rand/v2"
 	"reflect"
+	"slices"
 	"testing"
 
 	"strayd/rules"
@@ -74,37 +76,52 @@ func outOf(r *Result) []Known {
 	return known
 }
 
-// A pool that is made anew and led through the last Memory dates, with what was concluded of them, says the same as one that saw all.
+// A pool that is made anew and led through the last Memory dates, with what was concluded of them, says the same as one that saw all, and
+// goes on to say the same, down to the last bit of what it holds values against.
 func TestPoolDependsOnItsMemory(t *testing.T) {
+	const after = 60
 	for seed := range uint64(3) {
-		members, days := noisy(seed, Memory+160)
+		members, days := noisy(seed, Memory+after+100)
 		groups := []string{"one", "two"}
 		whole := NewPool(members, groups, 0.002)
 		known := make([][]Known, len(days))
 		var want []*Result
+		var looks [][]look
 		for n, d := range days {
 			r := whole.Step(d)
-			want = append(want, r)
+			want, looks = append(want, r), append(looks, slices.Clone(whole.looks))
 			known[n] = outOf(r)
 			for _, v := range r.Earlier {
 				known[n-1] = append(known[n-1], Known{Member: v.Member, Use: Out})
 			}
 		}
-		for _, at := range []int{Memory, Memory + 57, Memory + 159} {
+		for _, start := range []int{Memory, Memory + 57, Memory + 99} {
 			anew := NewPool(members, groups, 0.002)
-			for n := at - Memory; n < at; n++ {
+			for n := start - Memory; n < start+after; n++ {
 				d := days[n]
-				d.Known = known[n]
-				if n == at-1 {
+				if n < start-1 {
+					d.Known = known[n]
+				} else if n == start-1 {
 					d.Known = outOf(want[n]) // what the day itself concluded
 				}
-				anew.Step(d)
-			}
-			if got := anew.Step(days[at]); !reflect.DeepEqual(got, want[at]) {
-				t.Errorf("seed %d, date %d: made anew %+v, want %+v", seed, at, got, want[at])
+				got := anew.Step(d)
+				if n < start {
+					continue
+				}
+				if !reflect.DeepEqual(got, want[n]) {
+					t.Fatalf("seed %d, from %d, date %d: made anew %+v, want %+v", seed, start, n, got, want[n])
+				}
+				if !same(anew.looks, looks[n]) {
+					t.Fatalf("seed %d, from %d, date %d: values are held against other figures", seed, start, n)
+				}
 			}
 		}
 	}
+}
+
+// same compares all that values are held against; a figure that is not there equals itself.
+func same(a, b []look) bool {
+	return fmt.Sprintf("%v", a) == fmt.Sprintf("%v", b)
 }
 
 // The same dates give the same results.

@@ -56,17 +56,92 @@ func (s *moments) centre() {
 	s.ml -= float64(s.m*s.l) / s.n
 }
 
-// gather sums the last span dates before t, the oldest first, so that every pool rounds alike.
-func (st *state) gather(t int) (s moments) {
+// triple is a date's return with the reference's returns of the date and the one before.
+type triple struct{ x, m, l float64 }
+
+// pairs lists what the last span dates before t have, the oldest first, so that every pool rounds alike.
+func (p *Pool) pairs(st *state) []triple {
+	list := p.triples[:0]
 	last := math.NaN()
-	for k := t - span; k < t; k++ {
+	for k := p.t - span; k < p.t; k++ {
 		x, m := st.used[k&mask], st.ref[k&mask]
 		if x == x && m == m && last == last {
-			s.add(x, m, last)
+			list = append(list, triple{x, m, last})
 		}
 		last = m
 	}
+	p.triples = list
+	return list
+}
+
+func sum(list []triple) (s moments) {
+	for i := range list {
+		s.add(list[i].x, list[i].m, list[i].l)
+	}
 	return s
+}
+
+const (
+	farOff  = 6 // root mean squares of the residuals: one so far off calls for a robust start
+	trimmed = 7 // robust deviations beyond which a date does not count
+)
+
+// estimate is the fit by least squares. Where some residual is far off, dates are left out that lie far from a robust line, that of least
+// absolute deviations through the origin, and the rest is fitted again (reweighted least squares, Rousseeuw and Leroy 1987, Robust
+// Regression and Outlier Detection, chapter 1).
+func (p *Pool) estimate(st *state) fit {
+	list := p.pairs(st)
+	f := sum(list).regress(1)
+	if f.n < leastFit || !f.strained(list) {
+		return f
+	}
+	slope := p.robustSlope(list)
+	off := p.sizes[:0]
+	for _, v := range list {
+		off = append(off, math.Abs(v.x-float64(slope*v.m)))
+	}
+	slices.Sort(off)
+	p.sizes = off
+	limit := trimmed * 1.4826 * middle(off)
+	kept := list[:0]
+	for _, v := range list {
+		if math.Abs(v.x-float64(slope*v.m)) <= limit {
+			kept = append(kept, v)
+		}
+	}
+	return sum(kept).regress(1)
+}
+
+// strained says that a residual lies far off.
+func (f *fit) strained(list []triple) bool {
+	var most, all float64
+	for i := range list {
+		e := list[i].x - f.at(list[i].m, list[i].l)
+		all += float64(e * e)
+		most = max(most, float64(e*e))
+	}
+	return most*float64(len(list)) > farOff*farOff*all
+}
+
+// robustSlope is the slope of least absolute deviations through the origin: the median of x/m, weighted by |m|.
+func (p *Pool) robustSlope(list []triple) float64 {
+	said := p.says[:0]
+	total := 0.0
+	for _, v := range list {
+		if v.m != 0 {
+			said = append(said, implied{v.x / v.m, math.Abs(v.m)})
+			total += math.Abs(v.m)
+		}
+	}
+	p.says = said
+	slices.SortFunc(said, byImplied)
+	half := 0.0
+	for _, v := range said {
+		if half += v.dev; 2*half >= total {
+			return v.m
+		}
+	}
+	return 0
 }
 
 // regress is ordinary least squares, with the lag term where its t is beyond lagLine. The slope is held within its bounds; below span/4
@@ -120,7 +195,7 @@ func (p *Pool) refit(i int) {
 	if !few && !p.newWeek {
 		return
 	}
-	st.fit = st.gather(p.t).regress(1)
+	st.fit = p.estimate(st)
 	f := &st.fit
 	f.use = f.n >= leastFit && f.explains >= leastExplains || f.n < leastFit && p.members[i].Reference.Kind == Series
 }

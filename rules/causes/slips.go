@@ -18,8 +18,12 @@ var factors = []struct {
 	{rules.CauseX10, 10, 1, priorX10},
 }
 
+// rounded is how often a value is slipped after it was rounded to its decimals: a file is read with the wrong unit more often than it is
+// written so.
+const rounded = 0.9
+
 // scales weighs a slipped point and a lost sign. A value may be multiplied after it was rounded to the series' decimals, and then it lies on
-// a coarser grid, or before; each has half the weight. The cell of a value y on a grid of width w has the probability of
+// a coarser grid, or before. The cell of a value y on a grid of width w has the probability of
 // the true values that are printed so:
 //
 //	after:  P(cell of width w around y/k), y a multiple of k w
@@ -29,9 +33,9 @@ func (p *Pool) scales(w *weighing, lk *look, st *state) {
 	for _, f := range factors {
 		k := float64(f.by)
 		y := lk.x / k
-		like := 0.5 * lk.width() / k
+		like := (1 - rounded) * lk.width() / k
 		if int(lk.places)+f.digits <= lk.digits {
-			like += 0.5 * lk.tick
+			like += rounded * lk.tick
 		}
 		p.add(w, f.cause, f.prior, like*b.at((y-lk.mu)/lk.s)/lk.s, rules.Some(y))
 	}
@@ -66,8 +70,12 @@ func (p *Pool) again(w *weighing, lk *look, st *state) {
 // splits are the usual ratios of new units to old ones, and the inverse for a consolidation.
 var splits = []float64{2, 3, 4, 5, 10, 1.5, 20, 0.5, 1.0 / 3, 0.25, 0.2, 0.1, 0.05}
 
-// least and greatest distribution that is weighed without a calendar, as a share of the net asset value.
-const leastPayout, greatestPayout = 0.002, 0.04
+// Sizes of distributions, as a share of the net asset value: a lognormal with this median and deviation of its logarithm; a judgement, no
+// source.
+const (
+	middlePayout = 0.007
+	payoutSpread = 0.7
+)
 
 // payouts weighs distributions and splits that the return leaves out, or counts twice.
 func (p *Pool) payouts(w *weighing, lk *look, i int) {
@@ -102,12 +110,12 @@ func (p *Pool) split(w *weighing, lk *look, k, prior float64) {
 	p.add(w, rules.CauseSplit, prior, lk.width()*k*p.fits(w.member, lk, y), rules.Some(y))
 }
 
-// unlisted weighs a distribution of unknown size d, with density 1/(d ln(greatest/least)): what is left unexplained is its size.
+// unlisted weighs a distribution of unknown size: what is left unexplained is its size.
 func (p *Pool) unlisted(w *weighing, lk *look) {
 	d := lk.mu - lk.x
-	size := math.Abs(d)
-	if size > leastPayout && size < greatestPayout && size > 2*lk.s {
-		like := lk.width() / (size * math.Log(greatestPayout/leastPayout))
+	if size := math.Abs(d); size > 2*lk.s {
+		y := math.Log(size/middlePayout) / payoutSpread
+		like := lk.width() * math.Exp(-y*y/2) / (size * payoutSpread * math.Sqrt(2*math.Pi))
 		if d > 0 {
 			p.add(w, rules.CauseMissed, priorMissed, like, rules.Some(lk.mu))
 		} else {

@@ -21,12 +21,14 @@ type state struct {
 	printed, before rules.Units // of the last date and the one before it; Missing
 	lastPrinted     rules.Units // the newest value, however old
 	lastAt          int         // its date
+	yesterday       float64     // return of the date before, NaN where there is none
 	unchanged       int         // dates in a row with the same value, at most 10
 	sofar           float64     // one plus the return since the month began
 
 	held    held // a value that waits a date before it enters the windows
 	isOut   bool // today's value was concluded to be wrong
 	isWrong bool // by its followers
+	lately  int  // dates of the last ten on which it was wrong
 
 	chain chain
 }
@@ -36,17 +38,19 @@ const (
 	markZero = 1 << iota
 	markRepeat
 	markSeen
+	markOut
 )
 
 // held is an extreme value: it enters the windows one date late, so that a spike which the next date takes back never was in them.
 type held struct {
 	is   bool
+	out  bool // it will not enter
 	t    int
 	look look
 }
 
 func newState() state {
-	st := state{own: newScale(), rest: newScale(), grid: newGrid(), printed: rules.Missing, before: rules.Missing, lastPrinted: rules.Missing, sofar: 1}
+	st := state{own: newScale(), rest: newScale(), grid: newGrid(), printed: rules.Missing, before: rules.Missing, lastPrinted: rules.Missing, yesterday: math.NaN(), sofar: 1}
 	for i := range st.used {
 		st.used[i], st.ref[i] = math.NaN(), math.NaN()
 	}
@@ -59,6 +63,9 @@ func (st *state) expire(t int) {
 	st.rest.expire(t)
 	st.grid.expire(t)
 	st.count(st.mark[(t-span-1)&mask], -1)
+	if st.mark[(t-11)&mask]&markOut != 0 {
+		st.lately--
+	}
 	at := t & mask
 	st.used[at], st.ref[at], st.mark[at] = math.NaN(), math.NaN(), 0
 }
@@ -79,17 +86,20 @@ func (st *state) count(mark uint8, by int) {
 func (st *state) enter(t int, lk *look, full bool) {
 	at := t & mask
 	bound := st.own.bound()
-	x := lk.x
-	st.own.take(t, x, bound, full)
-	if !full && bound > 0 {
-		x = min(max(x, -1.2*bound), 1.2*bound)
-	}
-	st.used[at], st.ref[at] = x, lk.m
+	st.own.take(t, lk.x, bound, full)
+	st.used[at], st.ref[at] = lk.x, lk.m
 	if lk.hasRef {
 		st.rest.take(t, lk.x-lk.mu, st.rest.bound(), full)
 	}
 	st.mark[at] = lk.mark
 	st.count(lk.mark, 1)
+}
+
+// leaveOut notes that the value of date t does not enter.
+func (st *state) leaveOut(t int, m float64) {
+	st.ref[t&mask] = m
+	st.mark[t&mask] = markOut
+	st.lately++
 }
 
 // remember keeps the printed value for tomorrow's comparisons.

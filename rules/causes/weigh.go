@@ -7,27 +7,27 @@ import (
 )
 
 // Priors: how often a value is wrong in each way, before anything is known of it. They are a judgement from practice, no source: scale and
-// sign slips once in some 3,000 values, a value sent again or left at zero once in 1,000.
+// sign slips once in some 1,000 to 3,000 values, a value sent again or left at zero once in 300.
 const (
-	priorX100       = 3e-4
+	priorX100       = 5e-4
 	priorX10000     = 1e-4
-	priorX10        = 1e-4
-	priorDiv100     = 3e-4
-	priorSign       = 3e-4
-	priorRepeat     = 1e-3
-	priorZero       = 1e-3
+	priorX10        = 2e-4
+	priorDiv100     = 1e-3
+	priorSign       = 1e-3
+	priorRepeat     = 1.5e-3
+	priorZero       = 1.5e-3
 	priorSpike      = 3e-4
-	priorMissed     = 2e-4 // without a calendar
+	priorMissed     = 1e-3 // without a calendar
 	priorDoubled    = 3e-5
 	priorSplit      = 5e-5
 	priorFX         = 1e-4
-	priorSwap       = 1e-4
-	priorCumulative = 1e-4
+	priorSwap       = 5e-4
+	priorCumulative = 3e-4
 	priorShifted    = 5e-5
 	listedMissed    = 0.05 // on a listed date
 	listedDoubled   = 0.03
 	listedSplit     = 0.2
-	offByOne        = 0.3 // factor of the above a business day beside it
+	offByOne        = 0.1 // factor of the above a business day beside it
 )
 
 // odd is one way in which a value may not be ordinary.

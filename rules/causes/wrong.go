@@ -1,6 +1,7 @@
 package causes
 
 import (
+	"cmp"
 	"math"
 	"slices"
 
@@ -11,14 +12,25 @@ import (
 const (
 	leastFollowers = 3
 	priorWrong     = 3e-4
-	followerCap    = 6.0 // the most that one follower may say, in natural logarithms
+	mostWrong      = 3 // dates of the last ten: after so many it is the relation that has changed, and the reference counts again
+	flat           = 1e-3
 )
 
 // implied is what a follower says its reference must have been, with its deviation.
 type implied struct{ m, dev float64 }
 
-// wrongs finds the references that do not fit. Their followers are then held against what the others imply, or not at all.
-func (p *Pool) wrongs(r *Result) {
+// contradiction is what the followers of a benchmark say against it.
+type contradiction struct {
+	benchmark, followers int
+	agreed               float64 // the return they agree on
+	wrong                float64 // log odds that the benchmark is wrong
+	late                 float64 // log odds, before any prior, that their values are those of the date before
+	early                float64 // that those of yesterday belong to today
+}
+
+// contradictions finds the references that do not fit, and files that are a day off. The followers are then held against their own past.
+func (p *Pool) contradictions(r *Result) {
+	p.contra = p.contra[:0]
 	for _, b := range p.benchmarks {
 		if x := p.looks[b].x; x != x {
 			continue
@@ -27,16 +39,28 @@ func (p *Pool) wrongs(r *Result) {
 		if len(said) < leastFollowers {
 			continue
 		}
-		m, odds := p.contradiction(said, p.looks[b].x)
-		if odds <= 0 {
-			continue
+		c := contradiction{benchmark: b, followers: len(said)}
+		c.agreed, c.wrong = p.disagreement(said, p.looks[b].x)
+		c.late, c.early = p.offDates(b)
+		p.contra = append(p.contra, c)
+	}
+	if p.shifted() {
+		p.setAside(r)
+		return
+	}
+	for _, c := range p.contra {
+		if c.wrong > 0 && p.states[c.benchmark].lately < mostWrong {
+			p.wrong(c, r)
 		}
-		p.states[b].isOut = true
-		p.states[b].isWrong = true
-		r.Wrong = append(r.Wrong, WrongSeries{Member: b, Followers: len(said), Implied: rules.Some(m)})
-		for _, i := range p.followers[b] {
-			p.rejudge(i)
-		}
+	}
+}
+
+func (p *Pool) wrong(c contradiction, r *Result) {
+	st := &p.states[c.benchmark]
+	st.isOut, st.isWrong = true, true
+	r.Wrong = append(r.Wrong, WrongSeries{Member: c.benchmark, Followers: c.followers, Implied: rules.Some(c.agreed)})
+	for _, i := range p.followers[c.benchmark] {
+		p.alone(i)
 	}
 }
 
@@ -49,14 +73,11 @@ func (p *Pool) said(b int) []implied {
 		}
 	}
 	p.says = said
-	slices.SortFunc(said, func(a, b implied) int {
-		if a.m < b.m {
-			return -1
-		}
-		return 1
-	})
+	slices.SortFunc(said, byImplied)
 	return said
 }
+
+func byImplied(a, b implied) int { return cmp.Or(cmp.Compare(a.m, b.m), cmp.Compare(a.dev, b.dev)) }
 
 func (p *Pool) say(i int) (v implied, ok bool) {
 	lk, f := &p.looks[i], &p.states[i].fit
@@ -66,22 +87,29 @@ func (p *Pool) say(i int) (v implied, ok bool) {
 	return implied{lk.m + float64((lk.x-lk.mu)/f.slope), lk.s / f.slope}, true
 }
 
-// contradiction is the return that followers agree on, their weighted median, and the logarithm of the odds that the reference is wrong.
-func (p *Pool) contradiction(said []implied, m float64) (agreed, odds float64) {
+// disagreement is the return that followers agree on, their weighted median, and the logarithm of the odds that the reference is wrong.
+func (p *Pool) disagreement(said []implied, m float64) (agreed, odds float64) {
 	agreed = weightedMedian(said)
 	odds = math.Log(priorWrong)
-	b, better := &bells[usual], 0
+	agree := 0
 	for _, v := range said {
-		gain := math.Log(b.at((v.m-agreed)/v.dev) / b.at((v.m-m)/v.dev))
-		odds += min(max(gain, -followerCap), followerCap)
+		gain := better((v.m-agreed)/v.dev, (v.m-m)/v.dev)
+		odds += gain
 		if gain > 1 {
-			better++
+			agree++
 		}
 	}
-	if 2*better < len(said) || better < leastFollowers {
+	if 2*agree < len(said) || agree < leastFollowers {
 		return agreed, math.Inf(-1)
 	}
 	return agreed, odds
+}
+
+// better is the logarithm of how much likelier one distance is than another, in deviations. A follower may be wrong itself: a small share of a
+// flat density keeps it from saying more than e^6.5, and anything where both are far.
+func better(z, than float64) float64 {
+	b := &bells[usual]
+	return math.Log((b.at(z) + flat) / (b.at(than) + flat))
 }
 
 // weightedMedian weighs by the inverse of the variance.
@@ -99,12 +127,10 @@ func weightedMedian(said []implied) float64 {
 	return said[len(said)-1].m
 }
 
-// rejudge holds a follower against nothing but its own past.
-func (p *Pool) rejudge(i int) {
-	lk := &p.looks[i]
-	if lk.x != lk.x {
-		return
+// alone holds a follower of a wrong reference against nothing but its own past.
+func (p *Pool) alone(i int) {
+	if lk := &p.looks[i]; lk.x == lk.x {
+		lk.m = math.NaN()
+		p.prepare(i)
 	}
-	lk.m = math.NaN()
-	p.prepare(i)
 }

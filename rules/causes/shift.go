@@ -1,0 +1,110 @@
+package causes
+
+import (
+	"math"
+
+	"strayd/rules"
+)
+
+// A whole file is a day off when the values of all series that are held against benchmarks fit the benchmarks' returns of another date: of
+// the date before, or, as shows a day later, of the date after.
+const (
+	priorShift  = 1e-4
+	shiftStays  = 0.95 // of a shifted file, on the next date
+	freeReturn  = -2.5 // log of what a return costs that may be anything: deviation of the followers' agreement over that of the benchmark
+	leastAgreed = 0.5  // share of the followers that must be better explained
+)
+
+// shift is what is known of a file that is a day off, from yesterday.
+type shift struct {
+	late, early  bool // it was
+	contradicted bool // the benchmarks were
+	today        shiftDay
+}
+
+type shiftDay struct{ late, early, contradicted bool }
+
+// offDates is how much better a benchmark's followers fit its return of yesterday, and how much better their values of yesterday fit its
+// return of today.
+func (p *Pool) offDates(b int) (late, early float64) {
+	n, better := 0, 0
+	for _, i := range p.followers[b] {
+		lk, st := &p.looks[i], &p.states[i]
+		if !lk.hasRef || !lk.judged {
+			continue
+		}
+		if lk.m1 == lk.m1 {
+			n++
+			gain := p.gain(i, lk.x, lk.mu, st.fit.at(lk.m1, st.ref[(p.t-2)&mask]))
+			late += gain
+			if gain > 0 {
+				better++
+			}
+			if x := st.yesterday; x == x {
+				early += p.gain(i, x, st.fit.at(lk.m1, st.ref[(p.t-2)&mask]), st.fit.at(lk.m, lk.m1))
+			}
+		}
+	}
+	if n < leastFollowers || !p.shift.late && float64(better) < leastAgreed*float64(n) {
+		late = math.Inf(-1)
+	}
+	return late, early
+}
+
+// gain is the logarithm of how much better a return fits one centre than another.
+func (p *Pool) gain(i int, x, centre, other float64) float64 {
+	s := p.looks[i].s
+	return better((x-other)/s, (x-centre)/s)
+}
+
+// shifted says that the files are a day off, against the rival that each contradicted benchmark is wrong by itself.
+func (p *Pool) shifted() bool {
+	prior := math.Log(priorShift)
+	if p.shift.late || p.shift.early {
+		prior = math.Log(shiftStays / (1 - shiftStays))
+	}
+	var late, rival, free, early float64
+	wrong := 0
+	for _, c := range p.contra {
+		late += c.late
+		early += c.early
+		if c.wrong > 0 {
+			wrong++
+			rival += c.wrong + freeReturn
+			free += c.wrong + freeReturn - math.Log(priorWrong)
+		}
+		if c.late > 0 && p.repeated(c.benchmark) { // it is the benchmark that came a day late
+			late = math.Inf(-1)
+		}
+	}
+	now := &p.shift.today
+	now.contradicted = wrong > 0
+	now.late = late+prior > max(rival, 0)
+	confirmed := p.shift.contradicted && early > -math.Log(priorShift)
+	now.early = !now.late && wrong > 0 && (confirmed || p.shift.early) && free+prior > rival
+	return now.late || now.early
+}
+
+// repeated says that a member's value is yesterday's again.
+func (p *Pool) repeated(i int) bool { return p.looks[i].mark&(markRepeat|markZero) != 0 }
+
+// setAside reports the members whose values belong to another date, and holds them against nothing.
+func (p *Pool) setAside(r *Result) {
+	for _, c := range p.contra {
+		if c.late <= 0 && c.wrong <= 0 {
+			continue
+		}
+		for _, i := range p.followers[c.benchmark] {
+			lk := &p.looks[i]
+			if lk.judged {
+				lk.elsewhere = true
+				p.states[i].isOut = true
+				r.Shifted = append(r.Shifted, i)
+				v := p.view(i, lk)
+				v.Causes = []rules.Share{{Cause: rules.CauseShifted, Share: 1}}
+				v.LooksLike, v.Share, v.Out = rules.CauseShifted, 1, true
+				r.Views = append(r.Views, v)
+			}
+		}
+	}
+}
