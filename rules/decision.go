@@ -94,7 +94,7 @@ type Act struct {
 	Note       string
 	Override   string // why a market move is the reason although the residual does not say so
 	Until      Date   // of waive: the last day on which the flag asks nothing of anyone; else NoDate
-	Second     bool   // of decide: a second person must sign it off
+	Second     bool   // the group asks for four eyes: another person than who decides must sign off
 }
 
 // Same says that two acts are one and the same.

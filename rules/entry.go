@@ -10,7 +10,8 @@ import (
 type Entry struct {
 	Act
 	Refs   []uint64
-	File   string // the released file and its feed, of accept
+	Second []uint64 // the refs whose group asks for four eyes; Act.Second says it of one flag
+	File   string   // the released file and its feed, of accept
 	Feed   string
 	SHA256 string    // of its content, in hex
 	Differ []Differs // at most MostDiffer
@@ -44,7 +45,7 @@ type entryText struct {
 	Note       string        `json:"note,omitempty"`
 	Override   string        `json:"override,omitempty"`
 	Until      string        `json:"until,omitempty"`
-	Second     bool          `json:"second,omitempty"`
+	Second     []uint64      `json:"second,omitempty"`
 	Feed       string        `json:"feed,omitempty"`
 	File       string        `json:"file,omitempty"`
 	SHA256     string        `json:"sha256,omitempty"`
@@ -80,9 +81,9 @@ func ParseEntry(body []byte) (*Entry, error) {
 	if !slices.Contains(Deeds, t.Act) {
 		return nil, fmt.Errorf("entry of the record: act %q is not known", t.Act)
 	}
-	e := &Entry{Refs: t.Refs, Feed: t.Feed, File: t.File, SHA256: t.SHA256, More: t.More}
+	e := &Entry{Refs: t.Refs, Second: t.Second, Feed: t.Feed, File: t.File, SHA256: t.SHA256, More: t.More}
 	e.Act = Act{Deed: t.Act, Step: t.Step, By: Person{t.UID, t.Name}, Conclusion: t.Conclusion, Value: Missing, Reason: t.Reason, Note: t.Note,
-		Override: t.Override, Until: NoDate, Second: t.Second}
+		Override: t.Override, Until: NoDate}
 	var err error
 	if t.Value != "" {
 		if e.Value, err = ParseUnits(t.Value); err != nil {
@@ -100,6 +101,13 @@ func ParseEntry(body []byte) (*Entry, error) {
 		e.Differ = append(e.Differ, Differs{d.Series, date, d.Range, d.Issued, d.Now})
 	}
 	return e, nil
+}
+
+// Of is the act as it stands on one flag; ok is false when the entry is not about it.
+func (e *Entry) Of(ref uint64) (a Act, ok bool) {
+	a = e.Act
+	a.Second = slices.Contains(e.Second, ref)
+	return a, slices.Contains(e.Refs, ref)
 }
 
 func dateOrNone(s string) (Date, error) {

@@ -57,9 +57,9 @@ func (d Deed) To() Standing {
 	return Decided
 }
 
-// After is the flag after an act, or why the act does not go with how it stands.
-func (f Flag) After(a *Act) (Flag, error) {
-	standing := f.StandingOn(DateFrom(a.At))
+// After is the flag after an act of a day, or why the act does not go with how it stands.
+func (f Flag) After(a *Act, today Date) (Flag, error) {
+	standing := f.StandingOn(today)
 	switch {
 	case !slices.Contains(a.Deed.from(), standing):
 		return f, fmt.Errorf("flag %d is %s%s: %s", f.Ref, standing, f.lastWords(), a.Deed.needs())
@@ -67,6 +67,8 @@ func (f Flag) After(a *Act) (Flag, error) {
 		return f, fmt.Errorf("flag %d (%s) is about no single value that could be corrected", f.Ref, f.Kind)
 	case a.Deed == Decide && f.Decided != nil && f.decidedAs(a):
 		return f, fmt.Errorf("flag %d is decided so already%s", f.Ref, f.lastWords())
+	case a.Deed == Waive && a.Until < today:
+		return f, fmt.Errorf("waived until %s, which is over", a.Until)
 	case a.Deed == SignOff && a.Second && f.Decided != nil && f.Decided.By.UID == a.By.UID:
 		return f, fmt.Errorf("flag %d was decided by %s: a second person must sign it off", f.Ref, f.Decided.By)
 	}

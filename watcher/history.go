@@ -53,7 +53,11 @@ type recorded struct {
 // NewReader reads the dictionary and prepares a reader.
 func NewReader(v View) (*Reader, error) {
 	names, err := v.Names()
-	return &Reader{View: v, Names: names, settings: map[uint32]*recorded{}, files: map[uint32]FileRow{}}, err
+	return newReader(v, names), err
+}
+
+func newReader(v View, names *Names) *Reader {
+	return &Reader{View: v, Names: names, settings: map[uint32]*recorded{}, files: map[uint32]FileRow{}}
 }
 
 // UnknownSeries is the error for a series that the ledger does not have.

@@ -28,8 +28,9 @@ type judging struct {
 	nextRef    uint64
 	width      int // of the widest task
 	scales     *groupScales
-	concluded  uint16   // number in the ledger of what the pool concluded, 0 where it has none
-	weighed    *weighed // nil where no series of the file is weighed together with others
+	concluded  uint16                 // number in the ledger of what the pool concluded, 0 where it has none
+	weighed    *weighed               // nil where no series of the file is weighed together with others
+	decided    map[valueAt]*rules.Act // decisions of this step
 
 	kept    map[keptKey]*kept // what the resident keeps; nil without one
 	keeping sync.Mutex

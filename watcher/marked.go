@@ -33,6 +33,9 @@ func (w *worker) markedHits(t task, d *day, fresh []int64) error {
 		if err != nil {
 			return err
 		}
+		if a := w.j.decided[valueAt{t.series(i), d.date}]; a != nil {
+			about.decided = a
+		}
 		if about.flagged || about.decided != nil {
 			h := w.hitAt(int32(i), false)
 			h.flagged, h.group, h.decided = true, about.group, about.decided

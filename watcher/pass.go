@@ -18,11 +18,12 @@ type Pass struct {
 	Feeds    []rules.Feed
 	FeedKey  func(rules.Feed) string // hash of what decides how a feed's files are read
 	Now      time.Time
-	Settled  bool   // take the person's word that every file is whole
-	Only     string // the one feed to take; "" for all
-	Who      string // who acts, for the record
-	Program  string // version of the program
-	Workers  int    // goroutines that judge; 0 for one a processor
+	Zone     *time.Location // of the day on which waivers end; nil for UTC
+	Settled  bool           // take the person's word that every file is whole
+	Only     string         // the one feed to take; "" for all
+	Who      string         // who acts, for the record
+	Program  string         // version of the program
+	Workers  int            // goroutines that judge; 0 for one a processor
 
 	// Resident is what the passes before it left in memory; nil to read everything from the ledger.
 	Resident *Resident
@@ -81,6 +82,9 @@ func (p *Pass) Run(ctx context.Context) (PassRow, error) {
 }
 
 func (p *Pass) run(ctx context.Context) error {
+	if err := p.lapse(); err != nil {
+		return err
+	}
 	seen, err := p.begin()
 	if err != nil {
 		return err

@@ -122,6 +122,9 @@ func (w *worker) keep(f *FlagRow, restated bool, out *outcome) {
 		}
 		if ok {
 			f.Ref, f.RaisedAt, f.New, f.Standing = old.Ref, old.RaisedAt, false, old.Standing
+			if f.Standing == rules.Acknowledged {
+				f.Last = old.Last
+			}
 			if !f.Standing.Asks() {
 				f.Standing = rules.Reopened
 			}
@@ -130,13 +133,17 @@ func (w *worker) keep(f *FlagRow, restated bool, out *outcome) {
 	out.flags = append(out.flags, f)
 }
 
-// amend notes on the flag of a value that was restated that it would not be raised now. What it was raised for stands.
+// amend notes on the flag of a value that was restated that it would not be raised now. What it was raised for stands; what somebody
+// settled of it was about the value before, so that it is open again.
 func (w *worker) amend(f *FlagRow, kind rules.Kind, out *outcome) {
 	old, ok, err := w.view.FlagAt(f.SeriesID, f.Date, kind)
 	if err != nil {
 		w.failed = err
 	}
 	if ok {
+		if old.Last != nil && !old.Standing.Asks() {
+			old.Standing, old.Last, old.Decided = rules.Reopened, nil, nil
+		}
 		old.Note = "restated to " + f.Return.String() + ", for which it would not be raised"
 		out.flags = append(out.flags, &FlagRow{Flag: old, SeriesID: f.SeriesID})
 	}

@@ -44,7 +44,7 @@ func (p *Pass) settingsStep(v View, active int) (b *Batch, again []RangeKey, err
 	}
 	b = &Batch{NewRanges: unknown, Step: v.Step() + 1, Settings: text}
 	b.File = FileRow{Step: b.Step, Settings: last + 1, Outcome: Changed, Received: p.Now, First: rules.NoDate, Last: rules.NoDate}
-	b.Record = []RecordEntry{{Kind: "settings", Who: p.Who, At: p.Now, Body: text}}
+	b.Record = []RecordEntry{{Kind: SettingsEntry, Who: p.Who, At: p.Now, Body: text}}
 	return b, again, nil
 }
 

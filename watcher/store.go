@@ -62,9 +62,16 @@ type View interface {
 	FlagAt(series uint32, date rules.Date, kind rules.Kind) (rules.Flag, bool, error)
 	// Flag finds a flag by its ref.
 	Flag(ref uint64) (rules.Flag, bool, error)
-	// Flags calls each with every flag (or only with those whose standing asks something of a person) by ref, until it
-	// returns false.
+	// FlagPast is a flag as it stood after each step that changed it, oldest first.
+	FlagPast(ref uint64) ([]FlagVersion, error)
+	// Flags calls each with every flag (or only with those that are unfinished, see rules.Flag) by ref, until it returns false.
 	Flags(all bool, each func(rules.Flag) bool) error
+}
+
+// FlagVersion is a flag as it stood from a step on.
+type FlagVersion struct {
+	Step uint32
+	rules.Flag
 }
 
 // Version is one value of one date, as known from a step on. In a list of used values, Missing64 means left out, and
@@ -135,9 +142,15 @@ type GroupScale struct {
 	Series    uint32 // how many series it is the median of
 }
 
+// The kinds of entry in the record.
+const (
+	SettingsEntry = "settings"
+	DecisionEntry = "decision" // its body is that of a rules.Entry
+)
+
 // RecordEntry is one line of the hash-chained record.
 type RecordEntry struct {
-	Kind string // settings, decision
+	Kind string // SettingsEntry, DecisionEntry
 	Who  string // uid and name of who acted
 	At   time.Time
 	Body []byte // JSON
@@ -188,10 +201,14 @@ const (
 	Changed Outcome = "settings changed"
 	// Overdue is the outcome of a step that holds no file: a feed was not whole by its deadline.
 	Overdue Outcome = "overdue"
+	// Acted is the outcome of a step that holds no file: a person did something about flags.
+	Acted Outcome = "acted"
+	// Lapsed is the outcome of a step that holds no file: waivers ran out.
+	Lapsed Outcome = "waivers ended"
 )
 
 // Fileless says that the row's step was made by no file.
-func (r *FileRow) Fileless() bool { return r.Outcome == Changed || r.Outcome == Overdue }
+func (r *FileRow) Fileless() bool { return r.Outcome != Accepted && r.Outcome != Refused }
 
 // Counts are the figures of a file or a pass.
 type Counts struct {

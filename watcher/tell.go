@@ -9,7 +9,7 @@ func (p *Pass) tell(b *Batch, series int) {
 	}
 	news := rules.News{At: p.Now, Feed: b.File.File.Feed, File: b.File.File.Name, Rows: b.File.Counts.Rows, Series: series}
 	for _, f := range b.Flags {
-		if f.Step == b.Step && f.Standing.Asks() {
+		if (f.Step == b.Step || b.File.Outcome == Lapsed) && f.Standing.Asks() {
 			news.Flags = append(news.Flags, rules.FlagNews{Flag: f.Flag, Window: f.Window, WindowTo: f.WindowTo, Used: f.Used, Market: f.Market})
 		}
 	}

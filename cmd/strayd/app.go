@@ -6,12 +6,12 @@ import (
 	"fmt"
 	"io"
 	"os"
-	"os/user"
 	"time"
 
 	"strayd/config"
 	"strayd/rules"
 	"strayd/watcher"
+	"strayd/watcher/desk"
 	"strayd/watcher/feed"
 	"strayd/watcher/ledger"
 	"strayd/watcher/schedule"
@@ -23,9 +23,9 @@ type app struct {
 	out, err   io.Writer
 	configPath string
 	nowText    string
-	held       *daemon // the daemon that carries this command out, nil on its own
-	who        string  // who called the daemon
-	dir        string  // the caller's folder
+	held       *daemon       // the daemon that carries this command out, nil on its own
+	who        *rules.Person // who called the daemon
+	dir        string        // the caller's folder
 	args       []string
 	started    bool // a command's own code has begun: errors before it are wrong usage
 }
@@ -130,16 +130,12 @@ func settings(c *config.Config) (s rules.Settings, owners map[string]string, err
 	return s, owners, nil
 }
 
-// actor is who acts: the operating system's user, or the peer of the daemon's socket; never an option.
-func (a *app) actor() string {
-	if a.who != "" {
-		return a.who
+// person is who acts: the operating system's user, or the peer of the daemon's socket; never an option.
+func (a *app) person() rules.Person {
+	if a.who != nil {
+		return *a.who
 	}
-	uid := fmt.Sprint(os.Getuid())
-	if u, err := user.Current(); err == nil {
-		return fmt.Sprintf("%s (uid %s)", u.Username, uid)
-	}
-	return "uid " + uid
+	return desk.PersonOf(os.Getuid())
 }
 
 // source hands the feed room to the pass. Whether a file has settled is told by the real clock too, since files know no --now.

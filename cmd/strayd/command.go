@@ -70,7 +70,7 @@ func (d *daemon) command(ctx context.Context, call desk.Call, stdout, stderr io.
 		fmt.Fprintln(stderr, "strayd: this configuration is not the one that the running daemon goes by: reload the daemon (SIGHUP), or stop it")
 		return exitConfig
 	}
-	return (&app{ctx: ctx, out: stdout, err: stderr, held: d, who: call.Who, dir: call.Dir}).execute(call.Args)
+	return (&app{ctx: ctx, out: stdout, err: stderr, held: d, who: &call.Who, dir: call.Dir}).execute(call.Args)
 }
 
 // path is a file that the caller named, as seen from the caller's folder.

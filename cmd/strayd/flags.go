@@ -23,6 +23,7 @@ type flagFilter struct {
 	feed, blocking, format     string
 
 	on, since, until rules.Date
+	today            rules.Date
 }
 
 func (a *app) flagsCommand() *cobra.Command {
@@ -30,8 +31,8 @@ func (a *app) flagsCommand() *cobra.Command {
 	cmd := &cobra.Command{
 		Use:   "flags",
 		Short: "The flags that still ask something of a person",
-		Long: `Lists the flags whose standing is open, acknowledged or reopened; --all lists every one.
-With --blocking GROUP, exit code 1 while a flag of that group holds its release back.
+		Long: `Lists the flags whose standing is open, acknowledged or reopened, and in groups with four_eyes those that wait for the second
+person; --all lists every one. With --blocking GROUP, exit code 1 while a flag of that group holds its release back.
 
 ` + caution,
 		Example: "  strayd flags\n  strayd flags --all --kind breach --from 2026-03-01 --format csv\n  strayd flags --blocking equity",
@@ -46,7 +47,7 @@ With --blocking GROUP, exit code 1 while a flag of that group holds its release 
 	s.StringVar(&f.kind, "kind", "", "of this `KIND`: breach, limit, restated, refused, ...")
 	s.StringVar(&f.group, "group", "", "of this `GROUP`")
 	s.StringVar(&f.series, "series", "", "of this `SERIES`")
-	s.StringVar(&f.stand, "standing", "", "of this `STANDING`: open, history, ...")
+	s.StringVar(&f.stand, "standing", "", "of this `STANDING`: open, decided, history, ...")
 	s.StringVar(&f.feed, "feed", "", "of this `FEED`")
 	s.StringVar(&f.blocking, "blocking", "", "of this `GROUP`, exit code 1 when there is one")
 	s.StringVar(&f.format, "format", "table", "`FORMAT`: table, csv or json")
@@ -110,7 +111,13 @@ func (f *flagFilter) narrow() bool {
 	return f.all || f.date+f.from+f.to+f.kind+f.group+f.series+f.stand+f.feed+f.blocking != ""
 }
 
+// takes says whether a flag is asked for. Its standing becomes that of today, when a waiver may have run out.
 func (f *flagFilter) takes(g *rules.Flag) bool {
+	asks := g.AsksOn(f.today)
+	g.Standing = g.StandingOn(f.today)
+	if !f.all && f.stand == "" && !asks {
+		return false
+	}
 	is := func(want, have string) bool { return want == "" || want == have }
 	return is(f.kind, string(g.Kind)) && is(f.group, g.Group) && is(f.blocking, g.Group) && is(f.series, g.Series) &&
 		is(f.stand, string(g.Standing)) && is(f.feed, g.Feed) && (f.on == rules.NoDate || g.Date == f.on) &&
@@ -123,8 +130,11 @@ func (a *app) flags(f *flagFilter) error {
 	}
 	all := f.all || f.stand != "" && !rules.Standing(f.stand).Asks()
 	blocked := false
-	err := a.reading(func(c *config.Config, v watcher.View) error {
+	err := a.reading(func(c *config.Config, v watcher.View) (err error) {
 		if err := f.checkGroups(c); err != nil {
+			return err
+		}
+		if f.today, err = a.today(c); err != nil {
 			return err
 		}
 		if f.format == "table" {
@@ -137,7 +147,7 @@ func (a *app) flags(f *flagFilter) error {
 		var rowErr error
 		err = v.Flags(all, func(g rules.Flag) bool {
 			if f.takes(&g) {
-				blocked = blocked || g.Standing.Asks()
+				blocked = blocked || g.AsksOn(f.today)
 				rowErr = l.row(flagCells(&g)...)
 			}
 			return rowErr == nil
@@ -167,7 +177,30 @@ func flagCells(g *rules.Flag) []cell {
 	}
 	return []cell{text(fmt.Sprint(g.Ref)), moment(g.RaisedAt), date(g.Date), text(g.Series), text(g.Group), text(string(g.Kind)), text(g.Range),
 		units(g.Return), number(g.Low), number(g.High), number(g.Z), number(g.Tail), text(g.Reference), number(g.ReferenceReturn),
-		number(g.Residual), text(string(g.LooksLike)), number(g.Share), number(g.Implied), text(string(g.Standing)), null, text(g.Feed), text(g.File), line, text(g.Note)}
+		number(g.Residual), text(string(g.LooksLike)), number(g.Share), number(g.Implied), text(string(g.Standing)), text(string(reasonOf(g))),
+		text(g.Feed), text(g.File), line, text(noteOf(g))}
+}
+
+// reasonOf is the reason that was given last.
+func reasonOf(g *rules.Flag) rules.Reason {
+	for _, a := range []*rules.Act{g.Last, g.Decided} {
+		if a != nil && a.Reason != "" {
+			return a.Reason
+		}
+	}
+	return ""
+}
+
+// noteOf is what the flag says, then what people said of it.
+func noteOf(g *rules.Flag) string {
+	notes := []string{g.Note}
+	if g.Decided != nil {
+		notes = append(notes, g.Decided.Note)
+	}
+	if g.Last != nil && g.Last != g.Decided {
+		notes = append(notes, g.Last.Note)
+	}
+	return strings.Join(slices.DeleteFunc(notes, func(s string) bool { return s == "" }), "; ")
 }
 
 // flagTable prints flags as the desk reads them, newest date last, and says how many there are. blocked becomes true when one of
@@ -212,5 +245,5 @@ func flagFields(g *rules.Flag) []string {
 	if what == "" {
 		what = g.Feed + ": " + g.File
 	}
-	return []string{fmt.Sprint(g.Ref), day(g.Date), printable(what), string(g.Kind), value, between(g.Low, g.High), z, rare, string(g.Standing), printable(g.Note)}
+	return []string{fmt.Sprint(g.Ref), day(g.Date), printable(what), string(g.Kind), value, between(g.Low, g.High), z, rare, string(g.Standing), printable(noteOf(g))}
 }

@@ -51,6 +51,11 @@ func (a *app) pass(only string, settled bool) error {
 
 // passBeside makes a pass in the daemon's turn; its notices are the daemon's to deliver.
 func (a *app) passBeside(c *config.Config, only string, settled bool) error {
+	return a.inTurn(c, func() error { return a.passOver(c, a.held.ledger, only, settled) })
+}
+
+// inTurn does something that writes beside a daemon, when no pass is under way there, and has the daemon send what came of it.
+func (a *app) inTurn(c *config.Config, do func() error) error {
 	d := a.held
 	release, err := d.alone(a.ctx)
 	if err != nil {
@@ -62,7 +67,7 @@ func (a *app) passBeside(c *config.Config, only string, settled bool) error {
 		return badSetting{errors.New("the daemon took another configuration over meanwhile: give the command again")}
 	}
 	defer s.post.Wake()
-	return a.passOver(c, d.ledger, only, settled)
+	return do()
 }
 
 // passOver runs one pass over an open ledger and prints what became of each file.
@@ -105,8 +110,8 @@ func (a *app) newPass(c *config.Config, l watcher.Store) (*watcher.Pass, error) 
 		return nil, err
 	}
 	teller := newTeller(c, owners)
-	p := &watcher.Pass{Store: l, Source: source{}, Settings: s, Feeds: c.Feeds, FeedKey: config.FeedKey, Now: now, Who: a.actor(),
-		Program: version, Tell: teller.Notices}
+	p := &watcher.Pass{Store: l, Source: source{}, Settings: s, Feeds: c.Feeds, FeedKey: config.FeedKey, Now: now, Zone: c.Location,
+		Who: a.person().String(), Program: version, Tell: teller.Notices}
 	if a.held != nil {
 		p.Resident = &a.held.kept
 	}

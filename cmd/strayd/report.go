@@ -62,7 +62,11 @@ func (d *daemon) readLedger(c *config.Config, v watcher.View, r *health.Report) 
 	}
 	r.Pass = passReport(last)
 	r.OpenFlags, r.Pass.Flags = map[rules.Kind]int{}, map[rules.Kind]int{}
+	today := rules.DateFrom(r.Now.In(c.Location))
 	r.Ledger.Open = v.Flags(false, func(f rules.Flag) bool {
+		if !f.AsksOn(today) {
+			return true
+		}
 		r.OpenFlags[f.Kind]++
 		if f.RaisedAt.Equal(last.Started) {
 			r.Pass.Flags[f.Kind]++
@@ -193,9 +197,9 @@ func dayNews(c *config.Config, l watcher.Store, dead []string, slot time.Time) (
 
 // countFlags counts the flags raised since a time, and those that still ask something.
 func countFlags(v watcher.View, since time.Time, news *rules.DayNews) error {
-	oldest := time.Time{}
+	oldest, today := time.Time{}, rules.DateFrom(news.At)
 	return v.Flags(true, func(f rules.Flag) bool {
-		if f.Standing.Asks() {
+		if f.AsksOn(today) {
 			if news.Open++; oldest.IsZero() || f.RaisedAt.Before(oldest) {
 				oldest, news.OldestRef = f.RaisedAt, f.Ref
 				news.OldestDays = rules.Weekdays(rules.DateFrom(oldest), rules.DateFrom(news.At))

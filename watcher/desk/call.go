@@ -9,19 +9,21 @@ import (
 	"io"
 	"net"
 	"time"
+
+	"strayd/rules"
 )
 
 // Call is one command line to be carried out.
 type Call struct {
-	Version  int      // of this protocol
-	Args     []string // without the program's name
-	Dir      string   // the caller's folder
-	Settings string   // hash of the caller's configuration
-	Who      string   // set by the server from the socket's peer
+	Version  int          // of this protocol
+	Args     []string     // without the program's name
+	Dir      string       // the caller's folder
+	Settings string       // hash of the caller's configuration
+	Who      rules.Person // set by the server from the socket's peer
 }
 
 // protocol is the version of the calls that this program makes and takes.
-const protocol = 1
+const protocol = 2
 
 // reply is what comes back, one JSON line each: output in pieces, then the end.
 type reply struct {

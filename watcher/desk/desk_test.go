@@ -15,6 +15,8 @@ import (
 	"strings"
 	"testing"
 	"time"
+
+	"strayd/rules"
 )
 
 // begin starts a server for an invented ledger path in a private folder.
@@ -75,11 +77,11 @@ func TestLargeOutput(t *testing.T) {
 
 func TestWhoIsThePeerNotWhatTheCallSays(t *testing.T) {
 	ledger, _ := begin(t, func(_ context.Context, call Call, stdout, _ io.Writer) int {
-		io.WriteString(stdout, call.Who)
+		io.WriteString(stdout, call.Who.String())
 		return 0
 	})
 	var out bytes.Buffer
-	if _, err := Do(t.Context(), ledger, Call{Who: "somebody else"}, &out, io.Discard); err != nil {
+	if _, err := Do(t.Context(), ledger, Call{Who: rules.Person{UID: 4711, Name: "somebody-else"}}, &out, io.Discard); err != nil {
 		t.Fatal(err)
 	}
 	me, err := user.Current()

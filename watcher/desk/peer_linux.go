@@ -4,8 +4,9 @@ import (
 	"fmt"
 	"net"
 	"os"
-	"os/user"
 	"syscall"
+
+	"strayd/rules"
 )
 
 // private says whether a folder belongs to this user and is closed to all others, save a group that may only enter.
@@ -19,27 +20,24 @@ func private(dir string) bool {
 }
 
 // peer is the user at the other end of a connection, as the kernel knows it.
-func peer(c net.Conn) (string, error) {
+func peer(c net.Conn) (rules.Person, error) {
 	unix, ok := c.(*net.UnixConn)
 	if !ok {
-		return "", fmt.Errorf("connection %T is no socket", c)
+		return rules.Person{}, fmt.Errorf("connection %T is no socket", c)
 	}
 	raw, err := unix.SyscallConn()
 	if err != nil {
-		return "", err
+		return rules.Person{}, err
 	}
 	var cred *syscall.Ucred
 	var credErr error
 	if err := raw.Control(func(fd uintptr) {
 		cred, credErr = syscall.GetsockoptUcred(int(fd), syscall.SOL_SOCKET, syscall.SO_PEERCRED)
 	}); err != nil {
-		return "", err
+		return rules.Person{}, err
 	}
 	if credErr != nil {
-		return "", credErr
+		return rules.Person{}, credErr
 	}
-	if u, err := user.LookupId(fmt.Sprint(cred.Uid)); err == nil {
-		return fmt.Sprintf("%s (uid %d)", u.Username, cred.Uid), nil
-	}
-	return fmt.Sprintf("uid %d", cred.Uid), nil
+	return PersonOf(int(cred.Uid)), nil
 }

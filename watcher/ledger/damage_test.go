@@ -76,11 +76,11 @@ func furnish(rng *rand.Rand, step uint32, ref *uint64) *watcher.Batch {
 		b.Used = append(b.Used, watcher.UsedColumn{Range: 1, Date: date, Offsets: []uint16{3, 9}, Values: []int64{5, watcher.Missing64}})
 		b.Scales = append(b.Scales, watcher.GroupScale{Range: 1, Group: "g", Date: date, Step: step, Deviation: 0.5, Series: 9})
 		b.Flags = append(b.Flags, &watcher.FlagRow{New: true, SeriesID: uint32(date), Flag: rules.Flag{Ref: *ref, Step: step, RaisedAt: noon, Date: date,
-			Kind: rules.KindBreach, Return: 1, Range: "own", Standing: rules.Standings[*ref%3], Feed: "admin", File: "x.csv"}})
+			Kind: rules.KindBreach, Return: 1, Range: "own", Standing: []rules.Standing{rules.Open, rules.Reopened, rules.OfHistory}[*ref%3], Feed: "admin", File: "x.csv"}})
 		*ref++
 	}
 	if step > 1 {
-		b.Flags = append(b.Flags, &watcher.FlagRow{Flag: rules.Flag{Ref: 1, Step: 1, Date: 1, Kind: rules.KindBreach, Standing: rules.Decided}})
+		decide(b, rules.Flag{Ref: 1, Step: 1, Date: 1, Kind: rules.KindBreach})
 	}
 	s := watcher.State{Range: 1, Step: step, Upto: 5}
 	for i := range series {
@@ -89,6 +89,15 @@ func furnish(rng *rand.Rand, step uint32, ref *uint64) *watcher.Batch {
 	}
 	b.States = []watcher.State{s}
 	return b
+}
+
+// decide puts into a batch what somebody decided of a flag.
+func decide(b *watcher.Batch, f rules.Flag) {
+	e := rules.Entry{Refs: []uint64{f.Ref}, Act: rules.Act{Deed: rules.Decide, Step: b.Step, By: rules.Person{UID: 1001, Name: "ada"}, At: noon,
+		Conclusion: rules.Corrected, Value: 12, Reason: rules.DataError, Note: "as printed", Until: rules.NoDate}}
+	f.Standing, f.Last, f.Decided = rules.Decided, &e.Act, &e.Act
+	b.Flags = append(b.Flags, &watcher.FlagRow{Flag: f})
+	b.Record = append(b.Record, watcher.RecordEntry{Kind: watcher.DecisionEntry, Who: e.By.String(), At: e.At, Body: e.Text()})
 }
 
 func verify(path string) (Report, error) {
@@ -349,7 +358,7 @@ func TestVerifyHead(t *testing.T) {
 	defer l.Close()
 	for i, head := range heads {
 		r, err := l.Verify(context.Background(), VerifyOptions{Head: head})
-		if err != nil || r.HeadSeen != uint64(i+1) || r.Head != heads[len(heads)-1] {
+		if err != nil || r.HeadSeen != uint64(2*i+1) || r.Head != heads[len(heads)-1] {
 			t.Errorf("head %d: %+v, %v", i+1, r, err)
 		}
 	}

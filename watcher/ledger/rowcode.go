@@ -25,7 +25,7 @@ func (u *unpacker) counts(c *watcher.Counts) {
 
 // outcomes are numbered in the order of this list: only append.
 func outcomes() []watcher.Outcome {
-	return []watcher.Outcome{watcher.Accepted, watcher.Refused, watcher.Changed, watcher.Overdue}
+	return []watcher.Outcome{watcher.Accepted, watcher.Refused, watcher.Changed, watcher.Overdue, watcher.Acted, watcher.Lapsed}
 }
 
 func packFile(dst []byte, f *watcher.FileRow) []byte {

@@ -7,6 +7,7 @@ import (
 	"errors"
 	"fmt"
 
+	"strayd/rules"
 	"strayd/watcher"
 )
 
@@ -42,8 +43,11 @@ type verifier struct {
 	total   int64
 	newest  []byte // last key without its step, of a bucket that keeps only the newest layer
 	chain   [32]byte
-	flagged int64 // flags that must stand in the index by series
-	open    int64 // flags that must stand in the index of open ones
+	flagged int64                   // flags that must stand in the index by series
+	open    int64                   // flags that must stand in the index of open ones
+	acts    map[uint32]*rules.Entry // what the record says that people did, by step
+	toMeet  uint64                  // rows of flags that the record tells of
+	met     uint64                  // those that were found
 }
 
 // Verify checks a whole ledger: every checksum and every value's form, that indexes and rows agree, that nothing vanished, the
@@ -59,7 +63,7 @@ func (l *Ledger) Verify(ctx context.Context, o VerifyOptions) (r Report, err err
 			err = closeErr
 		}
 	}()
-	c := &verifier{ctx: ctx, v: v, o: o}
+	c := &verifier{ctx: ctx, v: v, o: o, acts: map[uint32]*rules.Entry{}}
 	if err := c.all(); err != nil {
 		return c.report, err
 	}
@@ -163,6 +167,7 @@ func (c *verifier) counts() error {
 		{inOpen, c.seen[inOpen].count, uint64(c.open)},
 		{inOutbox, c.seen[inOutbox].count, h.notices},
 		{inOutboxKey, c.seen[inOutboxKey].count, h.notices},
+		{inFlags, c.met, c.toMeet},
 	} {
 		if n.got != n.want {
 			return &Damaged{Where: n.in.String(), Why: fmt.Sprintf("%d values are there, and the rest of the ledger says %d", n.got, n.want)}

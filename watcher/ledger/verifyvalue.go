@@ -168,6 +168,11 @@ func (c *verifier) entry(key, body []byte) error {
 		return malformed(inRecord, key, "its hash is not that of its content")
 	}
 	c.chain = e.Hash
+	if e.Kind == watcher.DecisionEntry {
+		if err := c.decision(key, &e); err != nil {
+			return err
+		}
+	}
 	if strings.EqualFold(fmt.Sprintf("%x", e.Hash), c.o.Head) {
 		c.report.HeadSeen = e.Number
 	}
@@ -185,12 +190,14 @@ func (c *verifier) flag(in bucket, key, body []byte) error {
 	if newestKey == nil || ref == 0 || ref >= c.v.head.nextRef {
 		return malformed(in, key, "there is no such flag")
 	}
-	if in == inFlags && !bytes.Equal(newestKey, key) {
-		_, ok := unpackFlag(ref, body)
+	if in == inFlags {
+		row, ok := unpackFlag(ref, body)
 		if !ok {
 			return malformed(in, key, "it cannot be read")
 		}
-		return nil
+		if err := c.acted(key, &row.flag); err != nil || !bytes.Equal(newestKey, key) {
+			return err
+		}
 	}
 	latest, err := opened(inFlags, newestKey, value)
 	if err != nil {

@@ -114,7 +114,7 @@ func (v *View) Names() (n *watcher.Names, err error) {
 	return n, nil
 }
 
-// Flags calls each with every flag by ref, or only with those that ask something of a person, until it returns false.
+// Flags calls each with every flag by ref, or only with those that are unfinished, until it returns false.
 func (v *View) Flags(all bool, each func(rules.Flag) bool) error {
 	in := inOpen
 	if all {
@@ -187,4 +187,18 @@ func (v *View) Flag(ref uint64) (f rules.Flag, ok bool, err error) {
 	}
 	f, err = v.flag(key, value)
 	return f, err == nil, err
+}
+
+// FlagPast is a flag as it stood after each step that changed it, oldest first.
+func (v *View) FlagPast(ref uint64) (list []watcher.FlagVersion, err error) {
+	defer v.leave(v.enter(&err), &err)
+	if err != nil {
+		return nil, err
+	}
+	err = v.each(inFlags, put64(nil, ref), func(k, _ []byte) (bool, error) {
+		f, err := v.flag(k, v.buckets[inFlags].Get(k))
+		list = append(list, watcher.FlagVersion{Step: stepOf(k), Flag: f})
+		return true, err
+	})
+	return list, err
 }

@@ -1,0 +1,187 @@
+package watcher
+
+import (
+	"fmt"
+	"slices"
+	"time"
+
+	"strayd/rules"
+)
+
+// UnknownRef is the error for a ref that no flag has.
+type UnknownRef struct{ Ref uint64 }
+
+func (e *UnknownRef) Error() string {
+	return fmt.Sprintf("no flag has the ref %d; `strayd flags --all` lists them", e.Ref)
+}
+
+// Answer is what an act brought about.
+type Answer struct {
+	Entry rules.Entry
+	Flags []rules.Flag // as they stand now, by ref
+	Notes []string
+}
+
+// Act carries out what a person does about some flags: all of it as one step, with the used values that follow from it and its entry in
+// the record, or nothing. By whom and what stand in the act; step and time are given here.
+func (p *Pass) Act(refs []uint64, act rules.Act) (*Answer, error) {
+	if err := act.Check(); err != nil {
+		return nil, err
+	}
+	v, err := p.Store.View()
+	if err != nil {
+		return nil, err
+	}
+	d := &deciding{p: p, view: v, act: act, flags: map[uint64]*rules.Flag{}}
+	b, err := d.step(refs)
+	if closeErr := v.Close(); err == nil {
+		err = closeErr
+	}
+	if err != nil {
+		return nil, err
+	}
+	return &d.answer, p.Store.Publish(b)
+}
+
+// deciding is one act on its way into the ledger.
+type deciding struct {
+	p      *Pass
+	view   View
+	act    rules.Act
+	flags  map[uint64]*rules.Flag // as they stand after the act
+	answer Answer
+}
+
+// step is the step that records the act.
+func (d *deciding) step(refs []uint64) (*Batch, error) {
+	refs = slices.Clone(refs)
+	slices.Sort(refs)
+	refs = slices.Compact(refs)
+	b := &Batch{Step: d.view.Step() + 1}
+	d.act.Step, d.act.At = b.Step, d.p.Now
+	d.answer.Entry = rules.Entry{Act: d.act, Refs: refs}
+	settings, err := d.view.LastSettings()
+	if err != nil {
+		return nil, err
+	}
+	b.File = FileRow{Step: b.Step, Settings: settings, Outcome: Acted, Received: d.p.Now, First: rules.NoDate, Last: rules.NoDate}
+	for _, ref := range refs {
+		if err := d.one(ref); err != nil {
+			return nil, err
+		}
+	}
+	if d.act.Deed == rules.Decide {
+		if err := d.conclude(b); err != nil {
+			return nil, err
+		}
+	}
+	b.Record = []RecordEntry{entryOf(&d.answer.Entry)}
+	return b, d.put(b)
+}
+
+// put puts the flags as they now stand into the batch.
+func (d *deciding) put(b *Batch) error {
+	names, err := d.view.Names()
+	if err != nil {
+		return err
+	}
+	for _, ref := range d.answer.Entry.Refs {
+		f := flagRow(names, *d.flags[ref])
+		b.Flags = append(b.Flags, f)
+		d.answer.Flags = append(d.answer.Flags, f.Flag)
+	}
+	return nil
+}
+
+// one lets the act take effect on one flag.
+func (d *deciding) one(ref uint64) error {
+	f, ok, err := d.view.Flag(ref)
+	if err != nil {
+		return err
+	}
+	if !ok {
+		return &UnknownRef{ref}
+	}
+	a := d.act
+	a.Second = d.p.fourEyes(f.Group) || d.act.Deed == rules.SignOff && f.AwaitsSecond()
+	if a.Second {
+		d.answer.Entry.Second = append(d.answer.Entry.Second, ref)
+	}
+	if a.Reason == rules.MarketMove && a.Override == "" {
+		if err := d.isMarket(&f); err != nil {
+			return err
+		}
+	}
+	f, err = f.After(&a, d.p.today())
+	d.flags[ref] = &f
+	return err
+}
+
+// fourEyes says whether a group asks for a second person.
+func (p *Pass) fourEyes(group string) bool {
+	return group != "" && slices.ContainsFunc(p.Settings.Groups, func(g rules.Group) bool { return g.Name == group && g.FourEyes })
+}
+
+// today is the day of the pass in its zone.
+func (p *Pass) today() rules.Date {
+	zone := p.Zone
+	if zone == nil {
+		zone = time.UTC
+	}
+	return rules.DateFrom(p.Now.In(zone))
+}
+
+// entryOf is an entry as the record takes it.
+func entryOf(e *rules.Entry) RecordEntry {
+	return RecordEntry{Kind: DecisionEntry, Who: e.By.String(), At: e.At, Body: e.Text()}
+}
+
+// isMarket is the error of a market move that the residual does not bear out.
+func (d *deciding) isMarket(f *rules.Flag) error {
+	if f.Kind == rules.KindMarketDay || f.LooksLike == rules.CauseMarket {
+		return nil
+	}
+	why := "the flag is about no return"
+	if f.Series != "" {
+		r, err := NewReader(d.view)
+		if err != nil {
+			return err
+		}
+		ok, because, err := r.residualInside(f)
+		if ok || err != nil {
+			return err
+		}
+		why = because
+	}
+	return fmt.Errorf("flag %d is no market move: %s; give another reason, or say with an override note why it is one", f.Ref, why)
+}
+
+// residualInside says whether what the reference leaves unexplained of a flagged return is in range, and why not.
+func (r *Reader) residualInside(f *rules.Flag) (ok bool, why string, err error) {
+	rows, _, err := r.At(f.Series, f.Date, f.Step)
+	if err != nil {
+		return false, "", err
+	}
+	set, err := r.settingsOf(f.Step)
+	if err != nil {
+		return false, "", err
+	}
+	why = "no residual range judged it, so nothing says that the market explains it"
+	for _, row := range rows {
+		if !set.residual(row.Range) {
+			continue
+		}
+		switch row.Finding {
+		case rules.Breach:
+			return false, fmt.Sprintf("what its reference leaves unexplained is out of range %q", row.Range), nil
+		case rules.Inside, rules.Watch:
+			ok = true
+		}
+	}
+	return ok, why, nil
+}
+
+// residual says whether the range of a name judges residuals.
+func (s *recorded) residual(name string) bool {
+	return slices.ContainsFunc(s.Ranges, func(r rules.Range) bool { return r.Name == name && r.Of == rules.Residual })
+}
