@@ -92,3 +92,17 @@ func RangeNumbers(v View, s *rules.Settings) ([]uint16, error) {
 	}
 	return out, nil
 }
+
+// Decided is what somebody decided of an observation as it stands, nil for nothing.
+func (r *Reader) Decided(series string, date rules.Date) (*rules.Act, error) {
+	id, ok := r.Names.Find([]byte(series))
+	if !ok {
+		return nil, &UnknownSeries{series}
+	}
+	steps, err := versionSteps(r.View, date, id/BlockSize, []int{int(id % BlockSize)})
+	if err != nil {
+		return nil, err
+	}
+	about, err := aboutValue(r.View, id, date, steps[0])
+	return about.decided, err
+}

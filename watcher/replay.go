@@ -64,7 +64,7 @@ func (d *deciding) changed(names *Names) (map[valueAt]*rules.Act, error) {
 		if err != nil {
 			return nil, err
 		}
-		if f.Step != steps[0] {
+		if f.Step < steps[0] {
 			d.answer.Notes = append(d.answer.Notes, fmt.Sprintf("flag %d was raised for a value that has been restated since: no window changes", ref))
 			continue
 		}

@@ -54,7 +54,8 @@ func (a *app) explain(c *config.Config, v watcher.View, args []string, rangeName
 	}
 	if e.flag != nil && e.flag.Series == "" {
 		if format == "table" {
-			return a.explainFile(e.flag)
+			a.explainFile(e.flag)
+			return a.explainFileTurns(r, e.flag)
 		}
 		return fmt.Errorf("flag %d is about file %s, not an observation: see `strayd flags --all --format %s`", e.flag.Ref, e.flag.File, format)
 	}
@@ -151,8 +152,13 @@ func (a *app) explainJSON(r *watcher.Reader, e *explained) error {
 	for i, c := range historyCells(&e.row) {
 		fmt.Fprintf(&b, "  %q: %s,\n", names[i], c.json)
 	}
-	fmt.Fprintf(&b, "  \"window\": %s,\n  \"reference\": null,\n  \"causes\": [],\n  \"versions\": %s\n}\n", array(window), array(versions))
-	_, err := a.out.Write([]byte(b.String()))
+	standings, err := turnsJSON(r, e.flag)
+	if err != nil {
+		return err
+	}
+	fmt.Fprintf(&b, "  \"window\": %s,\n  \"reference\": null,\n  \"causes\": [],\n  \"versions\": %s,\n  \"standings\": %s\n}\n", array(window),
+		array(versions), standings)
+	_, err = a.out.Write([]byte(b.String()))
 	return err
 }
 
@@ -164,17 +170,16 @@ func array(objects []string) string {
 }
 
 // explainFile explains a flag that is about a file or a feed, not an observation.
-func (a *app) explainFile(f *rules.Flag) error {
+func (a *app) explainFile(f *rules.Flag) {
 	at := f.RaisedAt.Format(time.RFC3339)
 	if f.Kind == rules.KindLate {
 		fmt.Fprintf(a.out, "Ref %d: feed %s was not whole for %s when its deadline passed (raised %s).\n  %s\n", f.Ref, f.Feed, day(f.Date), at, printable(f.Note))
 		fmt.Fprintln(a.out, "What has come since is in `strayd flags` and `strayd history SERIES`.")
-		return nil
+		return
 	}
 	fmt.Fprintf(a.out, "Ref %d: file %s of feed %s was refused on %s, and nothing of it is kept.\n  %s\n", f.Ref, printable(f.File), f.Feed, at,
 		printable(f.Note))
-	fmt.Fprintln(a.out, "It is tried again when its content or the feed's settings change.")
-	return nil
+	fmt.Fprintln(a.out, "It is tried again when its content or the feed's settings change, or when somebody releases it: strayd accept "+printable(f.File)+".")
 }
 
 func (a *app) explainTable(r *watcher.Reader, e *explained) error {
@@ -197,7 +202,11 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 		line("watched beyond", "%s", between(row.WatchLow, row.WatchHigh))
 	}
 	if !row.Limited {
-		a.explainWindow(line, row, e.versions[len(e.versions)-1].Step > row.Step)
+		decided, err := r.Decided(row.Series, row.Date)
+		if err != nil {
+			return err
+		}
+		a.explainWindow(line, row, e.versions[len(e.versions)-1].Step > row.Step, decided)
 	}
 	for i, v := range e.versions {
 		file, err := r.File(v.Step)
@@ -210,7 +219,7 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 		}
 		line(name, "%s as %s in %s, line %d (feed %s)", file.Received.Format(time.RFC3339), rules.Units(v.Value), printable(file.File.Name), v.Line, file.File.Feed)
 	}
-	if err := w.Flush(); err != nil {
+	if err := firstError(a.explainTurns(line, r, e.flag), w.Flush()); err != nil {
 		return err
 	}
 	fmt.Fprintln(a.out, "\n"+caution)
@@ -218,7 +227,7 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 }
 
 // explainWindow says what the verdict was made of; restated: a newer version of the observation is held.
-func (a *app) explainWindow(line func(name, format string, args ...any), row *watcher.Row, restated bool) {
+func (a *app) explainWindow(line func(name, format string, args ...any), row *watcher.Row, restated bool, decided *rules.Act) {
 	if row.N > 0 {
 		line("made of", "%s from %s to %s", rules.Counted(row.N, "observation"), day(row.WindowFrom), day(row.WindowTo))
 		line("mean, deviation", "%s, %s", percentNum(row.Mean), width(row.Deviation))
@@ -235,12 +244,7 @@ func (a *app) explainWindow(line func(name, format string, args ...any), row *wa
 	if clipped > 0 {
 		line("clipped", "%s of the window held to the line that they broke", rules.Counted(clipped, "value"))
 	}
-	switch {
-	case row.Used == rules.Missing:
-		line("window takes", "nothing of it until someone decides")
-	case row.Used != row.Return && restated:
-		line("window takes", "%s, now that it is restated", rules.InPercent(row.Used.Float()))
-	case row.Used != row.Return:
-		line("window takes", "%s until someone decides", rules.InPercent(row.Used.Float()))
+	if takes := takesWords(row, restated, decided); takes != "" {
+		line("window takes", "%s", takes)
 	}
 }

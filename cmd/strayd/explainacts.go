@@ -1,6 +1,7 @@
 package main
 
 import (
+	"fmt"
 	"time"
 
 	"strayd/rules"
@@ -92,4 +93,32 @@ func turnsJSON(r *watcher.Reader, f *rules.Flag) (string, error) {
 		objects = append(objects, object(names, cells, "    ", " "))
 	}
 	return array(objects), nil
+}
+
+// explainFileTurns does the same for a flag that is about no observation.
+func (a *app) explainFileTurns(r *watcher.Reader, f *rules.Flag) error {
+	w := columns(a.out)
+	line := func(name, format string, args ...any) { fields(w, "  "+name, fmt.Sprintf(format, args...)) }
+	return firstError(a.explainTurns(line, r, f), w.Flush())
+}
+
+// takesWords say what the window takes of a value that it does not simply take as it is; decided is what somebody decided of the value.
+func takesWords(row *watcher.Row, restated bool, decided *rules.Act) string {
+	used := "nothing of it"
+	if row.Used != rules.Missing {
+		used = rules.InPercent(row.Used.Float())
+	}
+	switch {
+	case decided != nil && row.Used == row.Return:
+		return "all of it, as " + decided.By.String() + " decided"
+	case decided != nil:
+		return used + ", as " + decided.By.String() + " decided"
+	case row.Used == rules.Missing:
+		return used + " until someone decides"
+	case row.Used == row.Return:
+		return ""
+	case restated:
+		return used + ", now that it is restated"
+	}
+	return used + " until someone decides"
 }
