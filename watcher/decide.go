@@ -40,7 +40,13 @@ func (p *Pass) Act(refs []uint64, act rules.Act) (*Answer, error) {
 	if err != nil {
 		return nil, err
 	}
-	return &d.answer, p.Store.Publish(b)
+	if err := p.Store.Publish(b); err != nil {
+		return nil, err
+	}
+	if len(b.Used)+len(b.States) == 0 {
+		p.Resident.passed(b.Step)
+	}
+	return &d.answer, nil
 }
 
 // deciding is one act on its way into the ledger.

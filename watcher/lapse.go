@@ -16,7 +16,11 @@ func (p *Pass) lapse() error {
 		return err
 	}
 	p.tell(b, 0)
-	return p.Store.Publish(b)
+	err = p.Store.Publish(b)
+	if err == nil {
+		p.Resident.passed(b.Step)
+	}
+	return err
 }
 
 // lapseStep is the step that ends waivers, nil when none has run out.
