@@ -117,7 +117,7 @@ func (p *Pass) replay(v View, b *Batch, names *Names, decided map[valueAt]*rules
 }
 
 // replayTasks go through the blocks of some values, each from the first of them on.
-func replayTasks(j *judging, values map[valueAt]*rules.Act) (out []task) {
+func replayTasks(j *judging, values map[valueAt]*rules.Act) []task {
 	since := map[uint32]rules.Date{}
 	for at := range values {
 		number := at.series / BlockSize
@@ -125,12 +125,14 @@ func replayTasks(j *judging, values map[valueAt]*rules.Act) (out []task) {
 			since[number] = at.date
 		}
 	}
-	for _, bl := range allBlocks(j.names.Len()) {
+	var blocks []block
+	for _, bl := range allBlocks(j.names.Len(), rules.NoDate) {
 		if first, ok := since[bl.number]; ok {
-			out = append(out, tasks([]block{bl}, j.width, first)...)
+			bl.since = first
+			blocks = append(blocks, bl)
 		}
 	}
-	return out
+	return tasks(blocks, j.width)
 }
 
 // replayed is a view in which the used values of a batch are published already.
