@@ -26,10 +26,17 @@ func (p *plan) size() (n int64) {
 		n += 20*int64(len(s.N)) + 8*int64(len(s.Var)) + 100
 	}
 	for _, columns := range p.columns {
-		for _, c := range columns {
+		short := false
+		for i, c := range columns {
+			if i%64 == 0 { // the others will be like it
+				_, short = longs(c)
+			}
 			cell := 4
-			if c.V64 != nil {
+			switch {
+			case c.V64 != nil:
 				cell = 8
+			case short:
+				cell = shortCell
 			}
 			present := c.Len() - missing(c)
 			n += int64(min(c.Len()*cell, present*(2+cell)) + columnHead + 32)
