@@ -3,7 +3,11 @@
 //
 // A Pool holds the series that are judged together, with their references and currencies, and goes forward one date at a time. What it
 // says of a date depends on the values of that date and on the Memory dates before it, on nothing else: a pool that is made anew and led
-// through the last Memory dates says the same.
+// through the last Memory dates says the same. Series without group, reference, currency and events, of which there may be millions, need
+// no pool: a Lone weighs the few of their values that call for it.
+//
+// All windows go by dates, not by observations, and every bound on what enters them goes by values as they came. That is what keeps the
+// memory finite: a window that was clipped by verdicts would remember what these remembered.
 package causes
 
 import "strayd/rules"

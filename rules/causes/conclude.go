@@ -11,15 +11,8 @@ import (
 func (p *Pool) conclude(w *weighing, r *Result) {
 	i := w.member
 	lk, st := &p.looks[i], &p.states[i]
-	errors, best := 0.0, -1
-	for k, o := range w.odds {
-		errors += o.weight
-		if best < 0 || o.weight > w.odds[best].weight {
-			best = k
-		}
-	}
-	logOdds := math.Log(errors+1e-300) - math.Log(w.ordinary+w.genuine)
-	lk.total = errors + w.ordinary + w.genuine
+	logOdds, best := w.logOdds(), w.best()
+	lk.total = w.total()
 	beyond := math.Abs(lk.z) > breachZ || math.Abs(lk.ownZ) > breachZ
 	if logOdds > lowest && !beyond {
 		h := p.histogramOf(i)
@@ -37,11 +30,33 @@ func (p *Pool) conclude(w *weighing, r *Result) {
 	} else if best >= 0 && logOdds > line && w.odds[best].ratio > math.E {
 		v.Kind = kindOf(w.odds[best].cause, st)
 	}
-	st.isOut = st.isOut || v.Out
+	if v.Out {
+		v.Use, st.isOut = Out, true
+	}
 	st.chain.next()
 	if v.Kind != "" || v.Out || math.Abs(lk.z) > watchZ || math.Abs(lk.ownZ) > watchZ {
 		r.Views = append(r.Views, v)
 	}
+}
+
+// logOdds is the logarithm of the odds of an error against anything else.
+func (w *weighing) logOdds() float64 {
+	errors := 1e-300
+	for _, o := range w.odds {
+		errors += o.weight
+	}
+	return math.Log(errors) - math.Log(w.ordinary+w.genuine)
+}
+
+// best is the heaviest error, -1 for none.
+func (w *weighing) best() int {
+	best := -1
+	for k, o := range w.odds {
+		if best < 0 || o.weight > w.odds[best].weight {
+			best = k
+		}
+	}
+	return best
 }
 
 // kindOf is the kind of flag that the leading cause asks for.

@@ -26,7 +26,7 @@ type look struct {
 	mark      uint8
 	total     float64 // weight of all that may explain it, 0 where it was not weighed
 	reversal  float64 // odds that it takes back a spike of the date before
-	replaced  bool    // by a corrected value
+	full      bool    // it enters the windows without a bound: somebody decided that it is genuine
 	elsewhere bool    // it belongs to another date, as those of the whole file
 }
 

@@ -169,20 +169,26 @@ func (p *Pool) known(d Day) {
 		return
 	}
 	for i := range p.states {
-		if st := &p.states[i]; !st.isWrong && (d.Fresh == nil || !d.Fresh[i]) {
+		if st := &p.states[i]; !(st.isWrong && p.followed(i, d)) && (d.Fresh == nil || !d.Fresh[i]) {
 			st.isOut = false
 		}
 	}
 	for _, k := range d.Known {
 		st := &p.states[k.Member]
 		switch k.Use {
+		case AsIs:
+			p.looks[k.Member].full = true
 		case Out:
 			st.isOut = true
 		case Instead:
 			p.looks[k.Member].x = k.Value.Float()
-			p.looks[k.Member].replaced = true
 		}
 	}
+}
+
+// followed says that a reference is held against values that are judged now.
+func (p *Pool) followed(i int, d Day) bool {
+	return slices.ContainsFunc(p.followers[i], func(m int) bool { return d.Fresh == nil || d.Fresh[m] })
 }
 
 // close takes today's values into the windows.
@@ -192,7 +198,7 @@ func (p *Pool) close(d Day) {
 		st, lk := &p.states[i], &p.looks[i]
 		if h := &st.held; h.is {
 			if !h.out {
-				st.enter(h.t, &h.look, false)
+				st.enter(h.t, &h.look)
 			}
 			h.is = false
 		}
@@ -216,7 +222,7 @@ func (p *Pool) close(d Day) {
 		case st.isOut:
 			st.leaveOut(p.t, lk.m)
 		default:
-			st.enter(p.t, lk, false)
+			st.enter(p.t, lk)
 		}
 	}
 }

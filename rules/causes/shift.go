@@ -102,7 +102,7 @@ func (p *Pool) setAside(r *Result) {
 				r.Shifted = append(r.Shifted, i)
 				v := p.view(i, lk)
 				v.Causes = []rules.Share{{Cause: rules.CauseShifted, Share: 1}}
-				v.LooksLike, v.Share, v.Out = rules.CauseShifted, 1, true
+				v.LooksLike, v.Share, v.Out, v.Use = rules.CauseShifted, 1, true, Out
 				r.Views = append(r.Views, v)
 			}
 		}

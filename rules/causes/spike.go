@@ -47,6 +47,6 @@ func (p *Pool) settled(i int, a *look, odds float64) View {
 	v := p.view(i, a)
 	v.Date = p.before
 	v.Causes = []rules.Share{{Cause: rules.CauseSpike, Share: share, Implied: implied}}
-	v.LooksLike, v.Share, v.Implied, v.Out = rules.CauseSpike, share, implied, true
+	v.LooksLike, v.Share, v.Implied, v.Out, v.Use = rules.CauseSpike, share, implied, true, Out
 	return v
 }

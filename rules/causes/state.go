@@ -83,13 +83,13 @@ func (st *state) count(mark uint8, by int) {
 }
 
 // enter takes a value into the windows of date t.
-func (st *state) enter(t int, lk *look, full bool) {
+func (st *state) enter(t int, lk *look) {
 	at := t & mask
 	bound := st.own.bound()
-	st.own.take(t, lk.x, bound, full)
+	st.own.take(t, lk.x, bound, lk.full)
 	st.used[at], st.ref[at] = lk.x, lk.m
 	if lk.hasRef {
-		st.rest.take(t, lk.x-lk.mu, st.rest.bound(), full)
+		st.rest.take(t, lk.x-lk.mu, st.rest.bound(), lk.full)
 	}
 	st.mark[at] = lk.mark
 	st.count(lk.mark, 1)

@@ -1,0 +1,173 @@
+package causes
+
+import (
+	"math"
+	"slices"
+
+	"strayd/rules"
+)
+
+// Lone weighs values of series that have no group, reference, currency or event, one at a time, on nothing but the series' own past: there
+// can be millions of them, and they need no pool. What it can tell is little: a zero or a repeat where the decimals are fine, a slipped
+// point, a split, a spike that is taken back. Doubt begins at even odds. One goroutine at a time may use a Lone.
+type Lone struct {
+	pool *Pool
+	size []float64
+}
+
+// NewLone makes a Lone. It is about 20 KB: make one for each worker.
+func NewLone() *Lone {
+	return &Lone{pool: NewPool([]Member{{Group: -1, FX: -1}}, nil, 0)}
+}
+
+// Calls says whether a value needs Weigh at all: one that is neither zero nor the value before again, and inside its watch line, does not.
+// before is the printed value of the date before, inside what the range says.
+func Calls(u, before rules.Units, inside bool) bool { return u == 0 || u == before || !inside }
+
+// Weigh says what a printed value of a date looks like, given the values before it: past is by date, oldest first, without the value
+// itself, rules.Missing where there is none, in the form in which windows take them (left-out values are missing); the last span dates
+// count. before is the printed value of the date before. earlier is set where the value takes back a spike of the date before: then the
+// flag of that date looks like one, and this value asks for none.
+func (l *Lone) Weigh(past []rules.Units, before rules.Units, date rules.Date, u rules.Units) (v View, earlier bool) {
+	p := l.pool
+	p.date, p.slow = date, p.slow[:0]
+	lk, st := &p.looks[0], &p.states[0]
+	if !l.look(past, before, u) {
+		return View{Date: date}, false
+	}
+	odds := l.reversal(before)
+	l.carry(l.run(past, u))
+	w := p.weigh(0)
+	v = p.view(0, lk)
+	v.LogOdds = w.logOdds()
+	p.shares(w, lk, &v)
+	if odds > 1 {
+		v.LooksLike, v.Share, v.Implied = rules.CauseSpike, odds/(1+odds), rules.Num{}
+		v.Causes, v.Out = []rules.Share{{Cause: rules.CauseSpike, Share: v.Share}}, true
+		return v, true
+	}
+	if best := w.best(); best >= 0 && v.LogOdds > 0 && w.odds[best].ratio > math.E {
+		v.Kind = kindOf(w.odds[best].cause, st)
+	}
+	return v, false
+}
+
+// look lays out a value and what its past says. ok is false where the past is too short.
+func (l *Lone) look(past []rules.Units, before, u rules.Units) (ok bool) {
+	p := l.pool
+	lk, st := &p.looks[0], &p.states[0]
+	st.zeros, st.repeats, st.seen, st.unchanged = 0, 0, 0, 0
+	st.grid = newGrid()
+	l.past(past, st)
+	*lk = look{u: u, x: u.Float(), places: decimals(u), m: math.NaN(), m1: math.NaN(), judged: true}
+	st.printed, st.lastPrinted, st.lastAt = before, before, p.t
+	variance, n := l.variance(past)
+	if n < leastSeen {
+		return false
+	}
+	p.marks(lk, st)
+	lk.own = max(math.Sqrt(variance*(1+1/float64(n))), leastDeviation, 0.29*lk.tick)
+	lk.s = lk.own
+	lk.z = lk.x / lk.s
+	lk.ownZ = lk.z
+	return true
+}
+
+// past counts zeros, repeats and decimals.
+func (l *Lone) past(past []rules.Units, st *state) {
+	last := rules.Missing
+	for k, u := range past[max(0, len(past)-span):] {
+		if u == rules.Missing {
+			continue
+		}
+		st.seen++
+		switch {
+		case u == 0:
+			st.zeros++
+		case u == last:
+			st.repeats++
+		}
+		last = u
+		if k >= min(len(past), span)-guard {
+			st.grid.count[decimals(u)]++
+			st.grid.n++
+		}
+	}
+}
+
+// variance is that of a scale that has taken the values one by one, about 0, with bounds by the newest guard values.
+func (l *Lone) variance(past []rules.Units) (v float64, n int) {
+	size := l.size[:0]
+	for k := len(past) - 1; k >= 0 && len(size) < long; k-- {
+		if u := past[k]; u != rules.Missing {
+			size = append(size, math.Abs(u.Float()))
+		}
+	}
+	l.size = size
+	n = len(size)
+	sorted := slices.Clone(size[:min(n, guard)])
+	slices.Sort(sorted)
+	s := scale{sorted: sorted}
+	bound := s.bound()
+	for k, x := range size {
+		if bound > 0 {
+			x = min(x, bound)
+		}
+		c := int64(math.RoundToEven(min(x, 1) * fine))
+		for b, most := range boxes {
+			if k < most {
+				s.n[b]++
+				s.square[b] += c * c
+			}
+		}
+	}
+	return s.variance(0), n
+}
+
+// run is how many of the newest values are zeros, or all equal, like u.
+func (l *Lone) run(past []rules.Units, u rules.Units) (n int) {
+	for k := len(past) - 1; k >= 0 && n < depth && past[k] == u; k-- {
+		n++
+	}
+	return n
+}
+
+// carry sets what a run of n zeros or repeats carries into today, each with today's evidence.
+func (l *Lone) carry(n int) {
+	p := l.pool
+	lk, st := &p.looks[0], &p.states[0]
+	st.chain = chain{partner: -1}
+	k := runRepeat
+	if lk.u == 0 {
+		k = runZero
+	} else {
+		n-- // the first of equal values repeats nothing
+	}
+	st.unchanged = max(n, 0)
+	ratio, post := 1/p.ordinary(0), 0.0
+	for range n {
+		post = ratio * (startPrior[k] + float64(stays[k]*post))
+		post /= 1 + post
+	}
+	st.chain.carry[k] = stays[k] * post
+}
+
+// reversal is the odds that today takes back a spike of the date before.
+func (l *Lone) reversal(before rules.Units) float64 {
+	p := l.pool
+	if before == rules.Missing {
+		return 0
+	}
+	today := p.looks[0]
+	a := today
+	a.u, a.x, a.places, a.mark = before, before.Float(), decimals(before), markSeen
+	a.z = a.x / a.s
+	a.ownZ, a.finer = a.z, int(a.places) > a.digits
+	if math.Abs(a.z) < 4 || math.Abs(today.z) < 2 {
+		return 0
+	}
+	p.looks[0] = a
+	a.total = p.weigh(0).total()
+	p.looks[0] = today
+	return p.spike(0, &a, &today)
+}
