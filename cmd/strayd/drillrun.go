@@ -37,6 +37,7 @@ type drillRun struct {
 	ledger  *ledger.Ledger
 	make    func(*config.Config, watcher.Store) (*watcher.Pass, error)
 	raised  map[time.Time]rules.Date // the date that each pass was about
+	before  *watcher.Pass            // the last one
 	day     func()                   // told of each date that is done
 }
 
@@ -246,7 +247,8 @@ func (r *drillRun) newPass(t int, now time.Time) (*watcher.Pass, error) {
 	}
 	p.Settings.Events = r.planted.Events
 	p.Now, p.Settled, p.Tell = now.UTC(), true, nil
-	r.raised[p.Now] = r.truth.Dates[t]
+	p.Follow(r.before)
+	r.before, r.raised[p.Now] = p, r.truth.Dates[t]
 	return p, nil
 }
 
