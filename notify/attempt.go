@@ -23,10 +23,19 @@ const (
 )
 
 // attempt takes the notice at the head of the queue one step further. It is recorded as sending before the call, so that a crash
-// in between leaves a trace.
+// in between leaves a trace. The channels of one service take turns: whatever moment a crash comes at, one notice at most is in its
+// hands without a recorded outcome.
 func (w *worker) attempt(ctx context.Context, n rules.Notice) {
 	if now().Sub(later(n.Made, n.Ended)) > oldest {
 		w.finish(ctx, &n, rules.NoticeFailed, Retry, "not delivered within 72 h; last: "+or(n.Error, "never tried"))
+		return
+	}
+	done, ok := w.s.turn(ctx, w.Service)
+	if !ok {
+		return
+	}
+	defer done()
+	if !w.alive() {
 		return
 	}
 	w.setState(Sends)

@@ -43,6 +43,7 @@ type Event struct {
 type Sender struct {
 	Sending
 	workers []*worker
+	turns   map[string]chan struct{} // by service: full while one of its channels makes an attempt
 
 	mu   sync.Mutex
 	dead map[string]string // services stopped for good, with the reason
@@ -59,8 +60,11 @@ func NewSender(o Sending) *Sender {
 	if o.Report == nil {
 		o.Report = func(Event) {}
 	}
-	s := &Sender{Sending: o, dead: map[string]string{}}
+	s := &Sender{Sending: o, dead: map[string]string{}, turns: map[string]chan struct{}{}}
 	for _, r := range o.Routes {
+		if r.Service != "" && s.turns[r.Service] == nil {
+			s.turns[r.Service] = make(chan struct{}, 1)
+		}
 		s.workers = append(s.workers, &worker{Route: r, s: s, wake: make(chan struct{}, 1), state: Idle})
 	}
 	return s
@@ -110,6 +114,20 @@ func (s *Sender) failOrphans() {
 	}
 	if err != nil {
 		s.Report(Event{Class: Unknown, Reason: "outbox: " + err.Error()})
+	}
+}
+
+// turn waits until no other channel of a service makes an attempt; done ends the turn. ok is false when the context ends first.
+func (s *Sender) turn(ctx context.Context, service string) (done func(), ok bool) {
+	turn := s.turns[service]
+	if turn == nil {
+		return func() {}, true
+	}
+	select {
+	case turn <- struct{}{}:
+		return func() { <-turn }, true
+	case <-ctx.Done():
+		return nil, false
 	}
 }
 

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"strings"
+	"sync"
 	"testing"
 	"testing/synctest"
 	"time"
@@ -201,6 +202,37 @@ func TestADeadServiceStopsAtOnce(t *testing.T) {
 		equal(t, "same", fmt.Sprint(h[1].State, " ", h[1].Reason, " ", err), "stopped dead service told <nil>")
 		cancel()
 		<-done
+	})
+}
+
+// Channels of one service take turns, so that a crash leaves one notice at most in doubt; another service does not wait for them.
+func TestTurnsOfAService(t *testing.T) {
+	bubble(t, func(t *testing.T) {
+		var mu sync.Mutex
+		hands, most := map[string]int{}, map[string]int{}
+		slow := func(service string) *chat {
+			step := func(context.Context, rules.Notice) (bool, error) {
+				mu.Lock()
+				hands[service]++
+				most[service] = max(most[service], hands[service])
+				most["both"] = max(most["both"], hands["chat"]+hands["mail"])
+				mu.Unlock()
+				time.Sleep(time.Minute)
+				mu.Lock()
+				defer mu.Unlock()
+				hands[service]--
+				return true, nil
+			}
+			return newChat(step, step, step)
+		}
+		m := &memory{}
+		for _, name := range []string{"desk", "same", "mail"} {
+			m.fill(name, 3)
+		}
+		sendFor(time.Hour, Sending{Outbox: m, Routes: []Route{{"desk", "chat", slow("chat"), Hours{}}, {"same", "chat", slow("chat"), Hours{}},
+			{"mail", "mail", slow("mail"), Hours{}}}})
+		equal(t, "states", m.states(), "sent sent sent sent sent sent sent sent sent")
+		equal(t, "calls at a time", most, map[string]int{"chat": 1, "mail": 1, "both": 2})
 	})
 }
 
