@@ -109,6 +109,6 @@ func (c *chain) next() {
 	c.active = false
 	for k := range post {
 		c.carry[k] = stays[k] * post[k]
-		c.active = c.active || c.carry[k] > 0.02
+		c.active = c.active || c.carry[k] > 0.002
 	}
 }

@@ -106,11 +106,19 @@ func (p *Pool) shares(w *weighing, lk *look, v *View) {
 			errors += share
 		}
 	}
-	if len(v.Causes) > 0 && v.Causes[0].Share > 0.5 {
+	if len(v.Causes) > 0 && v.Causes[0].Share > needed(v.Causes[0].Cause) {
 		c := v.Causes[0]
 		v.LooksLike, v.Share, v.Implied = c.Cause, c.Share, c.Implied
 	}
 	v.Out = v.LogOdds > 0
+}
+
+// needed is the share above which a cause is named: half, and more where the name says that there is no better explanation.
+func needed(c rules.Cause) float64 {
+	if c == rules.CauseGenuine {
+		return 0.8
+	}
+	return 0.5
 }
 
 // merge adds up the weights of the same cause; the implied return is that of the heaviest.

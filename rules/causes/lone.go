@@ -41,7 +41,7 @@ func (l *Lone) Weigh(past []rules.Units, before rules.Units, date rules.Date, u 
 	v = p.view(0, lk)
 	v.LogOdds = w.logOdds()
 	p.shares(w, lk, &v)
-	if odds > 1 {
+	if odds /= w.total(); odds > 1 {
 		v.LooksLike, v.Share, v.Implied = rules.CauseSpike, odds/(1+odds), rules.Num{}
 		v.Causes, v.Out = []rules.Share{{Cause: rules.CauseSpike, Share: v.Share}}, true
 		return v, true
@@ -152,7 +152,7 @@ func (l *Lone) carry(n int) {
 	st.chain.carry[k] = stays[k] * post
 }
 
-// reversal is the odds that today takes back a spike of the date before.
+// reversal is the weight of today taking back a spike of the date before.
 func (l *Lone) reversal(before rules.Units) float64 {
 	p := l.pool
 	if before == rules.Missing {

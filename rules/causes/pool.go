@@ -81,7 +81,6 @@ func (p *Pool) Step(d Day) *Result {
 		p.prepare(i)
 	}
 	p.contradictions(r)
-	p.spikes(r)
 	for i := range p.members {
 		if p.plain(i) {
 			p.states[i].chain.broken()
@@ -90,6 +89,7 @@ func (p *Pool) Step(d Day) *Result {
 		p.weigh(i)
 	}
 	p.swaps()
+	p.spikes(r)
 	p.lines()
 	for k := range p.slow {
 		p.conclude(&p.slow[k], r)
@@ -138,7 +138,7 @@ func (p *Pool) plain(i int) bool {
 		return true
 	}
 	switch {
-	case st.chain.active, lk.finer, lk.mark != markSeen, p.members[i].FX >= 0, lk.reversal > 0:
+	case st.chain.active, lk.finer, lk.mark != markSeen, p.members[i].FX >= 0, st.held.is:
 		return false
 	case math.Abs(lk.z) > 2, math.Abs(lk.ownZ) > 2.5:
 		return false
@@ -284,7 +284,7 @@ func (p *Pool) median(g int, of func(*state) *scale) float64 {
 }
 
 // rate is how often something happens to a series.
-func (p *Pool) rate(int) float64 { return 2e-3 }
+func (p *Pool) rate(int) float64 { return 2.5e-3 }
 
 // bell is the tail of a member.
 func (p *Pool) bell(int) *bell { return &bells[usual] }

@@ -159,14 +159,17 @@ func (p *Pool) currency(w *weighing, lk *look, i int) {
 	p.add(w, rules.CauseFXTwice, priorFX, lk.width()/by*p.fits(i, lk, y), rules.Some(y))
 }
 
+// since is how often a return that is not of one day goes on from the value before, and how often it is that of the month so far.
+var since = [2]float64{0.85, 0.15}
+
 // runs weighs causes that last for days: a return since the start of something instead of since yesterday, and a value of the date before.
 func (p *Pool) runs(w *weighing, lk *look, st *state) {
 	i := w.member
 	like, best, implied := 0.0, 0.0, 0.0
-	for _, base := range []float64{1 + st.printed.Float(), p.month(i)} {
+	for k, base := range [2]float64{1 + st.printed.Float(), st.sofar} {
 		if base > 0.2 && base != 1 && st.printed != rules.Missing {
 			y := (1+lk.x)/base - 1
-			l := lk.width() / base * p.fits(i, lk, y) / 2
+			l := since[k] * lk.width() / base * p.fits(i, lk, y)
 			if l > best {
 				best, implied = l, y
 			}
@@ -179,6 +182,3 @@ func (p *Pool) runs(w *weighing, lk *look, st *state) {
 		p.add(w, rules.CauseShifted, priorShifted, lk.width()*p.bell(i).at((lk.x-mu)/lk.s)/lk.s, rules.Num{})
 	}
 }
-
-// month is one plus the return since the month began, up to yesterday.
-func (p *Pool) month(i int) float64 { return p.states[i].sofar }

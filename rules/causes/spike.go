@@ -11,23 +11,24 @@ import (
 //
 //	prior x density of (1+r1)(1+r2)-1 about both days' centres x 1/(2 |r1| ln 200)
 //
-// against all else that explains either day. It reports the odds for the values of today, 0 for most.
+// against all else that explains either day.
 func (p *Pool) spikes(r *Result) {
-	for i := range p.members {
-		h, lk := &p.states[i].held, &p.looks[i]
-		if !h.is || h.t != p.t-1 || !lk.judged {
+	for k := range p.slow {
+		w := &p.slow[k]
+		h, lk := &p.states[w.member].held, &p.looks[w.member]
+		if !h.is || h.t != p.t-1 {
 			continue
 		}
-		odds := p.spike(i, &h.look, lk)
+		odds := p.spike(w.member, &h.look, lk) / w.total()
 		if odds <= 1 {
 			continue
 		}
 		h.is, lk.reversal = false, odds
-		r.Earlier = append(r.Earlier, p.settled(i, &h.look, odds))
+		r.Earlier = append(r.Earlier, p.settled(w.member, &h.look, odds))
 	}
 }
 
-// spike is the odds of a spike and its reversal against the two days each by itself.
+// spike is the weight of a spike and its reversal over that of all else which explains the first of the two values.
 func (p *Pool) spike(i int, a, b *look) float64 {
 	size := math.Abs(a.x)
 	if a.x <= -1 || size < 3*a.s || (b.x > 0) == (a.x > 0) {
@@ -36,9 +37,7 @@ func (p *Pool) spike(i int, a, b *look) float64 {
 	both := float64((1+a.x)*(1+b.x)) - 1
 	deviation := math.Sqrt(a.s*a.s + b.s*b.s)
 	fit := p.bell(i).at((both-a.mu-b.mu)/deviation) / deviation * (1 + a.x)
-	joint := priorSpike * fit * b.width() * a.width() / (2 * size * math.Log(200))
-	today := p.ordinary(i) + p.rate(i)*p.genuine(b)
-	return joint / (a.total * today)
+	return priorSpike * fit * b.width() * a.width() / (2 * size * math.Log(200)) / a.total
 }
 
 func (p *Pool) settled(i int, a *look, odds float64) View {

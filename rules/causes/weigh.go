@@ -9,25 +9,25 @@ import (
 // Priors: how often a value is wrong in each way, before anything is known of it. They are a judgement from practice, no source: scale and
 // sign slips once in some 1,000 to 3,000 values, a value sent again or left at zero once in 300.
 const (
-	priorX100       = 5e-4
+	priorX100       = 1e-4
 	priorX10000     = 1e-4
-	priorX10        = 2e-4
-	priorDiv100     = 1e-3
+	priorX10        = 1e-4
+	priorDiv100     = 1.5e-3
 	priorSign       = 1e-3
 	priorRepeat     = 1.5e-3
-	priorZero       = 1.5e-3
+	priorZero       = 1.2e-3
 	priorSpike      = 3e-4
 	priorMissed     = 1e-3 // without a calendar
 	priorDoubled    = 3e-5
 	priorSplit      = 5e-5
 	priorFX         = 1e-4
-	priorSwap       = 5e-4
-	priorCumulative = 3e-4
+	priorSwap       = 1e-3
+	priorCumulative = 5e-4
 	priorShifted    = 5e-5
-	listedMissed    = 0.05 // on a listed date
-	listedDoubled   = 0.03
+	listedMissed    = 0.08 // on a listed date
+	listedDoubled   = 0.04
 	listedSplit     = 0.2
-	offByOne        = 0.1 // factor of the above a business day beside it
+	offByOne        = 0.05 // factor of the above a business day beside it
 )
 
 // odd is one way in which a value may not be ordinary.
@@ -119,6 +119,6 @@ func beyondChance(count, of int, tick, own float64) float64 {
 // genuine is the probability of the printed value if something happened: half as wide moves of the series' own size, half of its residual.
 func (p *Pool) genuine(lk *look) float64 {
 	b := &bells[heavy]
-	wide, near := 4*lk.own, 4*lk.s
+	wide, near := 6*lk.own, 4*lk.s
 	return lk.width() * (b.at((lk.x-lk.mu)/wide)/wide + b.at((lk.x-lk.mu)/near)/near) / 2
 }
