@@ -6,6 +6,9 @@ import "strayd/rules"
 // Rabiner 1989, Proceedings of the IEEE 77:257-286). Only the newest depth dates of an unbroken run of odd days count.
 const depth = 8
 
+// leastCarried is the share from which on tomorrow is weighed whatever it looks like.
+const leastCarried = 0.002
+
 const (
 	runX100 = iota
 	runX10
@@ -22,7 +25,7 @@ const (
 )
 
 // stays is the share that a cause carries into the next date.
-var stays = [runs]float64{0.5, 0.2, 0.5, 0.3, 0.3, 0.3, 0.8, 0.8, 0.8, 0.8, 0.8}
+var stays = [runs]float64{0.5, 0.2, 0.5, 0.3, 0.3, 0.3, 0.8, 0.8, 0.8, 0.9, 0.8}
 
 func persistent(c rules.Cause) int {
 	switch c {
@@ -109,6 +112,6 @@ func (c *chain) next() {
 	c.active = false
 	for k := range post {
 		c.carry[k] = stays[k] * post[k]
-		c.active = c.active || c.carry[k] > 0.002
+		c.active = c.active || c.carry[k] > leastCarried
 	}
 }

@@ -27,6 +27,7 @@ type look struct {
 	total     float64 // weight of all that may explain it, 0 where it was not weighed
 	reversal  float64 // odds that it takes back a spike of the date before
 	full      bool    // it enters the windows without a bound: somebody decided that it is genuine
+	coupled   bool    // it may be exchanged with another series, as yesterday
 	elsewhere bool    // it belongs to another date, as those of the whole file
 }
 

@@ -81,6 +81,7 @@ func (p *Pool) Step(d Day) *Result {
 		p.prepare(i)
 	}
 	p.contradictions(r)
+	p.couple()
 	for i := range p.members {
 		if p.plain(i) {
 			p.states[i].chain.broken()
@@ -131,6 +132,15 @@ func (p *Pool) open(d Day) {
 // weekOf numbers weeks that begin on Monday.
 func weekOf(d rules.Date) int { return (int(d) + 1_000_003) / 7 }
 
+// couple has the partner of a swap that may go on weighed too.
+func (p *Pool) couple() {
+	for i := range p.states {
+		if c := &p.states[i].chain; c.active && c.partner >= 0 && c.carry[runSwapped] > leastCarried {
+			p.looks[c.partner].coupled = true
+		}
+	}
+}
+
 // plain says that nothing about a value calls for weighing.
 func (p *Pool) plain(i int) bool {
 	lk, st := &p.looks[i], &p.states[i]
@@ -138,7 +148,7 @@ func (p *Pool) plain(i int) bool {
 		return true
 	}
 	switch {
-	case st.chain.active, lk.finer, lk.mark != markSeen, p.members[i].FX >= 0, st.held.is:
+	case st.chain.active, lk.finer, lk.coupled, lk.mark != markSeen, p.members[i].FX >= 0, st.held.is:
 		return false
 	case math.Abs(lk.z) > 2, math.Abs(lk.ownZ) > 2.5:
 		return false

@@ -50,7 +50,7 @@ type held struct {
 }
 
 func newState() state {
-	st := state{own: newScale(), rest: newScale(), grid: newGrid(), printed: rules.Missing, before: rules.Missing, lastPrinted: rules.Missing, yesterday: math.NaN(), sofar: 1}
+	st := state{own: newScale(), rest: newScale(), grid: newGrid(), printed: rules.Missing, before: rules.Missing, lastPrinted: rules.Missing, chain: chain{partner: -1}, yesterday: math.NaN(), sofar: 1}
 	for i := range st.used {
 		st.used[i], st.ref[i] = math.NaN(), math.NaN()
 	}

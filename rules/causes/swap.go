@@ -23,40 +23,32 @@ func (p *Pool) swapsOf(w *weighing) {
 	if p.isReference[i] || !p.looks[i].hasRef {
 		return
 	}
-	best, bestLike := -1, 0.0
+	best := odd{cause: rules.CauseSwapped, partner: -1}
+	c := &p.states[i].chain
 	for k := range p.slow {
 		j := p.slow[k].member
 		if j == i || p.isReference[j] || p.members[j].Group == p.members[i].Group {
 			continue
 		}
 		like := p.exchanged(i, j) * p.exchanged(j, i) / p.totals[k]
-		if p.states[i].chain.partner == j {
-			like *= 4 // yesterday's partner wins a tie
+		prior := priorSwap / float64(len(p.members))
+		if c.partner == j { // what yesterday carries counts for the same partner only
+			prior += c.carry[runSwapped]
 		}
-		if like > bestLike {
-			best, bestLike = j, like
+		if weight := prior * like; weight > best.weight {
+			best.weight, best.ratio, best.partner = weight, like/w.ordinary, j
 		}
 	}
-	if best < 0 {
+	if best.partner < 0 {
 		return
 	}
-	p.addSwap(w, best, bestLike)
-}
-
-// addSwap enters the best partner. What yesterday carries counts for the same partner only.
-func (p *Pool) addSwap(w *weighing, partner int, like float64) {
-	c := &p.states[w.member].chain
-	prior := priorSwap / float64(len(p.members))
-	if c.partner == partner {
-		like /= 4
-		prior += c.carry[runSwapped]
-	} else {
+	if c.partner != best.partner {
 		c.restart(runSwapped)
+		c.partner = best.partner
 	}
-	c.partner = partner
-	ratio := like / w.ordinary
-	c.note(runSwapped, ratio/float64(len(p.members)))
-	w.odds = append(w.odds, odd{rules.CauseSwapped, prior * like, ratio, rules.Some(p.looks[partner].x), partner})
+	c.note(runSwapped, best.ratio/float64(len(p.members)))
+	best.implied = rules.Some(p.looks[best.partner].x)
+	w.odds = append(w.odds, best)
 }
 
 // exchanged is the probability that i's true value is printed as j's is now.
