@@ -46,6 +46,8 @@ type oracleObservation struct {
 	flagged bool
 	issued  []oracleVerdict // by range, when the newest version arrived
 	used    []rules.Units   // by range, as of now; rules.Missing where it is left out
+	decided bool            // of the newest version
+	takes   rules.Units     // what windows take by that; rules.Missing for nothing
 }
 
 type oracle struct {
@@ -91,6 +93,7 @@ func (o *oracle) put(c bookRow) bool {
 		}
 		held[at].value = c.value
 		held[at].changed++
+		held[at].decided = false
 		return true
 	}
 	// late: a newer date of the series was held before this file came. A file lists its dates in order, so that a newer one can
@@ -125,6 +128,50 @@ func (o *oracle) replay(series string, fresh map[rules.Date]bool) {
 	}
 }
 
+// decide has the windows take something else of the newest version of an observation.
+func (o *oracle) decide(series string, date rules.Date, takes rules.Units) {
+	for _, h := range o.series[series] {
+		if h.date == date {
+			h.decided, h.takes = true, takes
+		}
+	}
+	held := o.series[series]
+	for i, h := range held {
+		if h.date < date {
+			continue
+		}
+		for k := range o.ranges {
+			v := o.judge(held[:i], k, h.date, h.value)
+			h.used[k] = o.usedValue(k, h, &v)
+		}
+	}
+}
+
+// breaches are the dates and ranges that the windows, as they are, would call a breach; dates are those after one.
+func (o *oracle) breaches(series string, after rules.Date) map[string]bool {
+	out := map[string]bool{}
+	held := o.series[series]
+	for i, h := range held {
+		for k := range o.ranges {
+			if h.date > after && !o.ranges[k].limit {
+				out[h.date.String()+" "+o.ranges[k].name] = o.judge(held[:i], k, h.date, h.value).finding == "breach"
+			}
+		}
+	}
+	return out
+}
+
+// issued are those whose verdict, when it was issued, was a breach.
+func (o *oracle) issued(series string) map[string]bool {
+	out := map[string]bool{}
+	for _, h := range o.series[series] {
+		for k := range o.ranges {
+			out[h.date.String()+" "+o.ranges[k].name] = h.issued[k].finding == "breach"
+		}
+	}
+	return out
+}
+
 func tooLarge(x rules.Units) bool { return x > 100*1e15 || x < -100*1e15 }
 
 // usedValue is what a window takes: the value; of a flagged one under clip the value held to the breach line, rounded to a unit
@@ -132,6 +179,11 @@ func tooLarge(x rules.Units) bool { return x > 100*1e15 || x < -100*1e15 }
 func (o *oracle) usedValue(k int, h *oracleObservation, v *oracleVerdict) rules.Units {
 	r := &o.ranges[k]
 	switch {
+	case !r.limit && h.decided:
+		if tooLarge(h.takes) {
+			return rules.Missing
+		}
+		return h.takes
 	case r.limit, tooLarge(h.value), h.flagged && r.pending == "leave-out":
 		return rules.Missing
 	case !h.flagged || r.pending == "keep":
