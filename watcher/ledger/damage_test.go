@@ -22,6 +22,11 @@ import (
 // heads of the record after each step.
 func furnished(t testing.TB) (path string, heads []string) {
 	t.Helper()
+	return furnishedSteps(t, 5)
+}
+
+func furnishedSteps(t testing.TB, steps uint32) (path string, heads []string) {
+	t.Helper()
 	path = filepath.Join(t.TempDir(), "ledger.db")
 	l, err := Open(path, Options{Mode: Create, AnyFilesystem: true})
 	if err != nil {
@@ -29,7 +34,7 @@ func furnished(t testing.TB) (path string, heads []string) {
 	}
 	rng := rand.New(rand.NewPCG(3, 4))
 	ref := uint64(1)
-	for step := uint32(1); step <= 5; step++ {
+	for step := uint32(1); step <= steps; step++ {
 		publish(t, l, furnish(rng, step, &ref))
 		if err := l.EndPass(watcher.PassRow{Started: noon, Ended: noon, Program: "v1", Accepted: 1}); err != nil {
 			t.Fatal(err)

@@ -46,6 +46,7 @@ type verifier struct {
 	flagged int64                   // flags that must stand in the index by series
 	open    int64                   // flags that must stand in the index of open ones
 	acts    map[uint32]*rules.Entry // what the record says that people did, by step
+	actedAt uint32                  // the step of the newest of them
 	toMeet  uint64                  // rows of flags that the record tells of
 	met     uint64                  // those that were found
 }

@@ -18,9 +18,10 @@ func (c *verifier) decision(key []byte, e *Entry) error {
 	if e.Who != entry.By.String() {
 		return malformed(inRecord, key, "who acted stands there in two ways")
 	}
-	if c.acts[entry.Step] != nil || entry.Step > c.v.head.step {
-		return malformed(inRecord, key, fmt.Sprintf("step %d has another entry, or is not published", entry.Step))
+	if entry.Step <= c.actedAt || entry.Step > c.v.head.step {
+		return malformed(inRecord, key, fmt.Sprintf("step %d is not after that of the entry before, or is not published", entry.Step))
 	}
+	c.actedAt = entry.Step
 	entry.At = e.At
 	c.acts[entry.Step] = entry
 	c.toMeet += uint64(len(entry.Refs))
