@@ -2,6 +2,7 @@ package notify
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 	"time"
 
@@ -14,8 +15,15 @@ func (t *Teller) alert(news rules.News, e event, read time.Time) []string {
 	for _, f := range e {
 		lines = append(lines, rangeLine(f))
 	}
-	lines = append(lines, noteLines(e)...)
-	return append(lines, pendingLine(e), t.fileLine(news, e), t.ownerLine(e[0], read), answerLine(e))
+	notes := noteLines(e)
+	notes[len(notes)-1] = both(notes[len(notes)-1], pendingLine(e))
+	if len(e) > 1 { // two kinds have two lines of what was expected
+		lines = append(lines, both(looksLine(e[0]), referenceLine(e[0])))
+	} else {
+		lines = append(lines, referenceLine(e[0]), looksLine(e[0]))
+	}
+	lines = append(lines, notes...)
+	return append(lines, t.fileLine(news, e), t.ownerLine(e[0], read), answerLine(e))
 }
 
 // head is the first line, complete alone: what, which series, the value, the valuation date and the ref. The word before the value
@@ -114,7 +122,7 @@ func noteLines(e event) []string {
 // pendingLine says what the window makes of the value until somebody decides.
 func pendingLine(e event) string {
 	var s string
-	if f := e[0]; f.Kind == rules.KindBreach {
+	if f := e[0]; f.Kind != rules.KindLimit && slices.Contains(rules.OutOfLine, f.Kind) {
 		switch f.Used {
 		case rules.Missing:
 			s = "Until somebody decides, the window leaves it out."

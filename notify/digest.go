@@ -35,7 +35,7 @@ func (t *Teller) digest(c rules.Channel, news rules.News, events []event) rules.
 		lines = append(lines, groupWords(flags))
 	}
 	for _, e := range worst {
-		lines = append(lines, digestLine(e, c.Short))
+		lines = append(lines, digestLine(e.shown(), c.Short))
 	}
 	lines = append(lines, moreLine(len(events)-len(worst), first, last))
 	if !c.Short {
@@ -127,6 +127,8 @@ func digestLine(e event, short bool) string {
 	s := subject(e[0])
 	if f := e[0]; f.Return != rules.Missing && f.Series != "" {
 		s += " returned " + rules.InPercent(f.Return.Float())
+	} else if f.Kind == rules.KindMarketDay {
+		s += ": median " + rules.InPercent(f.Return.Float())
 	}
 	if z := e[0].Z; z.OK {
 		s += fmt.Sprintf(", z %+.1f", z.V)

@@ -86,6 +86,28 @@ func deskTeller(t *testing.T) *Teller {
 		Groups: []rules.Group{{Name: "equity", Owner: "desk-one", Reply: 2 * time.Hour, Release: &rules.Due{Minutes: 11 * 60, Days: 1}}}}
 }
 
+// looking gives a flag a reference and a cause, and takes the names of both from its series.
+func looking(f rules.FlagNews, c rules.Cause) rules.FlagNews {
+	f.LooksLike, f.Share, f.Implied = c, rules.Some(0.914), rules.Some(-0.0022)
+	f.Reference, f.ReferenceReturn, f.Residual = "index-"+f.Series, rules.Some(-0.0021), rules.Some(-0.039)
+	f.Group = "shares " + f.Series
+	return f
+}
+
+func wrongReference(series string) rules.FlagNews {
+	f := breachOf(series, 26)
+	f.Kind, f.LooksLike, f.Implied, f.Note = rules.KindDoubtful, rules.CauseReference, rules.Some(0.0031), "14 series held against it agree that it is wrong"
+	f.Group = ""
+	return f
+}
+
+func marketOf(group string, still ...string) rules.FlagNews {
+	f := breachOf("", 20)
+	f.Group, f.Kind, f.Range, f.Low, f.High, f.Tail, f.Log10, f.Line = group, rules.KindMarketDay, "", rules.Num{}, rules.Num{}, rules.Num{}, rules.Num{}, 0
+	f.Market = &rules.MarketNews{Reporting: 15, MedianZ: 4.13, NotMoved: still}
+	return f
+}
+
 // goldenNews is every kind of message about a series of this name.
 func goldenNews(series string) map[string]rules.News {
 	reopened := breachOf(series, 12)
@@ -105,7 +127,22 @@ func goldenNews(series string) map[string]rules.News {
 		}
 		storm = append(storm, f)
 	}
+	explained := looking(breachOf(series, 21), rules.CauseMarket)
+	explained.Covered = true
+	second := explained
+	second.Series, second.Ref = "birch-"+series, 22
+	third := second
+	third.Series, third.Ref = "cedar", 23
+	odd := looking(breachOf("elm", 24), rules.CauseSign)
+	still := looking(breachOf(series, 25), rules.CauseZero)
+	still.Kind, still.Return, still.Used, still.Note = rules.KindStale, 0, 0, "log odds of an error 3.2, doubt begins at 0.4"
 	return map[string]rules.News{
+		"looks":    newsOf(looking(breachOf(series, 12), rules.CauseMissed)),
+		"crowded":  newsOf(looking(breachOf(series, 12), rules.CauseX100), limitOf(series, 13), restatedOf(series, 14)),
+		"stale":    newsOf(still),
+		"wrong":    newsOf(wrongReference(series)),
+		"market":   newsOf(marketOf("shares "+series, series, "birch", "cedar"), explained, second, third, odd, still),
+		"moved":    newsOf(marketOf("equity")),
 		"breach":   newsOf(breachOf(series, 12)),
 		"reopened": newsOf(reopened, limitOf("other", 13)),
 		"small":    newsOf(small),
@@ -129,7 +166,8 @@ func goldenDaily(series string) rules.DayNews {
 func TestGoldenMessages(t *testing.T) {
 	for what, series := range hostile {
 		teller, text := deskTeller(t), &strings.Builder{}
-		for _, kind := range []string{"breach", "reopened", "small", "limit", "outsize", "restated", "all", "refused", "late", "missing", "digest"} {
+		for _, kind := range []string{"breach", "reopened", "small", "limit", "outsize", "restated", "all", "refused", "late", "missing", "digest",
+			"looks", "crowded", "stale", "wrong", "market", "moved"} {
 			for _, n := range teller.Notices(goldenNews(series)[kind]) {
 				note(t, text, kind, n)
 			}

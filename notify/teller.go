@@ -75,9 +75,13 @@ func (t *Teller) events(c rules.Channel, flags []rules.FlagNews) []event {
 	}
 	var out []event
 	at := map[about]int{}
+	markets := marketsFor(c, flags)
 	for i := range flags {
 		f := &flags[i]
 		if !f.Standing.Asks() || !takes(c, &f.Flag) {
+			continue
+		}
+		if f.Covered && markets[groupDay{f.Group, f.Date}] {
 			continue
 		}
 		key := about{f.Series, f.Date}
@@ -89,14 +93,53 @@ func (t *Teller) events(c rules.Channel, flags []rules.FlagNews) []event {
 		}
 		out[n] = append(out[n], f)
 	}
-	for _, e := range out {
+	for n, e := range out {
+		if e[0].Kind == rules.KindMarketDay {
+			out[n] = append(e, coveredBy(c, e[0], flags)...)
+			continue
+		}
 		slices.SortStableFunc(e, func(x, y *rules.FlagNews) int { return cmp.Compare(rank(x.Kind), rank(y.Kind)) })
+	}
+	return out
+}
+
+type groupDay struct {
+	group string
+	date  rules.Date
+}
+
+// marketsFor are the market days that a channel is told of.
+func marketsFor(c rules.Channel, flags []rules.FlagNews) map[groupDay]bool {
+	out := map[groupDay]bool{}
+	for i := range flags {
+		if f := &flags[i]; f.Kind == rules.KindMarketDay && f.Standing.Asks() && takes(c, &f.Flag) {
+			out[groupDay{f.Group, f.Date}] = true
+		}
+	}
+	return out
+}
+
+// coveredBy are the breaches that the message of a market day stands for.
+func coveredBy(c rules.Channel, market *rules.FlagNews, flags []rules.FlagNews) (out event) {
+	for i := range flags {
+		f := &flags[i]
+		if f.Covered && f.Group == market.Group && f.Date == market.Date && f.Standing.Asks() && takes(c, &f.Flag) {
+			out = append(out, f)
+		}
 	}
 	return out
 }
 
 // rank orders kinds from the gravest.
 func rank(k rules.Kind) int { return slices.Index(rules.Kinds, k) }
+
+// shown are the flags of an event that a line about it names: of a market day the one about the group.
+func (e event) shown() event {
+	if e[0].Kind == rules.KindMarketDay {
+		return e[:1]
+	}
+	return e
+}
 
 func (e event) refs() []uint64 {
 	refs := make([]uint64, len(e))
@@ -111,7 +154,9 @@ func (t *Teller) message(c rules.Channel, news rules.News, e event) rules.Notice
 	n := t.notice(c, e[0].Kind, news.At)
 	n.Key, n.Refs, n.Date = eventKey(c, e), e.refs(), e[0].Date
 	if c.Short {
-		n.Lines = fit([]string{shortHead(e)})
+		n.Lines = fit([]string{shortHead(e.shown())})
+	} else if e[0].Kind == rules.KindMarketDay {
+		n.Lines = fit(t.market(news, e, n))
 	} else {
 		n.Lines = fit(t.alert(news, e, n.Next))
 	}
