@@ -82,7 +82,7 @@ func TestJudgingSeesEveryChange(t *testing.T) {
 		{"- name: own", "- name: own\n    of: residual"},
 		{"- name: own", "- name: own\n    for: [g]"},
 		{"[-50%, 50%]", "[-50%, 50.0000000000001%]"},
-		{"- name: g", "- name: g\n    reference: peers"},
+		{"- name: g", "- name: g\n    reference: none"},
 		{`["a*", b]`, `["a*"]`},
 		{"ledger:", "doubtful: 0.1%\nledger:"},
 		{"ledger:", "calendar: DE\nledger:"},

@@ -12,10 +12,9 @@ var groupTable = object{what: "keys: name at least", fields: []field{
 	{key: "series", doc: "Ids or globs; what the register's group column names belongs to the group as well.",
 		shape: list[string]{item: glob("a series' id or a pattern"), least: 1, unique: true, what: "a list of ids or patterns"},
 		at:    in(func(g *rules.Group) any { return &g.Series })},
-	{key: "reference", initial: noReference, shape: text("a series' id, peers or none", filledPattern, filled),
-		doc:   "What residuals are taken against: a series' id, peers (the group's median) or none; the register's own column wins.",
-		later: unless(noReference, "checked now; references come in a later version"),
-		at:    in(func(g *rules.Group) any { return &g.Reference })},
+	{key: "reference", initial: rules.PeersReference, shape: text("a series' id, peers or none", filledPattern, filled),
+		doc: "What residuals are taken against: a series' id, peers (the group's median) or none; the register's own column wins.",
+		at:  in(func(g *rules.Group) any { return &g.Reference })},
 	{key: "owner", shape: text("who looks after the group", filledPattern, filled), doc: "Who looks after the group.",
 		at: in(func(g *rules.Group) any { return &g.Owner })},
 	{key: "reply", shape: duration(time.Minute, 31*24*time.Hour), doc: "How soon an open flag asks for an answer.",
@@ -27,7 +26,6 @@ var groupTable = object{what: "keys: name at least", fields: []field{
 }}
 
 const (
-	noReference = "none"
 	laterPeople = "checked now; decisions and sign-off come in a later version"
 	hard        = "limit" // the key beside which a range has none of its estimates
 	beyondLine  = "line"

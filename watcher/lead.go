@@ -60,8 +60,7 @@ func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 	if crew == nil {
 		return nil, nil
 	}
-	l := &leader{crew: crew, j: j, view: v, blocks: map[uint32][]*day{}, upto: rules.NoDate, raw: make([]int64, BlockSize),
-		values: make([]rules.Units, len(crew.members)), fresh: make([]bool, len(crew.members)), woken: make([]bool, len(crew.members)), first: make([]bool, len(crew.members))}
+	l := newLeader(crew, j, v)
 	for _, b := range blocks {
 		if _, ok := slices.BinarySearch(crew.blocks, b.number); ok {
 			l.blocks[b.number] = b.days
@@ -85,6 +84,12 @@ func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 	}
 	p.led = l
 	return l.lead(todo)
+}
+
+func newLeader(c *crew, j *judging, v View) *leader {
+	n := len(c.members)
+	return &leader{crew: c, j: j, view: v, blocks: map[uint32][]*day{}, upto: rules.NoDate, raw: make([]int64, BlockSize),
+		values: make([]rules.Units, n), fresh: make([]bool, n), woken: make([]bool, n), first: make([]bool, n)}
 }
 
 // goesOn says that a leader of a step before stands right before a date.

@@ -49,6 +49,9 @@ type cellDate struct {
 
 func (v *memoryView) Close() error          { return nil }
 func (v *memoryView) Step() uint32          { return uint32(len(v.batches)) }
+func (v *memoryView) AsOf(step uint32) watcher.View {
+	return &memoryView{batches: v.batches[:step]}
+}
 func (v *memoryView) Head() (string, error) { return "", nil }
 
 func (v *memoryView) NextRef() uint64 {

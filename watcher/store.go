@@ -20,6 +20,9 @@ type Store interface {
 type View interface {
 	Close() error
 	Step() uint32           // the last published step, 0 in a new ledger
+	// AsOf is the same reading as of an earlier step. It ends with the reading that it is of; only returns, used values and flags of
+	// then can be asked of it.
+	AsOf(step uint32) View
 	NextRef() uint64        // the ref that the next flag gets
 	Names() (*Names, error) // to read only; Copy what you add to
 	// Dates lists the dates on which anything is held, ascending.

@@ -41,6 +41,7 @@ type explained struct {
 	row      watcher.Row
 	versions []watcher.Version
 	flag     *rules.Flag
+	weighed  *watcher.Reweighed // nil for a series that is not weighed together with others
 }
 
 func (a *app) explain(c *config.Config, v watcher.View, args []string, rangeName, format string) error {
@@ -117,7 +118,8 @@ func explainObservation(r *watcher.Reader, series string, d rules.Date, asOf uin
 	if at < 0 {
 		return nil, fmt.Errorf("no range %q judged series %q on %s", rangeName, series, d)
 	}
-	return &explained{rows[at], versions, f}, nil
+	weighed, err := r.Weigh(series, d, rows[at].Step)
+	return &explained{rows[at], versions, f, weighed}, err
 }
 
 // heaviest is the row to explain when none is asked for: the worst verdict, and of equal ones the smallest tail.
@@ -156,8 +158,8 @@ func (a *app) explainJSON(r *watcher.Reader, e *explained) error {
 	if err != nil {
 		return err
 	}
-	fmt.Fprintf(&b, "  \"window\": %s,\n  \"reference\": null,\n  \"causes\": [],\n  \"versions\": %s,\n  \"standings\": %s\n}\n", array(window),
-		array(versions), standings)
+	fmt.Fprintf(&b, "  \"window\": %s,\n  \"reference\": %s,\n  \"causes\": %s,\n  \"versions\": %s,\n  \"standings\": %s\n}\n", array(window),
+		e.reference(), array(e.causes()), array(versions), standings)
 	_, err = a.out.Write([]byte(b.String()))
 	return err
 }
@@ -172,6 +174,12 @@ func array(objects []string) string {
 // explainFile explains a flag that is about a file or a feed, not an observation.
 func (a *app) explainFile(f *rules.Flag) {
 	at := f.RaisedAt.Format(time.RFC3339)
+	if f.Kind == rules.KindMarketDay {
+		fmt.Fprintf(a.out, "Ref %d: market day of group %s, median %s for %s (raised %s, %s).\n  %s\n", f.Ref, printable(f.Group), rules.InPercent(f.Return.Float()),
+			day(f.Date), at, f.Standing, printable(f.Note))
+		fmt.Fprintf(a.out, "Its breaches: strayd flags --all --date %s --group %q\n", f.Date, printable(f.Group))
+		return
+	}
 	if f.Kind == rules.KindLate {
 		fmt.Fprintf(a.out, "Ref %d: feed %s was not whole for %s when its deadline passed (raised %s).\n  %s\n", f.Ref, f.Feed, day(f.Date), at, printable(f.Note))
 		fmt.Fprintln(a.out, "What has come since is in `strayd flags` and `strayd history SERIES`.")
@@ -201,6 +209,7 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 	if row.WatchLow.OK || row.WatchHigh.OK {
 		line("watched beyond", "%s", between(row.WatchLow, row.WatchHigh))
 	}
+	e.explainWeighing(line)
 	if !row.Limited {
 		decided, err := r.Decided(row.Series, row.Date)
 		if err != nil {

@@ -74,6 +74,8 @@ type Result struct {
 	// Foreseen is by member what its reference foresees of the return, by what was known before the date and the reference's value on it;
 	// absent where there is none, and where the member has no value.
 	Foreseen []rules.Num
+	// Reference is by member the return of its reference, absent where Foreseen is.
+	Reference []rules.Num
 	Earlier  []View        // what this date settles about a value of the date before, such as a spike that is reversed now
 	Markets  []Market      // common moves, by group
 	Wrong    []WrongSeries // references that do not fit the series which are held against them

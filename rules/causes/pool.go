@@ -165,10 +165,10 @@ func (p *Pool) plain(i int) bool {
 
 // foreseen lists what the references foresee, as it stood before the values of today were weighed.
 func (p *Pool) foreseen(r *Result) {
-	r.Foreseen = make([]rules.Num, len(p.members))
+	r.Foreseen, r.Reference = make([]rules.Num, len(p.members)), make([]rules.Num, len(p.members))
 	for i := range p.looks {
 		if lk := &p.looks[i]; lk.hasRef {
-			r.Foreseen[i] = rules.Some(lk.mu)
+			r.Foreseen[i], r.Reference[i] = rules.Some(lk.mu), rules.Some(lk.m)
 		}
 	}
 }

@@ -17,6 +17,7 @@ type View struct {
 	buckets [buckets]*bolt.Bucket
 	cursors [buckets]*bolt.Cursor
 	head    head
+	whole   uint32 // the last published step, which names are read as of
 	chunks  map[uint32]namePart // names looked up one by one
 	file    watcher.FileRow     // the last one that a flag referred to
 }
@@ -61,6 +62,7 @@ func (v *View) begin() (err error) {
 		v.cursors[b] = v.buckets[b].Cursor()
 	}
 	v.head, err = readHead(v.buckets[inMeta])
+	v.whole = v.head.step
 	return err
 }
 
@@ -98,6 +100,13 @@ func (v *View) leave(faults bool, err *error) {
 
 // Step is the last published step.
 func (v *View) Step() uint32 { return v.head.step }
+
+// AsOf is the same reading as of an earlier step; see watcher.View.
+func (v *View) AsOf(step uint32) watcher.View {
+	then := *v
+	then.head.step = min(step, v.head.step)
+	return &then
+}
 
 // NextRef is the ref that the next flag gets.
 func (v *View) NextRef() uint64 { return v.head.nextRef }

@@ -59,7 +59,7 @@ func (v *View) name(id uint32) (string, error) {
 	}
 	at := int(id % watcher.BlockSize)
 	if at >= len(part.ends) {
-		return "", malformed(inNames, put32(put32(nil, c), v.head.step), fmt.Sprintf("series %d has no name", id))
+		return "", malformed(inNames, put32(put32(nil, c), v.whole), fmt.Sprintf("series %d has no name", id))
 	}
 	from := uint32(0)
 	if at > 0 {
@@ -70,9 +70,9 @@ func (v *View) name(id uint32) (string, error) {
 
 // chunk is the published form of one chunk of names.
 func (v *View) chunk(c uint32) (chunk, error) {
-	key, value := newest(v.cursors[inNames], put32(nil, c), v.head.step)
+	key, value := newest(v.cursors[inNames], put32(nil, c), v.whole)
 	if key == nil {
-		return chunk{}, malformed(inNames, put32(put32(nil, c), v.head.step), "it is not there")
+		return chunk{}, malformed(inNames, put32(put32(nil, c), v.whole), "it is not there")
 	}
 	body, err := opened(inNames, key, value)
 	if err != nil {
