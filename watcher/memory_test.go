@@ -47,8 +47,8 @@ type cellDate struct {
 	block uint32
 }
 
-func (v *memoryView) Close() error          { return nil }
-func (v *memoryView) Step() uint32          { return uint32(len(v.batches)) }
+func (v *memoryView) Close() error { return nil }
+func (v *memoryView) Step() uint32 { return uint32(len(v.batches)) }
 func (v *memoryView) AsOf(step uint32) watcher.View {
 	return &memoryView{batches: v.batches[:step]}
 }

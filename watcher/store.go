@@ -19,7 +19,7 @@ type Store interface {
 // View is a reading of the ledger at one step. Close it before publishing.
 type View interface {
 	Close() error
-	Step() uint32           // the last published step, 0 in a new ledger
+	Step() uint32 // the last published step, 0 in a new ledger
 	// AsOf is the same reading as of an earlier step. It ends with the reading that it is of; only returns, used values and flags of
 	// then can be asked of it.
 	AsOf(step uint32) View

@@ -13,15 +13,35 @@ import (
 	"strayd/watcher"
 )
 
-// weighRun takes every file of a shelf in one pass with the stand-in.
-func weighRun(t *testing.T, m *memory, s *shelf, settings rules.Settings, workers int) {
+// shelves are the files of several feeds.
+type shelves map[string]*shelf
+
+func (s shelves) Find(f rules.Feed, now time.Time, settled bool) (watcher.Found, error) {
+	return s[f.Name].Find(f, now, settled)
+}
+
+func (s shelves) Read(ctx context.Context, c watcher.Candidate, f rules.Feed, names *watcher.Names, now time.Time, p watcher.Progress) (*watcher.Sheet, error) {
+	return s[f.Name].Read(ctx, c, f, names, now, p)
+}
+
+// weighFeeds takes every file of some feeds in one pass with the stand-in.
+func weighFeeds(t *testing.T, m *memory, s watcher.Source, feeds []string, settings rules.Settings, workers int) {
 	t.Helper()
-	p := &watcher.Pass{Store: m, Source: s, Settings: settings, Feeds: []rules.Feed{{Name: "book"}}, FeedKey: func(rules.Feed) string { return "key" },
+	p := &watcher.Pass{Store: m, Source: s, Settings: settings, FeedKey: func(rules.Feed) string { return "key" },
 		Now: time.Date(2026, 1, 1, 0, 0, 0, 0, time.UTC), Settled: true, Workers: workers}
+	for _, f := range feeds {
+		p.Feeds = append(p.Feeds, rules.Feed{Name: f})
+	}
 	p.SetWeigher(newPlainPool)
 	if _, err := p.Run(context.Background()); err != nil {
 		t.Fatal(err)
 	}
+}
+
+// weighRun takes every file of a shelf in one pass with the stand-in.
+func weighRun(t *testing.T, m *memory, s *shelf, settings rules.Settings, workers int) {
+	t.Helper()
+	weighFeeds(t, m, s, []string{"book"}, settings, workers)
 }
 
 func weighSettings() rules.Settings {
@@ -46,7 +66,7 @@ func quiet(series, dates int, r *rand.Rand) (rows [][]entry) {
 func byFile(rows [][]entry, dates int) *shelf {
 	s := &shelf{map[string][]entry{}}
 	for n, day := range rows {
-		name := fmt.Sprintf("f%04d", n/dates)
+		name := "f" + rows[n/dates*dates][0].date.String()
 		s.files[name] = append(s.files[name], day...)
 	}
 	return s
@@ -203,24 +223,19 @@ func TestLateReference(t *testing.T) {
 		settings.Groups[0].Reference = "index"
 		var want []string
 		for _, dates := range []int{1, 60} {
-			for _, first := range []string{"a", "z"} { // the reference before or after
-				s := byFile(rows, dates)
-				for n, day := range index {
-					name := fmt.Sprintf("f%04d+", n/dates)
-					if first == "a" {
-						name = fmt.Sprintf("f%04d-", n/dates-1) // right after the day before's
-					}
-					s.files[name] = append(s.files[name], day...)
-				}
+			for _, order := range []string{"index book", "book index"} {
 				m := &memory{}
-				weighRun(t, m, s, settings, 2)
+				for n := 0; n < len(rows); n += dates {
+					feeds := shelves{"book": byFile(rows[n:n+dates], dates), "index": byFile(index[n:n+dates], dates)}
+					weighFeeds(t, m, feeds, strings.Fields(order), settings, 2)
+				}
 				got := told(t, m)
 				if want == nil {
 					if want = got; !strings.Contains(strings.Join(want, "\n"), "doubtful sign {0.8 true}") {
 						t.Fatalf("seed %d: no value is doubtful by its reference", seed)
 					}
 				}
-				differ(t, fmt.Sprintf("seed %d, %d dates a file, reference %s", seed, dates, first), got, want)
+				differ(t, fmt.Sprintf("seed %d, %d dates a file, feeds %s", seed, dates, order), got, want)
 				if v, _ := m.View(); watcher.Recheck(v, nil) != nil {
 					t.Errorf("seed %d: %v", seed, watcher.Recheck(v, nil))
 				}

@@ -76,10 +76,10 @@ type Result struct {
 	Foreseen []rules.Num
 	// Reference is by member the return of its reference, absent where Foreseen is.
 	Reference []rules.Num
-	Earlier  []View        // what this date settles about a value of the date before, such as a spike that is reversed now
-	Markets  []Market      // common moves, by group
-	Wrong    []WrongSeries // references that do not fit the series which are held against them
-	Shifted  []int         // members whose values belong to another date, together: a whole file is a day off
+	Earlier   []View        // what this date settles about a value of the date before, such as a spike that is reversed now
+	Markets   []Market      // common moves, by group
+	Wrong     []WrongSeries // references that do not fit the series which are held against them
+	Shifted   []int         // members whose values belong to another date, together: a whole file is a day off
 }
 
 // View is what a pool says of one value. Figures of the reference are absent where there is none.

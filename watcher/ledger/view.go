@@ -17,7 +17,7 @@ type View struct {
 	buckets [buckets]*bolt.Bucket
 	cursors [buckets]*bolt.Cursor
 	head    head
-	whole   uint32 // the last published step, which names are read as of
+	whole   uint32              // the last published step, which names are read as of
 	chunks  map[uint32]namePart // names looked up one by one
 	file    watcher.FileRow     // the last one that a flag referred to
 }
