@@ -29,10 +29,11 @@ type Config struct {
 	Later    []Note  // what is set now and works in a later version, in the order of the file
 }
 
-// Calendar says which days are business days: all weekdays, a nation's, or those of a file of holidays.
+// Calendar says which days are business days, in parts joined by +: a week, a nation's, or those of a file.
 type Calendar struct {
-	Name string // as written: weekdays, a nation's code, or the file
-	Path string // of the file; "" for none
+	Name string // as written
+	Path string // of the file when it is one file; "" for none
+	Days *rules.Calendar
 }
 
 // Weekly is when the weekly log is written and where it goes.
@@ -50,10 +51,11 @@ type Note struct {
 
 // Options are what reading needs from outside. The zero value works.
 type Options struct {
-	Cron     func(spec string) error                        // checks cron text; nil: not checked
-	Stat     func(path string) (fs.FileInfo, error)         // nil: os.Stat
-	Zone     func(name string) (*time.Location, error)      // nil: time.LoadLocation
-	Absolute func(path string) (absolute string, err error) // nil: filepath.Abs
+	Cron     func(spec string) error                                               // checks cron text; nil: not checked
+	Calendar func(text string, place func(string) string) (*rules.Calendar, error) // reads a calendar whose files lie where place says; nil: not read
+	Stat     func(path string) (fs.FileInfo, error)                                // nil: os.Stat
+	Zone     func(name string) (*time.Location, error)                             // nil: time.LoadLocation
+	Absolute func(path string) (absolute string, err error)                        // nil: filepath.Abs
 }
 
 func (o Options) filled() Options {

@@ -81,9 +81,13 @@ func (d *decoder) feed(p string, f *rules.Feed, c *Config) {
 	}
 }
 
-// zoned gives a deadline without a time zone the configuration's.
+// zoned gives a deadline the configuration's business days, and where it has none its time zone.
 func (d *decoder) zoned(due *rules.Due, c *Config) {
-	if due != nil && due.Timezone == "" {
+	if due == nil {
+		return
+	}
+	due.Calendar = c.Calendar.Days
+	if due.Timezone == "" {
 		due.Timezone = c.Timezone
 	}
 }

@@ -44,9 +44,8 @@ var table = object{what: "keys: ledger, feeds and ranges at least", fields: []fi
 			return func(z *time.Location) { c.Timezone, c.Location = z.String(), z }
 		})},
 	{key: "calendar", initial: everyWeekday, shape: calendar(),
-		doc:   "Business days: weekdays, a nation's two-letter code, or a file of holidays.",
-		later: unless(everyWeekday, "holidays come in a later version; for now every weekday is a business day"),
-		at:    in(func(c *Config) any { return &c.Calendar })},
+		doc: "Business days: weekdays, a nation's two-letter code, or a file of holidays; also a week such as sun-thu, and several joined by +.",
+		at:  in(func(c *Config) any { return &c.Calendar })},
 	{key: "feeds", required: true, doc: "The regular files, each from one source.",
 		shape: list[rules.Feed]{item: feedTable, least: 1, what: "a list of at least one feed"},
 		at:    in(func(c *Config) any { return &c.Feeds })},

@@ -161,9 +161,15 @@ func cron() shape {
 	})
 }
 
-const nationPattern = `^[A-Za-z]{2}(-[A-Za-z0-9]{1,4})?$`
+const (
+	nationPattern = `^[A-Za-z]{2}(-[A-Za-z0-9]{1,3})?$|^ECB$`
+	weekPattern   = `^(weekdays|daily|(sun|mon|tue|wed|thu|fri|sat)-(sun|mon|tue|wed|thu|fri|sat))$`
+)
 
-var nationText = regexp.MustCompile(nationPattern)
+var (
+	nationText = regexp.MustCompile(nationPattern)
+	weekText   = regexp.MustCompile(weekPattern)
+)
 
 // everyWeekday is the calendar whose business days are all weekdays.
 const everyWeekday = "weekdays"
@@ -171,14 +177,26 @@ const everyWeekday = "weekdays"
 func calendar() shape {
 	what := "weekdays, a nation's two-letter code, or a file of holidays"
 	return converted(what, filledPattern, func(d *decoder, s string) (Calendar, error) {
-		if s == everyWeekday || nationText.MatchString(s) {
-			return Calendar{Name: s}, nil
+		c := Calendar{Name: s}
+		for part := range strings.SplitSeq(s, "+") {
+			part = strings.TrimSpace(part)
+			if weekText.MatchString(part) || nationText.MatchString(part) {
+				continue
+			}
+			full := d.absolute(part)
+			if err := d.exists(full); err != nil || part == "" {
+				return Calendar{}, trouble{message: "not a known calendar, and no such file"}
+			}
+			if part == s {
+				c.Path = full
+			}
 		}
-		full := d.absolute(s)
-		if err := d.exists(full); err != nil {
-			return Calendar{}, trouble{message: "not a known calendar, and no such file"}
+		if d.opt.Calendar == nil {
+			return c, nil
 		}
-		return Calendar{Name: s, Path: full}, nil
+		var err error
+		c.Days, err = d.opt.Calendar(s, d.absolute)
+		return c, err
 	})
 }
 

@@ -99,7 +99,7 @@ func drawDue(t *rapid.T) (Due, *time.Location) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	return Due{rapid.IntRange(0, 24*60-1).Draw(t, "minutes"), rapid.IntRange(0, 30).Draw(t, "days"), name}, zone
+	return Due{rapid.IntRange(0, 24*60-1).Draw(t, "minutes"), rapid.IntRange(0, 30).Draw(t, "days"), name, nil}, zone
 }
 
 // drawDay is a Monday to Friday from 2011 to 2026.

@@ -28,6 +28,7 @@ type Due struct {
 	Minutes  int // of the day
 	Days     int
 	Timezone string
+	Calendar *Calendar // of the business days; nil for Monday to Friday
 }
 
 // Columns names the columns of a long file, or the date column of a wide one.

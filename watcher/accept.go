@@ -78,6 +78,9 @@ func (p *Pass) prepare(j *judging, v View) (err error) {
 	if j.members, err = rules.NewMembership(&p.Settings); err != nil {
 		return err
 	}
+	if len(p.Settings.Calendars) > 0 {
+		j.days = p.Settings.CalendarFor
+	}
 	ids, err := rangeIDs(v)
 	if err != nil {
 		return err

@@ -53,8 +53,8 @@ type delivered struct {
 }
 
 // before are the feed's newest files of the same kind. While there are too few, such as after a first load, its newest dates stand for
-// them.
-func (g *fileGate) before(last rules.Date) (list []delivered) {
+// them, which do not tell whether a date comes in one file.
+func (g *fileGate) before(last rules.Date) (list []delivered, files bool) {
 	most := min(rules.DeliveryFiles, max(fewestFiles, presenceCells/max(1, g.j.heldNames)))
 	taken := g.p.taken[g.feed.Name]
 	all := map[uint32]bool{}
@@ -66,14 +66,14 @@ func (g *fileGate) before(last rules.Date) (list []delivered) {
 		}
 	}
 	if len(list) >= fewestFiles {
-		return list
+		return list, true
 	}
 	list = list[:0]
 	n, _ := slices.BinarySearch(g.j.held, last)
 	for i := n - 1; i >= 0 && len(list) < most; i-- {
 		list = append(list, delivered{g.j.held[i], all, 0})
 	}
-	return list
+	return list, false
 }
 
 // completeness looks for who is missing: a file that breaks off is refused, one that lacks series raises a flag with their names.
@@ -82,15 +82,16 @@ func (g *fileGate) completeness() (*rules.Refusal, error) {
 	if last == rules.NoDate || g.p.Settings.CalendarFor("").Between(last, g.p.lastTaken(g.feed.Name)) > lookBack {
 		return nil, nil
 	}
-	came, before, err := g.came(g.before(last))
+	list, files := g.before(last)
+	came, before, err := g.came(list)
 	if err != nil || len(before) < fewestFiles {
 		return nil, err
 	}
 	d, err := g.delivery(before, came, last)
-	if err != nil {
+	if err != nil || !files && 2*d.Missing.Count > d.Expected {
 		return nil, err
 	}
-	if r := d.Refuse(); r != nil && !g.p.Released[g.sheet.File.SHA256] {
+	if r := d.Refuse(); r != nil && files && !g.p.Released[g.sheet.File.SHA256] {
 		return r, nil
 	}
 	if note := d.Note(); note != "" {

@@ -73,7 +73,7 @@ func (w *worker) expect(t task, on rules.Date, each func(Expected) error) error 
 			if g.Range.Limit == nil {
 				l := w.lanes[lane]
 				lane++
-				if past = l.past(i); past.N > 0 && rules.Weekdays(l.last[i], on) > rules.DormantAfter {
+				if past = l.past(i); past.N > 0 && l.between(i, l.last[i], on) > rules.DormantAfter {
 					past = &rules.Past{Dormant: true}
 				}
 				past.Group = w.j.scales.lent(l, w.group(i), on)

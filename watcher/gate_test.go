@@ -172,7 +172,7 @@ func TestGateOfAFile(t *testing.T) {
 			d := newDesk(t)
 			b.load(d, 70, 80)
 			since := len(d.store.batches)
-			d.give("funds", "returns-new.csv", tt.rows)
+			d.give("funds", dayName(b.dates[80]), tt.rows)
 			if got := strings.Join(d.raised(since), ", "); got != tt.want {
 				t.Errorf("raised %q, want %q: %s", got, tt.want, d.reports[len(d.reports)-1].Why)
 			}

@@ -70,6 +70,7 @@ type seriesPast struct {
 	id       uint32
 	name     string
 	group    string
+	calendar *rules.Calendar
 	versions []Version            // by date, then step
 	dates    []int                // where each date begins in versions
 	used     map[uint16][]Version // by range number
@@ -167,7 +168,7 @@ func (r *Reader) rows(s *seriesPast, n int, asOf uint32, windows bool) ([]Row, e
 	if err != nil {
 		return nil, err
 	}
-	s.group = set.members.Group(s.name)
+	s.group, s.calendar = set.members.Group(s.name), set.CalendarFor(s.name)
 	arrival, err := r.arrival(s, n, v)
 	if err != nil {
 		return nil, err
@@ -257,7 +258,7 @@ func (s *seriesPast) window(n int, v Version, g *rules.Gauge, used []Version) *p
 		if !ok {
 			continue
 		}
-		if rules.Weekdays(held.Date, later) > rules.DormantAfter {
+		if s.calendar.Between(held.Date, later) > rules.DormantAfter {
 			w.past.Dormant = len(w.values) == 0
 			break
 		}

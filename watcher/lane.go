@@ -7,8 +7,8 @@ import (
 	"strayd/stats"
 )
 
-// dormantDays is the longest calendar gap that surely holds no more than rules.DormantAfter business days: four weeks.
-const dormantDays = rules.DormantAfter / 5 * 7
+// dormantDays is the longest calendar gap that surely holds no more than rules.DormantAfter business days, whatever the calendar.
+const dormantDays = rules.DormantAfter
 
 // lane is the rolling state of one range for a run of neighbouring series.
 type lane struct {
@@ -16,9 +16,10 @@ type lane struct {
 	id      uint16
 	gauge   *rules.Gauge
 	windows windows
-	last    []rules.Date // newest used observation of each series, NoDate when none
-	dormant []bool       // the window started anew after a gap
-	applies []bool       // nil when the range judges every series
+	last    []rules.Date      // newest used observation of each series, NoDate when none
+	dormant []bool            // the window started anew after a gap
+	applies []bool            // nil when the range judges every series
+	days    []*rules.Calendar // of each series; nil when all have every weekday
 
 	gate stats.Gate // nil where every value must be judged one by one
 	thin bool       // a window may hold fewer than rules.LeastNormal values
@@ -100,6 +101,14 @@ func (l *lane) lend() {
 }
 
 // reset empties the lane's own state and takes it up.
+// between counts the business days of series i after one date, up to another.
+func (l *lane) between(i int, from, to rules.Date) int {
+	if l.days == nil {
+		return rules.Weekdays(from, to)
+	}
+	return l.days[i].Between(from, to)
+}
+
 func (l *lane) reset() {
 	l.windows, l.last, l.dormant, l.kept = l.own.windows, l.own.last, l.own.dormant, nil
 	l.dates = l.dates[:0]
@@ -130,7 +139,7 @@ func (l *lane) rest(date rules.Date, vals []int64) {
 	last := l.last[:len(vals)]
 	edge := date - dormantDays
 	for i, v := range vals {
-		if last[i] < edge && v != Missing64 && last[i] != rules.NoDate && rules.Weekdays(last[i], date) > rules.DormantAfter {
+		if last[i] < edge && v != Missing64 && last[i] != rules.NoDate && l.between(i, last[i], date) > rules.DormantAfter {
 			l.windows.Clear(i)
 			l.thin = true
 			last[i] = rules.NoDate

@@ -179,7 +179,7 @@ func (b *backward) takeEach(date rules.Date, used []int64) {
 		switch {
 		case b.done[i]:
 			used[i] = Missing64
-		case b.later[i] > edge && rules.Weekdays(date, b.later[i]) > rules.DormantAfter:
+		case b.later[i] > edge && b.l.between(i, date, b.later[i]) > rules.DormantAfter:
 			b.finish(i)
 			used[i] = Missing64
 		case v != Missing64:

@@ -43,7 +43,7 @@ func (l *lane) state(t task, upto rules.Date) partState {
 	}
 	edge := upto - dormantDays
 	for i := range n {
-		if s.Last[i] = l.last[i]; s.Last[i] < edge && (s.Last[i] == rules.NoDate || rules.Weekdays(s.Last[i], upto) > rules.DormantAfter) {
+		if s.Last[i] = l.last[i]; s.Last[i] < edge && (s.Last[i] == rules.NoDate || l.between(i, s.Last[i], upto) > rules.DormantAfter) {
 			s.Last[i] = rules.NoDate
 			continue
 		}

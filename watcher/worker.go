@@ -144,8 +144,9 @@ func next(days *[]*day, replay *[]rules.Date) (d *day, old bool) {
 func (w *worker) begin(t task) {
 	w.ids, w.groups, w.replayed = w.ids[:0], w.groups[:0], false
 	for _, l := range w.lanes {
-		l.applies = nil
+		l.applies, l.days = nil, nil
 	}
+	w.beginDays(t)
 	if w.j.members.Universal() {
 		return
 	}
@@ -156,6 +157,20 @@ func (w *worker) begin(t task) {
 	}
 	for _, l := range w.lanes {
 		l.applies = w.j.appliesTo(l.index, w.ids, w.groups)
+	}
+}
+
+// beginDays looks up the calendars of a task's series, where one has its own.
+func (w *worker) beginDays(t task) {
+	if w.j.days == nil {
+		return
+	}
+	days := make([]*rules.Calendar, t.width)
+	for i := range days {
+		days[i] = w.j.days(string(w.j.names.Name(t.series(i))))
+	}
+	for _, l := range w.lanes {
+		l.days = days
 	}
 }
 

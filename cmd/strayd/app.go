@@ -11,6 +11,7 @@ import (
 	"strayd/config"
 	"strayd/rules"
 	"strayd/watcher"
+	"strayd/watcher/calendar"
 	"strayd/watcher/desk"
 	"strayd/watcher/feed"
 	"strayd/watcher/ledger"
@@ -47,7 +48,9 @@ func (a *app) now() (time.Time, error) {
 }
 
 // configOptions are what reading a configuration needs from other rooms.
-func configOptions() config.Options { return config.Options{Cron: schedule.Check} }
+func configOptions() config.Options {
+	return config.Options{Cron: schedule.Check, Calendar: calendar.Parse}
+}
 
 // load reads the configuration; beside a daemon it is the one in force there.
 func (a *app) load() (*config.Config, error) {
@@ -114,7 +117,7 @@ func settings(c *config.Config) (s rules.Settings, owners map[string]string, err
 		}
 	}
 	if c.Series == "" {
-		return s, nil, nil
+		return s, nil, nameDays(c, &s)
 	}
 	register, err := feed.ReadRegister(c.Series)
 	if err != nil {
@@ -127,7 +130,7 @@ func settings(c *config.Config) (s rules.Settings, owners map[string]string, err
 		}
 	}
 	s.Register(register)
-	return s, owners, nil
+	return s, owners, nameDays(c, &s)
 }
 
 // person is who acts: the operating system's user, or the peer of the daemon's socket; never an option.

@@ -7,6 +7,7 @@ import (
 	"fmt"
 	"os"
 	"slices"
+	"strings"
 	"time"
 
 	"strayd/config"
@@ -49,7 +50,7 @@ func (d *daemon) jobs(c *config.Config) ([]schedule.Job, error) {
 		if f.Due == nil {
 			continue
 		}
-		when, err := schedule.Parse(fmt.Sprintf("%d %d * * mon-fri", f.Due.Minutes%60, f.Due.Minutes/60), location(c, f.Due.Timezone))
+		when, err := schedule.Parse(fmt.Sprintf("%d %d * * %s", f.Due.Minutes%60, f.Due.Minutes/60, weekdays(c)), location(c, f.Due.Timezone))
 		if err != nil {
 			return nil, fmt.Errorf("feed %s: due: %w", f.Name, err)
 		}
@@ -60,7 +61,18 @@ func (d *daemon) jobs(c *config.Config) ([]schedule.Job, error) {
 	return append(jobs, schedule.Job{Name: dailyJob, When: daily, Run: d.daily}), nil
 }
 
-// dailySpec is when the daily line is due, Monday to Friday: a little after the last deadline and the last look at a feed of a day.
+// weekdays are the days of the week on which there is business, as cron text.
+func weekdays(c *config.Config) string {
+	var days []string
+	for d := time.Sunday; d <= time.Saturday; d++ {
+		if c.Calendar.Days.Weekdays().Has(d) {
+			days = append(days, fmt.Sprint(int(d)))
+		}
+	}
+	return strings.Join(days, ",")
+}
+
+// dailySpec is when the daily line is due, on the days of business: a little after the last deadline and the last look at a feed of a day.
 func dailySpec(c *config.Config, feeds []schedule.Job) string {
 	last := 0
 	monday := time.Date(2026, 3, 9, 0, 0, 0, 0, c.Location)
@@ -76,7 +88,7 @@ func dailySpec(c *config.Config, feeds []schedule.Job) string {
 		}
 	}
 	at := min(last+dailyMargin, lastOfTheDay)
-	return fmt.Sprintf("%d %d * * mon-fri", at%60, at/60)
+	return fmt.Sprintf("%d %d * * %s", at%60, at/60, weekdays(c))
 }
 
 // location is a time zone by name, the configuration's when it is not named.
@@ -260,6 +272,10 @@ func (d *daemon) deadline(ctx context.Context, f rules.Feed, date rules.Date, du
 
 // daily enqueues the line that says that all was checked.
 func (d *daemon) daily(ctx context.Context, slot time.Time) error {
+	c := d.inForce().config
+	if !c.Calendar.Days.Business(rules.DateFrom(slot.In(c.Location))) {
+		return nil // a holiday
+	}
 	release, err := d.alone(ctx)
 	if err != nil {
 		return err

@@ -46,6 +46,7 @@ var doors = []struct {
 	{"gonum.org/v1/gonum", []string{"stats"}},
 	{"go.etcd.io/bbolt", []string{"watcher/ledger"}},
 	{"github.com/robfig/cron", []string{"watcher/schedule"}},
+	{"github.com/rickar/cal", []string{"watcher/calendar"}},
 	{"github.com/slack-go/slack", []string{"notify/slack"}},
 	{"gopkg.in/yaml.v3", []string{"config"}},
 	{"github.com/spf13/cobra", []string{"cmd/*"}},

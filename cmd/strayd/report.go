@@ -187,7 +187,7 @@ func dayNews(c *config.Config, l watcher.Store, dead []string, slot time.Time) (
 		}
 	}
 	news.Feeds, news.FeedsDue = len(whole), len(c.Feeds)
-	if err := countFlags(v, since, &news); err != nil {
+	if err := countFlags(v, c.Calendar.Days, since, &news); err != nil {
 		return news, err
 	}
 	news.Dead = dead
@@ -196,13 +196,13 @@ func dayNews(c *config.Config, l watcher.Store, dead []string, slot time.Time) (
 }
 
 // countFlags counts the flags raised since a time, and those that still ask something.
-func countFlags(v watcher.View, since time.Time, news *rules.DayNews) error {
+func countFlags(v watcher.View, days *rules.Calendar, since time.Time, news *rules.DayNews) error {
 	oldest, today := time.Time{}, rules.DateFrom(news.At)
 	return v.Flags(true, func(f rules.Flag) bool {
 		if f.AsksOn(today) {
 			if news.Open++; oldest.IsZero() || f.RaisedAt.Before(oldest) {
 				oldest, news.OldestRef = f.RaisedAt, f.Ref
-				news.OldestDays = rules.Weekdays(rules.DateFrom(oldest), rules.DateFrom(news.At))
+				news.OldestDays = days.Between(rules.DateFrom(oldest), rules.DateFrom(news.At))
 			}
 		}
 		if f.RaisedAt.Before(since) || f.Standing == rules.OfHistory {
