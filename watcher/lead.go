@@ -40,6 +40,9 @@ type leader struct {
 	crew *crew
 	pool weigher
 	upto rules.Date // the newest date that it went through
+	// The pool as it stood before that date, and how far it had come: for another file of the date. nil for none.
+	behind     weigher
+	behindUpto rules.Date
 
 	j      *judging
 	view   View
@@ -70,8 +73,8 @@ func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 	if err != nil || len(todo) == 0 {
 		return nil, err
 	}
-	if p.led != nil && p.led.goesOn(crew, j, todo[0]) {
-		l.pool, l.upto = p.led.pool, p.led.upto
+	if pool, upto := p.led.goesOn(l, todo[0]); pool != nil {
+		l.pool, l.upto = pool, upto
 	} else {
 		make := p.newWeigher
 		if make == nil {
@@ -92,13 +95,42 @@ func newLeader(c *crew, j *judging, v View) *leader {
 		values: make([]rules.Units, n), fresh: make([]bool, n), woken: make([]bool, n), first: make([]bool, n)}
 }
 
-// goesOn says that a leader of a step before stands right before a date.
-func (l *leader) goesOn(c *crew, j *judging, date rules.Date) bool {
-	if l.upto >= date || l.j.step+1 != j.step || !l.crew.same(c) {
-		return false
+// goesOn gives the pool of a leader of a step before, as it stands right before a date, and how far it has come; nil where there is none.
+func (l *leader) goesOn(next *leader, date rules.Date) (weigher, rules.Date) {
+	if l == nil || !l.crew.same(next.crew) || !valueless(next.view, l.j.step+1, next.j.step) {
+		return nil, rules.NoDate
 	}
-	n, _ := slices.BinarySearch(j.held, l.upto+1)
-	return n == len(j.held) || j.held[n] >= date
+	before := func(upto rules.Date) bool {
+		n, _ := slices.BinarySearch(next.j.held, upto+1)
+		return upto < date && (n == len(next.j.held) || next.j.held[n] >= date)
+	}
+	switch {
+	case before(l.upto):
+		return l.pool, l.upto
+	case l.behind != nil && before(l.behindUpto):
+		return l.behind, l.behindUpto
+	}
+	return nil, rules.NoDate
+}
+
+// valueless says that no step from one to before another changed a value or the settings: they tell of refused and late files.
+func valueless(v View, from, before uint32) bool {
+	for s := from; s < before; s++ {
+		if row, err := v.File(s); err != nil || row.Outcome != Refused && row.Outcome != Overdue {
+			return false
+		}
+	}
+	return true
+}
+
+// mostBehind is how many members a pool has at most that is copied before the newest date.
+const mostBehind = 5000
+
+// keepBehind copies the pool before it goes through the newest date, of which another feed's file may come.
+func (l *leader) keepBehind() {
+	if p, ok := l.pool.(*causes.Pool); ok && len(l.crew.members) <= mostBehind {
+		l.behind, l.behindUpto = p.Clone(), l.upto
+	}
 }
 
 // changed lists the dates on which the file changes the value of a member, ascending.
@@ -151,7 +183,11 @@ func (l *leader) lead(todo []rules.Date) (*weighed, error) {
 		}
 	}
 	slices.Sort(dates)
-	for _, d := range slices.Compact(dates) {
+	dates = slices.Compact(dates)
+	for n, d := range dates {
+		if n == len(dates)-1 {
+			l.keepBehind()
+		}
 		r, err := l.step(d)
 		if err != nil {
 			return nil, err
