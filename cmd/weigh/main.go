@@ -11,8 +11,16 @@ import (
 func main() {
 	seeds := flag.Int("seeds", 8, "books")
 	from := flag.Uint64("from", 1, "first seed")
+	folder := flag.String("factors", "", "folder of the open index data, whose returns are the factors; invented ones when left out")
 	flag.Parse()
 	t := newTally()
+	if *folder != "" {
+		var err error
+		if t.factors, err = readFactors(*folder); err != nil {
+			fmt.Fprintln(os.Stderr, err)
+			os.Exit(1)
+		}
+	}
 	for s := range *seeds {
 		t.book(*from + uint64(s))
 	}

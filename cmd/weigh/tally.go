@@ -19,10 +19,11 @@ var promises = []drill.Promise{
 
 // tally adds up what was caught over books.
 type tally struct {
-	rows  []drill.Row
-	named []map[rules.Cause]int // by row, of those caught
-	quiet []drill.Quiet
-	false map[rules.Cause]int // doubts on untouched days
+	factors [][]float64 // of the index data, nil for invented ones
+	rows    []drill.Row
+	named   []map[rules.Cause]int // by row, of those caught
+	quiet   []drill.Quiet
+	false   map[rules.Cause]int // doubts on untouched days
 }
 
 func newTally() *tally {
@@ -35,7 +36,7 @@ func newTally() *tally {
 
 // book adds the outcomes of one invented book, with and without currencies.
 func (t *tally) book(seed uint64) {
-	b := drill.Invent(drill.Invention{Seed: seed, FX: seed%2 == 0})
+	b := drill.Invent(drill.Invention{Seed: seed, FX: seed%2 == 0, Factors: slice(t.factors, seed)})
 	fits := drill.NewFits(b)
 	for _, round := range drill.Rounds(kinds) {
 		plan := drill.Draw(b, fits, drill.Options{Seed: seed, Kinds: round, From: 250})
