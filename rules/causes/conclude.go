@@ -1,6 +1,7 @@
 package causes
 
 import (
+	"cmp"
 	"math"
 	"slices"
 
@@ -13,21 +14,13 @@ func (p *Pool) conclude(w *weighing, r *Result) {
 	lk, st := &p.looks[i], &p.states[i]
 	logOdds, best := w.logOdds(), w.best()
 	lk.total = w.total()
-	beyond := math.Abs(lk.z) > breachZ || math.Abs(lk.ownZ) > breachZ
-	if logOdds > lowest && !beyond {
-		h := p.histogramOf(i)
+	h := p.histogramOf(i)
+	if beyond := math.Abs(lk.z) > breachZ || math.Abs(lk.ownZ) > breachZ; logOdds > lowest && !beyond {
 		p.odds[h].take(p.t, logOdds)
 		p.odds[len(p.odds)-1].take(p.t, logOdds)
 	}
-	line := p.line[p.histogramOf(i)]
-	v := p.view(i, lk)
-	v.LogOdds, v.Line = logOdds, line
-	p.shares(w, lk, &v)
-	if lk.reversal > 0 {
-		v.LooksLike, v.Share = rules.CauseSpike, lk.reversal/(1+lk.reversal)
-		v.Causes = []rules.Share{{Cause: rules.CauseSpike, Share: v.Share}}
-		v.Out = true
-	} else if best >= 0 && logOdds > line && w.odds[best].ratio > math.E {
+	v := View{LogOdds: logOdds, Line: p.line[h], Out: logOdds > 0 || lk.reversal > 0}
+	if best >= 0 && lk.reversal == 0 && logOdds > v.Line && w.odds[best].ratio > math.E {
 		v.Kind = kindOf(w.odds[best].cause, st)
 	}
 	if v.Out {
@@ -35,6 +28,8 @@ func (p *Pool) conclude(w *weighing, r *Result) {
 	}
 	st.chain.next()
 	if v.Kind != "" || v.Out || math.Abs(lk.z) > watchZ || math.Abs(lk.ownZ) > watchZ {
+		p.describe(i, lk, &v)
+		p.shares(w, lk, &v)
 		r.Views = append(r.Views, v)
 	}
 }
@@ -75,43 +70,34 @@ func kindOf(c rules.Cause, st *state) rules.Kind {
 
 // shares ranks the odd explanations: shares are given that the day is not ordinary.
 func (p *Pool) shares(w *weighing, lk *look, v *View) {
-	merged := merge(w.odds)
-	if lk.reversal == 0 {
-		merged = append(merged, odd{cause: rules.CauseGenuine, weight: w.genuine})
+	if lk.reversal > 0 {
+		v.LooksLike, v.Share = rules.CauseSpike, lk.reversal/(1+lk.reversal)
+		v.Causes = []rules.Share{{Cause: rules.CauseSpike, Share: v.Share}}
+		return
 	}
+	merged := p.merge(w.odds)
+	merged = append(merged, odd{cause: rules.CauseGenuine, weight: w.genuine})
 	if explained(lk) {
 		v.Explained = true
 		merged = append(merged, odd{cause: rules.CauseMarket, weight: w.ordinary})
 	}
+	slices.SortStableFunc(merged, func(a, b odd) int { return cmp.Compare(b.weight, a.weight) })
 	total := 0.0
 	for _, o := range merged {
 		total += o.weight
 	}
-	slices.SortStableFunc(merged, func(a, b odd) int {
-		switch {
-		case a.weight > b.weight:
-			return -1
-		case a.weight < b.weight:
-			return 1
-		}
-		return 0
-	})
-	errors := 0.0
 	for _, o := range merged {
-		share := o.weight / total
-		if share >= 0.005 {
+		if share := o.weight / total; share >= leastShown {
 			v.Causes = append(v.Causes, rules.Share{Cause: o.cause, Share: share, Implied: o.implied})
 		}
-		if o.cause != rules.CauseGenuine && o.cause != rules.CauseMarket {
-			errors += share
-		}
 	}
-	if len(v.Causes) > 0 && v.Causes[0].Share > needed(v.Causes[0].Cause) {
-		c := v.Causes[0]
+	if c := v.Causes[0]; c.Share > needed(c.Cause) {
 		v.LooksLike, v.Share, v.Implied = c.Cause, c.Share, c.Implied
 	}
-	v.Out = v.LogOdds > 0
 }
+
+// leastShown is the least share that is listed.
+const leastShown = 0.005
 
 // needed is the share above which a cause is named: half, and more where the name says that there is no better explanation.
 func needed(c rules.Cause) float64 {
@@ -122,8 +108,8 @@ func needed(c rules.Cause) float64 {
 }
 
 // merge adds up the weights of the same cause; the implied return is that of the heaviest.
-func merge(odds []odd) []odd {
-	var merged []odd
+func (p *Pool) merge(odds []odd) []odd {
+	merged := p.merged[:0]
 	for _, o := range odds {
 		k := slices.IndexFunc(merged, func(m odd) bool { return m.cause == o.cause })
 		switch {
@@ -136,6 +122,7 @@ func merge(odds []odd) []odd {
 			merged[k].weight += o.weight
 		}
 	}
+	p.merged = merged
 	return merged
 }
 
@@ -144,16 +131,22 @@ func explained(lk *look) bool {
 	return lk.hasRef && math.Abs(lk.ownZ) > watchZ && math.Abs(lk.z) < watchZ && math.Abs(lk.mu) > 2*lk.own
 }
 
-// view fills in the figures of the reference.
+// view is a view of a value with the figures of its reference.
 func (p *Pool) view(i int, lk *look) View {
-	v := View{Member: i, Date: p.date, Z: lk.z, OwnZ: lk.ownZ}
+	var v View
+	p.describe(i, lk, &v)
+	return v
+}
+
+// describe fills in whose value it is and the figures of the reference.
+func (p *Pool) describe(i int, lk *look, v *View) {
+	v.Member, v.Date, v.Z, v.OwnZ = i, p.date, lk.z, lk.ownZ
 	if !lk.hasRef {
-		return v
+		return
 	}
 	v.Reference = "peers"
 	if r := p.members[i].Reference; r.Kind == Series {
 		v.Reference = p.members[r.Series].ID
 	}
 	v.ReferenceReturn, v.Residual, v.Deviation = rules.Some(lk.m), rules.Some(lk.x-lk.mu), rules.Some(lk.s)
-	return v
 }

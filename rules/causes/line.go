@@ -10,9 +10,9 @@ import "math"
 // where rate, how much more or less often than the priors say values are wrong, is learnt from the same history (the two-groups model of
 // Efron 2008, Statistical Science 23:1-22). Values beyond a range's own line do not count: they are flagged anyway.
 const (
-	bins    = 160
+	bins    = 112
 	binSize = 0.125
-	lowest  = -12.0 // log odds of the first bin's lower edge
+	lowest  = -6.0 // log odds of the first bin's lower edge
 )
 
 // histogram is the log odds of one group over the newest span dates.

@@ -40,16 +40,18 @@ func (l *Lone) Weigh(past []rules.Units, before rules.Units, date rules.Date, u 
 	w := p.weigh(0)
 	v = p.view(0, lk)
 	v.LogOdds = w.logOdds()
-	p.shares(w, lk, &v)
-	if odds /= w.total(); odds > 1 {
-		v.LooksLike, v.Share, v.Implied = rules.CauseSpike, odds/(1+odds), rules.Num{}
-		v.Causes, v.Out = []rules.Share{{Cause: rules.CauseSpike, Share: v.Share}}, true
-		return v, true
-	}
-	if best := w.best(); best >= 0 && v.LogOdds > 0 && w.odds[best].ratio > math.E {
+	odds /= w.total()
+	if odds > 1 {
+		lk.reversal = odds
+	} else if best := w.best(); best >= 0 && v.LogOdds > 0 && w.odds[best].ratio > math.E {
 		v.Kind = kindOf(w.odds[best].cause, st)
 	}
-	return v, false
+	v.Out = v.LogOdds > 0 || odds > 1
+	if v.Out {
+		v.Use = Out
+	}
+	p.shares(w, lk, &v)
+	return v, odds > 1
 }
 
 // look lays out a value and what its past says. ok is false where the past is too short.

@@ -1,6 +1,7 @@
 package causes
 
 import (
+	"cmp"
 	"math"
 	"slices"
 
@@ -37,18 +38,21 @@ type Pool struct {
 	shift   shift
 	contra  []contradiction
 	sizes   []float64
+	merged  []odd
 	totals  []float64
 	says    []implied
 }
 
 // NewPool makes an empty pool. doubtful is the share of ordinary values that may be flagged doubtful, stale or repeat, together.
 func NewPool(members []Member, groups []string, doubtful float64) *Pool {
-	p := &Pool{members: members, groups: groups, doubtful: doubtful, before: rules.NoDate, date: rules.NoDate, followers: map[int][]int{}}
+	p := &Pool{members: slices.Clone(members), groups: groups, doubtful: doubtful, before: rules.NoDate, date: rules.NoDate, followers: map[int][]int{}}
 	p.peers = make([][]int, len(groups))
 	p.isReference = make([]bool, len(members))
 	p.states, p.looks = make([]state, len(members)), make([]look, len(members))
 	for i, m := range members {
 		p.states[i] = newState()
+		p.members[i].Events = slices.Clone(m.Events)
+		slices.SortStableFunc(p.members[i].Events, func(a, b rules.Event) int { return cmp.Compare(a.Date, b.Date) })
 		if m.Group >= 0 {
 			p.peers[m.Group] = append(p.peers[m.Group], i)
 		}
@@ -122,6 +126,9 @@ func (p *Pool) open(d Day) {
 		if newMonth {
 			st.sofar = 1
 		}
+		for e := p.members[i].Events; st.event < len(e) && e[st.event].Date < d.Date-eventDays; {
+			st.event++
+		}
 		p.looks[i] = look{u: d.Values[i], x: math.NaN()}
 		if u := d.Values[i]; u != rules.Missing {
 			p.looks[i].x, p.looks[i].places = u.Float(), decimals(u)
@@ -155,12 +162,7 @@ func (p *Pool) plain(i int) bool {
 	case math.Abs(lk.x) < 0.02*(math.Abs(lk.mu)+2*lk.s):
 		return false
 	}
-	for _, e := range p.members[i].Events {
-		if daysApart(e.Date, p.date) >= 0 {
-			return false
-		}
-	}
-	return true
+	return len(p.near(i)) == 0
 }
 
 // foreseen lists what the references foresee, as it stood before the values of today were weighed.

@@ -116,9 +116,13 @@ func (p *Pool) estimate(st *state) fit {
 func (f *fit) strained(list []triple) bool {
 	var most, all float64
 	for i := range list {
-		e := list[i].x - f.at(list[i].m, list[i].l)
-		all += float64(e * e)
-		most = max(most, float64(e*e))
+		v := &list[i]
+		e := v.x - f.shift - float64(f.slope*v.m) - float64(f.lag*v.l)
+		e *= e
+		all += e
+		if e > most {
+			most = e
+		}
 	}
 	return most*float64(len(list)) > farOff*farOff*all
 }

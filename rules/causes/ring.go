@@ -42,14 +42,13 @@ func newScale() scale {
 // expire forgets what leaves the windows when date t is about to be judged.
 func (s *scale) expire(t int) {
 	for k, b := range boxes {
-		at := (t - b - 1) & mask
-		if !math.IsNaN(s.raw[at]) {
+		if at := (t - b - 1) & mask; s.raw[at] == s.raw[at] {
 			s.n[k]--
 			s.square[k] -= s.cut[at] * s.cut[at]
 		}
 	}
-	if at := (t - guard - 1) & mask; !math.IsNaN(s.raw[at]) {
-		i, _ := slices.BinarySearch(s.sorted, math.Abs(s.raw[at]))
+	if x := s.raw[(t-guard-1)&mask]; x == x {
+		i, _ := slices.BinarySearch(s.sorted, math.Abs(x))
 		s.sorted = slices.Delete(s.sorted, i, i+1)
 	}
 	s.raw[t&mask] = math.NaN()

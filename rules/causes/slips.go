@@ -79,13 +79,9 @@ const (
 
 // payouts weighs distributions and splits that the return leaves out, or counts twice.
 func (p *Pool) payouts(w *weighing, lk *look, i int) {
-	for _, e := range p.members[i].Events {
-		off := daysApart(e.Date, p.date)
-		if off < 0 || off > 1 {
-			continue
-		}
+	for _, e := range p.near(i) {
 		share := 1.0
-		if off == 1 {
+		if e.Date != p.date {
 			share = offByOne
 		}
 		p.listed(w, lk, e, share)
@@ -129,18 +125,20 @@ func (p *Pool) unlisted(w *weighing, lk *look) {
 	}
 }
 
-// daysApart is how many business days lie between two dates, -1 for more than one.
-func daysApart(a, b rules.Date) int {
-	if a > b {
-		a, b = b, a
+// eventDays is how many days a business day may span: a Friday before a Monday.
+const eventDays = 3
+
+// near lists a member's events of today or a business day beside it.
+func (p *Pool) near(i int) []rules.Event {
+	e, from := p.members[i].Events, p.states[i].event
+	for from < len(e) && rules.Weekdays(e[from].Date, p.date) > 1 {
+		from++
 	}
-	if a == b {
-		return 0
+	to := from
+	for to < len(e) && (e[to].Date <= p.date || rules.Weekdays(p.date, e[to].Date) <= 1) {
+		to++
 	}
-	if n := rules.Weekdays(a, b); n <= 1 {
-		return 1
-	}
-	return -1
+	return e[from:to]
 }
 
 // currency weighs a currency's return that was left out or applied twice: base = (1 + local)(1 + fx) - 1.

@@ -25,6 +25,8 @@ type state struct {
 	unchanged       int         // dates in a row with the same value, at most 10
 	sofar           float64     // one plus the return since the month began
 
+	event int // the first that may still matter
+
 	held    held // a value that waits a date before it enters the windows
 	isOut   bool // today's value was concluded to be wrong
 	isWrong bool // by its followers
