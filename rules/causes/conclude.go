@@ -19,15 +19,19 @@ func (p *Pool) conclude(w *weighing, r *Result) {
 		p.odds[h].take(p.t, logOdds)
 		p.odds[len(p.odds)-1].take(p.t, logOdds)
 	}
-	v := View{LogOdds: logOdds, Line: p.line[h], Out: logOdds > 0 || lk.reversal > 0}
-	if best >= 0 && lk.reversal == 0 && logOdds > v.Line && w.odds[best].ratio > math.E {
+	far := math.Abs(lk.z) > watchZ || math.Abs(lk.ownZ) > watchZ
+	v := View{LogOdds: logOdds, Out: logOdds > 0 || lk.reversal > 0}
+	if far || logOdds > leastLine {
+		v.Line = p.doubtFrom(h)
+	}
+	if best >= 0 && lk.reversal == 0 && logOdds > leastLine && logOdds > v.Line && w.odds[best].ratio > math.E {
 		v.Kind = kindOf(w.odds[best].cause, st)
 	}
 	if v.Out {
 		v.Use, st.isOut = Out, true
 	}
 	st.chain.next()
-	if v.Kind != "" || v.Out || math.Abs(lk.z) > watchZ || math.Abs(lk.ownZ) > watchZ {
+	if v.Kind != "" || v.Out || far {
 		p.describe(i, lk, &v)
 		p.shares(w, lk, &v)
 		r.Views = append(r.Views, v)

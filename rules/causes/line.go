@@ -56,19 +56,38 @@ const (
 	poolLends  = 4000 // values that the whole pool counts for beside a group's own
 	guessLends = 2000 // values that the guess counts for beside the pool's own
 	guessEdge  = -1.0 // where the guess has its line: the tail of the log odds falls as 1/odds
-	wrongShare = 6e-3 // of all values, by the priors
+	leastLine  = -4.0
+	wrongShare = 4.5e-3 // of all values, by the priors
 )
 
-// lines works out where doubt begins in each group: the lowest edge beyond which at most the configured share of values lies. It is never
-// above even odds.
-func (p *Pool) lines() {
-	rate := p.odds[len(p.odds)-1].rate()
+// learn renews, once a week, how probably a value of given log odds is no error.
+func (p *Pool) learn() {
+	if !p.newWeek {
+		return
+	}
+	for b := range p.binOdds {
+		p.binOdds[b] = math.Exp(lowest + (float64(b)+0.5)*binSize)
+	}
+	rate := p.odds[len(p.odds)-1].rate(&p.binOdds)
 	for b := range p.sound {
-		p.sound[b] = 1 / (1 + float64(rate*math.Exp(lowest+(float64(b)+0.5)*binSize)))
+		p.sound[b] = 1 / (1 + float64(rate*p.binOdds[b]))
 	}
-	for g := range p.odds {
-		p.line[g] = p.lineOf(g)
+}
+
+// doubtFrom is where doubt begins in a group today: the lowest edge beyond which at most the configured share of values lies. It is never
+// above even odds, and never below leastLine.
+func (p *Pool) doubtFrom(g int) float64 {
+	l := &p.line[g]
+	if l.t != p.t {
+		l.t, l.at = p.t, max(p.lineOf(g), leastLine)
 	}
+	return l.at
+}
+
+// lineAt is a line with the date that it was worked out for.
+type lineAt struct {
+	t  int
+	at float64
 }
 
 // rate is the likeliest factor of the priors, between 0.01 and 10: where
@@ -76,7 +95,7 @@ func (p *Pool) lines() {
 //	sum odds/(1 + rate odds) = n share/(1 + rate share)
 //
 // found by bisection of its logarithm; the left side less the right falls in it.
-func (h *histogram) rate() float64 {
+func (h *histogram) rate(binOdds *[bins]float64) float64 {
 	low, high := math.Log(0.01), math.Log(10)
 	for range 12 {
 		mid := (low + high) / 2
@@ -84,8 +103,7 @@ func (h *histogram) rate() float64 {
 		left := 0.0
 		for b, n := range h.count {
 			if n > 0 {
-				odds := math.Exp(lowest + (float64(b)+0.5)*binSize)
-				left += float64(n) * (odds / (1 + float64(rate*odds)))
+				left += float64(n) * (binOdds[b] / (1 + float64(rate*binOdds[b])))
 			}
 		}
 		if n := float64(h.n) + guessLends; left > n*wrongShare/(1+float64(rate*wrongShare)) {

@@ -23,15 +23,16 @@ type Pool struct {
 	looks  []look
 	slow   []weighing // of today
 
-	t       int // number of today's date, from 1
-	date    rules.Date
-	before  rules.Date // the date before
-	newWeek bool
+	t                     int // number of today's date, from 1
+	date                  rules.Date
+	before                rules.Date // the date before
+	newWeek, newFortnight bool
 
-	odds  []histogram // by group, then of those without one, then of all
-	line  []float64
-	sound [bins]float64 // by log odds: how probably a value is no error
-	lend  []lending
+	odds    []histogram // by group, then of those without one, then of all
+	line    []lineAt
+	binOdds [bins]float64
+	sound   [bins]float64 // by log odds: how probably a value is no error
+	lend    []lending
 
 	row     []ranked // room for today's work
 	triples []triple
@@ -70,7 +71,7 @@ func NewPool(members []Member, groups []string, doubtful float64) *Pool {
 		}
 	}
 	p.odds = make([]histogram, len(groups)+2)
-	p.line = make([]float64, len(groups)+2)
+	p.line = make([]lineAt, len(groups)+2)
 	p.lend = make([]lending, len(groups))
 	return p
 }
@@ -79,6 +80,7 @@ func NewPool(members []Member, groups []string, doubtful float64) *Pool {
 func (p *Pool) Step(d Day) *Result {
 	r := &Result{}
 	p.open(d)
+	p.learn()
 	p.references()
 	for i := range p.members {
 		p.refit(i)
@@ -95,7 +97,6 @@ func (p *Pool) Step(d Day) *Result {
 	}
 	p.swaps()
 	p.spikes(r)
-	p.lines()
 	for k := range p.slow {
 		p.conclude(&p.slow[k], r)
 	}
@@ -113,6 +114,7 @@ func (p *Pool) Step(d Day) *Result {
 func (p *Pool) open(d Day) {
 	p.t++
 	p.newWeek = p.date == rules.NoDate || weekOf(d.Date) != weekOf(p.date)
+	p.newFortnight = p.newWeek && (p.date == rules.NoDate || weekOf(d.Date)/2 != weekOf(p.date)/2)
 	newMonth := p.date == rules.NoDate || d.Date.Time().Month() != p.date.Time().Month()
 	p.before, p.date = p.date, d.Date
 	p.slow = p.slow[:0]
@@ -296,7 +298,7 @@ func (p *Pool) median(g int, of func(*state) *scale) float64 {
 }
 
 // rate is how often something happens to a series.
-func (p *Pool) rate(int) float64 { return 2.5e-3 }
+func (p *Pool) rate(int) float64 { return 3e-3 }
 
 // bell is the tail of a member.
 func (p *Pool) bell(int) *bell { return &bells[usual] }

@@ -189,14 +189,15 @@ func (s *moments) withLag() (slope, lag, rest float64, ok bool) {
 	return slope, lag, rest, math.Abs(lag) > lagLine*err
 }
 
-// refit estimates a series' fit anew. It is due on the first date of a week, and on every date while there are few.
+// refit estimates a series' fit anew. It is due on the first date of every other week, and on every date while there are
+// few.
 func (p *Pool) refit(i int) {
 	st := &p.states[i]
 	if p.members[i].Reference.Kind == None {
 		return
 	}
 	few := st.fit.n < guard
-	if !few && !p.newWeek {
+	if !few && !p.newFortnight {
 		return
 	}
 	st.fit = p.estimate(st)

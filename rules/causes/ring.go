@@ -2,7 +2,8 @@ package causes
 
 import (
 	"math"
-	"slices"
+
+	"strayd/stats"
 )
 
 const (
@@ -18,6 +19,9 @@ const (
 // Deviations enter the sums as whole numbers of this size, so that adding and dropping are exact. At most 1 in size, 120 squares of
 // 1e16 stay below 2^63.
 const fine = 1e8
+
+// clipAt is how many robust deviations a number may count for.
+const clipAt = 5
 
 // scale follows the deviation of one stream of numbers about 0: returns, or residuals. It goes by dates, so that what it says depends on
 // the last long + guard of them.
@@ -48,8 +52,9 @@ func (s *scale) expire(t int) {
 		}
 	}
 	if x := s.raw[(t-guard-1)&mask]; x == x {
-		i, _ := slices.BinarySearch(s.sorted, math.Abs(x))
-		s.sorted = slices.Delete(s.sorted, i, i+1)
+		i := place(s.sorted, math.Abs(x))
+		copy(s.sorted[i:], s.sorted[i+1:])
+		s.sorted = s.sorted[:len(s.sorted)-1]
 	}
 	s.raw[t&mask] = math.NaN()
 }
@@ -68,16 +73,31 @@ func (s *scale) take(t int, e, bound float64, full bool) {
 		s.n[k]++
 		s.square[k] += s.cut[at] * s.cut[at]
 	}
-	i, _ := slices.BinarySearch(s.sorted, math.Abs(e))
-	s.sorted = slices.Insert(s.sorted, i, math.Abs(e))
+	i := place(s.sorted, math.Abs(e))
+	s.sorted = append(s.sorted, 0)
+	copy(s.sorted[i+1:], s.sorted[i:])
+	s.sorted[i] = math.Abs(e)
 }
 
-// bound is where values are clipped: five times 1.4826 median |e|, 0 for none while there are fewer than ten.
+// place is the index of the first number that is not below x in an ascending row.
+func place(sorted []float64, x float64) int {
+	low, high := 0, len(sorted)
+	for low < high {
+		if mid := (low + high) / 2; sorted[mid] < x {
+			low = mid + 1
+		} else {
+			high = mid
+		}
+	}
+	return low
+}
+
+// bound is where values are clipped: clipAt times 1.4826 median |e|, 0 for none while there are fewer than ten.
 func (s *scale) bound() float64 {
 	if len(s.sorted) < 10 {
 		return 0
 	}
-	return 5 * 1.4826 * s.sorted[len(s.sorted)/2]
+	return clipAt * stats.NormalMAD * s.sorted[len(s.sorted)/2]
 }
 
 // variance is a mixture of the mean squares over three spans, which follows clusters of volatility without a fit (Corsi 2009, Journal of

@@ -1,6 +1,10 @@
 package causes
 
-import "strayd/rules"
+import (
+	"math"
+
+	"strayd/rules"
+)
 
 // swaps weighs, for every pair of odd values of different groups, that the two were exchanged. A partner is judged against whatever else
 // explains it, or one bad row would blame its many possible partners; and it is never of the same group, where the reference holds both.
@@ -30,6 +34,9 @@ func (p *Pool) swapsOf(w *weighing) {
 		if j == i || p.isReference[j] || p.members[j].Group == p.members[i].Group {
 			continue
 		}
+		if !p.couldBe(i, j) || !p.couldBe(j, i) {
+			continue
+		}
 		like := p.exchanged(i, j) * p.exchanged(j, i) / p.totals[k]
 		prior := priorSwap / float64(len(p.members))
 		if c.partner == j { // what yesterday carries counts for the same partner only
@@ -49,6 +56,12 @@ func (p *Pool) swapsOf(w *weighing) {
 	c.note(runSwapped, best.ratio/float64(len(p.members)))
 	best.implied = rules.Some(p.looks[best.partner].x)
 	w.odds = append(w.odds, best)
+}
+
+// couldBe says that j's value is not far off for i.
+func (p *Pool) couldBe(i, j int) bool {
+	a := &p.looks[i]
+	return math.Abs(p.looks[j].x-a.mu) < 6*a.s
 }
 
 // exchanged is the probability that i's true value is printed as j's is now.

@@ -13,7 +13,7 @@ const (
 	priorX10000     = 1e-4
 	priorX10        = 1e-4
 	priorDiv100     = 1.5e-3
-	priorSign       = 1e-3
+	priorSign       = 1.2e-3
 	priorRepeat     = 1.5e-3
 	priorZero       = 1.2e-3
 	priorSpike      = 3e-4
@@ -22,7 +22,7 @@ const (
 	priorSplit      = 5e-5
 	priorFX         = 1e-4
 	priorSwap       = 1e-3
-	priorCumulative = 5e-4
+	priorCumulative = 4e-4
 	priorShifted    = 5e-5
 	listedMissed    = 0.08 // on a listed date
 	listedDoubled   = 0.04
