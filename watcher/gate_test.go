@@ -19,6 +19,7 @@ type gated struct {
 	series   int
 	dates    []rules.Date
 	values   [][]float64 // by date, then series
+	factors  [][4]float64
 	decimals int
 }
 
@@ -34,6 +35,7 @@ func newGated(seed uint64, series, dates, decimals int) *gated {
 	for n := range dates {
 		b.dates = append(b.dates, first+rules.Date(n/5*7+n%5))
 		factors := [4]float64{heavy(r), heavy(r), heavy(r), heavy(r)}
+		b.factors = append(b.factors, factors)
 		row := make([]float64, series)
 		for i := range row {
 			row[i] = 0.01*slope[i]*factors[i%4] + 0.003*heavy(r)
@@ -64,6 +66,23 @@ func (b *gated) file(n int, plant func(i int, v float64) float64) (rows []entry)
 		rows = append(rows, entry{b.dates[n], fmt.Sprintf("s%03d", i), printed(plant(i, b.values[n][i]), b.decimals)})
 	}
 	return rows
+}
+
+// index is the file of the other feed: the four factors themselves.
+func (b *gated) index(n int, plant func(i int, v float64) float64) (rows []entry) {
+	for i, f := range b.factors[n] {
+		rows = append(rows, entry{b.dates[n], fmt.Sprintf("index%d", i), printed(plant(i, 0.01*f), 4)})
+	}
+	return rows
+}
+
+// references names for every series the index of its factor.
+func (b *gated) references() map[string]string {
+	of := map[string]string{}
+	for i := range b.series {
+		of[fmt.Sprintf("s%03d", i)] = fmt.Sprintf("index%d", i%4)
+	}
+	return of
 }
 
 func same(_ int, v float64) float64 { return v }

@@ -1,0 +1,218 @@
+package watcher
+
+import (
+	"slices"
+
+	"strayd/rules"
+)
+
+const (
+	// shiftDates is how many held dates the lines on the references are drawn from, and shiftSeries how many series are looked at.
+	shiftDates, shiftSeries = 120, 256
+	// openDays is how many business days before the date are looked through for where a shift can have begun.
+	openDays = 10
+)
+
+// follow is one series of the file with a reference that it does not bring itself.
+type follow struct{ series, reference uint32 }
+
+// shift holds the file's newest date against references of other feeds: do its values belong to the date before? A shift begins with a
+// date on which the values of the one before stood once more, or with a file that was refused for that: without such a date in the last
+// days there is none.
+func (g *fileGate) shift() (*rules.Refusal, error) {
+	last := g.sheet.Last()
+	n, _ := slices.BinarySearch(g.j.held, last)
+	if n < rules.TypicalDates || g.j.members.Lone() || g.p.Settings.CalendarFor("").Between(g.j.held[n-1], last) > openDays {
+		return nil, nil
+	}
+	pairs := g.followers(last)
+	if len(pairs) == 0 {
+		return nil, nil
+	}
+	grid := newGrid(g.v, append(slices.Clone(g.j.held[max(0, n-shiftDates):n]), last))
+	for _, p := range pairs {
+		if err := errorOf(grid.add(p.series), grid.add(p.reference)); err != nil {
+			return nil, err
+		}
+	}
+	for _, p := range pairs {
+		g.overlay(grid.of(p.series), last, p.series)
+	}
+	before := grid.newestWith(pairs)
+	if before < 0 || !g.opening(grid, pairs, last) {
+		return nil, nil
+	}
+	return rules.RefuseShift(last, grid.dates[before], grid.byReference(pairs, before)), nil
+}
+
+func errorOf(a, b error) error {
+	if a != nil {
+		return a
+	}
+	return b
+}
+
+// followers lists the held series of the file on its newest date that have a reference in the ledger which the file does not bring, in
+// the order of their numbers.
+func (g *fileGate) followers(last rules.Date) (out []follow) {
+	names := map[string]int64{} // number of a reference, -1 where it has none or the file brings it
+	brings := func(id uint32) bool {
+		return slices.ContainsFunc(g.sheet.Columns, func(c *Column) bool {
+			return c.Date == last && c.Block == id/BlockSize && int(id%BlockSize) < c.Len() && c.has(int(id%BlockSize))
+		})
+	}
+	for _, b := range g.blocks {
+		d := dayOf(g.blocks, b.number, last)
+		if d == nil {
+			continue
+		}
+		for i := range d.col.Len() {
+			id := b.number*BlockSize + uint32(i)
+			if !d.col.has(i) || int(id) >= g.j.heldNames {
+				continue
+			}
+			name := g.name(id)
+			reference := g.j.members.Reference(name, g.j.members.Group(name))
+			if reference == "" || reference == rules.PeersReference {
+				continue
+			}
+			if _, ok := names[reference]; !ok {
+				at, known := g.j.names.Find([]byte(reference))
+				names[reference] = -1
+				if known && int(at) < g.j.heldNames && !brings(at) {
+					names[reference] = int64(at)
+				}
+			}
+			if at := names[reference]; at >= 0 {
+				out = append(out, follow{id, uint32(at)})
+			}
+			if len(out) == shiftSeries {
+				return out
+			}
+		}
+	}
+	return out
+}
+
+// overlay puts the file's value of the newest date over what is held of a series.
+func (g *fileGate) overlay(row []int64, last rules.Date, id uint32) {
+	if d := dayOf(g.blocks, id/BlockSize, last); d != nil {
+		d.col.Fill(row[len(row)-1:], int(id%BlockSize), rules.Places)
+	}
+}
+
+// opening says whether a shift can have begun in the last days: on a business day without values of most of the series, or with those of
+// the date before.
+func (g *fileGate) opening(grid *grid, pairs []follow, last rules.Date) bool {
+	days := g.p.Settings.CalendarFor("")
+	from := days.Add(last, -openDays)
+	for d := from; d < last; d = days.Add(d, 1) {
+		at, held := slices.BinarySearch(grid.dates, d)
+		if !held || at == 0 {
+			return true
+		}
+		there, same := 0, 0
+		for _, p := range pairs {
+			row := grid.of(p.series)
+			if row[at] != Missing64 {
+				there++
+			}
+			if row[at] != Missing64 && row[at] != 0 && row[at] == row[at-1] {
+				same++
+			}
+		}
+		if 2*there < len(pairs) || 2*same > there {
+			return true
+		}
+	}
+	return false
+}
+
+// grid is what is held of some series on some dates.
+type grid struct {
+	v      View
+	dates  []rules.Date
+	blocks map[uint32][][]int64 // by date
+	rows   map[uint32][]int64   // by series, then date
+}
+
+func newGrid(v View, dates []rules.Date) *grid {
+	return &grid{v: v, dates: dates, blocks: map[uint32][][]int64{}, rows: map[uint32][]int64{}}
+}
+
+// add reads a series.
+func (g *grid) add(id uint32) error {
+	if g.rows[id] != nil {
+		return nil
+	}
+	block := g.blocks[id/BlockSize]
+	if block == nil {
+		for _, d := range g.dates {
+			vals := make([]int64, BlockSize)
+			ok, err := g.v.Fill(Returns, d, id/BlockSize, 0, vals)
+			if err != nil {
+				return err
+			}
+			if !ok {
+				fillMissing(vals)
+			}
+			block = append(block, vals)
+		}
+		g.blocks[id/BlockSize] = block
+	}
+	row := make([]int64, len(g.dates))
+	for n, vals := range block {
+		row[n] = vals[id%BlockSize]
+	}
+	g.rows[id] = row
+	return nil
+}
+
+func (g *grid) of(id uint32) []int64 { return g.rows[id] }
+
+// newestWith is the newest date before the last on which a reference has a value, -1 when there is none.
+func (g *grid) newestWith(pairs []follow) int {
+	for n := len(g.dates) - 2; n >= 0; n-- {
+		for _, p := range pairs {
+			if g.of(p.reference)[n] != Missing64 {
+				return n
+			}
+		}
+	}
+	return -1
+}
+
+// byReference draws the line of every follower whose reference has a value on the last date and on the one before.
+func (g *grid) byReference(pairs []follow, before int) (out [][]rules.Follower) {
+	at := map[uint32]int{}
+	last := len(g.dates) - 1
+	for _, p := range pairs {
+		y, x := g.of(p.series), g.of(p.reference)
+		if y[last] == Missing64 || x[last] == Missing64 || x[before] == Missing64 {
+			continue
+		}
+		line, ok := fitOf(x[:last], y[:last])
+		if !ok {
+			continue
+		}
+		n, known := at[p.reference]
+		if !known {
+			n = len(out)
+			at[p.reference] = n
+			out = append(out, nil)
+		}
+		out[n] = append(out[n], rules.Follower{Return: rules.Units(y[last]).Float(), Here: rules.Units(x[last]).Float(),
+			Before: rules.Units(x[before]).Float(), Line: line})
+	}
+	return out
+}
+
+func fitOf(x, y []int64) (rules.FitLine, bool) {
+	var xs, ys []float64
+	for n := range x {
+		if x[n] != Missing64 && y[n] != Missing64 {
+			xs, ys = append(xs, rules.Units(x[n]).Float()), append(ys, rules.Units(y[n]).Float())
+		}
+	}
+	return rules.Fit(xs, ys)
+}
