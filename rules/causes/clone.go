@@ -17,6 +17,7 @@ func (p *Pool) Clone() *Pool {
 			days[t].bins = slices.Clone(days[t].bins)
 		}
 	}
-	c.slow, c.row, c.triples, c.contra, c.sizes, c.totals, c.says = nil, nil, nil, nil, nil, nil, nil
+	c.happens = slices.Clone(p.happens)
+	c.scratch = scratch{}
 	return &c
 }

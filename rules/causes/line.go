@@ -19,12 +19,13 @@ const (
 type histogram struct {
 	count [bins]int32
 	n     int32 // values judged
+	far   int32 // of those, beyond the breach line and no errors
 	days  [slots]dayOdds
 }
 
 type dayOdds struct {
-	judged int32
-	bins   []uint8
+	judged, far int32
+	bins        []uint8
 }
 
 func binOf(logOdds float64) int {
@@ -34,10 +35,11 @@ func binOf(logOdds float64) int {
 func (h *histogram) expire(t int) {
 	day := &h.days[(t-span-1)&mask]
 	h.n -= day.judged
+	h.far -= day.far
 	for _, b := range day.bins {
 		h.count[b]--
 	}
-	day.judged, day.bins = 0, day.bins[:0]
+	day.judged, day.far, day.bins = 0, 0, day.bins[:0]
 }
 
 func (h *histogram) take(t int, logOdds float64) {
@@ -52,6 +54,26 @@ func (h *histogram) judged(t int, n int32) {
 	h.n += n
 }
 
+// happened counts a far value that is no error.
+func (h *histogram) happened(t int) {
+	h.days[t&mask].far++
+	h.far++
+}
+
+const (
+	usualRate = 3.5e-3 // of things that happen, before anything is learnt
+	farTail   = 0.0027 // share of values beyond the breach line by the tail alone
+	farShare  = 0.55   // share of what happens that lies beyond it: of half with the deviation of returns nearly all, of the rest few
+	mostRate  = 0.02
+	leastRate = 1e-3
+)
+
+// happensIn is how often something happens in a group.
+func (h *histogram) happensIn() float64 {
+	more := (float64(h.far) - float64(farTail*float64(h.n))) / farShare
+	return min(max((more+float64(usualRate*poolLends))/(float64(h.n)+poolLends), leastRate), mostRate)
+}
+
 const (
 	poolLends  = 4000 // values that the whole pool counts for beside a group's own
 	guessLends = 2000 // values that the guess counts for beside the pool's own
@@ -60,7 +82,7 @@ const (
 	wrongShare = 4.5e-3 // of all values, by the priors
 )
 
-// learn renews, once a week, how probably a value of given log odds is no error.
+// learn renews, once a week, how probably a value of given log odds is no error, and how often something happens.
 func (p *Pool) learn() {
 	if !p.newWeek {
 		return
@@ -71,6 +93,9 @@ func (p *Pool) learn() {
 	rate := p.odds[len(p.odds)-1].rate(&p.binOdds)
 	for b := range p.sound {
 		p.sound[b] = 1 / (1 + float64(rate*p.binOdds[b]))
+	}
+	for g := range p.odds {
+		p.happens[g] = p.odds[g].happensIn()
 	}
 }
 

@@ -21,7 +21,6 @@ type Pool struct {
 
 	states []state
 	looks  []look
-	slow   []weighing // of today
 
 	t                     int // number of today's date, from 1
 	date                  rules.Date
@@ -33,10 +32,18 @@ type Pool struct {
 	binOdds [bins]float64
 	sound   [bins]float64 // by log odds: how probably a value is no error
 	lend    []lending
+	happens []float64 // by group: how often something happens
 
-	row     []ranked // room for today's work
+	shift shift
+
+	scratch
+}
+
+// scratch is room for the work of one date.
+type scratch struct {
+	slow    []weighing // values that are not plainly ordinary
+	row     []ranked
 	triples []triple
-	shift   shift
 	contra  []contradiction
 	sizes   []float64
 	merged  []odd
@@ -46,7 +53,8 @@ type Pool struct {
 
 // NewPool makes an empty pool. doubtful is the share of ordinary values that may be flagged doubtful, stale or repeat, together.
 func NewPool(members []Member, groups []string, doubtful float64) *Pool {
-	p := &Pool{members: slices.Clone(members), groups: groups, doubtful: doubtful, before: rules.NoDate, date: rules.NoDate, followers: map[int][]int{}}
+	p := &Pool{members: slices.Clone(members), groups: groups, doubtful: doubtful, before: rules.NoDate, date: rules.NoDate,
+		followers: map[int][]int{}, newWeek: true}
 	p.peers = make([][]int, len(groups))
 	p.isReference = make([]bool, len(members))
 	p.states, p.looks = make([]state, len(members)), make([]look, len(members))
@@ -73,6 +81,8 @@ func NewPool(members []Member, groups []string, doubtful float64) *Pool {
 	p.odds = make([]histogram, len(groups)+2)
 	p.line = make([]lineAt, len(groups)+2)
 	p.lend = make([]lending, len(groups))
+	p.happens = make([]float64, len(groups)+2)
+	p.learn()
 	return p
 }
 
@@ -213,6 +223,9 @@ func (p *Pool) close(d Day) {
 		if h := &st.held; h.is {
 			if !h.out {
 				st.enter(h.t, &h.look)
+				if math.Abs(h.look.z) > breachZ {
+					judged[p.histogramOf(i)].happened(p.t)
+				}
 			}
 			h.is = false
 		}
@@ -297,8 +310,9 @@ func (p *Pool) median(g int, of func(*state) *scale) float64 {
 	return middle(sizes)
 }
 
-// rate is how often something happens to a series.
-func (p *Pool) rate(int) float64 { return 3e-3 }
+// rate is how often something happens to a series: learnt from how many values of its group lie beyond the breach line of the residual and are
+// no errors, beyond those that the tail itself brings about.
+func (p *Pool) rate(i int) float64 { return p.happens[p.histogramOf(i)] }
 
 // bell is the tail of a member.
 func (p *Pool) bell(int) *bell { return &bells[usual] }

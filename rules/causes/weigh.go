@@ -24,7 +24,7 @@ const (
 	priorSwap       = 1e-3
 	priorCumulative = 4e-4
 	priorShifted    = 5e-5
-	listedMissed    = 0.08 // on a listed date
+	listedMissed    = 0.1 // on a listed date
 	listedDoubled   = 0.04
 	listedSplit     = 0.2
 	offByOne        = 0.05 // factor of the above a business day beside it
