@@ -13,6 +13,9 @@ import (
 
 // accept judges a validated file and publishes it as one step.
 func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
+	if err := p.release.admits(sheet.File); err != nil {
+		return err
+	}
 	if err := p.settle(sheet.Names.Len()); err != nil {
 		return err
 	}
@@ -44,6 +47,9 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	b.File.Counts.Rows = sheet.Rows
 	b.File.Counts.Same = sheet.Rows - b.File.Counts.New - b.File.Counts.Late - b.File.Counts.Restated
 	p.tell(b, newestSeries(sheet))
+	if err := p.release.into(b, p.today()); err != nil {
+		return err
+	}
 	if err := p.Store.Publish(b); err != nil {
 		return err
 	}

@@ -44,7 +44,8 @@ type Pass struct {
 	gateText   string               // see gateKey
 	taken      map[string][]FileRow // the newest accepted files of each feed that brought something new, in their order
 	row        PassRow
-	led        *leader // that of the step before
+	release    *releasing // the one file to take, because a person released it; nil for all
+	led        *leader    // that of the step before
 
 	newWeigher func([]causes.Member, []string, float64) weigher // nil for the real one
 }
@@ -149,10 +150,16 @@ func (p *Pass) feed(ctx context.Context, f rules.Feed, seen *seenFiles) error {
 		return err
 	}
 	for _, w := range found.Waiting {
+		if !p.release.passes(w.Name) {
+			continue
+		}
 		p.row.Waiting++
 		p.report(FileReport{Feed: f.Name, Name: w.Name, Fate: FateWaiting, Why: w.Why})
 	}
 	for _, bad := range found.Refused {
+		if p.release != nil {
+			continue
+		}
 		bad.File.Feed = f.Name
 		if err := p.refuse(bad, f, Candidate{Name: bad.File.Name}); err != nil {
 			return err
@@ -161,6 +168,9 @@ func (p *Pass) feed(ctx context.Context, f rules.Feed, seen *seenFiles) error {
 	for _, c := range found.Ready {
 		if err := ctx.Err(); err != nil {
 			return err
+		}
+		if !p.release.passes(c.Name) {
+			continue
 		}
 		if err := p.unread(f, c, p.file(ctx, f, c, seen)); err != nil {
 			return fmt.Errorf("%s: %w", c.Name, err)
@@ -249,6 +259,10 @@ func (p *Pass) known(f rules.Feed, sha [32]byte, key string) (bool, error) {
 
 // refuse records a file that changes nothing, with the one flag that it raises.
 func (p *Pass) refuse(bad *BadFile, f rules.Feed, c Candidate) error {
+	if p.release != nil {
+		p.release.why = "its form is checked as ever: " + bad.Error()
+		return nil
+	}
 	if known, err := p.known(f, bad.File.SHA256, p.FeedKey(f)); known || err != nil {
 		p.report(FileReport{Feed: f.Name, Name: bad.File.Name, Fate: FateSeen})
 		return err
@@ -286,6 +300,9 @@ func (p *Pass) refuse(bad *BadFile, f rules.Feed, c Candidate) error {
 }
 
 func (p *Pass) report(r FileReport) {
+	if p.release != nil {
+		p.release.why = r.Why
+	}
 	if p.Report != nil {
 		p.Report(r)
 	}

@@ -182,9 +182,9 @@ func TestForgedDecisionsAreFound(t *testing.T) {
 			f.flag(5, func(r *flagRow) { r.flag.Last.Conclusion, r.flag.Last.Value = rules.Genuine, rules.Missing })
 		},
 		"an earlier row of the flag": func(f *forger) { f.flag(3, func(r *flagRow) { r.flag.Last.Note = "as I like it" }) },
-		"the flag signed off": func(f *forger) { f.flag(5, func(r *flagRow) { r.flag.Standing = rules.SignedOff }) },
-		"an earlier row gone": func(f *forger) { f.remove(inFlags, flagKey(1, 3)) },
-		"the newest row gone": func(f *forger) { f.remove(inFlags, flagKey(1, 5)) },
+		"the flag signed off":        func(f *forger) { f.flag(5, func(r *flagRow) { r.flag.Standing = rules.SignedOff }) },
+		"an earlier row gone":        func(f *forger) { f.remove(inFlags, flagKey(1, 3)) },
+		"the newest row gone":        func(f *forger) { f.remove(inFlags, flagKey(1, 5)) },
 	} {
 		if _, err := verify(forge(t, path, change)); !isDamaged(err) {
 			t.Errorf("%s: %v", what, err)
