@@ -44,8 +44,9 @@ type leader struct {
 	behind     weigher
 	behindUpto rules.Date
 
-	j      *judging
-	view   View
+	j        *judging
+	view     View
+	released bool // a person released the file
 	blocks map[uint32][]*day // what the file changes
 
 	raw    []int64 // of one block
@@ -64,6 +65,7 @@ func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 		return nil, nil
 	}
 	l := newLeader(crew, j, v)
+	l.released = p.Released[j.file.SHA256]
 	for _, b := range blocks {
 		if _, ok := slices.BinarySearch(crew.blocks, b.number); ok {
 			l.blocks[b.number] = b.days
@@ -85,8 +87,11 @@ func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 			return nil, err
 		}
 	}
-	p.led = l
-	return l.lead(todo)
+	out, err := l.lead(todo)
+	if p.led = l; err != nil {
+		p.led = nil
+	}
+	return out, err
 }
 
 func newLeader(c *crew, j *judging, v View) *leader {
@@ -194,6 +199,10 @@ func (l *leader) lead(todo []rules.Date) (*weighed, error) {
 		}
 		if _, ok := slices.BinarySearch(todo, d); ok && r != nil {
 			withWrong(d, r)
+			tidy(r)
+			if err := l.offDate(d, r); err != nil {
+				return nil, err
+			}
 			out.days[d] = &weighedDay{r, slices.Clone(l.fresh), l.wokenNow(d, r)}
 		}
 	}

@@ -98,7 +98,11 @@ func (p *Pass) run(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	for _, f := range p.Feeds {
+	feeds, err := p.inOrder()
+	if err != nil {
+		return err
+	}
+	for _, f := range feeds {
 		if p.Only != "" && f.Name != p.Only {
 			continue
 		}

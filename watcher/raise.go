@@ -23,7 +23,7 @@ func (w *worker) raise(t task, d *day, fresh []int64, out *outcome) {
 		var raised []rules.Kind
 		restated := d.restated(t, h)
 		for _, f := range w.flagsOf(t, d, h) {
-			w.fillView(f, d.date, h.view)
+			w.fillView(f, d.date, h)
 			w.keep(f, restated, out)
 			raised = append(raised, f.Kind)
 		}
@@ -68,7 +68,7 @@ func (w *worker) raiseWoken(t task, d *day, h *hit, out *outcome) {
 		if f.First = w.j.weighed.reference(f.SeriesID) >= w.j.firstNames; f.First && f.Date < w.j.newest {
 			f.Standing = rules.OfHistory
 		}
-		w.fillView(f, d.date, h.view)
+		w.fillView(f, d.date, h)
 		out.flags = append(out.flags, f)
 	}
 }

@@ -37,6 +37,7 @@ func (r *Reader) Weigh(series string, date rules.Date, step uint32) (*Reweighed,
 	}
 	said := l.pool.Step(causes.Day{Date: date, Values: l.values, Fresh: l.fresh, Known: l.known})
 	withWrong(date, said)
+	tidy(said)
 	out := &Reweighed{View: (&weighedDay{Result: said}).view(int32(member))}
 	if f := said.Foreseen[member]; f.OK && l.values[member] != rules.Missing {
 		m := l.crew.members[member]

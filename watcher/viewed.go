@@ -2,6 +2,7 @@ package watcher
 
 import (
 	"fmt"
+	"math"
 	"slices"
 
 	"strayd/rules"
@@ -28,7 +29,7 @@ func (w *worker) viewHits(t task, d *day, fresh []int64, out *outcome) {
 		case said.woken != nil && said.woken[v.Member]:
 			h := w.hitAt(at, false)
 			h.view, h.woken = v, true
-		case said.fresh[v.Member]:
+		case said.fresh[v.Member] && (v.Kind != "" || w.slot[at] >= 0):
 			w.hitAt(at, true).view = v
 		}
 	}
@@ -92,11 +93,45 @@ func (w *worker) usesNow(t task, date rules.Date, uses []int64) {
 	}
 }
 
-// fillView is the package's, with a word on a reference that its followers agree is wrong.
-func (w *worker) fillView(f *FlagRow, date rules.Date, v *causes.View) {
-	fillView(f, v)
-	if v == nil {
+// noteReference notes on the flag of a value that the pool has no view of what its reference says.
+func (w *worker) noteReference(f *FlagRow) {
+	if w.j.weighed == nil {
 		return
+	}
+	m, ok := w.j.weighed.crew.at[f.SeriesID]
+	said := w.j.weighed.days[f.Date]
+	if !ok || said == nil || int(m) >= len(said.Foreseen) || !said.Foreseen[m].OK {
+		return
+	}
+	f.Reference, f.ReferenceReturn = w.j.weighed.crew.referenceName(int(m)), said.Reference[m]
+	f.Residual = rules.Some(f.Return.Float() - said.Foreseen[m].V)
+}
+
+// explained says that a breach under a range of returns is the move of the reference: what the reference leaves of it is ordinary, and what
+// it foresees lies beyond the inner line by itself.
+func explained(f *FlagRow, v *causes.View, lines *rules.Lines) bool {
+	if f.Kind != rules.KindBreach || v == nil || !v.Residual.OK || math.Abs(v.Z) > ordinaryZ || v.LooksLike != "" && v.LooksLike != rules.CauseGenuine {
+		return false
+	}
+	foreseen := f.Return.Float() - v.Residual.V
+	return lines.WatchLow.OK && foreseen < lines.WatchLow.V || lines.WatchHigh.OK && foreseen > lines.WatchHigh.V
+}
+
+// ordinaryZ is the watch line of 1 % under a t5 scaled to unit variance.
+const ordinaryZ = 3.123
+
+// fillView is the package's, with a word on a reference that its followers agree is wrong.
+func (w *worker) fillView(f *FlagRow, date rules.Date, h *hit) {
+	v := h.view
+	if v == nil {
+		w.noteReference(f)
+		return
+	}
+	fillView(f, v)
+	for k, l := range w.lanes {
+		if l.gauge.Range.Name == f.Range && explained(f, v, &h.verdicts[k].Lines) {
+			f.LooksLike, f.Share, f.Implied = rules.CauseMarket, rules.Num{}, rules.Num{}
+		}
 	}
 	if n := w.j.weighed.days[date].followers(v.Member); n > 0 {
 		note := rules.Counted(n, "series") + " held against it agree that it is wrong"

@@ -31,12 +31,15 @@ func (p *Pool) conclude(w *weighing, r *Result) {
 		v.Use, st.isOut = Out, true
 	}
 	st.chain.next()
-	if v.Kind != "" || v.Out || far {
+	if v.Kind != "" || v.Out || far || math.Abs(lk.ownZ) > narrowZ {
 		p.describe(i, lk, &v)
 		p.shares(w, lk, &v)
 		r.Views = append(r.Views, v)
 	}
 }
+
+// narrowZ is from where a value may lie beyond a range of the caller's, which may be narrower than the pool's own past says.
+const narrowZ = 2.5
 
 // logOdds is the logarithm of the odds of an error against anything else.
 func (w *weighing) logOdds() float64 {
