@@ -50,21 +50,28 @@ func invention(kind string, seed uint64) (i drill.Invention, err error) {
 // passes and drills on it.
 func funds(out string, i drill.Invention) error {
 	b := drill.Invent(i)
-	inbox := filepath.Join(out, "inbox")
-	if err := os.MkdirAll(inbox, 0o755); err != nil {
+	if err := writeSetup(out, b); err != nil {
+		return err
+	}
+	for t, date := range b.Dates {
+		for _, feed := range []string{drill.BenchFeed, drill.FundsFeed} {
+			text, _ := b.Text(feed, t, t+1)
+			if err := os.WriteFile(filepath.Join(out, "inbox", fmt.Sprintf("%s-%s.csv", feed, date)), []byte(text), 0o644); err != nil {
+				return err
+			}
+		}
+	}
+	return nil
+}
+
+// writeSetup writes the configuration, register and events of a book, and makes its inbox.
+func writeSetup(out string, b *drill.Book) error {
+	if err := os.MkdirAll(filepath.Join(out, "inbox"), 0o755); err != nil {
 		return err
 	}
 	for name, text := range map[string]string{"strayd.yaml": drill.InventedConfig, "series.csv": b.RegisterText(), "events.csv": b.EventsText()} {
 		if err := os.WriteFile(filepath.Join(out, name), []byte(text), 0o644); err != nil {
 			return err
-		}
-	}
-	for t, date := range b.Dates {
-		for _, feed := range []string{drill.BenchFeed, drill.FundsFeed} {
-			text, _ := b.Text(feed, t, t+1)
-			if err := os.WriteFile(filepath.Join(inbox, fmt.Sprintf("%s-%s.csv", feed, date)), []byte(text), 0o644); err != nil {
-				return err
-			}
 		}
 	}
 	return nil

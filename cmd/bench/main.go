@@ -18,6 +18,8 @@ type bench struct {
 	program string
 	runs    int
 	scale   float64
+	seed    uint64 // of the first book of funds
+	seeds   int    // books of funds that a drill goes through
 }
 
 func main() {
@@ -29,10 +31,11 @@ func main() {
 	flag.Float64Var(&b.scale, "scale", 1, "share of the series of every book")
 	kind := flag.String("book", "", "write a `BOOK` as files and end: funds, or funds-fx with currencies, or funds-index over the open index data")
 	out := flag.String("out", "", "write the book into this `FOLDER`")
-	seed := flag.Uint64("seed", 1, "`NUMBER` that fixes the book")
+	flag.Uint64Var(&b.seed, "seed", 1, "`NUMBER` that fixes the book, and the first of a drill")
+	flag.IntVar(&b.seeds, "seeds", 8, "books of a drill")
 	flag.Parse()
 	if *kind != "" {
-		if err := writeBook(*kind, *out, *seed); err != nil {
+		if err := writeBook(*kind, *out, b.seed); err != nil {
 			fmt.Fprintln(os.Stderr, "bench:", err)
 			os.Exit(1)
 		}

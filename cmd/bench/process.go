@@ -65,18 +65,24 @@ func (d *desk) empty() error {
 
 // run runs one command to its end.
 func (d *desk) run(args ...string) (usage, error) {
+	_, u, err := d.output(args...)
+	return u, err
+}
+
+// output runs one command to its end and gives what it printed.
+func (d *desk) output(args ...string) (string, usage, error) {
 	cmd := exec.Command(d.bench.program, args...)
 	cmd.Dir = d.dir
-	var errs strings.Builder
-	cmd.Stderr = &errs
+	var out, errs strings.Builder
+	cmd.Stdout, cmd.Stderr = &out, &errs
 	start := time.Now()
 	err := cmd.Run()
 	wall := time.Since(start)
 	if err != nil {
-		return usage{}, fmt.Errorf("strayd %s: %w\n%s", strings.Join(args, " "), err, errs.String())
+		return "", usage{}, fmt.Errorf("strayd %s: %w\n%s", strings.Join(args, " "), err, errs.String())
 	}
 	peak, written := resources(cmd.ProcessState)
-	return usage{wall, cmd.ProcessState.UserTime() + cmd.ProcessState.SystemTime(), peak, written}, nil
+	return out.String(), usage{wall, cmd.ProcessState.UserTime() + cmd.ProcessState.SystemTime(), peak, written}, nil
 }
 
 // keep sets the ledger aside under a name; back puts a copy of it in place, written out and in the cache.

@@ -28,6 +28,7 @@ func rowList() []row {
 		{"commands", (*bench).commands},
 		{"rerun", (*bench).rerun},
 		{"age", (*bench).age},
+		{"drill", (*bench).drills},
 	}
 }
 

@@ -27,6 +27,7 @@ type drillOptions struct {
 	gap, most      int
 	kinds, only    []string
 	format, folder string
+	plants         string // file for the list of every plant
 
 	chosen   []drill.Kind
 	patterns []rules.Pattern
@@ -59,6 +60,7 @@ Kinds: ` + wrapped(drillKinds(), 20) + `
 	s.StringSliceVar(&o.kinds, "kinds", nil, "only these `KINDS`, separated by commas")
 	s.StringSliceVar(&o.only, "for", nil, "only these `GROUPS`, series or globs of series")
 	s.StringVar(&o.folder, "folder", "", "put the copies below this `FOLDER` rather than in the system's")
+	s.StringVar(&o.plants, "plants", "", "also list every plant and what became of it, as CSV, into `FILE`")
 	s.StringVar(&o.format, "format", "table", "`FORMAT`: table, csv or json")
 	return cmd
 }
@@ -143,6 +145,11 @@ func (a *app) drill(o *drillOptions) (err error) {
 	promises, err := promisesOf(s, b)
 	if err != nil {
 		return err
+	}
+	if o.plants != "" {
+		if err := d.listPlants(o.plants); err != nil {
+			return err
+		}
 	}
 	return d.print(promises)
 }
