@@ -65,10 +65,19 @@ type scorer struct {
 	flags []Flag
 	by    [][]int          // by series of the book: indexes of flags, by date
 	feeds map[string][]int // flags about no series
+	// refused says on which dates a file of a feed was refused: flags on series of it are then about the file that was sent again.
+	refused map[fileKey]bool
+}
+
+// fileKey is a feed on a date.
+type fileKey struct {
+	feed string
+	date rules.Date
 }
 
 func newScorer(b *Book, flags []Flag) *scorer {
-	s := &scorer{book: b, at: map[rules.Date]int{}, index: map[string]int{}, by: make([][]int, len(b.Series)), feeds: map[string][]int{}}
+	s := &scorer{book: b, at: map[rules.Date]int{}, index: map[string]int{}, by: make([][]int, len(b.Series)), feeds: map[string][]int{},
+		refused: map[fileKey]bool{}}
 	for t, d := range b.Dates {
 		s.at[d] = t
 	}
@@ -83,6 +92,7 @@ func newScorer(b *Book, flags []Flag) *scorer {
 			s.by[i] = append(s.by[i], n)
 		} else if f.Series == "" {
 			s.feeds[f.Feed] = append(s.feeds[f.Feed], n)
+			s.refused[fileKey{f.Feed, f.Date}] = s.refused[fileKey{f.Feed, f.Date}] || f.Kind == rules.KindRefused
 		}
 	}
 	return s
@@ -166,7 +176,7 @@ func (s *scorer) counts(p *Plant, f *Flag) bool {
 	case rules.KindMissing, rules.KindLate, rules.KindRefused:
 		return p.Series < 0
 	}
-	return natureOf(p.Kind).scope != fileItself
+	return p.Series >= 0 || natureOf(p.Kind).scope == wholeFeed && !s.refused[fileKey{p.Feed, f.Date}]
 }
 
 // count is how many flags of a list lie between two dates.

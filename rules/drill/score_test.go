@@ -66,6 +66,8 @@ func TestOutcomesByHand(t *testing.T) {
 		"file refused":                       {file(X100File), []Flag{flag("", 105, 105, rules.KindRefused, rules.CauseX100)}, true, true, Right, 1, 0},
 		"file taken, rows flagged": {file(X100File), []Flag{flag("a", 105, 105, rules.KindBreach, rules.CauseX100),
 			flag("b", 105, 105, rules.KindBreach, rules.CauseX100)}, true, true, Right, 2, 0},
+		"file refused, and what was sent again": {file(X100File), []Flag{flag("", 105, 105, rules.KindRefused, rules.CauseX100),
+			flag("b", 105, 105, rules.KindDoubtful, rules.CauseZero)}, true, true, Right, 1, 0},
 		"no file, late":      {file(MissingFile), []Flag{flag("", 105, 105, rules.KindLate, "")}, true, true, Unnamed, 1, 0},
 		"no file, only rows": {plant: file(MissingFile), flags: []Flag{flag("a", 105, 105, rules.KindBreach, "")}},
 		"wrong benchmark, and a fund": {Plant{Kind: ReferenceBad, Series: 3, Partner: -1, Feed: "indices", At: 5},
