@@ -135,7 +135,7 @@ func goldenNews(series string) map[string]rules.News {
 	third.Series, third.Ref = "cedar", 23
 	odd := looking(breachOf("elm", 24), rules.CauseSign)
 	still := looking(breachOf(series, 25), rules.CauseZero)
-	still.Kind, still.Return, still.Used, still.Note = rules.KindStale, 0, 0, "log odds of an error 3.2, doubt begins at 0.4"
+	still.Kind, still.Return, still.Used, still.Note = rules.KindStale, 0, 0, "odds of an error 25 to 1, doubt begins at 1 to 2"
 	return map[string]rules.News{
 		"looks":    newsOf(looking(breachOf(series, 12), rules.CauseMissed)),
 		"crowded":  newsOf(looking(breachOf(series, 12), rules.CauseX100), limitOf(series, 13), restatedOf(series, 14)),

@@ -67,3 +67,16 @@ func Counted(n int, noun string) string {
 
 // Day writes a date with its weekday: "Fri 2026-03-13".
 func (d Date) Day() string { return d.Time().Format("Mon 2006-01-02") }
+
+// Odds says natural log odds in words: "18 to 1", "1 to 3"; "over 1,000 to 1" at most.
+func Odds(log float64) string {
+	ratio := math.Round(math.Exp(min(math.Abs(log), 10)))
+	size := Thousands(int(ratio))
+	if ratio > 1000 {
+		size = "over 1,000"
+	}
+	if log < 0 {
+		return "1 to " + size
+	}
+	return size + " to 1"
+}

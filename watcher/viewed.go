@@ -157,7 +157,7 @@ func fillView(f *FlagRow, v *causes.View) {
 // fillDoubt makes a flag of a value inside its line. The range that it lies farthest out in says what was expected.
 func (w *worker) fillDoubt(f *FlagRow, h *hit) {
 	f.Kind = h.view.Kind
-	f.Note = fmt.Sprintf("log odds of an error %.1f, doubt begins at %.1f", h.view.LogOdds, h.view.Line)
+	f.Note = fmt.Sprintf("odds of an error %s, doubt begins at %s", rules.Odds(h.view.LogOdds), rules.Odds(h.view.Line))
 	farthest := -1
 	for k := range h.verdicts {
 		v := &h.verdicts[k]

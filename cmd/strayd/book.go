@@ -20,7 +20,8 @@ feeds:
     due: {at: "19:30"}            # whole by then, or the feed is late
     unit: percent                 # 1.25 in the file is a return of 1.25 %
 series: series.csv                # who is in which group
-groups:
+events: events.csv                # distributions and splits that are known
+groups:                           # each fund is held against the median of its group
   - {name: equity}
   - {name: bond}
   - {name: cash}
@@ -85,6 +86,11 @@ func demoRegister() string {
 		fmt.Fprintf(&s, "%s,%s,%s\n", f.id, f.name, f.group)
 	}
 	return s.String()
+}
+
+// demoEvents are the events that are known: one distribution, in the week.
+func demoEvents() string {
+	return fmt.Sprintf("date,series,kind,amount\n%s,birch-income,distribution,0.039\n", newBook().week[3])
 }
 
 // heavy is a draw with tails heavier than normal and a deviation of about 1.
@@ -166,28 +172,37 @@ func (b *book) scenes() []scene {
 	nothing := func([]float64) {}
 	arrives(0, 18, 30, "An ordinary day.", b.file(b.week[0], nothing))
 	line(0)
-	arrives(1, 18, 30, "One row is a hundred times too large (planted).", b.file(b.week[1], func(v []float64) { v[b.at("cedar-growth")] = 128.4071 }))
+	right := 0.0
+	arrives(1, 18, 30, "One row is a hundred times too large (planted).", b.file(b.week[1], func(v []float64) {
+		right = math.Round(v[b.at("cedar-growth")]*1e4) / 1e4
+		v[b.at("cedar-growth")] = 100 * right
+	}))
 	line(1)
 	whole := b.file(b.week[2], nothing)
 	arrives(2, 18, 30, "The file breaks off in the middle of a row (planted).", whole[:len(whole)-len("hazel-reserve,0.0000\n")]+"hazel-res")
 	arrives(2, 18, 50, "It is sent again, whole.", whole)
 	line(2)
 	out = append(out, scene{at: clock(b.week[3], 19, 30), story: "The deadline passes and no file is there (planted).", due: b.week[3]})
-	arrives(3, 19, 50, "It comes; a distribution of 3.9 % is missing from one fund (planted).",
-		b.file(b.week[3], func(v []float64) { v[b.at("birch-income")] -= 3.9 }))
+	last := 0.0
+	arrives(3, 19, 50, "It comes; the distribution of 3.9 % that one fund paid today is missing (planted).",
+		b.file(b.week[3], func(v []float64) {
+			v[b.at("birch-income")] -= 3.9
+			last = v[b.at("alder-growth")]
+		}))
 	line(3)
 	storm := b.file(b.week[4], func(v []float64) {
 		for i, f := range b.funds {
-			if f.group == "equity" {
-				v[i] -= 6.5 * (0.7 + 0.08*float64(i))
-			}
-			if f.group == "bond" {
-				v[i] += 1.6
+			switch f.group {
+			case "equity":
+				v[i] -= 5.5 * f.slope
+			case "bond":
+				v[i] += 5 * f.slope
 			}
 		}
+		v[b.at("alder-growth")] = last
 	})
-	arrives(4, 18, 30, "Shares fall and bonds rise (planted); the sender also corrects Tuesday's row.",
-		storm+fmt.Sprintf("%s,cedar-growth,1.2841\n", b.week[1]))
+	arrives(4, 18, 30, "Shares fall and bonds rise, and one fund repeats yesterday's return (planted); the sender also corrects Tuesday's row.",
+		storm+fmt.Sprintf("%s,cedar-growth,%.4f\n", b.week[1], right))
 	line(4)
 	return out
 }

@@ -43,11 +43,10 @@ func (a *app) demo(folder string) error {
 		return err
 	}
 	a.configPath = filepath.Join(folder, "strayd.yaml")
-	if err := os.WriteFile(a.configPath, []byte(demoConfig), 0o644); err != nil {
-		return err
-	}
-	if err := os.WriteFile(filepath.Join(folder, "series.csv"), []byte(demoRegister()), 0o644); err != nil {
-		return err
+	for name, text := range map[string]string{"strayd.yaml": demoConfig, "series.csv": demoRegister(), "events.csv": demoEvents()} {
+		if err := os.WriteFile(filepath.Join(folder, name), []byte(text), 0o644); err != nil {
+			return err
+		}
 	}
 	c, err := a.load()
 	if err != nil {

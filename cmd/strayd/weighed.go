@@ -55,6 +55,6 @@ func (e *explained) explainWeighing(line func(name, format string, args ...any))
 		line("looks like", "%s (%s), a hypothesis", f.LooksLike.Words(), f.LooksLike)
 	}
 	if v := e.weighed.View; v != nil && v.Kind != "" {
-		line("doubt", "log odds of an error %.2f, doubt begins at %.2f", v.LogOdds, v.Line)
+		line("doubt", "odds of an error %s, doubt begins at %s (log odds %.2f and %.2f)", rules.Odds(v.LogOdds), rules.Odds(v.Line), v.LogOdds, v.Line)
 	}
 }
