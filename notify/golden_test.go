@@ -68,7 +68,7 @@ func limitOf(series string, ref uint64) rules.FlagNews {
 
 func restatedOf(series string, ref uint64) rules.FlagNews {
 	f := limitOf(series, ref)
-	f.Kind, f.Range, f.Low, f.High, f.Note = rules.KindRestated, "", rules.Num{}, rules.Num{}, "changed by -420 bp from 0.0008"
+	f.Kind, f.Range, f.Low, f.High, f.Note = rules.KindRestated, "", rules.Num{}, rules.Num{}, "changed by -420 bp from +8.00 bp"
 	return f
 }
 

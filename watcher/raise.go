@@ -144,7 +144,7 @@ func (w *worker) amend(f *FlagRow, kind rules.Kind, out *outcome) {
 		if old.Last != nil && !old.Standing.Asks() {
 			old.Standing, old.Last, old.Decided = rules.Reopened, nil, nil
 		}
-		old.Note = "restated to " + f.Return.String() + ", for which it would not be raised"
+		old.Note = "restated to " + rules.InPercent(f.Return.Float()) + ", for which it would not be raised"
 		out.flags = append(out.flags, &FlagRow{Flag: old, SeriesID: f.SeriesID})
 	}
 }
@@ -240,9 +240,9 @@ func (w *worker) fillLimit(f *FlagRow, h *hit) {
 	f.Low, f.High = rules.Some(r.Limit.Low.Float()), rules.Some(r.Limit.High.Float())
 }
 
-// RestatedNote says by how much a value changed: "changed by +12.3 bp from 0.0012".
+// RestatedNote says by how much a value changed: "changed by +12.3 bp from +0.12 %". The versions have it exactly.
 func RestatedNote(old, now rules.Units) string {
-	return fmt.Sprintf("changed by %s bp from %s", SignedBP(old, now), old)
+	return fmt.Sprintf("changed by %s bp from %s", SignedBP(old, now), rules.InPercent(old.Float()))
 }
 
 // SignedBP is the exact change from one return to another in basis points, with its sign.
