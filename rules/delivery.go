@@ -71,3 +71,9 @@ func (d *Delivery) Note() string {
 	return fmt.Sprintf("no value of %d of %d expected series: %s; ask the provider whether they come later; of those that ended, give the end in the register",
 		d.Missing.Count, d.Expected, &d.Missing)
 }
+
+// SkippedNote says that a date was passed over.
+func SkippedNote(absent *Naming) string {
+	return fmt.Sprintf("no file brought anything of the %d expected series: %s; ask the provider for the day; if it was a holiday, name it in the calendar",
+		absent.Count, absent)
+}

@@ -94,6 +94,9 @@ func (g *fileGate) completeness() (*rules.Refusal, error) {
 	if r := d.Refuse(); r != nil && files && !g.p.Released[g.sheet.File.SHA256] {
 		return r, nil
 	}
+	if err := g.skipped(before, came); err != nil {
+		return nil, err
+	}
 	if note := d.Note(); note != "" {
 		g.flags = append(g.flags, g.missing(last, note))
 	}

@@ -1,6 +1,7 @@
 package watcher
 
 import (
+	"maps"
 	"slices"
 	"time"
 
@@ -33,8 +34,8 @@ func (p *Pass) Deadline(f rules.Feed, date rules.Date, due time.Time) error {
 
 // lateStep is the step that raises a late flag; nil when the feed is whole, or when the flag is there already.
 func (p *Pass) lateStep(v View, f rules.Feed, date rules.Date, due time.Time) (*Batch, error) {
-	a, err := arrival(v, f.Name, date)
-	if err != nil {
+	a, err := arrival(v, &p.Settings, f.Name, date)
+	if err != nil || a == nil {
 		return nil, err
 	}
 	a.Due = due
@@ -57,8 +58,9 @@ func (p *Pass) lateStep(v View, f rules.Feed, date rules.Date, due time.Time) (*
 	return b, nil
 }
 
-// arrival is what a feed gave for a date, held against the series that it gave on its date before.
-func arrival(v View, feed string, date rules.Date) (*rules.Arrival, error) {
+// arrival is what a feed gave for a date, held against the series that it gave on its date before. It is nil when the date is none of the
+// business days of those, or lies outside their lives.
+func arrival(v View, s *rules.Settings, feed string, date rules.Date) (*rules.Arrival, error) {
 	names, err := v.Names()
 	if err != nil {
 		return nil, err
@@ -71,6 +73,13 @@ func arrival(v View, feed string, date rules.Date) (*rules.Arrival, error) {
 	expected, err := expectedOf(v, names, of, date)
 	if err != nil {
 		return nil, err
+	}
+	before := len(expected)
+	if len(s.Calendars)+len(s.Lives) > 0 {
+		maps.DeleteFunc(expected, func(id uint32, _ bool) bool { return !s.Expects(string(names.Name(id)), date) })
+	}
+	if before > 0 && len(expected) == 0 {
+		return nil, nil
 	}
 	for _, bl := range allBlocks(names.Len(), rules.NoDate) {
 		vals := make([]int64, bl.series)

@@ -220,3 +220,72 @@ func TestGateOfOrdinaryFiles(t *testing.T) {
 		}
 	}
 }
+
+// A day of which no file comes is flagged with the next file, once; a holiday of the calendar is not.
+func TestDayWithoutAFile(t *testing.T) {
+	b := newGated(5, 24, 90, 4)
+	for _, holiday := range []bool{false, true} {
+		d := newDesk(t)
+		if holiday {
+			d.settings.Calendar = "here"
+			d.settings.Calendars = map[string]*rules.Calendar{"here": rules.NewCalendar(0, []rules.Date{b.dates[80]}, nil)}
+		}
+		b.load(d, 70, 80)
+		since := len(d.store.batches)
+		d.give("funds", dayName(b.dates[81]), b.file(81, same))
+		d.give("funds", dayName(b.dates[82]), b.file(82, same))
+		want := 1
+		if holiday {
+			want = 0
+		}
+		if got := d.raised(since); len(got) != want || want == 1 && got[0] != "missing" {
+			t.Errorf("holiday %v: raised %v", holiday, got)
+		}
+		if holiday { // a file for the holiday is refused
+			since = len(d.store.batches)
+			d.give("funds", dayName(b.dates[80]), b.file(80, same))
+			if got := d.raised(since); len(got) != 1 || got[0] != "refused" {
+				t.Errorf("on the holiday: raised %v", got)
+			}
+		}
+	}
+}
+
+// A refused file is passed over until its content is released or the calendar changes; then it is taken.
+func TestRefusedFileIsTriedAgain(t *testing.T) {
+	b := newGated(6, 24, 90, 4)
+	bad := b.file(80, scaled(100))
+	saturday := b.dates[79] + 1
+	closed := b.file(80, same)
+	for i := range closed {
+		closed[i].date = saturday
+	}
+	for _, tt := range []struct {
+		name  string
+		rows  []entry
+		again func(d *desk)
+	}{
+		{"released", bad, func(d *desk) {
+			last := d.store.batches[len(d.store.batches)-1]
+			d.released = map[[32]byte]bool{last.File.File.SHA256: true}
+		}},
+		{"calendar", closed, func(d *desk) {
+			d.settings.Calendar = "open"
+			d.settings.Calendars = map[string]*rules.Calendar{"open": rules.NewCalendar(0b1111110, nil, nil)}
+		}},
+	} {
+		d := newDesk(t)
+		b.load(d, 70, 80)
+		d.give("funds", "a.csv", tt.rows)
+		d.give("funds", "a.csv", tt.rows)
+		if n := len(d.reports); d.reports[n-2].Fate != watcher.FateRefused || d.reports[n-1].Fate != watcher.FateSeen {
+			t.Errorf("%s: %v, %v", tt.name, d.reports[n-2], d.reports[n-1])
+		}
+		tt.again(d)
+		d.give("funds", "a.csv", tt.rows)
+		d.give("funds", "a.csv", tt.rows)
+		if n := len(d.reports); d.reports[n-2].Fate != watcher.FateAccepted || d.reports[n-1].Fate != watcher.FateSeen {
+			t.Errorf("%s: then %v, %v", tt.name, d.reports[n-2], d.reports[n-1])
+		}
+	}
+}

@@ -94,6 +94,9 @@ func (a *app) passOver(c *config.Config, l *ledger.Ledger, only string, settled 
 	row, err := p.Run(a.ctx)
 	bars.clear()
 	a.sayPass(row)
+	if err == nil && a.held == nil {
+		err = a.deadlines(c, l, p)
+	}
 	if err == nil && row.Refused > 0 {
 		return quiet{exitFailed}
 	}
