@@ -22,11 +22,10 @@ var groupTable = object{what: "keys: name at least", fields: []field{
 	{key: "release", shape: dueTable, doc: "The release that an open flag of this group blocks.",
 		at: in(func(g *rules.Group) any { g.Release = &rules.Due{}; return g.Release })},
 	{key: "four_eyes", initial: "false", shape: yes(), doc: "Whether a second person must sign a decision off.",
-		later: when("true", laterPeople), at: in(func(g *rules.Group) any { return &g.FourEyes })},
+		at: in(func(g *rules.Group) any { return &g.FourEyes })},
 }}
 
 const (
-	laterPeople = "checked now; decisions and sign-off come in a later version"
 	hard        = "limit" // the key beside which a range has none of its estimates
 	beyondLine  = "line"
 )

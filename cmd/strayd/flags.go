@@ -211,7 +211,7 @@ func (a *app) flagTable(v watcher.View, all bool, f *flagFilter, blocked *bool) 
 		if !f.takes(&g) {
 			return true
 		}
-		*blocked = *blocked || g.Standing.Asks()
+		*blocked = *blocked || g.AsksOn(f.today)
 		if n++; n == 1 {
 			fields(w, "ref", "date", "series", "kind", "return", "expected", "z", "how rare", "standing", "note")
 		}
