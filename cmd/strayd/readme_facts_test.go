@@ -86,7 +86,7 @@ func days(t *testing.T, s string) float64 {
 // What other programs read is in the README as the program has it.
 func TestReadmeNamesColumnsAndCommands(t *testing.T) {
 	text := readme(t)
-	for _, columns := range []string{flagColumns, rangeColumns} {
+	for _, columns := range []string{flagColumns, rangeColumns, drillColumns, plantColumns} {
 		if !strings.Contains(text, "`"+columns+"`") {
 			t.Errorf("README does not have the columns %s", columns)
 		}

@@ -98,7 +98,7 @@ func carryOut(t *testing.T, root string, words []string, out io.Writer) {
 		err = copyInto(words[len(words)-1], words[1:len(words)-1])
 	case words[0] != "strayd":
 		t.Fatalf("README has a command that the test does not know: %q", words)
-	case words[1] == "demo":
+	case words[1] == "demo" || strings.HasPrefix(strings.Join(words, " "), "strayd --config strayd-demo/"):
 		var here string
 		if here, err = os.Getwd(); err == nil {
 			t.Chdir(root)
