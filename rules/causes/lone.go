@@ -11,8 +11,8 @@ import (
 // can be millions of them, and they need no pool. What it can tell is little: a zero or a repeat where the decimals are fine, a slipped
 // point, a split, a spike that is taken back. Doubt begins at even odds. One goroutine at a time may use a Lone.
 type Lone struct {
-	pool *Pool
-	size []float64
+	pool         *Pool
+	size, sorted []float64 // room
 }
 
 // NewLone makes a Lone. It is about 20 KB: make one for each worker.
@@ -50,7 +50,9 @@ func (l *Lone) Weigh(past []rules.Units, before rules.Units, date rules.Date, u 
 	if v.Out {
 		v.Use = Out
 	}
-	p.shares(w, lk, &v)
+	if v.Kind != "" || v.Out || math.Abs(lk.z) > watchZ {
+		p.shares(w, lk, &v)
+	}
 	return v, odds > 1
 }
 
@@ -107,10 +109,10 @@ func (l *Lone) variance(past []rules.Units) (v float64, n int) {
 	}
 	l.size = size
 	n = len(size)
-	sorted := slices.Clone(size[:min(n, guard)])
-	slices.Sort(sorted)
-	s := scale{sorted: sorted}
-	bound := s.bound()
+	l.sorted = append(l.sorted[:0], size[:min(n, guard)]...)
+	slices.Sort(l.sorted)
+	bound := boundOf(l.sorted)
+	var s scale
 	for k, x := range size {
 		if bound > 0 {
 			x = min(x, bound)

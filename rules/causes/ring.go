@@ -92,12 +92,15 @@ func place(sorted []float64, x float64) int {
 	return low
 }
 
-// bound is where values are clipped: clipAt times 1.4826 median |e|, 0 for none while there are fewer than ten.
-func (s *scale) bound() float64 {
-	if len(s.sorted) < 10 {
+// bound is where values are clipped.
+func (s *scale) bound() float64 { return boundOf(s.sorted) }
+
+// boundOf is clipAt times 1.4826 median |e|; 0, for none, while there are fewer than ten.
+func boundOf(sorted []float64) float64 {
+	if len(sorted) < 10 {
 		return 0
 	}
-	return clipAt * stats.NormalMAD * s.sorted[len(s.sorted)/2]
+	return clipAt * stats.NormalMAD * sorted[len(sorted)/2]
 }
 
 // variance is a mixture of the mean squares over three spans, which follows clusters of volatility without a fit (Corsi 2009, Journal of
