@@ -36,7 +36,7 @@ func poolOf(b *drill.Book, doubtful float64) *causes.Pool {
 			at[s.Group] = len(groups)
 			groups = append(groups, s.Group)
 		}
-		m := causes.Member{ID: s.ID, Group: at[s.Group], FX: s.FX, Events: events[s.ID]}
+		m := causes.Member{ID: s.ID, Group: at[s.Group], FX: s.FX, Events: events[s.ID], Feed: s.Feed}
 		switch {
 		case s.Reference >= 0:
 			m.Reference = causes.Reference{Kind: causes.Series, Series: s.Reference}
@@ -68,7 +68,7 @@ func run(b *drill.Book, doubtful float64) []drill.Flag {
 func (f *flags) day(t int, r *causes.Result) {
 	for _, v := range r.Views {
 		kind := v.Kind
-		if breach := math.Abs(v.Z) > breachZ || math.Abs(v.OwnZ) > breachZ; breach && v.LooksLike != rules.CauseSpike {
+		if breach := math.Abs(v.Z) > breachZ || math.Abs(v.OwnZ) > breachZ; breach && v.LooksLike != rules.CauseSpike && v.LooksLike != rules.CauseShifted {
 			kind = rules.KindBreach
 		}
 		if kind != "" {

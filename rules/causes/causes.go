@@ -22,6 +22,7 @@ type Member struct {
 	Reference Reference
 	FX        int           // the member whose return is that of the foreign currency in the base, -1 for none
 	Events    []rules.Event // of this series, by date
+	Feed      string        // that its values come by, "" where not known: what comes by one feed is a day off together
 }
 
 // Reference is what a member's residual is taken against.

@@ -25,7 +25,7 @@ const (
 )
 
 // stays is the share that a cause carries into the next date.
-var stays = [runs]float64{0.5, 0.2, 0.5, 0.3, 0.3, 0.3, 0.8, 0.8, 0.8, 0.9, 0.8}
+var stays = [runs]float64{0.5, 0.2, 0.5, 0.3, 0.3, 0.3, 0.8, 0.8, 0.8, 0.95, 0.8}
 
 func persistent(c rules.Cause) int {
 	switch c {

@@ -109,7 +109,7 @@ const leastShown = 0.005
 // needed is the share above which a cause is named: half, and more where the name says that there is no better explanation.
 func needed(c rules.Cause) float64 {
 	if c == rules.CauseGenuine {
-		return 0.8
+		return 0.85
 	}
 	return 0.5
 }

@@ -65,14 +65,14 @@ func (l *Lone) look(past []rules.Units, before, u rules.Units) (ok bool) {
 	l.past(past, st)
 	*lk = look{u: u, x: u.Float(), places: decimals(u), m: math.NaN(), m1: math.NaN(), judged: true}
 	st.printed, st.lastPrinted, st.lastAt = before, before, p.t
-	variance, n := l.variance(past)
+	mean, variance, n := l.variance(past)
 	if n < leastSeen {
 		return false
 	}
 	p.marks(lk, st)
 	lk.own = max(math.Sqrt(variance*(1+1/float64(n))), leastDeviation, 0.29*lk.tick)
-	lk.s = lk.own
-	lk.z = lk.x / lk.s
+	lk.mean, lk.mu, lk.s = mean, mean, lk.own
+	lk.z = (lk.x - lk.mu) / lk.s
 	lk.ownZ = lk.z
 	return true
 }
@@ -99,33 +99,38 @@ func (l *Lone) past(past []rules.Units, st *state) {
 	}
 }
 
-// variance is that of a scale that has taken the values one by one, about 0, with bounds by the newest guard values.
-func (l *Lone) variance(past []rules.Units) (v float64, n int) {
+// variance gives mean and variance as a scale does that has taken the values one by one, with bounds by the newest guard values.
+func (l *Lone) variance(past []rules.Units) (mean, v float64, n int) {
 	size := l.size[:0]
 	for k := len(past) - 1; k >= 0 && len(size) < long; k-- {
 		if u := past[k]; u != rules.Missing {
-			size = append(size, math.Abs(u.Float()))
+			size = append(size, u.Float())
 		}
 	}
 	l.size = size
 	n = len(size)
-	l.sorted = append(l.sorted[:0], size[:min(n, guard)]...)
+	l.sorted = l.sorted[:0]
+	for _, x := range size[:min(n, guard)] {
+		l.sorted = append(l.sorted, math.Abs(x))
+	}
 	slices.Sort(l.sorted)
 	bound := boundOf(l.sorted)
 	var s scale
 	for k, x := range size {
 		if bound > 0 {
-			x = min(x, bound)
+			x = min(max(x, -bound), bound)
 		}
-		c := int64(math.RoundToEven(min(x, 1) * fine))
+		c := int64(math.RoundToEven(min(max(x, -1), 1) * fine))
 		for b, most := range boxes {
 			if k < most {
 				s.n[b]++
+				s.total[b] += c
 				s.square[b] += c * c
 			}
 		}
 	}
-	return s.variance(0), n
+	mean = s.mean()
+	return mean, s.variance(mean, 0), n
 }
 
 // run is how many of the newest values are zeros, or all equal, like u.
@@ -165,7 +170,7 @@ func (l *Lone) reversal(before rules.Units) float64 {
 	today := p.looks[0]
 	a := today
 	a.u, a.x, a.places, a.mark = before, before.Float(), decimals(before), markSeen
-	a.z = a.x / a.s
+	a.z = (a.x - a.mu) / a.s
 	a.ownZ, a.finer = a.z, int(a.places) > a.digits
 	if math.Abs(a.z) < 4 || math.Abs(today.z) < 2 {
 		return 0

@@ -16,7 +16,7 @@ type look struct {
 	traces    bool    // there is a residual to remember
 	judged    bool
 	mu, s     float64 // what is foreseen, and the deviation about it
-	own       float64 // deviation of the returns themselves
+	mean, own float64 // of the returns themselves: centre and deviation
 	z         float64 // (x - mu) / s
 	ownZ      float64
 	digits    int     // decimals that the series is written with
@@ -51,7 +51,7 @@ func (p *Pool) prepare(i int) {
 	p.marks(lk, st)
 	p.foresee(i, lk, st)
 	lk.judged = lk.s > 0 && (st.own.n[2] >= leastSeen || p.lends(i))
-	lk.z, lk.ownZ = (lk.x-lk.mu)/lk.s, lk.x/lk.own
+	lk.z, lk.ownZ = (lk.x-lk.mu)/lk.s, (lk.x-lk.mean)/lk.own
 }
 
 func (p *Pool) marks(lk *look, st *state) {
@@ -75,10 +75,11 @@ func (p *Pool) marks(lk *look, st *state) {
 //	s^2 = variance (1 + 1/n + (m - mean m)^2 / sum (m - mean m)^2)
 func (p *Pool) foresee(i int, lk *look, st *state) {
 	f := &st.fit
-	ownVar := st.own.variance(p.lent(i, false))
+	lk.mean = st.own.mean()
+	ownVar := st.own.variance(lk.mean, p.lent(i, false))
 	least := max(leastDeviation, lk.tick*0.29)
 	lk.own = max(math.Sqrt(ownVar), least)
-	lk.mu, lk.s = 0, lk.own
+	lk.mu, lk.s = lk.mean, lk.own
 	if lk.traces {
 		lk.mu = f.at(lk.m, lk.m1)
 	}
@@ -89,7 +90,7 @@ func (p *Pool) foresee(i int, lk *look, st *state) {
 	if st.rest.n[2] < leastSeen && f.n >= leastFit {
 		lent = ownVar * max(1-f.explains, 0.01)
 	}
-	v := st.rest.variance(lent)
+	v := st.rest.variance(0, lent)
 	if v == 0 {
 		v = ownVar
 	}

@@ -299,7 +299,7 @@ func (p *Pool) median(g int, of func(*state) *scale) float64 {
 	sizes := p.sizes[:0]
 	for _, i := range p.peers[g] {
 		if s := of(&p.states[i]); s.n[2] >= guard {
-			sizes = append(sizes, s.variance(0))
+			sizes = append(sizes, s.variance(s.mean(), 0))
 		}
 	}
 	p.sizes = sizes

@@ -30,6 +30,7 @@ type scale struct {
 	cut    [slots]int64   // clipped, in 1/fine
 	sorted []float64      // |raw| of the last guard dates, ascending
 	n      [3]int         // of the last short, guard and long dates
+	total  [3]int64
 	square [3]int64
 }
 
@@ -48,6 +49,7 @@ func (s *scale) expire(t int) {
 	for k, b := range boxes {
 		if at := (t - b - 1) & mask; s.raw[at] == s.raw[at] {
 			s.n[k]--
+			s.total[k] -= s.cut[at]
 			s.square[k] -= s.cut[at] * s.cut[at]
 		}
 	}
@@ -71,6 +73,7 @@ func (s *scale) take(t int, e, bound float64, full bool) {
 	s.raw[at], s.cut[at] = e, int64(math.RoundToEven(c*fine))
 	for k := range boxes {
 		s.n[k]++
+		s.total[k] += s.cut[at]
 		s.square[k] += s.cut[at] * s.cut[at]
 	}
 	i := place(s.sorted, math.Abs(e))
@@ -103,24 +106,40 @@ func boundOf(sorted []float64) float64 {
 	return clipAt * stats.NormalMAD * sorted[len(sorted)/2]
 }
 
-// variance is a mixture of the mean squares over three spans, which follows clusters of volatility without a fit (Corsi 2009, Journal of
-// Financial Econometrics 7:174-196); lent is the variance that a group lends while there are few.
-func (s *scale) variance(lent float64) float64 {
+// mean is that of the last long dates, 0 while there are fewer than leastSeen.
+func (s *scale) mean() float64 {
+	if s.n[2] < leastSeen {
+		return 0
+	}
+	return float64(s.total[2]) / (float64(s.n[2]) * fine)
+}
+
+// variance is a mixture of the mean squares about a centre over three spans, which follows clusters of volatility without a fit (Corsi
+// 2009, Journal of Financial Econometrics 7:174-196). lent is the variance that a group lends while there are few.
+func (s *scale) variance(centre, lent float64) float64 {
 	var v, weight float64
 	for k := range boxes {
 		if s.n[k] >= 10 || s.n[k] == s.n[2] && s.n[k] > 0 {
-			v += float64(mix[k] * (float64(s.square[k]) / float64(s.n[k])))
+			v += float64(mix[k] * s.meanSquare(k, centre))
 			weight += mix[k]
 		}
 	}
 	if weight == 0 {
 		return lent
 	}
-	v /= weight * fine * fine
+	v /= weight
 	if n := float64(s.n[2]); n < guard && lent > 0 {
 		v = (float64(n*v) + float64(10*lent)) / (n + 10)
 	}
 	return v
+}
+
+// meanSquare is the mean of (x - centre)^2 over a box.
+func (s *scale) meanSquare(k int, centre float64) float64 {
+	n := float64(s.n[k])
+	square := float64(s.square[k]) / (n * fine * fine)
+	mean := float64(s.total[k]) / (n * fine)
+	return max(square-float64(2*centre*mean)+float64(centre*centre), 0)
 }
 
 var mix = [3]float64{0.35, 0.35, 0.3}

@@ -88,23 +88,30 @@ func (p *Pool) shifted() bool {
 // repeated says that a member's value is yesterday's again.
 func (p *Pool) repeated(i int) bool { return p.looks[i].mark&(markRepeat|markZero) != 0 }
 
-// setAside reports the members whose values belong to another date, and holds them against nothing.
+// setAside reports the members whose values belong to another date, with all that came by the same feed, and holds them against nothing.
 func (p *Pool) setAside(r *Result) {
+	feeds := map[string]bool{}
 	for _, c := range p.contra {
 		if c.late <= 0 && c.wrong <= 0 {
 			continue
 		}
 		for _, i := range p.followers[c.benchmark] {
-			lk := &p.looks[i]
-			if lk.judged {
-				lk.elsewhere = true
-				p.states[i].isOut = true
-				r.Shifted = append(r.Shifted, i)
-				v := p.view(i, lk)
-				v.Causes = []rules.Share{{Cause: rules.CauseShifted, Share: 1}}
-				v.LooksLike, v.Share, v.Out, v.Use = rules.CauseShifted, 1, true, Out
-				r.Views = append(r.Views, v)
+			p.looks[i].elsewhere = p.looks[i].judged
+			if f := p.members[i].Feed; f != "" {
+				feeds[f] = true
 			}
 		}
+	}
+	for i := range p.looks {
+		lk := &p.looks[i]
+		if !lk.judged || !lk.elsewhere && !feeds[p.members[i].Feed] {
+			continue
+		}
+		lk.elsewhere, p.states[i].isOut = true, true
+		r.Shifted = append(r.Shifted, i)
+		v := p.view(i, lk)
+		v.Causes = []rules.Share{{Cause: rules.CauseShifted, Share: 1}}
+		v.LooksLike, v.Share, v.Out, v.Use = rules.CauseShifted, 1, true, Out
+		r.Views = append(r.Views, v)
 	}
 }

@@ -11,7 +11,7 @@ import (
 const (
 	priorX100       = 1e-4
 	priorX10000     = 1e-4
-	priorX10        = 1e-4
+	priorX10        = 7e-5
 	priorDiv100     = 1.5e-3
 	priorSign       = 1.2e-3
 	priorRepeat     = 1.5e-3
@@ -21,7 +21,7 @@ const (
 	priorDoubled    = 3e-5
 	priorSplit      = 5e-5
 	priorFX         = 1e-4
-	priorSwap       = 1e-3
+	priorSwap       = 1.5e-3
 	priorCumulative = 4e-4
 	priorShifted    = 5e-5
 	listedMissed    = 0.1 // on a listed date
