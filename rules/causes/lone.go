@@ -60,7 +60,7 @@ func (l *Lone) Weigh(past []rules.Units, before rules.Units, date rules.Date, u 
 func (l *Lone) look(past []rules.Units, before, u rules.Units) (ok bool) {
 	p := l.pool
 	lk, st := &p.looks[0], &p.states[0]
-	st.zeros, st.repeats, st.seen, st.unchanged = 0, 0, 0, 0
+	st.zeros, st.repeats, st.seen, st.unchanged = coincidence{}, coincidence{}, 0, 0
 	st.grid = newGrid()
 	l.past(past, st)
 	*lk = look{u: u, x: u.Float(), places: decimals(u), m: math.NaN(), m1: math.NaN(), judged: true}
@@ -79,7 +79,7 @@ func (l *Lone) look(past []rules.Units, before, u rules.Units) (ok bool) {
 
 // past counts zeros, repeats and decimals.
 func (l *Lone) past(past []rules.Units, st *state) {
-	last := rules.Missing
+	last, again := rules.Missing, false
 	for k, u := range past[max(0, len(past)-span):] {
 		if u == rules.Missing {
 			continue
@@ -87,11 +87,11 @@ func (l *Lone) past(past []rules.Units, st *state) {
 		st.seen++
 		switch {
 		case u == 0:
-			st.zeros++
+			st.zeros.count(true, last != 0, 1)
 		case u == last:
-			st.repeats++
+			st.repeats.count(true, !again, 1)
 		}
-		last = u
+		again, last = u == last, u
 		if k >= min(len(past), span)-guard {
 			st.grid.count[decimals(u)]++
 			st.grid.n++

@@ -62,11 +62,18 @@ func (p *Pool) marks(lk *look, st *state) {
 	lk.digits, lk.tick, lk.rare = d, tenth[d], min(finer, 0.05)
 	lk.finer = int(lk.places) > d
 	lk.mark = markSeen
+	latest := st.latest(p.t)
 	switch {
 	case lk.u == 0:
 		lk.mark |= markZero
-	case lk.u == st.latest(p.t):
+		if latest == 0 {
+			lk.mark |= markAgain
+		}
+	case lk.u == latest:
 		lk.mark |= markRepeat
+		if st.unchanged > 0 {
+			lk.mark |= markAgain
+		}
 	}
 }
 

@@ -229,7 +229,7 @@ func (p *Pool) close(d Day) {
 			}
 			h.is = false
 		}
-		st.remember(p.t, d.Values[i], lk.places)
+		st.remember(p.t, d.Values[i], lk)
 		st.yesterday = lk.x
 		if lk.x != lk.x {
 			continue

@@ -16,7 +16,8 @@ type state struct {
 	rest scale
 	grid grid
 
-	zeros, repeats, seen int // within span dates
+	zeros, repeats coincidence // within span dates
+	seen           int
 
 	printed, before rules.Units // of the last date and the one before it; Missing
 	lastPrinted     rules.Units // the newest value, however old
@@ -35,10 +36,23 @@ type state struct {
 	chain chain
 }
 
+// coincidence counts days on which something happened that may be an error, and the runs of such days.
+type coincidence struct{ days, runs int }
+
+func (c *coincidence) count(day, run bool, by int) {
+	if day {
+		c.days += by
+	}
+	if run {
+		c.runs += by
+	}
+}
+
 // marks of a date
 const (
 	markZero = 1 << iota
 	markRepeat
+	markAgain // the second or later of a run of either
 	markSeen
 	markOut
 )
@@ -76,12 +90,9 @@ func (st *state) count(mark uint8, by int) {
 	if mark&markSeen != 0 {
 		st.seen += by
 	}
-	if mark&markZero != 0 {
-		st.zeros += by
-	}
-	if mark&markRepeat != 0 {
-		st.repeats += by
-	}
+	first := mark&markAgain == 0
+	st.zeros.count(mark&markZero != 0, mark&markZero != 0 && first, by)
+	st.repeats.count(mark&markRepeat != 0, mark&markRepeat != 0 && first, by)
 }
 
 // enter takes a value into the windows of date t.
@@ -93,24 +104,25 @@ func (st *state) enter(t int, lk *look) {
 	if lk.hasRef {
 		st.rest.take(t, lk.x-lk.mu, st.rest.bound(), lk.full)
 	}
-	st.mark[at] = lk.mark
-	st.count(lk.mark, 1)
 }
 
 // leaveOut notes that the value of date t does not enter.
 func (st *state) leaveOut(t int, m float64) {
 	st.ref[t&mask] = m
-	st.mark[t&mask] = markOut
+	st.mark[t&mask] |= markOut
 	st.lately++
 }
 
-// remember keeps the printed value for tomorrow's comparisons.
-func (st *state) remember(t int, u rules.Units, d uint8) {
+// remember keeps the printed value for the comparisons to come. Coincidences count whatever was concluded of them: a series that stands
+// still by nature must be able to show it.
+func (st *state) remember(t int, u rules.Units, lk *look) {
 	st.before, st.printed = st.printed, u
 	if u == rules.Missing {
 		return
 	}
-	st.grid.take(t, d)
+	st.grid.take(t, lk.places)
+	st.mark[t&mask] |= lk.mark
+	st.count(lk.mark, 1)
 	if u == st.lastPrinted {
 		st.unchanged = min(st.unchanged+1, 10)
 	} else {

@@ -98,22 +98,35 @@ func (p *Pool) ordinary(i int) float64 {
 	lk, st := &p.looks[i], &p.states[i]
 	like := p.bell(i).cell(lk.x, lk.width(), lk.mu, lk.s)
 	switch {
-	case lk.u == 0:
-		like += beyondChance(st.zeros, st.seen, lk.tick, lk.own)
+	case lk.mark&markZero != 0:
+		like += natural(st.zeros, lk.mark&markAgain != 0, st.seen, 0.49*lk.tick/lk.own)
 	case lk.mark&markRepeat != 0:
-		like += beyondChance(st.repeats, st.seen, lk.tick, lk.own)
+		like += natural(st.repeats, lk.mark&markAgain != 0, st.seen, 0.32*lk.tick/lk.own)
 	}
 	return max(like, 1e-300)
 }
 
-// beyondChance is the share of days that have a coincidence beyond what the tick alone brings about, less two deviations of that count.
-// Two draws of a t5 fall into one cell with probability 0.32 tick/deviation, a draw into the cell of zero with 0.49 tick/deviation.
-func beyondChance(count, of int, tick, own float64) float64 {
-	if count < 3 {
+// leastRuns is how many runs show that zeros or repeats are a series' nature. One run of a stale price does not.
+const leastRuns = 3
+
+// natural is the probability of one more coincidence beyond what the tick brings about: that a run goes on, or that one begins. What
+// chance may bring about is taken off with two deviations of its count. Two draws of a t5 fall into one cell with probability 0.32
+// tick/deviation, a draw into the cell of zero with 0.49 tick/deviation.
+func natural(c coincidence, again bool, of int, chance float64) float64 {
+	if c.runs < leastRuns {
 		return 0
 	}
-	chance := float64(of) * min(0.49*tick/own, 1)
-	return max(0, float64(count)-chance-2*math.Sqrt(chance+1)) / float64(of)
+	begins := beyond(c.runs, of, chance)
+	if !again {
+		return begins
+	}
+	return max(begins, beyond(c.days-c.runs, c.days, chance))
+}
+
+// beyond is the share of days with a coincidence, beyond chance.
+func beyond(count, of int, chance float64) float64 {
+	expected := float64(of) * min(chance, 1)
+	return max(0, float64(count)-expected-2*math.Sqrt(expected+1)) / float64(of)
 }
 
 // genuine is the probability of the printed value if something happened: half as wide moves of the series' own size, half of its residual.
