@@ -155,6 +155,16 @@ func (d *desk) raised(since int) (out []string) {
 	return out
 }
 
+// reasons are why files were refused.
+func (d *desk) reasons() (out []string) {
+	for _, r := range d.reports {
+		if r.Fate == watcher.FateRefused {
+			out = append(out, r.Why)
+		}
+	}
+	return out
+}
+
 // Each planted fault of a whole file raises one flag of the right kind, that says what it looks like; nothing of a refused file is kept.
 func TestGateOfAFile(t *testing.T) {
 	b := newGated(1, 60, 90, 4)

@@ -1,9 +1,11 @@
 package watcher
 
 import (
+	"math"
 	"slices"
 
 	"strayd/rules"
+	"strayd/stats"
 )
 
 const (
@@ -11,6 +13,8 @@ const (
 	shiftDates, shiftSeries = 120, 256
 	// openDays is how many business days before the date are looked through for where a shift can have begun.
 	openDays = 10
+	// oddSize is how many times its usual size a reference must be to be out of line itself: about seven deviations.
+	oddSize = 10
 )
 
 // follow is one series of the file with a reference that it does not bring itself.
@@ -38,6 +42,7 @@ func (g *fileGate) shift() (*rules.Refusal, error) {
 	for _, p := range pairs {
 		g.overlay(grid.of(p.series), last, p.series)
 	}
+	g.j.odd = grid.odd(pairs)
 	before := grid.newestWith(pairs)
 	if before < 0 || !g.opening(grid, pairs, last) {
 		return nil, nil
@@ -169,6 +174,25 @@ func (g *grid) add(id uint32) error {
 }
 
 func (g *grid) of(id uint32) []int64 { return g.rows[id] }
+
+// odd lists the references whose value on the last date is many times their usual size.
+func (g *grid) odd(pairs []follow) map[uint32]bool {
+	out := map[uint32]bool{}
+	for _, p := range pairs {
+		row := g.of(p.reference)
+		now, past := row[len(row)-1], row[:len(row)-1]
+		var sizes []float64
+		for _, v := range past[max(0, len(past)-rules.TypicalDates):] {
+			if v != Missing64 {
+				sizes = append(sizes, math.Abs(float64(v)))
+			}
+		}
+		if usual, ok := stats.Median(sizes); ok && now != Missing64 && math.Abs(float64(now)) > oddSize*usual {
+			out[p.reference] = true
+		}
+	}
+	return out
+}
 
 // newestWith is the newest date before the last on which a reference has a value, -1 when there is none.
 func (g *grid) newestWith(pairs []follow) int {

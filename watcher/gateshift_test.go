@@ -93,7 +93,7 @@ func TestWrongIndexRefusesNoFile(t *testing.T) {
 		}
 		for _, s := range d.raised(since) {
 			if s != string(rules.KindMarketDay) {
-				t.Errorf("fault %d: raised %s", seed, s)
+				t.Errorf("fault %d: raised %s: %v", seed, s, d.reasons())
 			}
 		}
 	}

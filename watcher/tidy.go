@@ -24,7 +24,7 @@ func tidy(r *causes.Result) {
 const leastShifted = 3
 
 // offDate refuses a file whose values belong to another date, but for series in their first load. One that a person released is not
-// refused, and its values are not doubtful for that.
+// refused, and its values are not doubtful for that; nor is one whose reference is out of line itself.
 func (l *leader) offDate(date rules.Date, r *causes.Result) error {
 	var fresh []int
 	for _, m := range r.Shifted {
@@ -35,7 +35,8 @@ func (l *leader) offDate(date rules.Date, r *causes.Result) error {
 	if len(fresh) < leastShifted {
 		return nil
 	}
-	if l.released {
+	odd := slices.ContainsFunc(fresh, func(m int) bool { return l.j.odd[l.crew.series[l.crew.members[m].Reference.Series]] })
+	if l.released || odd {
 		for n := range r.Views {
 			if v := &r.Views[n]; slices.Contains(r.Shifted, v.Member) {
 				v.Kind, v.Out, v.Use = "", false, causes.AsIs
