@@ -146,7 +146,7 @@ func (g *Gauge) Gate(thin bool) (gate stats.Gate, ok bool) {
 		least = LeastJudged
 	}
 	switch {
-	case r.Limit != nil, r.Of == Residual, r.Tail.Name == "rank":
+	case r.Limit != nil, r.Tail.Name == "rank":
 		return nil, false
 	case r.Scale == Weighted: // it counts on beyond its window
 		return stats.WeightedGate(max(r.Window, LeastNormal), least, g.inner), true

@@ -132,7 +132,6 @@ func TestNotJudged(t *testing.T) {
 		{g, past(1, 2, 3, 4), "have 4 observations, need 5", true, false},
 		{g, &rules.Past{Dormant: true}, "dormant: no used value in the 20 business days before; judged again after 5 new observations", false, false},
 		{g, constant, "deviation is 0 over 30 observations; judged again once a value differs", false, false},
-		{gr, full, "residual ranges need a reference", true, false},
 	} {
 		v := c.g.Judge(bp(5000), c.p)
 		if v.Finding != rules.NotJudged || !strings.HasPrefix(v.Why, c.why) || v.Provisional {

@@ -58,8 +58,6 @@ func (g *Gauge) setTail(m *measure, n int) error {
 // standing says whether a past is enough to judge by, and why not.
 func (g *Gauge) standing(p *Past, v *Verdict) (Finding, string) {
 	switch {
-	case g.Range.Of == Residual:
-		return NotJudged, "residual ranges need a reference, which this version does not take yet"
 	case p.N == 0 && p.Dormant:
 		return NotJudged, fmt.Sprintf("dormant: no used value in the %d business days before; judged again after %d new observations", DormantAfter, LeastJudged)
 	case p.N < LeastJudged:

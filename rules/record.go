@@ -76,7 +76,16 @@ func (s *Settings) Identity(n int) string {
 		Groups  []Group // whom they judge
 		Members [32]byte
 		Days    *[32]byte `json:",omitempty"` // the calendars, where one is not plain: they say when a series is dormant
+		Against *[32]byte `json:",omitempty"` // of residuals: what they are taken against
 	}{Range: r}
+	if r.Of == Residual && r.Limit == nil {
+		against := Settings{References: s.References, Currencies: s.Currencies, Assigned: s.Assigned}
+		for _, g := range s.Groups {
+			against.Groups = append(against.Groups, Group{Name: g.Name, Series: ordered(g.Series), Reference: g.Reference})
+		}
+		sum := sha256.Sum256(encode(against))
+		by.Against = &sum
+	}
 	if len(s.Calendars) > 0 {
 		days := sha256.Sum256(encode(Settings{Calendar: s.Calendar, Calendars: s.Calendars, CalendarOf: s.CalendarOf}))
 		by.Days = &days

@@ -102,7 +102,7 @@ func (p *Pass) prepare(j *judging, v View) (err error) {
 			j.limits = append(j.limits, n)
 		}
 	}
-	j.concluded = ids[concludedKey]
+	j.concluded, j.residuals = ids[concludedKey], ids[residualKey]
 	j.width = p.taskWidth(j.names.Len())
 	return nil
 }

@@ -17,12 +17,20 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 	if err := w.merge(t, d, old, raw, fresh); err != nil {
 		return err
 	}
+	if err := w.residualsOn(t, d, old, fresh, out); err != nil {
+		return err
+	}
 	w.clearHits()
 	for _, l := range w.lanes {
-		l.rest(d.date, raw)
-		w.cand = l.candidates(fresh, w.cand[:0])
+		all, now := w.values(t, l)
+		l.rest(d.date, all)
+		w.cand = l.candidates(now, w.cand[:0])
 		for _, i := range w.cand {
-			if l.judges(int(i)) && l.windows.N(int(i)) >= rules.LeastJudged {
+			switch {
+			case !l.judges(int(i)) || l.windows.N(int(i)) < rules.LeastJudged:
+			case l.residual:
+				w.residualHit(i)
+			default:
 				w.hitAt(i, true)
 			}
 		}
@@ -41,7 +49,7 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 	for n := range w.hits {
 		w.judge(d.date, &w.hits[n])
 	}
-	w.tally(present, fresh, out)
+	w.tally(t, present, fresh, out)
 	w.raise(t, d, fresh, out)
 	for k, l := range w.lanes {
 		if err := w.take(t, d, old, k, l, out); err != nil {
@@ -138,6 +146,12 @@ func (w *worker) applies(rangeIndex, i int) bool {
 func (w *worker) judge(date rules.Date, h *hit) {
 	x := rules.Units(w.raw[h.at])
 	for _, l := range w.lanes {
+		if l.residual {
+			v := w.judgeResidual(l, h)
+			h.verdicts = append(h.verdicts, v)
+			h.flagged = h.flagged || (h.fresh || h.woken) && v.Finding == rules.Breach
+			continue
+		}
 		past := l.past(int(h.at))
 		if past.N < rules.LeastNormal && past.N >= rules.LeastJudged {
 			past.Group = w.j.scales.lent(l, h.group, date)
@@ -167,12 +181,16 @@ func (l *lane) judges(i int) bool { return l.applies == nil || l.applies[i] }
 
 // tally counts the verdicts of a date. Values that are no hits are inside every range that judges them, but for those whose window
 // holds too little to judge by.
-func (w *worker) tally(present int, fresh []int64, out *outcome) {
+func (w *worker) tally(t task, present int, fresh []int64, out *outcome) {
 	if present == 0 {
 		return
 	}
 	c := &out.counts
 	for k, l := range w.lanes {
+		if l.residual {
+			w.tallyResiduals(t, k, l, fresh, c)
+			continue
+		}
 		judged := present
 		if l.applies != nil {
 			judged = 0
@@ -238,26 +256,27 @@ func (w *worker) tallyHits(k int, l *lane, c *Counts) (other int) {
 
 // take lets one lane's windows take the used values of a date, and notes where they differ from what is stored.
 func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) error {
-	used := w.raw[:t.width]
+	all, _ := w.values(t, l)
+	used := all
 	var stored []int64
 	if old {
 		stored = w.held[:t.width]
-		copy(stored, used)
+		copy(stored, all)
 		if err := w.view.Patch(l.id, d.date, t.block, t.from, stored); err != nil {
 			return err
 		}
 	}
 	if len(w.hits) > 0 || w.hasOutsize(used) {
 		used = l.used[:t.width]
-		copy(used, w.raw)
+		copy(used, all)
 		for n := range w.hits {
-			if h := &w.hits[n]; h.flagged || h.out {
-				used[h.at] = int64(h.used(l, k, rules.Units(used[h.at])))
+			if h := &w.hits[n]; (h.flagged || h.out) && used[h.at] != Missing64 {
+				used[h.at] = int64(h.used(l, k, rules.Units(used[h.at]), rules.Units(w.raw[h.at])))
 			}
 		}
 		outsize(used)
 	}
-	w.patch(t, d, l, used, stored, out)
+	w.patch(t, d, l, all, used, stored, out)
 	if l.kept != nil {
 		return w.pushKept(t, l, d.date, used)
 	}
@@ -266,9 +285,15 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 }
 
 // used is what a lane's window takes of a flagged value.
-func (h *hit) used(l *lane, k int, x rules.Units) rules.Units {
-	if h.decided != nil {
-		return h.decided.Uses(x)
+func (h *hit) used(l *lane, k int, x, raw rules.Units) rules.Units {
+	limits := h.limits
+	if l.residual {
+		limits = nil // they are about returns
+	}
+	if h.decided != nil && h.decided.Uses(raw) == rules.Missing {
+		return rules.Missing
+	} else if h.decided != nil {
+		return x + h.decided.Uses(raw) - raw // of a residual: by as much as the return
 	}
 	if h.out && l.gauge.Range.Pending != rules.Keep {
 		return rules.Missing
@@ -276,7 +301,7 @@ func (h *hit) used(l *lane, k int, x rules.Units) rules.Units {
 	if !h.flagged {
 		return x
 	}
-	x, ok := rules.UsedValue(l.gauge.Range.Pending, x, &h.verdicts[k], h.limits)
+	x, ok := rules.UsedValue(l.gauge.Range.Pending, x, &h.verdicts[k], limits)
 	if !ok {
 		return rules.Missing
 	}
@@ -289,7 +314,7 @@ func (w *worker) hasOutsize(vals []int64) bool {
 }
 
 // patch notes the cells whose used value is not what the ledger would give: on a new date, what differs from the return.
-func (w *worker) patch(t task, d *day, l *lane, used, stored []int64, out *outcome) {
+func (w *worker) patch(t task, d *day, l *lane, all, used, stored []int64, out *outcome) {
 	u := UsedColumn{Range: l.id, Date: d.date, Block: t.block}
 	add := func(i int) {
 		u.Offsets = append(u.Offsets, uint16(t.from+i))
@@ -297,7 +322,7 @@ func (w *worker) patch(t task, d *day, l *lane, used, stored []int64, out *outco
 	}
 	if stored == nil {
 		w.eachFlagged(func(i int) {
-			if used[i] != w.raw[i] && rules.InWindow(rules.Units(w.raw[i])) {
+			if used[i] != all[i] && rules.InWindow(rules.Units(all[i])) {
 				add(i)
 			}
 		})

@@ -76,15 +76,33 @@ func (w *worker) expect(t task, on rules.Date, each func(Expected) error) error 
 				if past = l.past(i); past.N > 0 && l.between(i, l.last[i], on) > rules.DormantAfter {
 					past = &rules.Past{Dormant: true}
 				}
-				past.Group = w.j.scales.lent(l, w.group(i), on)
+				if !l.residual {
+					past.Group = w.j.scales.lent(l, w.group(i), on)
+				}
 			}
 			if !judges {
 				continue
 			}
-			if err := each(Expected{id, g.Range.Name, g.Expect(past), g.Range.Limit != nil}); err != nil {
+			if err := each(Expected{id, g.Range.Name, w.expected(g, past, id, i), g.Range.Limit != nil}); err != nil {
 				return err
 			}
 		}
 	}
 	return nil
+}
+
+// expected is what would be in range next. Of a residual range it is said for the residual: what the reference will do is not known.
+func (w *worker) expected(g *rules.Gauge, past *rules.Past, id string, i int) rules.Verdict {
+	if g.Range.Of != rules.Residual || g.Range.Limit != nil {
+		return g.Expect(past)
+	}
+	reference := w.j.members.Reference(id, w.group(i))
+	v := g.Expect(past)
+	switch {
+	case reference == "" || v.N == 0 && !past.Dormant:
+		v = rules.Verdict{Finding: rules.NotJudged, Why: WhyNoResidual(reference)}
+	case v.Finding != rules.NotJudged:
+		v.Why = join("of the residual: what "+reference+" foresees comes on top", v.Why)
+	}
+	return v
 }

@@ -21,6 +21,8 @@ type Row struct {
 	rules.Verdict
 	Used rules.Units // what the window holds of it now; Missing when left out, or under a limit
 
+	Residual rules.Num // of a residual range: what was judged; its lines are where they lie for the return, its used values are residuals
+
 	Step    uint32 // the step whose knowledge the verdict rests on
 	Window  []Used // filled on request only
 	Limited bool   // the range is a limit, which has no window
@@ -48,6 +50,8 @@ type recorded struct {
 	members *rules.Membership
 	gauges  []*rules.Gauge
 	ids     []uint16
+
+	residuals uint16 // number of what the ledger keeps of residuals, 0 where it keeps none
 }
 
 // NewReader reads the dictionary and prepares a reader.
@@ -207,7 +211,10 @@ func (r *Reader) judge(s *seriesPast, n int, v Version, set *recorded, k int, ro
 	if err != nil {
 		return err
 	}
-	w := s.window(n, v, g, used)
+	if g.Range.Of == rules.Residual {
+		return r.judgeResidual(s, n, v, set, g, used, row, windows)
+	}
+	w := s.window(n, v.Date, v.Step, g, used, nil)
 	w.past.Group, err = r.groupScale(set.ids[k], s.group, v)
 	if err != nil {
 		return err
@@ -244,17 +251,22 @@ func (w *pastWindow) list() []Used {
 	return out
 }
 
-// window gathers the used observations before the n-th date as they were known at the step of v: the last `window` ones (all of
-// them for the weighted scale), back to the first gap that made the series dormant.
-func (s *seriesPast) window(n int, v Version, g *rules.Gauge, used []Version) *pastWindow {
+// window gathers the used observations before the n-th date as they were known at a step: the last `window` ones (all of them for the
+// weighted scale), back to the first gap that made the series dormant. For a residual range, residuals are what is used where nothing else
+// is; else nil.
+func (s *seriesPast) window(n int, date rules.Date, step uint32, g *rules.Gauge, used, residuals []Version) *pastWindow {
 	w := &pastWindow{from: rules.NoDate, to: rules.NoDate}
 	most := g.Range.Window
 	if g.Range.Scale == rules.Weighted {
 		most = len(s.dates)
 	}
-	later := v.Date
+	later := date
 	for i := n - 1; i >= 0 && len(w.values) < most; i-- {
-		held, ok := s.latest(i, v.Step)
+		held, ok := s.latest(i, step)
+		if ok && g.Range.Of == rules.Residual {
+			held.Value = valueOn(residuals, held.Date, step)
+			ok = held.Value != Missing64
+		}
 		if !ok {
 			continue
 		}
@@ -262,7 +274,7 @@ func (s *seriesPast) window(n int, v Version, g *rules.Gauge, used []Version) *p
 			w.past.Dormant = len(w.values) == 0
 			break
 		}
-		if k := usedAt(used, held.Date, held.Value, v.Step); k != Missing64 {
+		if k := usedAt(used, held.Date, held.Value, step); k != Missing64 {
 			w.values = append(w.values, Used{held.Date, rules.Units(held.Value), rules.Units(k)})
 			later = held.Date
 		}

@@ -30,6 +30,7 @@ type judging struct {
 	nextRef    uint64
 	width      int // of the widest task
 	scales     *groupScales
+	residuals  uint16                 // number in the ledger of residuals
 	concluded  uint16                 // number in the ledger of what the pool concluded, 0 where it has none
 	weighed    *weighed               // nil where no series of the file is weighed together with others
 	decided    map[valueAt]*rules.Act // decisions of this step

@@ -12,14 +12,15 @@ const dormantDays = rules.DormantAfter
 
 // lane is the rolling state of one range for a run of neighbouring series.
 type lane struct {
-	index   int // of the range in the settings
-	id      uint16
-	gauge   *rules.Gauge
-	windows windows
-	last    []rules.Date      // newest used observation of each series, NoDate when none
-	dormant []bool            // the window started anew after a gap
-	applies []bool            // nil when the range judges every series
-	days    []*rules.Calendar // of each series; nil when all have every weekday
+	index    int // of the range in the settings
+	id       uint16
+	gauge    *rules.Gauge
+	windows  windows
+	last     []rules.Date      // newest used observation of each series, NoDate when none
+	dormant  []bool            // the window started anew after a gap
+	applies  []bool            // nil when the range judges every series
+	residual bool              // it judges what the reference leaves of a return
+	days     []*rules.Calendar // of each series; nil when all have every weekday
 
 	gate stats.Gate // nil where every value must be judged one by one
 	thin bool       // a window may hold fewer than rules.LeastNormal values
@@ -64,7 +65,8 @@ type loader interface {
 }
 
 func newLane(index int, id uint16, g *rules.Gauge, width int, groupless bool) *lane {
-	l := &lane{index: index, id: id, gauge: g, last: make([]rules.Date, width), dormant: make([]bool, width), used: make([]int64, width)}
+	l := &lane{index: index, id: id, gauge: g, last: make([]rules.Date, width), dormant: make([]bool, width), used: make([]int64, width),
+		residual: g.Range.Of == rules.Residual}
 	l.gate, _ = g.Gate(groupless) // what a group lends to a provisional verdict must be noted, so that one is judged
 	switch r := g.Range; {
 	case r.Scale == rules.Weighted:
@@ -81,7 +83,7 @@ func newLane(index int, id uint16, g *rules.Gauge, width int, groupless bool) *l
 
 // track has the lane keep up what a resident needs.
 func (l *lane) track() {
-	if _, ok := l.windows.(*stats.Panel); ok {
+	if _, ok := l.windows.(*stats.Panel); ok && !l.residual {
 		l.tracked, l.streak, l.leaving = true, make([]int32, len(l.last)), make([]int64, len(l.last))
 	}
 }

@@ -22,8 +22,9 @@ type weighed struct {
 // weighedDay is a date on which a file changes the value of a member.
 type weighedDay struct {
 	*causes.Result
-	fresh []bool // by member: judged now
-	woken []bool // by member: judged now although the file does not change it; nil for none
+	fresh     []bool  // by member: judged now
+	residuals []int64 // by member, Missing64 where there is none; nil where no range judges them
+	woken     []bool  // by member: judged now although the file does not change it; nil for none
 }
 
 // view is what was said of a member on a date, nil for nothing.
@@ -46,8 +47,8 @@ type leader struct {
 
 	j        *judging
 	view     View
-	released bool // a person released the file
-	blocks map[uint32][]*day // what the file changes
+	released bool              // a person released the file
+	blocks   map[uint32][]*day // what the file changes
 
 	raw    []int64 // of one block
 	values []rules.Units
@@ -178,6 +179,34 @@ func (l *leader) warm(before rules.Date) error {
 	return nil
 }
 
+// foreseeAll leads a pool through everything held, for the residuals of ranges that are new; nil where there is none of these.
+func (p *Pass) foreseeAll(j *judging, v View) (*weighed, error) {
+	any := false
+	for n, g := range j.gauges {
+		any = any || j.ids[n] != 0 && g.Range.Of == rules.Residual && g.Range.Limit == nil
+	}
+	crew := newCrew(j.names, j.members, p.Settings.Events)
+	if !any || crew == nil {
+		return nil, nil
+	}
+	l := newLeader(crew, j, v)
+	l.pool = newPool(crew.members, crew.groups, p.Settings.Doubtful)
+	if p.newWeigher != nil {
+		l.pool = p.newWeigher(crew.members, crew.groups, p.Settings.Doubtful)
+	}
+	out := &weighed{crew: crew, days: make(map[rules.Date]*weighedDay, len(j.held))}
+	for _, d := range j.held {
+		r, err := l.step(d)
+		if err != nil {
+			return nil, err
+		}
+		if r != nil {
+			out.days[d] = &weighedDay{Result: &causes.Result{}, fresh: make([]bool, len(crew.members)), residuals: l.residualsOf(r.Foreseen)}
+		}
+	}
+	return out, nil
+}
+
 // lead goes from the first changed date to the last, through all that are held between them.
 func (l *leader) lead(todo []rules.Date) (*weighed, error) {
 	out := &weighed{crew: l.crew, days: make(map[rules.Date]*weighedDay, len(todo))}
@@ -203,7 +232,12 @@ func (l *leader) lead(todo []rules.Date) (*weighed, error) {
 			if err := l.offDate(d, r); err != nil {
 				return nil, err
 			}
-			out.days[d] = &weighedDay{r, slices.Clone(l.fresh), l.wokenNow(d, r)}
+			day := &weighedDay{Result: r, fresh: slices.Clone(l.fresh), woken: l.wokenNow(d, r)}
+			if l.j.ofResiduals() {
+				day.residuals = l.residualsOf(r.Foreseen)
+			}
+			r.Foreseen, r.Reference = nil, nil
+			out.days[d] = day
 		}
 	}
 	out.conclude(l.j.held)

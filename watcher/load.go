@@ -71,6 +71,12 @@ func (w *worker) usedOf(t task, l *lane, date rules.Date) ([]int64, error) {
 		used = l.used[:t.width]
 		copy(used, w.raw)
 	}
+	if l.residual {
+		fillMissing(used)
+		if err := w.view.Patch(w.j.residuals, date, t.block, t.from, used); err != nil {
+			return nil, err
+		}
+	}
 	if err := w.view.Patch(l.id, date, t.block, t.from, used); err != nil {
 		return nil, err
 	}
@@ -216,7 +222,7 @@ func (w *worker) markDormant(t task, before rules.Date) error {
 		}
 		for _, l := range w.lanes {
 			if l.kept == nil {
-				l.dormant[i] = dormant && l.windows.N(i) == 0
+				l.dormant[i] = dormant && !l.residual && l.windows.N(i) == 0
 			}
 		}
 	}

@@ -51,7 +51,7 @@ func (w *worker) raiseWoken(t task, d *day, h *hit, out *outcome) {
 		return
 	}
 	for n := range about.flags {
-		if f := about.flags[n]; f.Kind != rules.KindRestated && f.Standing.Asks() {
+		if f := about.flags[n]; h.view != nil && f.Kind != rules.KindRestated && f.Standing.Asks() {
 			row := w.newFlag()
 			row.Flag, row.SeriesID = f, t.series(int(h.at))
 			relook(row, h.view, w.j.newest)
@@ -223,10 +223,16 @@ func (w *worker) fillBreach(f *FlagRow, k int, h *hit) {
 func (w *worker) fillLines(f *FlagRow, k int, h *hit) {
 	l, v := w.lanes[k], &h.verdicts[k]
 	f.Range = l.gauge.Range.Name
+	x := f.Return
+	if l.residual {
+		x = rules.Units(w.residuals.now[h.at])
+		shifted := towards(*v, (f.Return - x).Float())
+		v = &shifted
+	}
 	f.Low, f.High, f.Z, f.Tail, f.Log10 = v.Low, v.High, v.Z, v.Tail, v.Log10
 	f.Note = v.Why
 	f.Window, f.WindowTo = v.N, l.last[h.at]
-	f.Used = h.used(l, k, f.Return)
+	f.Used = h.used(l, k, x, f.Return)
 }
 
 func (w *worker) fillLimit(f *FlagRow, h *hit) {

@@ -52,7 +52,9 @@ func market(r *rand.Rand, dates int) (rows [][]entry) {
 }
 
 func marketSettings() rules.Settings {
-	s := rules.Settings{Doubtful: 0.002, Ranges: []rules.Range{ranged("own", func(*rules.Range) {})},
+	residual := func(r *rules.Range) { r.Of = rules.Residual }
+	s := rules.Settings{Doubtful: 0.002, Ranges: []rules.Range{ranged("own", nil), ranged("rest", residual),
+		ranged("weighted", func(r *rules.Range) { residual(r); r.Scale, r.Decay = rules.Weighted, 0.94 })},
 		Groups: []rules.Group{{Name: "one", Series: []string{"a*"}, Reference: "index"}, {Name: "two", Series: []string{"b*"}, Reference: "peers"}}}
 	s.Register([]rules.Series{{ID: "a03", FX: "eurusd", Start: rules.NoDate, End: rules.NoDate}})
 	s.Assigned = nil
@@ -91,6 +93,7 @@ func TestRealPoolInOneFileOrMany(t *testing.T) {
 				takeRows(t, m, rows[history:], days, marketSettings())
 			}
 			f, u := told(t, m), taken(t, m, rows)
+			newDefinition(t, m).flags()
 			if n == 0 {
 				flags, used = f, u
 				weighedAgain(t, m)
@@ -99,7 +102,7 @@ func TestRealPoolInOneFileOrMany(t *testing.T) {
 				if len(m.batches) != steps {
 					t.Error("a second look makes a step")
 				}
-				for _, kind := range []string{"breach", "doubtful", "market-day", "spike-reversal", "reference-wrong", "x100", "sign", "market {"} {
+				for _, kind := range []string{"breach", "doubtful", "market-day", "spike-reversal", "reference-wrong", "x100", "sign", "market {", "rest breach", "weighted breach"} {
 					if !strings.Contains(strings.Join(f, "\n"), kind) {
 						t.Errorf("seed %d: no flag says %q", seed, kind)
 					}
@@ -146,4 +149,32 @@ func weighedAgain(t *testing.T, m *memory) {
 	if held < 10 {
 		t.Errorf("only %d flags were weighed again", held)
 	}
+}
+
+// A residual range that comes into the settings later has the residuals that it would have had from the start, and its windows hold them.
+func TestResidualRangeComesLater(t *testing.T) {
+	rows := market(rand.New(rand.NewPCG(5, 3)), 200)
+	from := func(before rules.Settings) []string {
+		m := &memory{}
+		takeRows(t, m, rows[:180], 180, before)
+		takeRows(t, m, rows[180:], 10, marketSettings())
+		v, _ := m.View()
+		if err := watcher.Recheck(v, nil); err != nil {
+			t.Error(err)
+		}
+		var out []string
+		for _, line := range taken(t, m, rows) {
+			if strings.HasPrefix(line, "residuals ") {
+				out = append(out, line)
+			}
+		}
+		return out
+	}
+	plain := marketSettings()
+	plain.Ranges = plain.Ranges[:1]
+	want := from(marketSettings())
+	if len(want) < 180*10 {
+		t.Fatalf("only %d residuals", len(want))
+	}
+	differ(t, "later", from(plain), want)
 }

@@ -56,6 +56,7 @@ func (r *Reader) ready(parsed *rules.Settings) (*recorded, error) {
 	if s.members, err = rules.NewMembership(parsed); err != nil {
 		return nil, err
 	}
+	s.residuals = ids[residualKey]
 	for n, rng := range parsed.Ranges {
 		g, err := rules.NewGauge(rng)
 		if err != nil {

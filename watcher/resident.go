@@ -90,7 +90,7 @@ func (r *Resident) giveBack(names *Names) {
 
 // resume gives a lane the state that was kept for a task of one new date. It is false when there is none.
 func (w *worker) resume(t task, l *lane) bool {
-	if len(t.days) != 1 || w.behind || t.since != rules.NoDate {
+	if l.residual || len(t.days) != 1 || w.behind || t.since != rules.NoDate {
 		return false
 	}
 	k := w.j.kept[keptKey{l.id, t.block, t.from}]
@@ -173,7 +173,7 @@ func (w *worker) leave(t task) {
 			k = nil
 		case k != nil:
 			k.thin = l.thin
-		case plain && !w.replayed:
+		case plain && !w.replayed && !l.residual:
 			k = l.keepNew(t.width, panel)
 		}
 		w.keptNow = append(w.keptNow, keptTask{keptKey{l.id, t.block, t.from}, k})

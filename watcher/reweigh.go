@@ -74,7 +74,7 @@ func (r *Reader) leaderAt(series string, step uint32) (*leader, int, error) {
 	if err != nil {
 		return nil, 0, err
 	}
-	j.concluded = ids[concludedKey]
+	j.concluded, j.residuals = ids[concludedKey], ids[residualKey]
 	l := newLeader(crew, j, v)
 	l.pool = newPool(crew.members, crew.groups, set.Doubtful)
 	return l, int(member), nil

@@ -54,9 +54,11 @@ func (p *Pass) newRanges(v View, recorded *rules.Settings) (unknown, again []Ran
 	if err != nil {
 		return nil, nil, err
 	}
-	if known[concludedKey] == 0 {
-		known[concludedKey] = uint16(len(known) + 1)
-		unknown = append(unknown, RangeKey{known[concludedKey], concludedKey})
+	for _, key := range []string{concludedKey, residualKey} {
+		if known[key] == 0 {
+			known[key] = uint16(len(known) + 1)
+			unknown = append(unknown, RangeKey{known[key], key})
+		}
 	}
 	kept := map[string]bool{}
 	for n := range recorded.Ranges {
@@ -158,6 +160,9 @@ func (p *Pass) replayAll(v View, b *Batch, again []RangeKey) error {
 	}
 	p.only(j, again)
 	j.scales = newGroupScales(j, v, nil)
+	if j.weighed, err = p.foreseeAll(j, v); err != nil {
+		return err
+	}
 	outs, err := p.runTasks(j, tasks(allBlocks(names.Len(), j.held[0]), j.width))
 	if err != nil {
 		return err

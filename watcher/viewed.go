@@ -93,18 +93,13 @@ func (w *worker) usesNow(t task, date rules.Date, uses []int64) {
 	}
 }
 
-// noteReference notes on the flag of a value that the pool has no view of what its reference says.
-func (w *worker) noteReference(f *FlagRow) {
-	if w.j.weighed == nil {
+// noteReference notes on the flag of a value that the pool has no view of what its reference leaves unexplained, where that is kept.
+func (w *worker) noteReference(f *FlagRow, h *hit) {
+	if w.residuals == nil || w.residuals.now[h.at] == Missing64 {
 		return
 	}
-	m, ok := w.j.weighed.crew.at[f.SeriesID]
-	said := w.j.weighed.days[f.Date]
-	if !ok || said == nil || int(m) >= len(said.Foreseen) || !said.Foreseen[m].OK {
-		return
-	}
-	f.Reference, f.ReferenceReturn = w.j.weighed.crew.referenceName(int(m)), said.Reference[m]
-	f.Residual = rules.Some(f.Return.Float() - said.Foreseen[m].V)
+	group := w.group(int(h.at))
+	f.Reference, f.Residual = w.j.members.Reference(f.Series, group), rules.Some(rules.Units(w.residuals.now[h.at]).Float())
 }
 
 // explained says that a breach under a range of returns is the move of the reference: what the reference leaves of it is ordinary, and what
@@ -124,12 +119,12 @@ const ordinaryZ = 3.123
 func (w *worker) fillView(f *FlagRow, date rules.Date, h *hit) {
 	v := h.view
 	if v == nil {
-		w.noteReference(f)
+		w.noteReference(f, h)
 		return
 	}
 	fillView(f, v)
 	for k, l := range w.lanes {
-		if l.gauge.Range.Name == f.Range && explained(f, v, &h.verdicts[k].Lines) {
+		if l.gauge.Range.Name == f.Range && !l.residual && explained(f, v, &h.verdicts[k].Lines) {
 			f.LooksLike, f.Share, f.Implied = rules.CauseMarket, rules.Num{}, rules.Num{}
 		}
 	}

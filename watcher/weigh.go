@@ -109,14 +109,6 @@ func (c *crew) addEvents(names *Names, events []rules.Event) {
 	}
 }
 
-// referenceName is what the reference of a member is called.
-func (c *crew) referenceName(m int) string {
-	if r := c.members[m].Reference; r.Kind == causes.Series {
-		return c.members[r.Series].ID
-	}
-	return rules.PeersReference
-}
-
 // in lists the members of a run of series: from the first of them to before the last.
 func (c *crew) in(t task) (from, to int) {
 	from, _ = slices.BinarySearch(c.series, t.series(0))

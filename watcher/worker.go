@@ -51,6 +51,8 @@ type worker struct {
 	failed           error        // of looking up a flag
 	keptNow          []keptTask   // for the resident
 	stored           []*State     // by lane: what a recheck holds against the replay
+	residuals        *residuals   // nil where no lane judges them
+	task             task         // at hand
 }
 
 // hit is a series that is not plainly inside everything on the date at hand.
@@ -79,6 +81,9 @@ func newWorker(j *judging, v View) *worker {
 				l.track()
 			}
 			w.lanes = append(w.lanes, l)
+			if l.residual && w.residuals == nil {
+				w.residuals = newResiduals(j.width)
+			}
 		}
 	}
 	w.raw, w.fresh, w.held = make([]int64, j.width), make([]int64, j.width), make([]int64, j.width)
@@ -142,7 +147,7 @@ func next(days *[]*day, replay *[]rules.Date) (d *day, old bool) {
 
 // begin clears the worker for a task and looks up who its series are, where that matters.
 func (w *worker) begin(t task) {
-	w.ids, w.groups, w.replayed = w.ids[:0], w.groups[:0], false
+	w.task, w.ids, w.groups, w.replayed = t, w.ids[:0], w.groups[:0], false
 	for _, l := range w.lanes {
 		l.applies, l.days = nil, nil
 	}
