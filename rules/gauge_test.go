@@ -114,12 +114,6 @@ func TestGroupDeviation(t *testing.T) {
 func TestNotJudged(t *testing.T) {
 	g := gauge(t, nil)
 	constant := past(slices.Repeat([]float64{7}, 30)...)
-	residual := own(func(r *rules.Range) { r.Of = rules.Residual })
-	gr, err := rules.NewGauge(residual)
-	if err != nil {
-		t.Fatal(err)
-	}
-	full, _ := swing(30, 100)
 	for _, c := range []struct {
 		g    *rules.Gauge
 		p    *rules.Past
