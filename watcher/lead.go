@@ -360,8 +360,7 @@ func (l *leader) decided(date rules.Date, number uint32) error {
 		}
 		if about.decided != nil {
 			m := l.crew.at[series]
-			c, _ := about.conclusion(l.values[m], true)
-			l.know(causes.Known{Member: int(m), Use: c.Use, Value: c.Value})
+			l.know(known(int(m), about.decided, l.values[m]))
 		}
 	}
 	return nil
