@@ -9,10 +9,10 @@ import (
 // A whole file is a day off when the values of all series that are held against benchmarks fit the benchmarks' returns of another date: of
 // the date before, or, as shows a day later, of the date after.
 const (
-	priorShift  = 1e-4
-	shiftStays  = 0.95 // of a shifted file, on the next date
-	freeReturn  = -2.5 // log of what a return costs that may be anything: deviation of the followers' agreement over that of the benchmark
-	leastAgreed = 0.5  // share of the followers that must be better explained
+	priorShift = 1e-4
+	shiftStays = 0.98 // of a shifted file, on the next date
+	sentAgain  = 3.0  // what a value that is yesterday's again says for it
+	freeReturn = -3.0 // log of what a return costs that may be anything: deviation of the followers' agreement over that of the benchmark
 )
 
 // shift is what is known of a file that is a day off, from yesterday.
@@ -24,31 +24,34 @@ type shift struct {
 
 type shiftDay struct{ late, early, contradicted bool }
 
-// offDates is how much better a benchmark's followers fit its return of yesterday, and how much better their values of yesterday fit its
-// return of today.
-func (p *Pool) offDates(b int) (late, early float64) {
-	n, better := 0, 0
-	for _, i := range p.followers[b] {
+// offDates works out how much better a benchmark's followers fit its return of yesterday, and how much better their values of yesterday fit
+// its return of today.
+func (p *Pool) offDates(c *contradiction) {
+	m1 := p.states[c.benchmark].yesterday // also where it was thought to be wrong
+	if m1 != m1 {
+		return
+	}
+	for _, i := range p.followers[c.benchmark] {
 		lk, st := &p.looks[i], &p.states[i]
 		if !lk.hasRef || !lk.judged {
 			continue
 		}
-		if lk.m1 == lk.m1 {
-			n++
-			gain := p.gain(i, lk.x, lk.mu, st.fit.at(lk.m1, st.ref[(p.t-2)&mask]))
-			late += gain
-			if gain > 0 {
-				better++
-			}
-			if x := st.yesterday; x == x {
-				early += p.gain(i, x, st.fit.at(lk.m1, st.ref[(p.t-2)&mask]), st.fit.at(lk.m, lk.m1))
-			}
+		before := st.fit.at(m1, st.ref[(p.t-2)&mask])
+		gain := p.gain(i, lk.x, lk.mu, before)
+		if p.repeated(i) {
+			gain += sentAgain
+		}
+		c.late += gain
+		switch {
+		case gain > 1:
+			c.pro++
+		case gain < -1:
+			c.contra++
+		}
+		if x := st.yesterday; x == x {
+			c.early += p.gain(i, x, before, st.fit.at(lk.m, m1))
 		}
 	}
-	if n < leastFollowers || !p.shift.late && float64(better) < leastAgreed*float64(n) {
-		late = math.Inf(-1)
-	}
-	return late, early
 }
 
 // gain is the logarithm of how much better a return fits one centre than another.
@@ -64,10 +67,11 @@ func (p *Pool) shifted() bool {
 		prior = math.Log(shiftStays / (1 - shiftStays))
 	}
 	var late, rival, free, early float64
-	wrong := 0
+	wrong, pro, contra := 0, 0, 0
 	for _, c := range p.contra {
 		late += c.late
 		early += c.early
+		pro, contra = pro+c.pro, contra+c.contra
 		if c.wrong > 0 {
 			wrong++
 			rival += c.wrong + freeReturn
@@ -76,6 +80,9 @@ func (p *Pool) shifted() bool {
 		if c.late > 0 && p.repeated(c.benchmark) { // it is the benchmark that came a day late
 			late = math.Inf(-1)
 		}
+	}
+	if !p.shift.late && (pro < leastFollowers || pro < 2*contra) {
+		late = math.Inf(-1)
 	}
 	now := &p.shift.today
 	now.contradicted = wrong > 0

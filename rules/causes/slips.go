@@ -158,7 +158,7 @@ func (p *Pool) currency(w *weighing, lk *look, i int) {
 }
 
 // since is how often a return that is not of one day goes on from the value before, and how often it is that of the month so far.
-var since = [2]float64{0.85, 0.15}
+var since = [2]float64{0.98, 0.02}
 
 // runs weighs causes that last for days: a return since the start of something instead of since yesterday, and a value of the date before.
 func (p *Pool) runs(w *weighing, lk *look, st *state) {

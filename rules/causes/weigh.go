@@ -13,7 +13,7 @@ const (
 	priorX10000     = 1e-4
 	priorX10        = 7e-5
 	priorDiv100     = 1.5e-3
-	priorSign       = 1.2e-3
+	priorSign       = 1.4e-3
 	priorRepeat     = 1.5e-3
 	priorZero       = 1.2e-3
 	priorSpike      = 3e-4
@@ -25,7 +25,7 @@ const (
 	priorCumulative = 4e-4
 	priorShifted    = 5e-5
 	listedMissed    = 0.1 // on a listed date
-	listedDoubled   = 0.04
+	listedDoubled   = 0.05
 	listedSplit     = 0.2
 	offByOne        = 0.05 // factor of the above a business day beside it
 )

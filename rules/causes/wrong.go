@@ -26,6 +26,7 @@ type contradiction struct {
 	wrong                float64 // log odds that the benchmark is wrong
 	late                 float64 // log odds, before any prior, that their values are those of the date before
 	early                float64 // that those of yesterday belong to today
+	pro, contra          int     // followers that fit yesterday's return clearly better, and clearly worse
 }
 
 // contradictions finds the references that do not fit, and files that are a day off. The followers are then held against their own past.
@@ -41,7 +42,7 @@ func (p *Pool) contradictions(r *Result) {
 		}
 		c := contradiction{benchmark: b, followers: len(said)}
 		c.agreed, c.wrong = p.disagreement(said, p.looks[b].x)
-		c.late, c.early = p.offDates(b)
+		p.offDates(&c)
 		p.contra = append(p.contra, c)
 	}
 	if p.shifted() {
