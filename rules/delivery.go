@@ -77,3 +77,9 @@ func SkippedNote(absent *Naming) string {
 	return fmt.Sprintf("no file brought anything of the %d expected series: %s; ask the provider for the day; if it was a holiday, name it in the calendar",
 		absent.Count, absent)
 }
+
+// RefuseUnended is the refusal of a file that stops within its last line.
+func RefuseUnended(date Date) *Refusal {
+	return &Refusal{Date: date, Why: "its last line does not end, as those of the files before did: it breaks off",
+		Ask: "ask the provider to send it whole; accept the file if this is all there is"}
+}

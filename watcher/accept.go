@@ -42,6 +42,9 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	}
 	b.File = FileRow{Step: b.Step, File: sheet.File, Stamp: c.Stamp, FeedKey: p.FeedKey(f), Settings: j.settings, Outcome: Accepted,
 		Received: p.Now, First: sheet.First(), Last: sheet.Last()}
+	if sheet.Unended {
+		b.File.Reason = unended
+	}
 	b.Flags = append(b.Flags, missing...)
 	p.assemble(b, j, out)
 	b.File.Counts.Rows = sheet.Rows

@@ -76,6 +76,22 @@ func (g *fileGate) before(last rules.Date) (list []delivered, files bool) {
 	return list, false
 }
 
+// unended notes on an accepted file that its last line has no newline. endingFiles is how many files before, all with one, make that odd.
+const (
+	unended     = "no newline at the end"
+	endingFiles = 3
+)
+
+// ending refuses a file that stops within a line, as those before did not.
+func (g *fileGate) ending() (*rules.Refusal, error) {
+	taken := g.p.taken[g.feed.Name]
+	odd := slices.ContainsFunc(taken, func(r FileRow) bool { return r.Reason == unended })
+	if !g.sheet.Unended || odd || len(taken) < endingFiles {
+		return nil, nil
+	}
+	return rules.RefuseUnended(g.sheet.Last()), nil
+}
+
 // completeness looks for who is missing: a file that breaks off is refused, one that lacks series raises a flag with their names.
 func (g *fileGate) completeness() (*rules.Refusal, error) {
 	last := g.sheet.Last()

@@ -36,7 +36,7 @@ func (p *Pass) gate(j *judging, f rules.Feed, sheet *Sheet, blocks []block) ([]*
 	}
 	defer v.Close()
 	g := &fileGate{p: p, j: j, v: v, feed: f, sheet: sheet, blocks: blocks}
-	for _, look := range []func() (*rules.Refusal, error){g.dates, g.compare, g.shift, g.completeness} {
+	for _, look := range []func() (*rules.Refusal, error){g.ending, g.dates, g.compare, g.shift, g.completeness} {
 		r, err := look()
 		if err != nil {
 			return nil, err

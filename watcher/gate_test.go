@@ -98,6 +98,7 @@ type desk struct {
 	settings rules.Settings
 	released map[[32]byte]bool
 	reports  []watcher.FileReport
+	now      rules.Date // 0 for the newest date of the file
 }
 
 func newDesk(t *testing.T) *desk {
@@ -112,7 +113,7 @@ func ownRange() rules.Range {
 // give is one pass over one file.
 func (d *desk) give(feed, name string, rows []entry) {
 	d.t.Helper()
-	now := rows[len(rows)-1].date
+	now := max(d.now, rows[len(rows)-1].date)
 	for _, e := range rows {
 		now = max(now, e.date)
 	}
@@ -194,6 +195,7 @@ func TestGateOfAFile(t *testing.T) {
 		{"on a Saturday", other(whole, saturday), "refused"},
 		{"one row on a Saturday", append(slices.Clone(whole), entry{saturday, "s005", 1e12}), "refused"},
 		{"one row of years before", append(slices.Clone(whole), entry{b.dates[0] - 700, "s005", 1e12}), "refused"},
+		{"day and month exchanged", other(whole, b.dates[80]), ""}, // 28 April cannot be read otherwise
 		{"a new series", append(slices.Clone(whole), entry{b.dates[80], "t000", 1e12}), ""},
 	}
 	for _, tt := range tests {
@@ -297,5 +299,48 @@ func TestRefusedFileIsTriedAgain(t *testing.T) {
 		if n := len(d.reports); d.reports[n-2].Fate != watcher.FateAccepted || d.reports[n-1].Fate != watcher.FateSeen {
 			t.Errorf("%s: then %v, %v", tt.name, d.reports[n-2], d.reports[n-1])
 		}
+	}
+}
+
+// A file that was to be read with the month first: on the 4th of March 2025 it is for the 3rd of April. Checked by hand: both are business
+// days, and the newest held is Wednesday the 2nd of April.
+func TestDayAndMonthExchanged(t *testing.T) {
+	b := newGated(7, 24, 64, 4)
+	march, _ := rules.DateOf(2025, 3, 4)
+	april, _ := rules.DateOf(2025, 4, 3)
+	if b.dates[63] != april {
+		t.Fatalf("the book has %s", b.dates[63])
+	}
+	d := newDesk(t)
+	b.load(d, 50, 63)
+	since := len(d.store.batches)
+	rows := b.file(63, same)
+	for i := range rows {
+		rows[i].date = march
+	}
+	d.now = april
+	d.give("funds", dayName(april), rows)
+	if got := d.raised(since); len(got) != 1 || got[0] != "refused" || !strings.Contains(d.reasons()[0], "Thu 2025-04-03") {
+		t.Errorf("raised %v: %v", got, d.reasons())
+	}
+	d.give("funds", "correction-"+dayName(april), rows[:3]) // of few rows: meant
+	if got := d.raised(since); len(got) != 1 {
+		t.Errorf("then raised %v: %v", got, d.reasons())
+	}
+}
+
+// A history whose values are as they were held but for a hundredth of their size is refused.
+func TestWrongSizeOfManyDates(t *testing.T) {
+	b := newGated(8, 24, 90, 4)
+	d := newDesk(t)
+	b.load(d, 70, 75)
+	var rows []entry
+	for k := 75; k < 80; k++ {
+		rows = append(rows, b.file(k, scaled(0.01))...)
+	}
+	since := len(d.store.batches)
+	d.give("funds", "week.csv", rows)
+	if got := d.raised(since); len(got) != 1 || got[0] != "refused div100" {
+		t.Errorf("raised %v: %v", got, d.reasons())
 	}
 }

@@ -15,7 +15,7 @@ type judging struct {
 	ids     []uint16       // the ranges' numbers in the ledger
 	limits  []int          // indexes of the limit ranges
 	members *rules.Membership
-	odd     map[uint32]bool // references that are out of line themselves on the newest date: they say nothing of a file's dates
+	odd     map[uint32]bool                     // references that are out of line themselves on the newest date: they say nothing of a file's dates
 	days    func(series string) *rules.Calendar // nil when every weekday is a business day of all series
 
 	names      *Names

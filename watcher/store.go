@@ -187,7 +187,7 @@ type FileRow struct {
 	Settings uint32
 	Outcome  Outcome
 	Received time.Time
-	Reason   string // of a refusal: place and message
+	Reason   string // of a refusal: place and message; of an accepted file unended, where its last line has no newline
 	Line     uint32
 	First    rules.Date
 	Last     rules.Date

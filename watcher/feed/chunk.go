@@ -39,7 +39,9 @@ type chunk struct {
 	arena    []byte   // reused by the cursor
 	lines    uint32
 	missing  int
-	cells    int // observations looked at, skipped ones included; under skip
+	records  int       // rows
+	trailers []trailer // control totals
+	cells    int       // observations looked at, skipped ones included; under skip
 	skipped  int
 	bad      []fault // the first ones; when bad rows are not skipped, one and the last thing
 	stop     bool    // the file ends with bad[len(bad)-1]
@@ -54,6 +56,7 @@ const mostFaults = 10
 func (c *chunk) reset() {
 	c.runs, c.vals, c.fresh, c.arena = c.runs[:0], c.vals[:0], c.fresh[:0], c.arena[:0]
 	c.lines, c.missing, c.cells, c.skipped, c.bad, c.stop, c.err = 0, 0, 0, 0, nil, false, nil
+	c.records, c.trailers = 0, nil
 }
 
 // emit adds a value to the last run when it continues it.

@@ -1,6 +1,10 @@
 package feed
 
-import "strayd/rules"
+import (
+	"slices"
+
+	"strayd/rules"
+)
 
 // knownDate is a date as it was written, so that it need not be parsed again.
 type knownDate struct {
@@ -35,7 +39,7 @@ func (p *parser) judgeDate(cell []byte) string {
 		reason = inBounds(d, p.newest)
 	}
 	if reason != "" {
-		return reason
+		return reason + p.exchanged(cell)
 	}
 	p.date = d
 	if len(p.dates) < mostDates {
@@ -44,4 +48,18 @@ func (p *parser) judgeDate(cell []byte) string {
 		p.dates = append(p.dates, knownDate{string(cell), d})
 	}
 	return ""
+}
+
+// exchanged says which date a refused one would be with day and month the other way round, where that is one that a file could be for.
+func (p *parser) exchanged(cell []byte) string {
+	s := &p.style
+	if s.excel || len(cell) != s.width || slices.ContainsFunc(s.tokens, func(t dateToken) bool { return t.kind == 'N' }) {
+		return ""
+	}
+	year, month, day, ok := s.fields(cell)
+	d, real := rules.DateOf(year, day, month)
+	if !ok || !real || inBounds(d, p.newest) != "" || month == day {
+		return ""
+	}
+	return "; with day and month exchanged it is " + d.Day() + ": does the feed's date style say how the provider writes dates?"
 }

@@ -20,6 +20,9 @@ type merger struct {
 	skipped int
 	faults  []fault // of skipped rows, with the lines of the file
 	bad     *fault  // why the file is refused
+
+	records  int
+	trailers []trailer
 }
 
 // take adds what a chunk holds. Nothing more is taken once the file is refused.
@@ -41,6 +44,7 @@ func (m *merger) take(c *chunk) {
 			return
 		}
 	}
+	m.takeTrailers(c)
 	m.missing += c.missing
 	m.cells += c.cells
 	m.skipped += c.skipped

@@ -50,6 +50,14 @@ func (p *parser) parse(c *chunk) {
 		if b := p.text[p.at]; b <= ' ' && p.blank() {
 			continue
 		}
+		if p.text[p.at] == '#' && p.trailer() {
+			continue
+		}
+		if len(c.trailers) > 0 {
+			p.note(p.afterTrailer())
+			break
+		}
+		c.records++
 		from, line, start := p.at, p.line, p.lineStart
 		if ok := p.row(); ok && p.at-from <= p.limits.LineBytes {
 			continue

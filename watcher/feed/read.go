@@ -108,12 +108,13 @@ func (m *merger) sheet(ctx context.Context, file *os.File, c watcher.Candidate, 
 	}
 	id := watcher.File{Feed: c.Feed, Name: c.Name, Size: c.Size, SHA256: d.sum()}
 	m.skippedTooMany()
+	m.checkTrailers()
 	if m.bad != nil {
 		return nil, m.badFile(id, c.Date)
 	}
 	sheet := &watcher.Sheet{File: id, What: m.what(), Names: m.names, Columns: m.columns(), Rows: m.rows, Repeated: m.repeated,
 		Skipped: m.skipped, Missing: m.missing, Notes: m.notes(c.Name)}
-	if s.noLast && !c.Sentinel {
+	if sheet.Unended = s.noLast && !c.Sentinel; sheet.Unended {
 		sheet.Notes = append(sheet.Notes, "the last line has no newline: is the file whole?")
 	}
 	return sheet, nil
