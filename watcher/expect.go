@@ -102,7 +102,7 @@ func (w *worker) expected(g *rules.Gauge, past *rules.Past, id string, i int) ru
 	case reference == "" || v.N == 0 && !past.Dormant:
 		v = rules.Verdict{Finding: rules.NotJudged, Why: WhyNoResidual(reference)}
 	case v.Finding != rules.NotJudged:
-		v.Why = join("of the residual: what "+reference+" foresees comes on top", v.Why)
+		v.Why = join("of the residual: what its reference "+reference+" foresees comes on top", v.Why)
 	}
 	return v
 }

@@ -26,6 +26,20 @@ type Row struct {
 	Step    uint32 // the step whose knowledge the verdict rests on
 	Window  []Used // filled on request only
 	Limited bool   // the range is a limit, which has no window
+	Of      rules.Basis
+
+	residual rules.Units
+}
+
+// Apart says that the range has nothing to do with the value: a limit has no window, and what has no residual enters none.
+func (r *Row) Apart() bool { return r.Limited || r.Of == rules.Residual && !r.Residual.OK }
+
+// Judged is what the range judged: the return, or its residual. Used compares with it.
+func (r *Row) Judged() rules.Units {
+	if r.Residual.OK {
+		return r.residual
+	}
+	return r.Return
 }
 
 // Used is one used observation of a window.
@@ -183,7 +197,7 @@ func (r *Reader) rows(s *seriesPast, n int, asOf uint32, windows bool) ([]Row, e
 			continue
 		}
 		row := Row{Series: s.name, Group: s.group, Date: v.Date, Return: rules.Units(v.Value), Range: rng.Name, Step: v.Step,
-			WindowFrom: rules.NoDate, WindowTo: rules.NoDate, Used: rules.Missing, Limited: rng.Limit != nil}
+			WindowFrom: rules.NoDate, WindowTo: rules.NoDate, Used: rules.Missing, Limited: rng.Limit != nil, Of: rng.Of}
 		if err := r.judge(s, n, v, set, k, &row, windows); err != nil {
 			return nil, err
 		}

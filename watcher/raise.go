@@ -232,7 +232,9 @@ func (w *worker) fillLines(f *FlagRow, k int, h *hit) {
 	f.Low, f.High, f.Z, f.Tail, f.Log10 = v.Low, v.High, v.Z, v.Tail, v.Log10
 	f.Note = v.Why
 	f.Window, f.WindowTo = v.N, l.last[h.at]
-	f.Used = h.used(l, k, x, f.Return)
+	if f.Used = h.used(l, k, x, f.Return); f.Used != rules.Missing {
+		f.Used += f.Return - x // of a residual: with what the reference foresees
+	}
 }
 
 func (w *worker) fillLimit(f *FlagRow, h *hit) {

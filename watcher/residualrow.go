@@ -36,6 +36,7 @@ func (r *Reader) judgeResidual(s *seriesPast, n int, v Version, set *recorded, g
 	w := s.window(n, v.Date, residual.Step, g, used, kept)
 	verdict := g.Judge(rules.Units(residual.Value), &w.past)
 	row.Verdict = towards(verdict, (row.Return - rules.Units(residual.Value)).Float())
+	row.residual = rules.Units(residual.Value)
 	row.WindowFrom, row.WindowTo, row.Residual = w.from, w.to, rules.Some(rules.Units(residual.Value).Float())
 	row.Used = rules.Units(usedAt(used, v.Date, valueOn(kept, v.Date, ^uint32(0)), ^uint32(0)))
 	if windows {

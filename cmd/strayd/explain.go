@@ -253,7 +253,7 @@ func (a *app) explainWindow(line func(name, format string, args ...any), row *wa
 	if clipped > 0 {
 		line("clipped", "%s of the window held to the line that they broke", rules.Counted(clipped, "value"))
 	}
-	if takes := takesWords(row, restated, decided); takes != "" {
+	if takes := takesWords(row, restated, decided); takes != "" && !row.Apart() {
 		line("window takes", "%s", takes)
 	}
 }

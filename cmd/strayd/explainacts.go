@@ -107,15 +107,18 @@ func takesWords(row *watcher.Row, restated bool, decided *rules.Act) string {
 	used := "nothing of it"
 	if row.Used != rules.Missing {
 		used = rules.InPercent(row.Used.Float())
+		if row.Residual.OK {
+			used = "a residual of " + used
+		}
 	}
 	switch {
-	case decided != nil && row.Used == row.Return:
+	case decided != nil && row.Used == row.Judged():
 		return "all of it, as " + decided.By.String() + " decided"
 	case decided != nil:
 		return used + ", as " + decided.By.String() + " decided"
 	case row.Used == rules.Missing:
 		return used + " until someone decides"
-	case row.Used == row.Return:
+	case row.Used == row.Judged():
 		return ""
 	case restated:
 		return used + ", now that it is restated"

@@ -91,10 +91,10 @@ func (a *app) historyTable(rows []watcher.Row) error {
 			z = fmt.Sprintf("%+.2f", r.Z.V)
 		}
 		switch {
-		case r.Limited:
+		case r.Apart():
 		case r.Used == rules.Missing:
 			used = "left out"
-		case r.Used != r.Return:
+		case r.Used != r.Judged():
 			used = rules.InPercent(r.Used.Float())
 		default:
 			used = "in full"
