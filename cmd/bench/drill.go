@@ -51,7 +51,8 @@ func (b *bench) drillBook(kind string, kinds []drill.Kind) error {
 			return fmt.Errorf("%s, seed %d: %w", kind, seed, err)
 		}
 	}
-	fmt.Printf("\ndrill, book %s, seeds %d to %d. Floors in brackets; per cent of those planted, and of those caught.\n", kind, b.seed, b.seed+uint64(b.seeds)-1)
+	fmt.Printf("\ndrill, book %s, seeds %d to %d. Floors in brackets; per cent of those planted, and of those caught.\n", kind, b.seed,
+		b.seed+uint64(b.seeds)-1)
 	sum.print()
 	return nil
 }

@@ -73,12 +73,12 @@ func scaleRows() []catalogueRow {
 		{6, "the value of the day before again", detected, "", func(c *catalogue) {
 			*c.value(withBenchmark, 0) = *c.value(withBenchmark, -1)
 			c.come(1)
-			c.flagged(record{"series": withBenchmark, "kind": "repeat", "looks_like": "repeat"}, "")
+			c.flagged(record{"series": withBenchmark, "kind": "repeat|breach", "looks_like": "repeat"}, "")
 		}},
 		{7, "a price that stands still", detected, "", func(c *catalogue) {
 			*c.value(withPeers, 0), *c.value(withPeers, 1) = 0, 0
 			c.come(2)
-			c.flagged(record{"series": withPeers, "kind": "stale|doubtful", "looks_like": "zero"}, "")
+			c.flagged(record{"series": withPeers, "kind": "stale|breach", "looks_like": "zero"}, "")
 		}},
 		{8, "the values of the day before, for five days", gated, "", func(c *catalogue) {
 			for range 5 {
@@ -140,8 +140,8 @@ func valueRows() []catalogueRow {
 			c.come(15)
 			c.flagged(breachLike(withBenchmark, "fx-missing"), "") // on values; which mapping is wrong is for a person
 		}},
-		{16, "gross instead of net of a fee of 1 % a year", outOfReach, "0.4 bp a day is a thirty-eighth of the smallest residual deviation here: the mean of " +
-			"a year would be off by less than half its standard error", func(c *catalogue) {
+		{16, "gross instead of net of a fee of 1 % a year", outOfReach, "0.4 bp a day is a thirty-eighth of the smallest residual deviation here: the " +
+			"mean of a year would be off by less than half its standard error", func(c *catalogue) {
 			for days := range 20 {
 				c.add(withBenchmark, days, 0.4)
 			}
@@ -165,7 +165,8 @@ func valueRows() []catalogueRow {
 			c.come(8)
 			c.flagged(breachLike(withBenchmark, "cumulative"), "")
 		}},
-		{22, "logarithmic instead of simple returns", outOfReach, "half the square of a return of 1 % is 0.5 bp, a thirtieth of the smallest residual deviation here",
+		{22, "logarithmic instead of simple returns", outOfReach, "half the square of a return of 1 % is 0.5 bp, a thirtieth of the smallest residual " +
+			"deviation here",
 			func(c *catalogue) {
 				for days := range 10 {
 					r := c.value(withBenchmark, days).Float()
