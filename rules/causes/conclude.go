@@ -84,8 +84,8 @@ func (p *Pool) shares(w *weighing, lk *look, v *View) {
 	}
 	merged := p.merge(w.odds)
 	merged = append(merged, odd{cause: rules.CauseGenuine, weight: w.genuine})
-	if explained(lk) {
-		v.Explained = true
+	v.Explained = explained(lk)
+	if v.Explained && v.Kind == "" {
 		merged = append(merged, odd{cause: rules.CauseMarket, weight: w.ordinary})
 	}
 	slices.SortStableFunc(merged, func(a, b odd) int { return cmp.Compare(b.weight, a.weight) })

@@ -12,6 +12,7 @@ const (
 	priorShift = 1e-4
 	shiftStays = 0.98 // of a shifted file, on the next date
 	sentAgain  = 3.0  // what a value that is yesterday's again says for it
+	notSent    = -3.0 // what it says against the first day of it that values are there from yesterday and differ
 	freeReturn = -3.0 // log of what a return costs that may be anything: deviation of the followers' agreement over that of the benchmark
 )
 
@@ -40,6 +41,10 @@ func (p *Pool) offDates(c *contradiction) {
 		gain := p.gain(i, lk.x, lk.mu, before)
 		if p.repeated(i) {
 			gain += sentAgain
+			c.again++
+		}
+		if st.yesterday == st.yesterday {
+			c.anew++
 		}
 		c.late += gain
 		switch {
@@ -67,11 +72,12 @@ func (p *Pool) shifted() bool {
 		prior = math.Log(shiftStays / (1 - shiftStays))
 	}
 	var late, rival, free, early float64
-	wrong, pro, contra := 0, 0, 0
+	wrong, pro, contra, again, anew := 0, 0, 0, 0, 0
 	for _, c := range p.contra {
 		late += c.late
 		early += c.early
 		pro, contra = pro+c.pro, contra+c.contra
+		again, anew = again+c.again, anew+c.anew
 		if c.wrong > 0 {
 			wrong++
 			rival += c.wrong + freeReturn
@@ -80,6 +86,9 @@ func (p *Pool) shifted() bool {
 		if c.late > 0 && p.repeated(c.benchmark) { // it is the benchmark that came a day late
 			late = math.Inf(-1)
 		}
+	}
+	if !p.shift.late && 2*again < anew {
+		late += notSent
 	}
 	if !p.shift.late && (pro < leastFollowers || pro < 2*contra) {
 		late = math.Inf(-1)

@@ -15,7 +15,7 @@ const (
 	priorDiv100     = 1.5e-3
 	priorSign       = 1.4e-3
 	priorRepeat     = 1.5e-3
-	priorZero       = 1.2e-3
+	priorZero       = 1.3e-3
 	priorSpike      = 3e-4
 	priorMissed     = 1e-3 // without a calendar
 	priorDoubled    = 3e-5
@@ -24,8 +24,8 @@ const (
 	priorSwap       = 1.5e-3
 	priorCumulative = 4e-4
 	priorShifted    = 5e-5
-	listedMissed    = 0.1 // on a listed date
-	listedDoubled   = 0.05
+	listedMissed    = 0.09 // on a listed date
+	listedDoubled   = 0.03
 	listedSplit     = 0.2
 	offByOne        = 0.05 // factor of the above a business day beside it
 )

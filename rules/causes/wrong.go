@@ -26,6 +26,7 @@ type contradiction struct {
 	wrong                float64 // log odds that the benchmark is wrong
 	late                 float64 // log odds, before any prior, that their values are those of the date before
 	early                float64 // that those of yesterday belong to today
+	again, anew          int     // whose value is yesterday's again, and who had a value yesterday
 	pro, contra          int     // followers that fit yesterday's return clearly better, and clearly worse
 }
 
