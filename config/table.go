@@ -68,8 +68,7 @@ var table = object{what: "keys: ledger, feeds and ranges at least", fields: []fi
 		shape: list[rules.Channel]{item: channelTable, least: 1, what: "a list of at least one channel"},
 		at:    in(func(c *Config) any { return &c.Channels })},
 	{key: "weekly", shape: weeklyTable, doc: "The weekly log.",
-		later: always("checked now; the weekly log comes in a later version"),
-		at:    in(func(c *Config) any { c.Weekly = &Weekly{}; return c.Weekly })},
+		at: in(func(c *Config) any { c.Weekly = &Weekly{}; return c.Weekly })},
 }}
 
 var weeklyTable = object{what: "keys: schedule, channels", fields: []field{

@@ -24,6 +24,7 @@ const (
 	KindDaily  Kind = "daily"  // the line that says all was checked
 	KindTest   Kind = "test"
 	KindNotice Kind = "word" // a word about the program itself: a channel that died, a pass that failed
+	KindWeekly Kind = "weekly"
 )
 
 // Notice is one message to one channel. It is written with the flags that it tells of, in the same step.

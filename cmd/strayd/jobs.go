@@ -23,6 +23,7 @@ const (
 	feedJob      = "feed "
 	deadlineJob  = "deadline "
 	dailyJob     = "daily line"
+	weeklyJob    = "weekly log"
 	dailyMargin  = 5 // minutes after the day's last deadline or slot
 	lastOfTheDay = 23*60 + 59
 )
@@ -58,7 +59,15 @@ func (d *daemon) jobs(c *config.Config) ([]schedule.Job, error) {
 			return d.deadlines(ctx, f.Name, slot)
 		}})
 	}
-	return append(jobs, schedule.Job{Name: dailyJob, When: daily, Run: d.daily}), nil
+	jobs = append(jobs, schedule.Job{Name: dailyJob, When: daily, Run: d.daily})
+	if c.Weekly == nil {
+		return jobs, nil
+	}
+	when, err := schedule.Parse(c.Weekly.Schedule, c.Location)
+	if err != nil {
+		return nil, fmt.Errorf("weekly: schedule: %w", err)
+	}
+	return append(jobs, schedule.Job{Name: weeklyJob, When: when, Run: d.weekly}), nil
 }
 
 // weekdays are the days of the week on which there is business, as cron text.

@@ -1,0 +1,343 @@
+package rules
+
+import (
+	"cmp"
+	"slices"
+	"time"
+)
+
+// WeekFigures are the figures of one week. Those of the week before are the same figures of its own facts.
+type WeekFigures struct {
+	Span     WeekSpan
+	Settings uint32
+	Head     string
+	Checked  Portion // series-days
+	Days     []WeekDay
+	Raised   []KindCount
+	Flags    int // raised for the dates of the week
+	Events   int // separate ones: a market day with the flags it covers is one
+	Markets  int
+	Ranges   []RangeFigures
+	Covers   []CoverFigures // each range: all groups, then each
+	Ageing   Ageing
+	Closed   Closed
+	Feeds    []FeedFigures
+	Largest  []Flag
+	Repeats  []Repeat
+	Thin     Thin
+	Slow     []Flag
+	Changes  []Change
+	Waivers  Waivers
+	Runs     Runs
+}
+
+// KindCount counts flags of a kind.
+type KindCount struct {
+	Kind  Kind
+	Count int
+}
+
+// mostLargest is how many flags the log lists by their tail.
+const mostLargest = 10
+
+// Figures works a week out.
+func (f *WeekFacts) Figures() *WeekFigures {
+	w := &WeekFigures{Span: f.Span, Settings: f.Settings, Head: f.Head, Days: f.Days, Thin: f.Thin, Changes: f.Changes}
+	for _, d := range f.Days {
+		w.Checked.Add(d.Portion)
+	}
+	f.countFlags(w)
+	f.ranges(w)
+	w.Ageing = f.ageing()
+	w.Closed = f.closed()
+	w.Repeats = f.repeats()
+	w.Waivers = f.waivers()
+	w.Runs = f.runs()
+	for i := range f.Feeds {
+		w.Feeds = append(w.Feeds, f.feed(&f.Feeds[i]))
+	}
+	return w
+}
+
+// today is the day on which the week is looked at.
+func (f *WeekFacts) today() Date { return DateFrom(f.Span.AsOf.In(f.Zone)) }
+
+// inWeek says whether a flag belongs to the week: by its valuation date, or by when it was raised where it has none.
+func (f *WeekFacts) inWeek(g *Flag) bool {
+	if g.Date == NoDate {
+		return f.Span.During(g.RaisedAt)
+	}
+	return f.Span.Has(g.Date)
+}
+
+type groupDate struct {
+	group string
+	date  Date
+}
+
+func (f *WeekFacts) marketDays() map[groupDate]bool {
+	out := map[groupDate]bool{}
+	for i := range f.Flags {
+		if g := &f.Flags[i]; g.Kind == KindMarketDay && f.inWeek(g) {
+			out[groupDate{g.Group, g.Date}] = true
+		}
+	}
+	return out
+}
+
+func (f *WeekFacts) countFlags(w *WeekFigures) {
+	market := f.marketDays()
+	w.Markets = len(market)
+	type about struct {
+		series string
+		date   Date
+	}
+	counts, events := map[Kind]int{}, map[about]bool{}
+	for i := range f.Flags {
+		g := &f.Flags[i]
+		if !f.inWeek(g) {
+			continue
+		}
+		w.Flags++
+		counts[g.Kind]++
+		switch {
+		case g.Kind == KindMarketDay, g.Kind == KindBreach && g.Group != "" && market[groupDate{g.Group, g.Date}]:
+		case g.Series == "":
+			w.Events++
+		default:
+			events[about{g.Series, g.Date}] = true
+		}
+		if g.Log10.OK {
+			w.Largest = append(w.Largest, *g)
+		}
+		if g.Kind == KindDrift || g.Kind == KindVolatility || g.Kind == KindMisfit {
+			w.Slow = append(w.Slow, *g)
+		}
+	}
+	w.Events += len(events) + w.Markets
+	for _, k := range Kinds {
+		w.Raised = append(w.Raised, KindCount{k, counts[k]})
+	}
+	slices.SortStableFunc(w.Largest, func(a, b Flag) int { return cmp.Compare(a.Log10.V, b.Log10.V) })
+	w.Largest = slices.Clip(w.Largest[:min(mostLargest, len(w.Largest))])
+}
+
+// RangeFigures hold the breaches of one range in the week against what its line promises.
+type RangeFigures struct {
+	Range     string
+	Level     float64 // 0 where the line states no share
+	Judged    int
+	Observed  int
+	Separate  int // the same with all that a group has beyond on its market day as one
+	Expected  float64
+	Low, High int     // middle 95 % for independent series
+	Wide      int     // upper end of the same, allowing for series that move together
+	Narrow    int     // lower end
+	Together  float64 // how much wider counts of a day scatter, over the dates before
+}
+
+// CoverFigures are the coverage of one range over one group, or over all with "".
+type CoverFigures struct {
+	Cover
+	InnerSays, OuterSays Coverage
+}
+
+func (f *WeekFacts) ranges(w *WeekFigures) {
+	for from := 0; from < len(f.Covers); {
+		to := from
+		for to < len(f.Covers) && f.Covers[to].Range == f.Covers[from].Range {
+			to++
+		}
+		all := Pool(f.Covers[from:to])
+		r := f.rangeFigures(&all)
+		r.Separate = f.separate(f.Covers[from:to])
+		w.Ranges = append(w.Ranges, r)
+		w.Covers = append(w.Covers, judged(all))
+		if to-from > 1 {
+			for _, c := range f.Covers[from:to] {
+				w.Covers = append(w.Covers, judged(c))
+			}
+		}
+		from = to
+	}
+}
+
+// separate counts the week's values beyond the breach line, those of a group on a market day as one.
+func (f *WeekFacts) separate(covers []Cover) (n int) {
+	market := f.marketDays()
+	for i := range covers {
+		for _, d := range Within(covers[i].Days, f.Span.Monday, f.Span.Sunday()) {
+			if market[groupDate{covers[i].Group, d.Date}] {
+				n += min(1, d.Outer)
+			} else {
+				n += d.Outer
+			}
+		}
+	}
+	return n
+}
+
+func judged(c Cover) CoverFigures {
+	out := CoverFigures{Cover: c, InnerSays: c.Inner.Judge(c.Share, Together(c.Days, InnerOf))}
+	if c.Level > 0 {
+		out.OuterSays = c.Outer.Judge(c.Level, Together(c.Days, OuterOf))
+	}
+	return out
+}
+
+func (f *WeekFacts) rangeFigures(c *Cover) RangeFigures {
+	r := RangeFigures{Range: c.Range, Level: c.Level, Together: 1}
+	for _, d := range Within(c.Days, f.Span.Monday, f.Span.Sunday()) {
+		r.Judged += d.Judged
+		r.Observed += d.Outer
+	}
+	if r.Level == 0 {
+		return r
+	}
+	r.Expected = float64(r.Judged) * r.Level
+	// The inner line has more to go by; the week itself must not widen its own band.
+	r.Together = Together(Within(c.Days, 0, f.Span.Monday-1), InnerOf)
+	r.Low, r.High = Band(r.Judged, r.Level, 1)
+	r.Narrow, r.Wide = Band(r.Judged, r.Level, r.Together)
+	return r
+}
+
+// Repeat is a series that keeps being flagged.
+type Repeat struct {
+	Series, Group string
+	Flags         int    // dates with a flag about a value, of the last repeatDates business days
+	Reason        Reason // given more than once in the last reasonDates business days, "" for none
+	Times         int    // how often
+}
+
+// PRACTICE of the trade, no source: three flags in twenty days, or the same reason twice in sixty.
+const (
+	repeatDates, repeatFlags = 20, 3
+	reasonDates, reasonTimes = 60, 2
+	// MostRepeats is how many repeat offenders the log names.
+	MostRepeats = 20
+)
+
+func (f *WeekFacts) repeats() []Repeat {
+	flags, reasons := f.flagDates(), f.reasonsGiven()
+	var out []Repeat
+	add := func(series string) {
+		r := Repeat{Series: series, Group: flags[series].group, Flags: len(flags[series].dates)}
+		for _, reason := range Reasons {
+			if n := reasons[series][reason]; n >= reasonTimes && n > r.Times {
+				r.Reason, r.Times = reason, n
+			}
+		}
+		if r.Flags >= repeatFlags || r.Times > 0 {
+			out = append(out, r)
+		}
+	}
+	for series := range flags {
+		add(series)
+	}
+	for series := range reasons {
+		if _, done := flags[series]; !done {
+			add(series)
+		}
+	}
+	slices.SortFunc(out, func(a, b Repeat) int {
+		return cmp.Or(b.Flags-a.Flags, b.Times-a.Times, cmp.Compare(a.Series, b.Series))
+	})
+	return out
+}
+
+type flagged struct {
+	group string
+	dates map[Date]bool
+}
+
+func (f *WeekFacts) flagDates() map[string]flagged {
+	since, out := f.Calendar.Add(f.Span.Sunday(), -repeatDates), map[string]flagged{}
+	for i := range f.Flags {
+		g := &f.Flags[i]
+		if g.Series == "" || g.Date <= since || g.Date > f.Span.Sunday() || !slices.Contains(OutOfLine, g.Kind) {
+			continue
+		}
+		if out[g.Series].dates == nil {
+			out[g.Series] = flagged{g.Group, map[Date]bool{}}
+		}
+		out[g.Series].dates[g.Date] = true
+	}
+	return out
+}
+
+// reasonsGiven counts by series the reasons of the newest decisions, each date once. A market move may come again.
+func (f *WeekFacts) reasonsGiven() map[string]map[Reason]int {
+	since, out := f.Calendar.Add(f.today(), -reasonDates), map[string]map[Reason]int{}
+	byRef := f.byRef()
+	type about struct {
+		series string
+		date   Date
+		reason Reason
+	}
+	seen := map[about]bool{}
+	for i := range f.Acts {
+		e := &f.Acts[i]
+		if e.Deed != Decide || e.Reason == MarketMove || DateFrom(e.At.In(f.Zone)) <= since {
+			continue
+		}
+		for _, ref := range e.Refs {
+			g := byRef[ref]
+			if g == nil || g.Series == "" || seen[about{g.Series, g.Date, e.Reason}] {
+				continue
+			}
+			seen[about{g.Series, g.Date, e.Reason}] = true
+			if out[g.Series] == nil {
+				out[g.Series] = map[Reason]int{}
+			}
+			out[g.Series][e.Reason]++
+		}
+	}
+	return out
+}
+
+func (f *WeekFacts) byRef() map[uint64]*Flag {
+	out := make(map[uint64]*Flag, len(f.Flags))
+	for i := range f.Flags {
+		out[f.Flags[i].Ref] = &f.Flags[i]
+	}
+	return out
+}
+
+// Runs is the record of passes and messages.
+type Runs struct {
+	Due, Made, Failed              int
+	Quiet                          time.Duration // longest time without a pass that ended well, from the first to the last
+	Notices, Sent, Waiting, Undone int           // Undone failed for good
+}
+
+func (f *WeekFacts) runs() (r Runs) {
+	r.Due = f.Due
+	var last time.Time
+	for _, p := range f.Passes {
+		r.Made++
+		if p.Failed {
+			r.Failed++
+			continue
+		}
+		if !last.IsZero() {
+			r.Quiet = max(r.Quiet, p.Ended.Sub(last))
+		}
+		last = p.Ended
+	}
+	for _, n := range f.Notices {
+		if n.State == NoticeWithdrawn {
+			continue
+		}
+		r.Notices++
+		switch n.State {
+		case NoticeSent:
+			r.Sent++
+		case NoticeFailed:
+			r.Undone++
+		default:
+			r.Waiting++
+		}
+	}
+	return r
+}

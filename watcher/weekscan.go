@@ -1,0 +1,316 @@
+package watcher
+
+import (
+	"context"
+	"slices"
+
+	"strayd/rules"
+)
+
+// scanSlack is how many dates beyond CoverDates are judged, so that a series with a few holes still has enough.
+const scanSlack = 50
+
+// weekScan judges the dates up to the end of a week once more, under given settings, and counts what is beyond which line. Values and used
+// values are those of the view; the lines are those of the settings, whatever they were when a date was judged first.
+type weekScan struct {
+	worker
+	dates    []rules.Date              // that are judged, ascending
+	week     rules.Date                // the Monday
+	covers   []map[string]*rules.Cover // by lane, then group
+	at       [][]*rules.Cover          // by lane, then series of the task
+	settings *rules.Settings
+	thin     rules.Thin
+	progress func(done, total int64)
+	ctx      context.Context
+}
+
+// track is what the newest dates said of one series under one lane.
+type track struct {
+	judged       int
+	outer, inner []int // at which of its judged values it was beyond
+	thin         bool  // provisional on its newest date
+	unjudged     bool
+}
+
+// scanCover counts every series under every estimated range for the CoverDates dates up to a week's end.
+func scanCover(ctx context.Context, v View, names *Names, s *rules.Settings, monday rules.Date, progress func(done, total int64)) (*weekScan, error) {
+	w := &weekScan{week: monday, progress: progress, ctx: ctx, settings: s}
+	p := &Pass{Settings: coverSettings(s)}
+	j := &judging{names: names, heldNames: names.Len(), step: v.Step()}
+	if err := p.prepare(j, v); err != nil {
+		return nil, err
+	}
+	j.scales = newGroupScales(j, v, nil)
+	w.worker = *newWorker(j, v)
+	w.lanes = slices.DeleteFunc(w.lanes, func(l *lane) bool { return l.gauge.Range.Of == rules.Residual })
+	end, _ := slices.BinarySearch(j.held, monday+7)
+	w.dates = j.held[max(0, end-rules.CoverDates-scanSlack):end]
+	for range w.lanes {
+		w.covers = append(w.covers, map[string]*rules.Cover{})
+		w.at = append(w.at, make([]*rules.Cover, j.width))
+	}
+	todo := tasks(allBlocks(names.Len(), rules.NoDate), j.width)
+	for n, t := range todo {
+		if err := w.task(t); err != nil {
+			return nil, err
+		}
+		if progress != nil {
+			progress(int64(n+1), int64(len(todo)))
+		}
+	}
+	return w, nil
+}
+
+// coverSettings puts the inner line of every range at CoverShare, where the range can speak of so small a share.
+func coverSettings(s *rules.Settings) rules.Settings {
+	c := *s
+	c.Ranges = slices.Clone(s.Ranges)
+	for n, r := range c.Ranges {
+		if r.Limit != nil {
+			continue
+		}
+		r.Watch = rules.Line{Tail: rules.CoverShare}
+		if _, err := rules.NewGauge(r); err == nil && (r.Tail.Name != "rank" || r.Window+1 >= 2/rules.CoverShare) {
+			c.Ranges[n] = r
+		}
+	}
+	return c
+}
+
+// all gives the covers by range, then group.
+func (w *weekScan) all() (out []rules.Cover) {
+	for k := range w.lanes {
+		var groups []string
+		for g := range w.covers[k] {
+			groups = append(groups, g)
+		}
+		slices.Sort(groups)
+		for _, g := range groups {
+			c := w.covers[k][g]
+			c.Days = c.Days[max(0, len(c.Days)-rules.CoverDates):]
+			c.Sort()
+			out = append(out, *c)
+		}
+	}
+	return out
+}
+
+// cover is that of a lane and group.
+func (w *weekScan) cover(k int, group string) *rules.Cover {
+	c := w.covers[k][group]
+	if c == nil {
+		r := w.lanes[k].gauge.Range
+		c = &rules.Cover{Range: r.Name, Group: group, Level: levelOf(w.lanes[k], r.Breach), Share: levelOf(w.lanes[k], r.Watch)}
+		for _, d := range w.dates {
+			c.Days = append(c.Days, rules.CoverDay{Date: d})
+		}
+		w.covers[k][group] = c
+	}
+	return c
+}
+
+// levelOf is the share that a line promises beyond it, 0 where it states none.
+func levelOf(l *lane, line rules.Line) float64 {
+	f, ok := l.gauge.Forms(line)
+	if !ok {
+		return 0
+	}
+	return f.Tail
+}
+
+func (w *weekScan) task(t task) error {
+	if err := w.ctx.Err(); err != nil || len(w.dates) == 0 {
+		return err
+	}
+	w.begin(t)
+	if err := w.loadPlain(t, w.dates[0]); err != nil {
+		return err
+	}
+	tracks := make([][]track, len(w.lanes))
+	for k := range tracks {
+		tracks[k] = make([]track, t.width)
+		for i := range t.width {
+			w.at[k][i] = w.cover(k, w.group(i))
+		}
+	}
+	week := newWeekValues(t.width)
+	for n, date := range w.dates {
+		ok, err := w.view.Fill(Returns, date, t.block, t.from, w.raw[:t.width])
+		if err != nil {
+			return err
+		}
+		if !ok {
+			continue
+		}
+		if date >= w.week {
+			week.take(w.raw[:t.width])
+		}
+		for k, l := range w.lanes {
+			if err := w.scan(t, k, l, n, tracks[k]); err != nil {
+				return err
+			}
+		}
+	}
+	w.fold(t, tracks)
+	w.foldThin(t, tracks, week)
+	return nil
+}
+
+// loadPlain brings every lane to its state before a date, and does not ask why a window is empty.
+func (w *weekScan) loadPlain(t task, before rules.Date) error {
+	held := w.j.heldBefore(t.block, before)
+	var back []*backward
+	for _, l := range w.lanes {
+		l.reset()
+		if p, ok := l.windows.(loader); ok {
+			back = append(back, newBackward(l, p, before, t.width))
+		} else if err := w.loadForward(t, l, held, before); err != nil {
+			return err
+		}
+	}
+	return w.loadBack(t, back, held)
+}
+
+// scan judges one date under one lane and lets its windows take it.
+func (w *weekScan) scan(t task, k int, l *lane, n int, tracks []track) error {
+	date, raw := w.dates[n], w.raw[:t.width]
+	l.rest(date, raw)
+	w.cand = l.candidates(raw, w.cand[:0])
+	for i := range raw {
+		if raw[i] == Missing64 || !l.judges(i) {
+			continue
+		}
+		size := l.windows.N(i)
+		tracks[i].unjudged, tracks[i].thin = size < rules.LeastJudged, size < rules.LeastNormal
+		if tracks[i].unjudged {
+			continue
+		}
+		tracks[i].judged++
+		w.at[k][i].Days[n].Judged++
+	}
+	for _, at := range w.cand {
+		i := int(at)
+		if raw[i] == Missing64 || !l.judges(i) || tracks[i].unjudged {
+			continue
+		}
+		past := l.past(i)
+		if past.N < rules.LeastNormal {
+			past.Group = w.j.scales.lent(l, w.group(i), date)
+		}
+		w.concluded(k, i, n, l.gauge.Judge(rules.Units(raw[i]), past), &tracks[i])
+	}
+	used, err := w.usedOf(t, l, date)
+	if err == nil {
+		l.push(date, used)
+	}
+	return err
+}
+
+func (w *weekScan) concluded(k, i, n int, v rules.Verdict, t *track) {
+	d := &w.at[k][i].Days[n]
+	if v.Finding == rules.NotJudged {
+		t.judged--
+		d.Judged--
+		t.unjudged = true
+		return
+	}
+	if v.Finding == rules.Breach {
+		t.outer = append(t.outer, t.judged)
+		d.Outer++
+	}
+	if v.Tail.OK && v.Tail.V < w.at[k][i].Share {
+		t.inner = append(t.inner, t.judged)
+		d.Inner++
+	}
+}
+
+// fold counts the series of a task into their groups.
+func (w *weekScan) fold(t task, tracks [][]track) {
+	for k := range tracks {
+		for i := range tracks[k] {
+			if x := &tracks[k][i]; x.judged > 0 {
+				w.at[k][i].Take(string(w.j.names.Name(t.series(i))), tallyOf(x.judged, x.outer), tallyOf(x.judged, x.inner))
+			}
+		}
+	}
+}
+
+// tallyOf counts the newest CoverDates of so many judged values, of which those at the given places, from 1 and ascending, were beyond.
+func tallyOf(judged int, beyond []int) (c rules.CoverTally) {
+	first := max(1, judged-rules.CoverDates+1)
+	c.Judged = judged - first + 1
+	before := 0 // the hit before
+	for _, at := range beyond {
+		if at < first {
+			continue
+		}
+		c.Beyond++
+		switch {
+		case at == first: // it follows nothing
+		case before == at-1:
+			c.Transitions.N11++
+		default:
+			c.Transitions.N01++
+		}
+		before = at
+	}
+	n := &c.Transitions
+	n.N10 = c.Beyond - n.N11
+	if before == judged && c.Beyond > 0 { // nothing follows it
+		n.N10--
+	}
+	n.N00 = max(0, c.Judged-1-n.N01-n.N10-n.N11)
+	return c
+}
+
+// weekValues is what the dates of the week say of each series, whatever its ranges.
+type weekValues struct{ values, zeros []int }
+
+func newWeekValues(width int) *weekValues {
+	return &weekValues{make([]int, width), make([]int, width)}
+}
+
+func (w *weekValues) take(raw []int64) {
+	for i, x := range raw {
+		if x == Missing64 {
+			continue
+		}
+		w.values[i]++
+		if x == 0 {
+			w.zeros[i]++
+		}
+	}
+}
+
+// leastZeros is how many values a week needs to be called nothing but zeros.
+const leastZeros = 3
+
+func (w *weekScan) foldThin(t task, tracks [][]track, week *weekValues) {
+	for i := range t.width {
+		name := string(w.j.names.Name(t.series(i)))
+		last := rules.NoDate
+		thin, unjudged := false, false
+		for k, l := range w.lanes {
+			last = max(last, l.last[i])
+			thin, unjudged = thin || tracks[k][i].thin && !tracks[k][i].unjudged, unjudged || tracks[k][i].unjudged
+		}
+		if week.values[i] == 0 {
+			life, known := w.settings.Lives[name]
+			ended := known && life.End != rules.NoDate && life.End < w.week
+			if !ended && last != rules.NoDate && rules.Weekdays(last, w.week+6) > rules.DormantAfter {
+				w.thin.Dormant.Add(name)
+			}
+			continue
+		}
+		w.thin.Series++
+		if thin {
+			w.thin.Provisional.Add(name)
+		}
+		if unjudged {
+			w.thin.Unjudged.Add(name)
+		}
+		if week.zeros[i] == week.values[i] && week.values[i] >= leastZeros {
+			w.thin.Zero.Add(name)
+		}
+	}
+}
