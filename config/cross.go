@@ -170,6 +170,9 @@ func (d *decoder) routes(c *Config) {
 			d.known(fmt.Sprintf("channels[%d].for", i), "group", ch.For, groups)
 		}
 	}
+	for i := range c.Channels {
+		d.channel(fmt.Sprintf("channels[%d]", i), &c.Channels[i], c.Channels)
+	}
 	if c.Weekly != nil && d.sound("channels") {
 		d.known("weekly.channels", "channel", c.Weekly.Channels, channels)
 	}

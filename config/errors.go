@@ -66,7 +66,7 @@ func (d *decoder) sorted(file string) Errors {
 }
 
 // secret matches tokens of the chat service and addresses that carry a secret of their own.
-var secret = regexp.MustCompile(`(?i)\bx(?:ox[a-z]|app)-[a-z0-9]|https?://hooks\.[a-z]`)
+var secret = regexp.MustCompile(`(?i)\bx(?:ox[a-z]|app)-[a-z0-9]|https?://hooks\.[a-z0-9.-]+/(?:services|workflows|triggers)/`)
 
 // longest is how much of a value an error repeats.
 const longest = 60

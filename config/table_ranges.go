@@ -102,11 +102,17 @@ var lineTable = object{what: "a line such as {tail: 0.27%}", fields: []field{
 		at: in(func(l *rules.Line) any { return &l.Budget })},
 }}
 
-var channelTable = object{what: "keys: name, and slack or console", fields: []field{
+var channelTable = object{what: "keys: name, and slack, webhook, mail or console", fields: []field{
 	{key: "name", required: true, shape: name(), doc: "What the channel is called.",
 		at: in(func(c *rules.Channel) any { return &c.Name })},
 	{key: "slack", choice: "channel", shape: slackTable, doc: "A chat channel; its token comes from the environment or a file, never from here.",
 		at: in(func(c *rules.Channel) any { c.Kind = "slack"; return c })},
+	{key: "webhook", choice: "channel", shape: webhookTable,
+		doc: "An address that gets signed JSON; the secret comes from the environment or a file, never from here.",
+		at:  in(func(c *rules.Channel) any { c.Kind = "webhook"; return c })},
+	{key: "mail", choice: "channel", shape: mailTable,
+		doc: "Mail through one server; user and password come from the environment or files, never from here.",
+		at:  in(func(c *rules.Channel) any { c.Kind, c.Mail = "mail", &rules.Mail{}; return c.Mail })},
 	{key: "console", choice: "channel", shape: object{what: "{}"}, doc: "The standard output of the run.",
 		at: in(func(c *rules.Channel) any { c.Kind = "console"; return c })},
 	{key: "for", doc: "Names of groups; everything when left out.",
@@ -119,9 +125,31 @@ var channelTable = object{what: "keys: name, and slack or console", fields: []fi
 		at: in(func(c *rules.Channel) any { return func(s span) { c.From, c.To = s.from, s.to } })},
 	{key: "form", initial: "full", shape: words(word[bool]{"full", false}, word[bool]{"short", true}), doc: "full, or short: ref and series only.",
 		at: in(func(c *rules.Channel) any { return &c.Short })},
+	{key: "fallback", shape: name(), doc: "Name of the channel that takes the waiting notices when this one is dead or delivers nothing.",
+		at: in(func(c *rules.Channel) any { return &c.Fallback })},
+	{key: "fallback_after", initial: "15m", shape: duration(time.Minute, 24*time.Hour), doc: "How long it delivers nothing before that.",
+		at: in(func(c *rules.Channel) any { return &c.After })},
 }}
 
 var slackTable = object{what: "{channel: C0000000000}", fields: []field{
 	{key: "channel", required: true, shape: slackChannel(), doc: "The channel's id.",
 		at: in(func(c *rules.Channel) any { return &c.Target })},
+}}
+
+var webhookTable = object{what: "{url: https://...}", fields: []field{
+	{key: "url", required: true, shape: webAddress(), doc: "The address: https, or http on this machine.",
+		at: in(func(c *rules.Channel) any { return &c.Target })},
+}}
+
+var mailTable = object{what: "keys: to, from, server, and also tls", fields: []field{
+	{key: "to", required: true, doc: "The recipients.",
+		shape: list[string]{item: mailAddress(), least: 1, most: 50, unique: true, what: "a list of 1 to 50 mail addresses"},
+		at:    in(func(m *rules.Mail) any { return &m.To })},
+	{key: "from", required: true, shape: mailAddress(), doc: "The sender.",
+		at: in(func(m *rules.Mail) any { return &m.From })},
+	{key: "server", required: true, shape: hostPort(), doc: "The server, as host:port.",
+		at: in(func(m *rules.Mail) any { return &m.Server })},
+	{key: "tls", initial: "starttls", shape: named("starttls", "implicit", "none"),
+		doc: "starttls (mostly port 587), implicit (mostly port 465), or none on this machine.",
+		at:  in(func(m *rules.Mail) any { return &m.Security })},
 }}

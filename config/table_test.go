@@ -34,8 +34,9 @@ groups[].release.days groups[].release.timezone groups[].four_eyes ranges ranges
 ranges[].scale ranges[].decay ranges[].tail ranges[].tail.t ranges[].predictive ranges[].side ranges[].watch ranges[].watch.tail
 ranges[].watch.confidence ranges[].watch.z ranges[].watch.budget ranges[].breach ranges[].breach.tail ranges[].breach.confidence
 ranges[].breach.z ranges[].breach.budget ranges[].pending ranges[].limit doubtful channels channels[].name channels[].slack
-channels[].slack.channel channels[].console channels[].for channels[].kinds channels[].hours channels[].form weekly
-weekly.schedule weekly.channels`
+channels[].slack.channel channels[].webhook channels[].webhook.url channels[].mail channels[].mail.to channels[].mail.from
+channels[].mail.server channels[].mail.tls channels[].console channels[].for channels[].kinds channels[].hours channels[].form
+channels[].fallback channels[].fallback_after weekly weekly.schedule weekly.channels`
 
 func TestTableHasTheKeysOfTheDesign(t *testing.T) {
 	var got []string
@@ -57,7 +58,7 @@ func TestTableHasTheKeysOfTheDesign(t *testing.T) {
 func TestDefaultsAreValid(t *testing.T) {
 	c := minimal(t, "")
 	dst := map[string]any{"feeds[]": &c.Feeds[0], "feeds[].columns": &c.Feeds[0].Columns, "groups[]": &rules.Group{}, "ranges[]": &c.Ranges[0],
-		"channels[]": &c.Channels[0], "weekly": &Weekly{}, "": c, "feeds[].due": &rules.Due{}, "groups[].release": &rules.Due{}}
+		"channels[]": &c.Channels[0], "channels[].mail": &rules.Mail{}, "weekly": &Weekly{}, "": c, "feeds[].due": &rules.Due{}, "groups[].release": &rules.Due{}}
 	n := 0
 	each(table, "", func(path string, f field) {
 		if f.initial == "" {
@@ -127,7 +128,7 @@ func TestDefaults(t *testing.T) {
 		Tail: rules.TailModel{Name: "t", DF: 5}, Predictive: true, Side: "both", Watch: rules.Line{Tail: 0.01},
 		Breach: rules.Line{Tail: 0.0027}, Pending: "clip"})
 	check("doubtful", c.Doubtful, 0.002)
-	check("channels", c.Channels, []rules.Channel{{Name: "console", Kind: "console"}})
+	check("channels", c.Channels, []rules.Channel{{Name: "console", Kind: "console", After: 15 * time.Minute}})
 	check("later", c.Later, []Note(nil))
 	check("weekly", minimal(t, "weekly: {}\n").Weekly, Weekly{Schedule: "0 7 * * mon"})
 }

@@ -30,3 +30,12 @@ func eventKey(c rules.Channel, e event) string {
 	}
 	return key(parts...)
 }
+
+// Identity names a notice to whoever receives it, so that an attempt that is repeated is known for the same message. A notice that a
+// person sends once more is another message.
+func Identity(n rules.Notice) string {
+	if n.Ended.IsZero() {
+		return n.Key
+	}
+	return fmt.Sprintf("%s-%d", n.Key, n.Ended.Unix())
+}

@@ -15,6 +15,9 @@ type Route struct {
 	Service string // what it shares its credentials with, such as "slack"; "" for nothing
 	To      Channel
 	Hours   Hours
+
+	Fallback string        // the channel that takes over when this one is dead or delivers nothing, "" for none
+	After    time.Duration // for how long it delivers nothing before that
 }
 
 // Sending is what a Sender is made from.

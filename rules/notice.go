@@ -46,6 +46,11 @@ type Notice struct {
 	Receipt  string    // what the channel gave back, such as a message's id
 	Error    string    // of the last attempt, without secrets
 	Repeat   bool      // an earlier attempt may have got through
+
+	For    string    `json:",omitzero"` // the channel it was made for, where Channel stands in for that one
+	Told   string    `json:",omitzero"` // the fallback channel that is told of the same by a notice of its own
+	Since  time.Time `json:",omitzero"` // when the first of its flags was raised, of one that follows an earlier message
+	Thread string    `json:"-"`         // receipt of that message, known when it is sent; "" for none
 }
 
 // News is what one step has to tell.

@@ -147,13 +147,25 @@ type Limit struct{ Low, High Units }
 // Channel is where notices go.
 type Channel struct {
 	Name   string
-	Kind   string // slack, console
-	Target string // slack: the channel's id
+	Kind   string // slack, webhook, mail, console
+	Target string // slack: the channel's id; webhook: the address
+	Mail   *Mail  // mail only
 	For    []string
 	Kinds  []Kind
 	From   int // minutes of the day; From == To for always
 	To     int
 	Short  bool
+
+	Fallback string        // the channel that takes over when this one delivers nothing, "" for none
+	After    time.Duration // how long it delivers nothing before that
+}
+
+// Mail is by which server, from whom and to whom a channel sends mail.
+type Mail struct {
+	Server   string // host:port
+	Security string // starttls, implicit, none
+	From     string
+	To       []string
 }
 
 // Series is one row of the register: what is known of a series beyond its name.

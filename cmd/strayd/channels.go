@@ -8,7 +8,9 @@ import (
 
 	"strayd/config"
 	"strayd/notify"
+	"strayd/notify/mail"
 	"strayd/notify/slack"
+	"strayd/notify/webhook"
 	"strayd/rules"
 )
 
@@ -37,16 +39,21 @@ func (a *app) askChannel(c *config.Config, to *addresses, ch rules.Channel, send
 	defer cancel()
 	route, err := to.route(ch)
 	switch {
-	case errors.Is(err, slack.ErrNoToken) && !send:
+	case errors.Is(err, notify.ErrNoCredential) && !send:
 		return "not asked: " + err.Error(), nil
 	case err != nil:
 		return "", err
 	case send:
 		return a.sendTest(ctx, c, ch, route.To)
 	}
-	if asks, ok := route.To.(*slack.Channel); ok {
-		access, err := asks.Check(ctx)
+	switch to := route.To.(type) {
+	case *slack.Channel:
+		access, err := to.Check(ctx)
 		return access.String(), err
+	case *mail.Mailer:
+		return to.Check(ctx)
+	case *webhook.Hook:
+		return "signs with the secret found; whether the receiver answers only --send can tell", nil
 	}
 	return "prints here, or where the daemon runs", nil
 }

@@ -5,14 +5,11 @@ import (
 	"fmt"
 	"io"
 	"log/slog"
-	"os"
 	"sync"
 	"time"
 
 	"strayd/config"
 	"strayd/notify"
-	"strayd/notify/slack"
-	"strayd/rules"
 )
 
 // postOffice is the sending loop of a configuration's channels, with what it needs.
@@ -27,7 +24,7 @@ type postOffice struct {
 // callGrace is how long a call in hand may go on after a stop.
 const callGrace = 5 * time.Second
 
-// openPost prepares the channels of a configuration. A missing chat token is an error only where a channel needs one.
+// openPost prepares the channels of a configuration. A missing credential is an error only where a channel needs it.
 func openPost(c *config.Config, outbox notify.Outbox, console io.Writer, log *slog.Logger, told func(notify.Event)) (*postOffice, error) {
 	teller := newTeller(c, nil)
 	s := notify.Sending{Outbox: outbox, Zone: c.Location, Grace: callGrace, Report: func(e notify.Event) {
@@ -46,44 +43,6 @@ func openPost(c *config.Config, outbox notify.Outbox, console io.Writer, log *sl
 	p := &postOffice{sender: notify.NewSender(s), outbox: outbox}
 	p.ctx, p.cancel = context.WithCancel(context.Background())
 	return p, nil
-}
-
-// addresses turns channels of a configuration into what takes their notices. Those of one service share its credentials.
-type addresses struct {
-	console io.Writer
-	service *slack.Service
-}
-
-func (a *addresses) route(ch rules.Channel) (r notify.Route, err error) {
-	r = notify.Route{Name: ch.Name}
-	if ch.Kind == "slack" {
-		to, err := a.slack(ch)
-		if err != nil {
-			return r, err
-		}
-		r.Service, r.To = "slack", to
-		return r, nil
-	}
-	r.To = notify.NewConsole(a.console)
-	return r, nil
-}
-
-func (a *addresses) slack(ch rules.Channel) (to *slack.Channel, err error) {
-	if a.service == nil {
-		if a.service, err = openSlack(); err != nil {
-			return nil, err
-		}
-	}
-	return a.service.Channel(ch.Target), nil
-}
-
-// openSlack finds the token. STRAYD_SLACK_URL names another address of the service's methods, for a relay or a test.
-func openSlack() (*slack.Service, error) {
-	token, err := slack.FindToken(os.Getenv)
-	if err != nil {
-		return nil, err
-	}
-	return slack.New(token, slack.Options{URL: os.Getenv("STRAYD_SLACK_URL")})
 }
 
 // Start begins to deliver.

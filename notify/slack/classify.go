@@ -67,7 +67,7 @@ func classTable(lists map[notify.Class]string) map[string]notify.Class {
 // classify says what to do after an error. connected is whether a connection stood, so that the message may have been sent.
 func (s *Service) classify(err error, connected bool) *notify.Failure {
 	f := classOf(err, connected)
-	f.Reason = s.redact(f.Reason)
+	f.Reason = s.token.Redact(f.Reason)
 	return f
 }
 

@@ -11,6 +11,8 @@ import (
 	"sync"
 	"testing"
 	"time"
+
+	"strayd/notify"
 )
 
 const (
@@ -129,7 +131,7 @@ func (f *fake) then(method string, steps ...http.HandlerFunc) {
 func channelOf(t *testing.T, f *fake, o Options) *Channel {
 	t.Helper()
 	o.URL = f.URL + "/api" // the slash that the library needs is ours to add
-	s, err := New(NewSecret(token), o)
+	s, err := New(notify.NewSecret(token), o)
 	if err != nil {
 		t.Fatal(err)
 	}

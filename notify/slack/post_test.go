@@ -188,7 +188,7 @@ func TestNotReached(t *testing.T) {
 		"tls version":     {URL: untrusted.URL, Transport: wrongTLS},
 		"silent at hello": {URL: "https://" + silent.Addr().String() + "/", Timeout: 200 * time.Millisecond},
 	} {
-		s, err := New(NewSecret(token), o)
+		s, err := New(notify.NewSecret(token), o)
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -230,12 +230,12 @@ func TestNoRedirects(t *testing.T) {
 
 func TestAddresses(t *testing.T) {
 	for _, bad := range []string{"chat.invalid", "ftp://chat.invalid/", "https://", "https://user@chat.invalid/", "https://chat.invalid/?a=b", "://"} {
-		if _, err := New(NewSecret(token), Options{URL: bad}); err == nil {
+		if _, err := New(notify.NewSecret(token), Options{URL: bad}); err == nil {
 			t.Errorf("%q is taken", bad)
 		}
 	}
-	if _, err := New(Secret{}, Options{}); !errors.Is(err, ErrNoToken) {
-		t.Errorf("without a token: %v", err)
+	if _, err := New(notify.Secret{}, Options{}); err == nil {
+		t.Error("taken without a token")
 	}
 	for given, want := range map[string]string{"": "https://slack.com/api/", "http://127.0.0.1:1/api": "http://127.0.0.1:1/api/", "https://a.invalid/": "https://a.invalid/"} {
 		if got, err := baseURL(given); got != want || err != nil {

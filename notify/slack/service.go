@@ -12,6 +12,8 @@ import (
 	"time"
 
 	"github.com/slack-go/slack"
+
+	"strayd/notify"
 )
 
 // Options of a Service. The zero value is for use.
@@ -24,21 +26,21 @@ type Options struct {
 // Service is one workspace, reached with one token.
 type Service struct {
 	api    func() *slack.Client // behind a function, since the client holds the token as plain text
-	token  Secret
+	token  notify.Secret
 	scopes atomic.Pointer[[]string] // of the token, as the last answer that said so named them
 }
 
 // New prepares a service; nothing is called yet.
-func New(token Secret, o Options) (*Service, error) {
+func New(token notify.Secret, o Options) (*Service, error) {
 	if token.Empty() {
-		return nil, ErrNoToken
+		return nil, errors.New("an empty token for the chat")
 	}
 	base, err := baseURL(o.URL)
 	if err != nil {
 		return nil, err
 	}
 	s := &Service{token: token}
-	client := slack.New(token.reveal(), slack.OptionHTTPClient(httpClient(o)), slack.OptionAPIURL(base),
+	client := slack.New(token.Reveal(), slack.OptionHTTPClient(httpClient(o)), slack.OptionAPIURL(base),
 		slack.OptionOnResponseHeaders(func(_ string, h http.Header) { s.noteScopes(h) }))
 	s.api = func() *slack.Client { return client }
 	return s, nil
@@ -102,14 +104,6 @@ func (s *Service) noteScopes(h http.Header) {
 func (s *Service) has(scope string) bool {
 	scopes := s.scopes.Load()
 	return scopes != nil && slices.Contains(*scopes, scope)
-}
-
-// redact takes the token out of a text, should it ever be in one.
-func (s *Service) redact(text string) string {
-	for _, t := range []string{s.token.reveal(), url.QueryEscape(s.token.reveal())} {
-		text = strings.ReplaceAll(text, t, hidden)
-	}
-	return text
 }
 
 // String names the service without its token.

@@ -1,6 +1,6 @@
 //go:build unix
 
-package slack
+package notify
 
 import (
 	"io/fs"
@@ -8,7 +8,7 @@ import (
 	"syscall"
 )
 
-// othersMay is the permission bits that a token's file must not have. A credential that the service manager owns and lets us read
+// othersMay is the permission bits that a secret's file must not have. A credential that the service manager owns and lets us read
 // by an access list shows that list's mask in the group's place.
 func othersMay(info fs.FileInfo, credential bool) fs.FileMode {
 	stat, ok := info.Sys().(*syscall.Stat_t)

@@ -1,6 +1,6 @@
 //go:build !unix
 
-package slack
+package notify
 
 import "io/fs"
 
