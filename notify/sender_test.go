@@ -156,7 +156,7 @@ func TestDeadChannels(t *testing.T) {
 		m, dead, other := &memory{}, newChat(fails(DeadChannel, 0)), newChat()
 		m.fill("desk", 2)
 		m.fill("other", 1)
-		routes := []Route{{"desk", "chat", dead, Hours{}}, {"other", "chat", other, Hours{}}}
+		routes := []Route{{Name: "desk", Service: "chat", To: dead}, {Name: "other", Service: "chat", To: other}}
 		s, events := sendFor(time.Hour, Sending{Outbox: m, Routes: routes})
 		equal(t, "states", m.states(), "waiting waiting sent")
 		equal(t, "posts", len(dead.posts), 1)
@@ -170,7 +170,7 @@ func TestDeadChannels(t *testing.T) {
 	bubble(t, func(t *testing.T) { // dead credentials: the whole service stops with one alarm, other services go on
 		m, dead, same, console := &memory{}, newChat(fails(DeadAll, 0)), newChat(), newChat()
 		m.fill("desk", 1)
-		s, events := sendWhile(m, []Route{{"desk", "chat", dead, Hours{}}, {"same", "chat", same, Hours{}}, {"console", "", console, Hours{}}},
+		s, events := sendWhile(m, []Route{{Name: "desk", Service: "chat", To: dead}, {Name: "same", Service: "chat", To: same}, {Name: "console", Service: "", To: console}},
 			func() {
 				time.Sleep(time.Minute)
 				m.fill("same", 1)
@@ -192,7 +192,7 @@ func TestADeadServiceStopsAtOnce(t *testing.T) {
 	bubble(t, func(t *testing.T) {
 		m := &memory{}
 		m.fill("desk", 1)
-		routes := []Route{{"desk", "chat", newChat(fails(DeadAll, 0)), Hours{}}, {"same", "chat", newChat(), Hours{}}}
+		routes := []Route{{Name: "desk", Service: "chat", To: newChat(fails(DeadAll, 0))}, {Name: "same", Service: "chat", To: newChat()}}
 		s := NewSender(Sending{Outbox: m, Routes: routes})
 		ctx, cancel := context.WithCancel(context.Background())
 		done := make(chan struct{})
@@ -229,8 +229,8 @@ func TestTurnsOfAService(t *testing.T) {
 		for _, name := range []string{"desk", "same", "mail"} {
 			m.fill(name, 3)
 		}
-		sendFor(time.Hour, Sending{Outbox: m, Routes: []Route{{"desk", "chat", slow("chat"), Hours{}}, {"same", "chat", slow("chat"), Hours{}},
-			{"mail", "mail", slow("mail"), Hours{}}}})
+		sendFor(time.Hour, Sending{Outbox: m, Routes: []Route{{Name: "desk", Service: "chat", To: slow("chat")}, {Name: "same", Service: "chat", To: slow("chat")},
+			{Name: "mail", Service: "mail", To: slow("mail")}}})
 		equal(t, "states", m.states(), "sent sent sent sent sent sent sent sent sent")
 		equal(t, "calls at a time", most, map[string]int{"chat": 1, "mail": 1, "both": 2})
 	})
@@ -407,11 +407,11 @@ func TestHoursHold(t *testing.T) {
 		_ = m.Add([]rules.Notice{test})
 		other := newChat()
 		hours := Hours{From: 7 * 60, To: 19 * 60}
-		s, _ := sendFor(time.Hour, Sending{Outbox: m, Routes: []Route{{"desk", "", c, hours}, {"other", "", other, hours}}})
+		s, _ := sendFor(time.Hour, Sending{Outbox: m, Routes: []Route{{Name: "desk", To: c, Hours: hours}, {Name: "other", To: other, Hours: hours}}})
 		h, _ := s.Health()
 		equal(t, "state", fmt.Sprintf("%s %s", h[0].State, h[0].Overdue), "held 0s")
 		equal(t, "a test is not held", len(other.posts), 1)
-		sendFor(7*time.Hour, Sending{Outbox: m, Routes: []Route{{"desk", "", c, hours}, {"other", "", other, hours}}})
+		sendFor(7*time.Hour, Sending{Outbox: m, Routes: []Route{{Name: "desk", Service: "", To: c, Hours: hours}, {Name: "other", Service: "", To: other, Hours: hours}}})
 		equal(t, "posts", c.posts, []string{"n1@25200"}) // 07:00
 	})
 }
