@@ -12,6 +12,8 @@ const (
 	keptFiles = 100
 	// presenceCells bounds how much is read to know who is expected, and fewestFiles how little: of very many series fewer files are asked.
 	presenceCells, fewestFiles = 4 << 20, 5
+	// manySeries is from how many series on a file that lacks none of the day before is not looked at further.
+	manySeries = 50_000
 )
 
 // noteTaken remembers an accepted file that brought something new.
@@ -98,6 +100,11 @@ func (g *fileGate) completeness() (*rules.Refusal, error) {
 	if last == rules.NoDate || g.p.Settings.CalendarFor("").Between(last, g.p.lastTaken(g.feed.Name)) > lookBack {
 		return nil, nil
 	}
+	if g.j.heldNames >= manySeries {
+		if whole, err := g.likeBefore(last); whole || err != nil {
+			return nil, err
+		}
+	}
 	list, files := g.before(last)
 	came, before, err := g.came(list)
 	if err != nil || len(before) < fewestFiles {
@@ -117,6 +124,40 @@ func (g *fileGate) completeness() (*rules.Refusal, error) {
 		g.flags = append(g.flags, g.missing(last, note))
 	}
 	return nil, nil
+}
+
+// likeBefore says of a very large file that it lacks none of the series that have a value on the date before, which the feed brought:
+// then nobody is looked for further back.
+func (g *fileGate) likeBefore(last rules.Date) (bool, error) {
+	n, _ := slices.BinarySearch(g.j.held, last)
+	if n == 0 || g.p.lastTaken(g.feed.Name) != g.j.held[n-1] || g.p.Settings.CalendarFor("").Between(g.j.held[n-1], last) > 1 {
+		return false, nil
+	}
+	columns := map[uint32]*Column{}
+	for i := len(g.sheet.Columns) - 1; i >= 0 && g.sheet.Columns[i].Date == last; i-- {
+		columns[g.sheet.Columns[i].Block] = g.sheet.Columns[i]
+	}
+	before, now := make([]int64, BlockSize), make([]int64, BlockSize)
+	for _, bl := range allBlocks(g.j.heldNames, rules.NoDate) {
+		ok, err := g.v.Fill(Returns, g.j.held[n-1], bl.number, 0, before[:bl.series])
+		if err != nil {
+			return false, err
+		}
+		c := columns[bl.number]
+		if !ok {
+			continue
+		}
+		if c == nil {
+			return false, nil
+		}
+		c.Fill(now[:bl.series], 0, g.sheet.What.Places())
+		for i, v := range before[:bl.series] {
+			if now[i] == Missing64 && v != Missing64 {
+				return false, nil
+			}
+		}
+	}
+	return true, nil
 }
 
 // came counts by series in how many of the files or dates it had a value. It gives back those that had any.

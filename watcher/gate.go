@@ -11,7 +11,7 @@ import (
 
 const (
 	// sampleBlocks and sampleWidth bound how much of a very large file is held against the past: runs of series of evenly spread blocks.
-	sampleBlocks, sampleWidth = 8, 256
+	sampleBlocks, sampleWidth = 4, 128
 	// gatedDates is how many of a file's newest dates are held against the past.
 	gatedDates = 20
 )
