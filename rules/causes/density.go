@@ -14,21 +14,18 @@ type bell struct {
 	power int     // df + 1
 }
 
-// bells are the tails that a group may have, from heavy to light. Degrees of freedom below 3 have no use: the scale itself would be noise.
-var bells = [...]bell{bellOf(3), bellOf(4), bellOf(5), bellOf(8)}
-
-// heavy and usual index bells.
-const (
-	heavy = 0
-	usual = 2
+// The tails of ordinary values and of what happens. Values that follow their clusters of volatility have about five degrees of freedom.
+var (
+	usual = bellOf(5)
+	heavy = bellOf(3)
 )
 
-func bellOf(df int) bell {
+func bellOf(df int) *bell {
 	tail, err := stats.ScaledT(float64(df))
 	if err != nil {
-		panic(err) // the list above holds whole degrees above 2
+		panic(err) // both are above 2
 	}
-	return bell{tail, tail.Density(0), float64(df - 2), df + 1}
+	return &bell{tail, tail.Density(0), float64(df - 2), df + 1}
 }
 
 // at is the density at z:

@@ -7,8 +7,11 @@ import (
 )
 
 const (
-	slots = 256 // of the rings below: more than the longest window
+	slots = 256 // of the rings of a series: more than span
 	mask  = slots - 1
+
+	scaleSlots = 128 // of a scale's: more than long
+	scaleMask  = scaleSlots - 1
 
 	span  = 250 // dates that slopes, rates and lines are learnt from
 	guard = 60  // dates behind the scale that values are clipped by
@@ -26,10 +29,10 @@ const clipAt = 5
 // scale follows the deviation of one stream of numbers about 0: returns, or residuals. It goes by dates, so that what it says depends on
 // the last long + guard of them.
 type scale struct {
-	raw    [slots]float64 // by date, NaN where there is none
-	cut    [slots]int64   // clipped, in 1/fine
-	sorted []float64      // |raw| of the last guard dates, ascending
-	n      [3]int         // of the last short, guard and long dates
+	raw    [scaleSlots]float64 // by date, NaN where there is none
+	cut    [scaleSlots]int32   // clipped, in 1/fine
+	sorted []float64           // |raw| of the last guard dates, ascending
+	n      [3]int              // of the last short, guard and long dates
 	total  [3]int64
 	square [3]int64
 }
@@ -47,18 +50,19 @@ func newScale() scale {
 // expire forgets what leaves the windows when date t is about to be judged.
 func (s *scale) expire(t int) {
 	for k, b := range boxes {
-		if at := (t - b - 1) & mask; s.raw[at] == s.raw[at] {
+		if at := (t - b - 1) & scaleMask; s.raw[at] == s.raw[at] {
 			s.n[k]--
-			s.total[k] -= s.cut[at]
-			s.square[k] -= s.cut[at] * s.cut[at]
+			c := int64(s.cut[at])
+			s.total[k] -= c
+			s.square[k] -= c * c
 		}
 	}
-	if x := s.raw[(t-guard-1)&mask]; x == x {
+	if x := s.raw[(t-guard-1)&scaleMask]; x == x {
 		i := place(s.sorted, math.Abs(x))
 		copy(s.sorted[i:], s.sorted[i+1:])
 		s.sorted = s.sorted[:len(s.sorted)-1]
 	}
-	s.raw[t&mask] = math.NaN()
+	s.raw[t&scaleMask] = math.NaN()
 }
 
 // take enters the number of date t, clipped to five robust deviations unless it is to count in full. The bound goes by the numbers as
@@ -69,12 +73,13 @@ func (s *scale) take(t int, e, bound float64, full bool) {
 	if !full && bound > 0 {
 		c = min(max(e, -bound), bound)
 	}
-	at := t & mask
-	s.raw[at], s.cut[at] = e, int64(math.RoundToEven(c*fine))
+	at := t & scaleMask
+	cut := int64(math.RoundToEven(c * fine))
+	s.raw[at], s.cut[at] = e, int32(cut)
 	for k := range boxes {
 		s.n[k]++
-		s.total[k] += s.cut[at]
-		s.square[k] += s.cut[at] * s.cut[at]
+		s.total[k] += cut
+		s.square[k] += cut * cut
 	}
 	i := place(s.sorted, math.Abs(e))
 	s.sorted = append(s.sorted, 0)

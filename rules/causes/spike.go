@@ -36,7 +36,7 @@ func (p *Pool) spike(i int, a, b *look) float64 {
 	}
 	both := float64((1+a.x)*(1+b.x)) - 1
 	deviation := math.Sqrt(a.s*a.s + b.s*b.s)
-	fit := p.bell(i).at((both-a.mu-b.mu)/deviation) / deviation * (1 + a.x)
+	fit := usual.at((both-a.mu-b.mu)/deviation) / deviation * (1 + a.x)
 	return priorSpike * fit * b.width() * a.width() / (2 * size * math.Log(200)) / a.total
 }
 

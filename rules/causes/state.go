@@ -19,12 +19,12 @@ type state struct {
 	zeros, repeats coincidence // within span dates
 	seen           int
 
-	printed, before rules.Units // of the last date and the one before it; Missing
-	lastPrinted     rules.Units // the newest value, however old
-	lastAt          int         // its date
-	yesterday       float64     // return of the date before, NaN where there is none
-	unchanged       int         // dates in a row with the same value, at most 10
-	sofar           float64     // one plus the return since the month began
+	printed     rules.Units // of the last date; Missing
+	lastPrinted rules.Units // the newest value, however old
+	lastAt      int         // its date
+	yesterday   float64     // return of the date before, NaN where there is none
+	unchanged   int         // dates in a row with the same value, at most 10
+	sofar       float64     // one plus the return since the month began
 
 	event int // the first that may still matter
 
@@ -66,7 +66,8 @@ type held struct {
 }
 
 func newState() state {
-	st := state{own: newScale(), rest: newScale(), grid: newGrid(), printed: rules.Missing, before: rules.Missing, lastPrinted: rules.Missing, chain: chain{partner: -1}, yesterday: math.NaN(), sofar: 1}
+	st := state{own: newScale(), rest: newScale(), grid: newGrid(), chain: chain{partner: -1}, yesterday: math.NaN(), sofar: 1,
+		printed: rules.Missing, lastPrinted: rules.Missing}
 	for i := range st.used {
 		st.used[i], st.ref[i] = math.NaN(), math.NaN()
 	}
@@ -116,7 +117,7 @@ func (st *state) leaveOut(t int, m float64) {
 // remember keeps the printed value for the comparisons to come. Coincidences count whatever was concluded of them: a series that stands
 // still by nature must be able to show it.
 func (st *state) remember(t int, u rules.Units, lk *look) {
-	st.before, st.printed = st.printed, u
+	st.printed = u
 	if u == rules.Missing {
 		return
 	}

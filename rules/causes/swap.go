@@ -71,7 +71,7 @@ func (p *Pool) exchanged(i, j int) float64 {
 	if int(b.places) > a.digits {
 		width *= a.rare
 	}
-	return width * p.fits(i, a, b.x)
+	return width * a.fits(b.x)
 }
 
 // total is the weight of all that may explain a value, but for a swap.

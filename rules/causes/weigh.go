@@ -1,10 +1,6 @@
 package causes
 
-import (
-	"math"
-
-	"strayd/rules"
-)
+import "strayd/rules"
 
 // Priors: how often a value is wrong in each way, before anything is known of it. They are a judgement from practice, no source: scale and
 // sign slips once in some 1,000 to 3,000 values, a value sent again or left at zero once in 300.
@@ -66,9 +62,9 @@ func (p *Pool) weigh(i int) *weighing {
 	w := p.weighing(i)
 	lk, st := &p.looks[i], &p.states[i]
 	w.ordinary = p.ordinary(i)
-	w.genuine = p.rate(i) * p.genuine(lk)
-	p.scales(w, lk, st)
-	p.again(w, lk, st)
+	w.genuine = p.rate(i) * lk.genuine()
+	p.scales(w, lk)
+	p.again(w, lk)
 	p.payouts(w, lk, i)
 	p.currency(w, lk, i)
 	p.runs(w, lk, st)
@@ -88,15 +84,15 @@ func (p *Pool) weighing(i int) *weighing {
 }
 
 // fits is the density of a return where the reference foresees it.
-func (p *Pool) fits(i int, lk *look, x float64) float64 {
-	return p.bell(i).at((x-lk.mu)/lk.s) / lk.s
+func (lk *look) fits(x float64) float64 {
+	return usual.at((x-lk.mu)/lk.s) / lk.s
 }
 
 // ordinary is the probability of the printed value on an ordinary day: the cell around it, and the zeros and repeats that the series has
 // beyond chance.
 func (p *Pool) ordinary(i int) float64 {
 	lk, st := &p.looks[i], &p.states[i]
-	like := p.bell(i).cell(lk.x, lk.width(), lk.mu, lk.s)
+	like := usual.cell(lk.x, lk.width(), lk.mu, lk.s)
 	switch {
 	case lk.mark&markZero != 0:
 		like += natural(st.zeros, lk.mark&markAgain != 0, st.seen, 0.49*lk.tick/lk.own)
@@ -106,32 +102,8 @@ func (p *Pool) ordinary(i int) float64 {
 	return max(like, 1e-300)
 }
 
-// leastRuns is how many runs show that zeros or repeats are a series' nature. One run of a stale price does not.
-const leastRuns = 3
-
-// natural is the probability of one more coincidence beyond what the tick brings about: that a run goes on, or that one begins. What
-// chance may bring about is taken off with two deviations of its count. Two draws of a t5 fall into one cell with probability 0.32
-// tick/deviation, a draw into the cell of zero with 0.49 tick/deviation.
-func natural(c coincidence, again bool, of int, chance float64) float64 {
-	if c.runs < leastRuns {
-		return 0
-	}
-	begins := beyond(c.runs, of, chance)
-	if !again {
-		return begins
-	}
-	return max(begins, beyond(c.days-c.runs, c.days, chance))
-}
-
-// beyond is the share of days with a coincidence, beyond chance.
-func beyond(count, of int, chance float64) float64 {
-	expected := float64(of) * min(chance, 1)
-	return max(0, float64(count)-expected-2*math.Sqrt(expected+1)) / float64(of)
-}
-
 // genuine is the probability of the printed value if something happened: half as wide moves of the series' own size, half of its residual.
-func (p *Pool) genuine(lk *look) float64 {
-	b := &bells[heavy]
+func (lk *look) genuine() float64 {
 	wide, near := 6*lk.own, 4*lk.s
-	return lk.width() * (b.at((lk.x-lk.mu)/wide)/wide + b.at((lk.x-lk.mu)/near)/near) / 2
+	return lk.width() * (heavy.at((lk.x-lk.mu)/wide)/wide + heavy.at((lk.x-lk.mu)/near)/near) / 2
 }

@@ -110,8 +110,7 @@ func (p *Pool) disagreement(said []implied, m float64) (agreed, odds float64) {
 // better is the logarithm of how much likelier one distance is than another, in deviations. A follower may be wrong itself: a small share of a
 // flat density keeps it from saying more than e^6.5, and anything where both are far.
 func better(z, than float64) float64 {
-	b := &bells[usual]
-	return math.Log((b.at(z) + flat) / (b.at(than) + flat))
+	return math.Log((usual.at(z) + flat) / (usual.at(than) + flat))
 }
 
 // weightedMedian weighs by the inverse of the variance.
