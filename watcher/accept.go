@@ -263,13 +263,31 @@ func joinUsed(used []UsedColumn) []UsedColumn {
 	out := used[:0]
 	for _, u := range used {
 		if n := len(out) - 1; n >= 0 && out[n].Range == u.Range && out[n].Date == u.Date && out[n].Block == u.Block {
-			out[n].Offsets = append(out[n].Offsets, u.Offsets...)
-			out[n].Values = append(out[n].Values, u.Values...)
+			out[n] = out[n].with(u)
 			continue
 		}
 		out = append(out, u)
 	}
 	return out
+}
+
+// with joins two parts of a column, whose cells may lie between each other.
+func (u UsedColumn) with(o UsedColumn) UsedColumn {
+	if len(u.Offsets) == 0 || u.Offsets[len(u.Offsets)-1] < o.Offsets[0] {
+		u.Offsets, u.Values = append(u.Offsets, o.Offsets...), append(u.Values, o.Values...)
+		return u
+	}
+	joined := UsedColumn{Range: u.Range, Date: u.Date, Block: u.Block}
+	for i, k := 0, 0; i < len(u.Offsets) || k < len(o.Offsets); {
+		if k == len(o.Offsets) || i < len(u.Offsets) && u.Offsets[i] < o.Offsets[k] {
+			joined.Offsets, joined.Values = append(joined.Offsets, u.Offsets[i]), append(joined.Values, u.Values[i])
+			i++
+		} else {
+			joined.Offsets, joined.Values = append(joined.Offsets, o.Offsets[k]), append(joined.Values, o.Values[k])
+			k++
+		}
+	}
+	return joined
 }
 
 // numberFlags orders the flags by date, series and kind, gives the new ones their refs, and turns flags of a first load into

@@ -45,9 +45,19 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 		}
 	}
 	w.viewHits(t, d, fresh, out)
+	if w.j.lone && d.col != nil {
+		if err := w.loneHits(t, fresh); err != nil {
+			return err
+		}
+	}
 	present := count(fresh)
 	for n := range w.hits {
 		w.judge(d.date, &w.hits[n])
+	}
+	if w.j.lone {
+		if err := w.lone(t, d, old, out); err != nil {
+			return err
+		}
 	}
 	w.tally(t, present, fresh, out)
 	w.raise(t, d, fresh, out)

@@ -30,6 +30,9 @@ type judging struct {
 	nextRef    uint64
 	width      int // of the widest task
 	scales     *groupScales
+	lone       bool                   // values of series that are weighed by nothing but their own past are weighed
+	doubts     bool                   // and may be doubtful
+	crew       *crew                  // the others, nil for none
 	residuals  uint16                 // number in the ledger of residuals
 	concluded  uint16                 // number in the ledger of what the pool concluded, 0 where it has none
 	weighed    *weighed               // nil where no series of the file is weighed together with others

@@ -62,6 +62,8 @@ type leader struct {
 // nothing that it has not seen; else one is made anew and led through the dates on which its state depends.
 func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 	crew := newCrew(j.names, j.members, p.Settings.Events)
+	j.crew, j.doubts = crew, p.Settings.Doubtful > 0
+	j.lone = p.newWeigher == nil && (crew == nil || len(crew.series) < j.names.Len())
 	if crew == nil {
 		return nil, nil
 	}

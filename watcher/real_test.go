@@ -71,6 +71,46 @@ func takeRows(t *testing.T, m *memory, rows [][]entry, dates int, settings rules
 	}
 }
 
+// loneSettings have no group: every series is weighed by its own past.
+func loneSettings() rules.Settings {
+	return rules.Settings{Doubtful: 0.002, Ranges: []rules.Range{ranged("own", nil)}}
+}
+
+// Lone series are weighed alike, however their dates come; their errors are named and left out.
+func TestLoneSeriesInOneFileOrMany(t *testing.T) {
+	const history, days = 100, 80
+	for seed := range uint64(2) {
+		rows := market(rand.New(rand.NewPCG(seed, 11)), history+days)
+		var flags, used []string
+		for n, dates := range []int{1, 9, days} {
+			m := &memory{}
+			takeRows(t, m, rows[:history], history, loneSettings())
+			if dates == 1 {
+				for n := range days {
+					takeRows(t, m, rows[history+n:history+n+1], 1, loneSettings())
+				}
+			} else {
+				takeRows(t, m, rows[history:], dates, loneSettings())
+			}
+			f, u := told(t, m), taken(t, m, rows)
+			if n == 0 {
+				flags, used = f, u
+				weighedAgain(t, m)
+				for _, kind := range []string{"breach x100", "spike-reversal", "stale zero", "repeat repeat"} {
+					if !strings.Contains(strings.Join(f, "\n"), kind) {
+						t.Errorf("seed %d: no flag says %q", seed, kind)
+					}
+				}
+			}
+			differ(t, fmt.Sprintf("seed %d, %d dates a file: flags", seed, dates), f, flags)
+			differ(t, fmt.Sprintf("seed %d, %d dates a file: used values", seed, dates), u, used)
+			if v, _ := m.View(); watcher.Recheck(v, nil) != nil {
+				t.Errorf("seed %d: %v", seed, watcher.Recheck(v, nil))
+			}
+		}
+	}
+}
+
 // With the real pool too, the same flags stand and the windows take the same, whether dates come in one file, in many files of a pass, or
 // each in a pass of its own; a second look at the same files changes nothing; and what explain weighs again is what the flags say.
 func TestRealPoolInOneFileOrMany(t *testing.T) {

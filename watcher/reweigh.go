@@ -15,12 +15,15 @@ type Reweighed struct {
 	Residual        rules.Num
 }
 
-// Weigh makes the weighing of a value again, as it was known at a step: a pool is led through the dates before it. It is nil for a series
-// that is not weighed together with others.
+// Weigh makes the weighing of a value again, as it was known at a step: a pool is led through the dates before it, or, for a lone series, its
+// own past is gathered.
 func (r *Reader) Weigh(series string, date rules.Date, step uint32) (*Reweighed, error) {
 	l, member, err := r.leaderAt(series, step)
-	if err != nil || l == nil {
+	if err != nil {
 		return nil, err
+	}
+	if l == nil {
+		return r.weighLone(series, date, step)
 	}
 	if err := l.warm(date); err != nil {
 		return nil, err
@@ -100,4 +103,53 @@ func (l *leader) freshAt(date rules.Date, step uint32) error {
 		l.known = nil
 	}
 	return nil
+}
+
+// weighLone makes the weighing of a value of a lone series again.
+func (r *Reader) weighLone(series string, date rules.Date, step uint32) (*Reweighed, error) {
+	id, _ := r.Names.Find([]byte(series))
+	v := r.View.AsOf(step)
+	held, err := v.Dates(Returns)
+	if err != nil {
+		return nil, err
+	}
+	ids, err := rangeIDs(v)
+	if err != nil {
+		return nil, err
+	}
+	cell := make([]int64, 1)
+	read := func(d rules.Date) (printed, used rules.Units, ok bool, err error) {
+		if ok, err = v.Fill(Returns, d, id/BlockSize, int(id%BlockSize), cell); err != nil || !ok {
+			return rules.Missing, rules.Missing, ok, err
+		}
+		printed, used = rules.Units(cell[0]), rules.Units(cell[0])
+		cell[0] = 0
+		err = v.Patch(ids[concludedKey], d, id/BlockSize, int(id%BlockSize), cell)
+		if causes.Use(cell[0]) == causes.Out {
+			used = rules.Missing
+		}
+		return printed, used, true, err
+	}
+	value, _, _, err := read(date)
+	if err != nil || value == rules.Missing {
+		return nil, err
+	}
+	before := rules.Missing
+	var past []rules.Units
+	n, _ := slices.BinarySearch(held, date)
+	for n--; n >= 0 && len(past) < lonePast; n-- {
+		printed, used, ok, err := read(held[n])
+		if err != nil {
+			return nil, err
+		}
+		if ok && len(past) == 0 {
+			before = printed
+		}
+		if ok {
+			past = append(past, used)
+		}
+	}
+	slices.Reverse(past)
+	said, _ := causes.NewLone().Weigh(past, before, date, value)
+	return &Reweighed{View: &said}, nil
 }

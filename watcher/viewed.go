@@ -35,7 +35,7 @@ func (w *worker) viewHits(t task, d *day, fresh []int64, out *outcome) {
 	}
 	for n := range said.Earlier {
 		e := &said.Earlier[n]
-		if e.Member >= from && e.Member < to && w.settleEarlier(t, e, d.date, out) && said.fresh[e.Member] {
+		if e.Member >= from && e.Member < to && w.settleEarlier(w.j.weighed.crew.series[e.Member], e, d.date, out) && said.fresh[e.Member] {
 			if h := w.hitAt(w.memberAt(t, e.Member), true); h.out {
 				h.taken = true
 			}
@@ -128,6 +128,9 @@ func (w *worker) fillView(f *FlagRow, date rules.Date, h *hit) {
 			f.LooksLike, f.Share, f.Implied = rules.CauseMarket, rules.Num{}, rules.Num{}
 		}
 	}
+	if v.Member < 0 { // a lone series
+		return
+	}
 	if n := w.j.weighed.days[date].followers(v.Member); n > 0 {
 		note := rules.Counted(n, "series") + " held against it agree that it is wrong"
 		if f.Kind == rules.KindBreach && f.Note != "" {
@@ -170,8 +173,7 @@ func (w *worker) fillDoubt(f *FlagRow, h *hit) {
 
 // settleEarlier notes on the flag of the date before what it looks like now, and keeps what it looked like. It says whether there is
 // such a flag.
-func (w *worker) settleEarlier(t task, v *causes.View, now rules.Date, out *outcome) (found bool) {
-	series := w.j.weighed.crew.series[v.Member]
+func (w *worker) settleEarlier(series uint32, v *causes.View, now rules.Date, out *outcome) (found bool) {
 	var flags []*FlagRow
 	for n := len(out.flags) - 1; n >= 0 && out.flags[n].Date >= v.Date; n-- {
 		if f := out.flags[n]; f.Date == v.Date && f.SeriesID == series && slices.Contains(rules.OutOfLine, f.Kind) {

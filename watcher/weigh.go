@@ -28,12 +28,15 @@ type crew struct {
 
 // newCrew finds the members among the names held. It is nil when there is none.
 func newCrew(names *Names, m *rules.Membership, events []rules.Event) *crew {
-	if m.Lone() {
+	if m.Lone() && len(events) == 0 {
 		return nil
 	}
 	c := &crew{at: map[uint32]int32{}}
 	var group, reference, currency []string
 	named := m.Held()
+	for _, e := range events {
+		named[e.Series] = true
+	}
 	all := make([]string, names.Len())
 	for id := range uint32(names.Len()) {
 		name := string(names.Name(id))

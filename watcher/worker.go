@@ -53,6 +53,7 @@ type worker struct {
 	stored           []*State     // by lane: what a recheck holds against the replay
 	residuals        *residuals   // nil where no lane judges them
 	task             task         // at hand
+	past             pastRows     // of its lone series
 }
 
 // hit is a series that is not plainly inside everything on the date at hand.
@@ -103,6 +104,7 @@ func (w *worker) run(t task) (outcome, error) {
 		first = t.days[0].date
 	}
 	w.begin(t)
+	w.beginPast(first)
 	replay := w.j.heldFrom(t.block, first)
 	if err := w.noteNewest(t, replay); err != nil {
 		return out, err
