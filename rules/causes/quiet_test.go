@@ -154,6 +154,36 @@ func TestQuietBooks(t *testing.T) {
 	}
 }
 
+// After volatility doubles for good, of factor and residual, doubts are back within twice their share between the 60th day and the 250th.
+func TestAfterVolatilityDoubles(t *testing.T) {
+	const share, turn, days = 0.002, 400, 650
+	flags, values := 0, 0
+	for seed := range uint64(4) {
+		members, names, list := quietBooks[3].fill(seed, days)
+		for n := turn; n < days; n++ {
+			for i, u := range list[n].Values {
+				list[n].Values[i] = nearest(2*u.Float(), 6)
+			}
+		}
+		p := NewPool(members, names, share)
+		for n, d := range list {
+			r := p.Step(d)
+			if n < turn+60 {
+				continue
+			}
+			values += len(members)
+			for _, v := range r.Views {
+				if v.Kind != "" {
+					flags++
+				}
+			}
+		}
+	}
+	if limit := 2 * share * float64(values); float64(flags) > limit+3*math.Sqrt(limit) {
+		t.Errorf("%d flags in %d values, at most %.0f", flags, values, limit)
+	}
+}
+
 // finite says where a figure is not a number.
 func finite(t *testing.T, name string, r *Result) {
 	t.Helper()
