@@ -29,6 +29,7 @@ func rowList() []row {
 		{"rerun", (*bench).rerun},
 		{"age", (*bench).age},
 		{"drill", (*bench).drills},
+		{"regimes", (*bench).regimes},
 	}
 }
 

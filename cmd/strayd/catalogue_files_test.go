@@ -197,8 +197,8 @@ func contextRows() []catalogueRow {
 			// By the numbers alone it cannot be told from a distribution that the calendar does not have.
 			c.flagged(record{"series": withBenchmark, "looks_like": "genuine||missed-distribution|double-distribution"}, "")
 		}},
-		{40, "managed prices: half of each day's return comes a day late", outOfReach, "each value is one that the series might have; only the pattern of " +
-			"weeks tells",
+		{40, "managed prices: half of each day's return comes a day late", outOfReach, "each value is one that the series might have; only " +
+			"the pattern of weeks tells",
 			func(c *catalogue) {
 				held := 0.0
 				for days := range 10 {

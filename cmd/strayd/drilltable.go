@@ -1,6 +1,7 @@
 package main
 
 import (
+	"cmp"
 	"fmt"
 	"slices"
 
@@ -149,7 +150,7 @@ func (d *driller) table(sections []drillSection, lines []drill.Quiet, refused, f
 			fields(w)
 		}
 		fields(w, s.by, "planted", "same day", "5 days", "named right", "wrong", "not named", "flags")
-		for _, r := range s.rows {
+		for _, r := range fewGroups(s.rows) {
 			fields(w, printable(r.Name), fmt.Sprint(r.Planted), shareOf(r.SameDay, r.Planted), shareOf(r.FiveDays, r.Planted), namedShare(r.Right, &r),
 				namedShare(r.Wrong, &r), namedShare(r.Not, &r), fmt.Sprint(r.Flags))
 		}
@@ -157,7 +158,11 @@ func (d *driller) table(sections []drillSection, lines []drill.Quiet, refused, f
 	if err := w.Flush(); err != nil {
 		return err
 	}
-	fmt.Fprintf(out, "\nNamed right, wrong and not: of those caught within five days. Group and reference: errors in single series.\n\n")
+	fmt.Fprintf(out, "\nNamed right, wrong and not: of those caught within five days. Group and reference: errors in single series.\n")
+	if n := len(sections[1].rows); len(fewGroups(sections[1].rows)) < n {
+		fmt.Fprintf(out, "Of %s, the %d of which least was caught; --format csv has all.\n", rules.Counted(n, "group"), mostRows)
+	}
+	fmt.Fprintln(out)
 	w = columns(out)
 	fields(w, "untouched days", "values", "flags", "promised")
 	for _, q := range lines {
@@ -173,6 +178,23 @@ func (d *driller) table(sections []drillSection, lines []drill.Quiet, refused, f
 	}
 	_, err := fmt.Fprintf(out, "\n%s\n", drillCaution)
 	return err
+}
+
+// mostRows is how many groups the table shows.
+const mostRows = 20
+
+// fewGroups keeps the rows of which least was caught where there are too many to be read; CSV and JSON have them all.
+func fewGroups(rows []drill.Row) []drill.Row {
+	if len(rows) <= max(mostRows, len(drill.Kinds)) {
+		return rows
+	}
+	rows = slices.Clone(rows)
+	slices.SortStableFunc(rows, func(a, b drill.Row) int {
+		x, _ := drill.Share(a.FiveDays, a.Planted)
+		y, _ := drill.Share(b.FiveDays, b.Planted)
+		return cmp.Compare(x, y)
+	})
+	return rows[:mostRows]
 }
 
 func seedWords(o *drillOptions) string {
