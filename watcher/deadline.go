@@ -45,7 +45,7 @@ func (p *Pass) lateStep(v View, f rules.Feed, date rules.Date, due time.Time) (*
 	}
 	raised := false
 	if err := v.Flags(true, func(g rules.Flag) bool {
-		raised = raised || g.Kind == rules.KindLate && g.Feed == f.Name && g.Date == date
+		raised = raised || g.Feed == f.Name && g.Date == date && tells(&g)
 		return !raised
 	}); err != nil || raised {
 		return nil, err
@@ -56,6 +56,12 @@ func (p *Pass) lateStep(v View, f rules.Feed, date rules.Date, due time.Time) (*
 	b.File.File.Feed = f.Name
 	b.Flags = []*FlagRow{{Flag: flag, SeriesID: NoSeries, New: true}}
 	return b, nil
+}
+
+// tells says whether a flag of a feed and date tells already that the date is not whole: by a late flag, or by one that asks something and
+// names the file that was refused or the series that are missing.
+func tells(g *rules.Flag) bool {
+	return g.Kind == rules.KindLate || (g.Kind == rules.KindRefused || g.Kind == rules.KindMissing) && g.Standing.Asks()
 }
 
 // arrival is what a feed gave for a date, held against the series that it gave on its date before. It is nil when the date is none of the
