@@ -102,7 +102,7 @@ func (c *chain) next() {
 	for d := range c.n {
 		total := 1.0
 		for k := range post {
-			post[k] = float64(c.ratio[d][k]) * (startPrior[k] + stays[k]*post[k])
+			post[k] = float64(float64(c.ratio[d][k]) * (startPrior[k] + float64(stays[k]*post[k])))
 			total += post[k]
 		}
 		for k := range post {

@@ -27,7 +27,7 @@ func (p *Pool) runs(w *weighing, lk *look, st *state) {
 	for k, base := range [2]float64{1 + st.printed.Float(), st.sofar} {
 		if base > 0.2 && base != 1 && st.printed != rules.Missing {
 			y := (1+lk.x)/base - 1
-			l := since[k] * lk.width() / base * lk.fits(y)
+			l := float64(since[k] * lk.width() / base * lk.fits(y))
 			if l > best {
 				best, implied = l, y
 			}

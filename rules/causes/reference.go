@@ -118,7 +118,7 @@ func (f *fit) strained(list []triple) bool {
 	for i := range list {
 		v := &list[i]
 		e := v.x - f.shift - float64(f.slope*v.m) - float64(f.lag*v.l)
-		e *= e
+		e = float64(e * e)
 		all += e
 		if e > most {
 			most = e

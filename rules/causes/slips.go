@@ -28,9 +28,9 @@ func (p *Pool) scales(w *weighing, lk *look) {
 	for _, f := range factors {
 		k := float64(f.by)
 		y := lk.x / k
-		like := (1 - rounded) * lk.width() / k
+		like := float64((1 - rounded) * lk.width() / k)
 		if int(lk.places)+f.digits <= lk.digits {
-			like += rounded * lk.tick
+			like += float64(rounded * lk.tick)
 		}
 		p.add(w, f.cause, f.prior, like*lk.fits(y), rules.Some(y))
 	}
@@ -46,7 +46,7 @@ func (lk *look) hundredth(y float64) float64 {
 		like = 0.5 * usual.cell(y, 100*lk.tick, lk.mu, lk.s)
 	}
 	if int(lk.places) <= lk.digits+2 {
-		like += 0.5 * lk.tick * lk.fits(y)
+		like += float64(0.5 * lk.tick * lk.fits(y))
 	}
 	return like
 }

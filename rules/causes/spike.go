@@ -35,7 +35,7 @@ func (p *Pool) spike(i int, a, b *look) float64 {
 		return 0
 	}
 	both := float64((1+a.x)*(1+b.x)) - 1
-	deviation := math.Sqrt(a.s*a.s + b.s*b.s)
+	deviation := math.Sqrt(float64(a.s*a.s) + float64(b.s*b.s))
 	fit := usual.at((both-a.mu-b.mu)/deviation) / deviation * (1 + a.x)
 	return priorSpike * fit * b.width() * a.width() / (2 * size * math.Log(200)) / a.total
 }
