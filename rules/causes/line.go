@@ -79,7 +79,7 @@ const (
 	guessLends = 2000 // values that the guess counts for beside the pool's own
 	guessEdge  = -1.0 // where the guess has its line: the tail of the log odds falls as 1/odds
 	leastLine  = -4.0
-	wrongShare = 4.8e-3 // of all values, by the priors
+	wrongShare = 5e-3 // of all values, by the priors
 )
 
 // learn renews, once a week, how probably a value of given log odds is no error, and how often something happens.

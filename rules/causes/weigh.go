@@ -16,7 +16,7 @@ const (
 	priorMissed     = 1e-3 // without a calendar
 	priorDoubled    = 3e-5
 	priorSplit      = 5e-5
-	priorFX         = 1e-4
+	priorFX         = 3e-4
 	priorSwap       = 1.5e-3
 	priorCumulative = 4e-4
 	priorShifted    = 5e-5
