@@ -85,7 +85,7 @@ func ParseWeek(s string) (Date, error) {
 	}
 	y, errYear := strconv.Atoi(year)
 	w, errWeek := strconv.Atoi(week)
-	if errYear != nil || errWeek != nil || len(year) != 4 || len(week) != 2 || w < 1 {
+	if errYear != nil || errWeek != nil || len(year) != 4 || len(week) != 2 || strings.Trim(year+week, "0123456789") != "" {
 		return NoDate, wrong
 	}
 	fourth, _ := DateOf(y, 1, 4) // ISO 8601: always in week 1

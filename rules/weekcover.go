@@ -21,6 +21,7 @@ const (
 // Cover is what one range concluded of one group's series over the dates up to the end of a week.
 type Cover struct {
 	Range   string
+	Of      Basis
 	Group   string
 	Level   float64 // share that the breach line promises beyond it; 0 where it states none
 	Share   float64 // CoverShare, or the watch line's where the range cannot speak of one in a hundred
@@ -190,7 +191,7 @@ func Pool(covers []Cover) (p Cover) {
 	days := map[Date]*CoverDay{}
 	for i := range covers {
 		c := &covers[i]
-		p.Range, p.Level, p.Share = c.Range, c.Level, c.Share
+		p.Range, p.Of, p.Level, p.Share = c.Range, c.Of, c.Level, c.Share
 		p.Series += c.Series
 		p.None += c.None
 		p.Outer.Add(c.Outer)

@@ -162,12 +162,13 @@ func (f *WeekFacts) ranges(w *WeekFigures) {
 	}
 }
 
-// separate counts the week's values beyond the breach line, those of a group on a market day as one.
+// separate counts the week's values beyond the breach line, those of a group on a market day as one; what the market left unexplained
+// stays apart.
 func (f *WeekFacts) separate(covers []Cover) (n int) {
 	market := f.marketDays()
 	for i := range covers {
 		for _, d := range Within(covers[i].Days, f.Span.Monday, f.Span.Sunday()) {
-			if market[groupDate{covers[i].Group, d.Date}] {
+			if covers[i].Of == Return && market[groupDate{covers[i].Group, d.Date}] {
 				n += min(1, d.Outer)
 			} else {
 				n += d.Outer

@@ -57,7 +57,7 @@ func Counted(n int, noun string) string {
 	switch {
 	case n == 1, noun == "series":
 		return Thousands(n) + " " + noun
-	case strings.HasSuffix(noun, "ch"):
+	case strings.HasSuffix(noun, "ch"), strings.HasSuffix(noun, "ss"):
 		return Thousands(n) + " " + noun + "es"
 	case strings.HasSuffix(noun, "ry"):
 		return Thousands(n) + " " + strings.TrimSuffix(noun, "y") + "ies"

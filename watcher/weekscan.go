@@ -42,7 +42,6 @@ func scanCover(ctx context.Context, v View, names *Names, s *rules.Settings, mon
 	}
 	j.scales = newGroupScales(j, v, nil)
 	w.worker = *newWorker(j, v)
-	w.lanes = slices.DeleteFunc(w.lanes, func(l *lane) bool { return l.gauge.Range.Of == rules.Residual })
 	end, _ := slices.BinarySearch(j.held, monday+7)
 	w.dates = j.held[max(0, end-rules.CoverDates-scanSlack):end]
 	for range w.lanes {
@@ -100,7 +99,7 @@ func (w *weekScan) cover(k int, group string) *rules.Cover {
 	c := w.covers[k][group]
 	if c == nil {
 		r := w.lanes[k].gauge.Range
-		c = &rules.Cover{Range: r.Name, Group: group, Level: levelOf(w.lanes[k], r.Breach), Share: levelOf(w.lanes[k], r.Watch)}
+		c = &rules.Cover{Range: r.Name, Of: r.Of, Group: group, Level: levelOf(w.lanes[k], r.Breach), Share: levelOf(w.lanes[k], r.Watch)}
 		for _, d := range w.dates {
 			c.Days = append(c.Days, rules.CoverDay{Date: d})
 		}
@@ -173,7 +172,11 @@ func (w *weekScan) loadPlain(t task, before rules.Date) error {
 
 // scan judges one date under one lane and lets its windows take it.
 func (w *weekScan) scan(t task, k int, l *lane, n int, tracks []track) error {
-	date, raw := w.dates[n], w.raw[:t.width]
+	date := w.dates[n]
+	raw, err := w.judgedOn(t, l, date)
+	if err != nil {
+		return err
+	}
 	l.rest(date, raw)
 	w.cand = l.candidates(raw, w.cand[:0])
 	for i := range raw {
@@ -204,6 +207,16 @@ func (w *weekScan) scan(t task, k int, l *lane, n int, tracks []track) error {
 		l.push(date, used)
 	}
 	return err
+}
+
+// judgedOn are the values of a date that a lane judges: the returns, which stand in raw, or their residuals.
+func (w *weekScan) judgedOn(t task, l *lane, date rules.Date) ([]int64, error) {
+	if !l.residual {
+		return w.raw[:t.width], nil
+	}
+	now := w.residuals.now[:t.width]
+	fillMissing(now)
+	return now, w.view.Patch(w.j.residuals, date, t.block, t.from, now)
 }
 
 func (w *weekScan) concluded(k, i, n int, v rules.Verdict, t *track) {
