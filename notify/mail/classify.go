@@ -73,8 +73,12 @@ func refused(err error) *notify.Failure {
 	return f
 }
 
-// hide takes the credentials out of a failure.
+// hide takes the credentials out of a failure, also in the form in which they are sent (RFC 4616).
 func (m *Mailer) hide(f *notify.Failure) *notify.Failure {
-	f.Reason = m.password.Redact(m.user.Redact(f.Reason))
+	if m.user.Empty() {
+		return f
+	}
+	both := notify.NewSecret("\x00" + m.user.Reveal() + "\x00" + m.password.Reveal())
+	f.Reason = m.password.Redact(m.user.Redact(both.Redact(f.Reason)))
 	return f
 }

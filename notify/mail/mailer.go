@@ -124,9 +124,18 @@ func address(text string) (*mail.Address, error) {
 // String names the mailer by its server.
 func (m *Mailer) String() string { return "mail through " + m.account.Server }
 
-// call is one connection to the server.
+// call is one connection to the server, closed when its context ends: the library asks the context only until it is connected.
 type call struct {
+	ctx  context.Context
 	conn net.Conn // nil when there was none
+	stop func() bool
+}
+
+func (c *call) end() {
+	if c.conn != nil {
+		c.stop()
+		_ = c.conn.Close() // the outcome stands by then
+	}
 }
 
 // client is the library's client of one call. It never logs.
@@ -164,7 +173,7 @@ func (m *Mailer) dial(c *call) gomail.DialContextFunc {
 		}
 		conn, err := d.DialContext(ctx, network, net.JoinHostPort(m.host, strconv.Itoa(m.port)))
 		if err == nil {
-			c.conn = conn
+			c.conn, c.stop = conn, context.AfterFunc(c.ctx, func() { _ = conn.Close() })
 		}
 		return conn, err
 	}

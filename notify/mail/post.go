@@ -18,16 +18,13 @@ const quitMost = 2 * time.Second
 // Post makes one attempt. The receipt is the Message-ID.
 func (m *Mailer) Post(ctx context.Context, n rules.Notice) (string, error) {
 	msg := m.message(n)
-	var c call
+	c := call{ctx: ctx}
+	defer c.end()
 	client, err := m.client(&c)
 	if err != nil {
 		return "", m.hide(&notify.Failure{Class: notify.DeadAll, Reason: err.Error()})
 	}
 	server, err := client.DialToSMTPClientWithContext(ctx)
-	if c.conn != nil {
-		defer c.conn.Close() //nolint:errcheck // the outcome stands by then
-		defer context.AfterFunc(ctx, func() { c.conn.Close() })()
-	}
 	if err != nil {
 		return "", m.hide(unreached(err, c.conn != nil))
 	}
@@ -77,15 +74,13 @@ func domain(address string) string { return address[strings.LastIndexByte(addres
 
 // Check connects, encrypts and signs in, and sends nothing. The error is what keeps notices from arriving.
 func (m *Mailer) Check(ctx context.Context) (said string, err error) {
-	var c call
+	c := call{ctx: ctx}
+	defer c.end()
 	client, err := m.client(&c)
 	if err != nil {
 		return "", m.hide(&notify.Failure{Class: notify.DeadAll, Reason: err.Error()})
 	}
 	server, err := client.DialToSMTPClientWithContext(ctx)
-	if c.conn != nil {
-		defer c.conn.Close() //nolint:errcheck // only asked
-	}
 	if err != nil {
 		return "", m.hide(unreached(err, c.conn != nil))
 	}
