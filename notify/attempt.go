@@ -179,14 +179,14 @@ func (w *worker) record(ctx context.Context, n *rules.Notice, c Class) {
 
 // die stops the channel, and its service when that is what is dead.
 func (w *worker) die(f *Failure) {
-	w.note(Stopped, f.Class, f.Reason)
+	w.stop(f.Class, f.Reason)
 	w.s.Report(Event{Channel: w.Name, Class: f.Class, Reason: f.Reason, Stopped: true})
 	if f.Class == DeadAll && w.Service != "" {
 		w.s.stopService(w.Service, f.Reason)
 	}
 }
 
-// worded is what a notice says when it is sent: its lines, and on the first whether it is late or perhaps a repeat.
+// worded is what a notice says when it is sent: its lines, and on the first whether it is late, perhaps a repeat, or another channel's.
 func worded(n rules.Notice, at time.Time, zone *time.Location) []string {
 	lines := slices.Clone(n.Lines)
 	if len(lines) == 0 {
@@ -194,6 +194,9 @@ func worded(n rules.Notice, at time.Time, zone *time.Location) []string {
 	}
 	if at.Sub(n.Made) > lateAfter {
 		lines[0] += " (late: of " + n.Made.In(zoneOr(zone)).Format("Mon 2006-01-02 15:04 MST") + ")"
+	}
+	if n.For != "" {
+		lines[0] += " (for " + name(n.For) + ", which does not deliver)"
 	}
 	if n.Repeat {
 		lines[0] += " (possible repeat)"

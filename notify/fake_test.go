@@ -48,6 +48,17 @@ func (m *memory) Next(channel string) (rules.Notice, bool, error) {
 	return rules.Notice{}, false, m.trouble
 }
 
+func (m *memory) Waiting(channel string) (out []rules.Notice, err error) {
+	m.mu.Lock()
+	defer m.mu.Unlock()
+	for _, r := range m.rows {
+		if r.Channel == channel && r.State == rules.NoticeWaiting {
+			out = append(out, r)
+		}
+	}
+	return out, m.trouble
+}
+
 func (m *memory) Sending(channel string) (out []rules.Notice, err error) {
 	m.mu.Lock()
 	defer m.mu.Unlock()

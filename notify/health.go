@@ -29,6 +29,8 @@ type Health struct {
 	Class   Class         // of the last attempt, or why the channel stopped; "" after a success
 	Reason  string
 	Sent    time.Time // when a notice was last sent since the start
+
+	Fallback string // the channel that has taken over, "" for none
 }
 
 // Health is how each channel does, in the order of the routes.
@@ -55,6 +57,12 @@ func (w *worker) health() (h Health, err error) {
 	w.mu.Lock()
 	defer w.mu.Unlock()
 	h.State, h.Class, h.Reason, h.Sent = w.state, w.class, w.reason, w.sent
+	if w.dead || w.fallen {
+		h.Fallback = w.Fallback
+	}
+	if w.fallen && !w.dead {
+		h.Overdue = max(h.Overdue, now().Sub(later(w.sent, w.began)))
+	}
 	return h, nil
 }
 
@@ -65,12 +73,15 @@ const overdueTold = 15 * time.Minute
 func Troubles(channels []Health) []string {
 	var out []string
 	for _, h := range channels {
-		if h.State != Stopped && h.Overdue <= overdueTold {
+		if h.State != Stopped && h.Overdue <= overdueTold && h.Fallback == "" {
 			continue
 		}
 		s := h.Channel + ": " + or(h.Reason, "behind")
 		if h.Waiting > 0 {
 			s += fmt.Sprintf(" (%d waiting)", h.Waiting)
+		}
+		if h.Fallback != "" {
+			s += ", " + h.Fallback + " stands in"
 		}
 		out = append(out, s)
 	}
@@ -102,6 +113,6 @@ func (w *worker) outcome(n *rules.Notice, c Class) {
 	defer w.mu.Unlock()
 	w.class, w.reason = c, n.Error
 	if n.State == rules.NoticeSent {
-		w.sent = n.Ended
+		w.sent, w.fallen = n.Ended, false
 	}
 }

@@ -40,6 +40,8 @@ type Event struct {
 	Class   Class        // "" when the notice was sent
 	Reason  string
 	Stopped bool // the channel delivers nothing until the next start or reload
+
+	Fallback string // the channel that the notice was handed to, "" for none
 }
 
 // Sender delivers the outbox: one worker a channel, first in, first out. It is started once.
@@ -109,15 +111,28 @@ func (s *Sender) failOrphans() {
 		return true
 	})
 	for _, n := range orphans {
-		n.State, n.Ended, n.Error = rules.NoticeFailed, now(), "the configuration has no such channel any more"
+		n = orphaned(n, known[n.For])
 		if e := s.Outbox.Mark(n); e != nil {
 			err = e
 		}
-		s.Report(Event{Channel: n.Channel, Notice: n, Class: DeadChannel, Reason: n.Error})
+		if n.State == rules.NoticeFailed {
+			s.Report(Event{Channel: n.Channel, Notice: n, Class: DeadChannel, Reason: n.Error})
+		}
 	}
 	if err != nil {
 		s.Report(Event{Class: Unknown, Reason: "outbox: " + err.Error()})
 	}
+}
+
+// orphaned is a notice whose channel is gone: back in the queue of the channel it was made for where that is there, else failed.
+func orphaned(n rules.Notice, returns bool) rules.Notice {
+	if returns {
+		n.Repeat = n.Repeat || n.State == rules.NoticeSending
+		n.State, n.Channel, n.For, n.Next = rules.NoticeWaiting, n.For, "", now()
+		return n
+	}
+	n.State, n.Ended, n.Error = rules.NoticeFailed, now(), "the configuration has no such channel any more"
+	return n
 }
 
 // turn waits until no other channel of a service makes an attempt; done ends the turn. ok is false when the context ends first.

@@ -34,7 +34,7 @@ func (t *Teller) Notices(news rules.News) []rules.Notice {
 			out = append(out, t.message(c, news, e))
 		}
 	}
-	return out
+	return t.markTold(out)
 }
 
 // Takers names the channels that take a flag of this kind and group, "" for a flag or a series without a group.

@@ -30,17 +30,34 @@ type worker struct {
 	state  State
 	class  Class
 	reason string
+	began  time.Time
 	sent   time.Time
+	dead   bool // for good, until the next start or reload
+	fallen bool // its fallback has taken over, and it has delivered nothing since
 }
 
 func (w *worker) run(ctx context.Context) {
+	w.mu.Lock()
+	w.began = now()
+	w.mu.Unlock()
 	for !w.takeUp() {
 		if !w.nap(ctx, storeRetry) {
 			return
 		}
 	}
-	for ctx.Err() == nil && w.alive() {
-		w.step(ctx)
+	for ctx.Err() == nil {
+		switch {
+		case !w.alive() && w.Fallback == "":
+			return
+		case w.State() == Stopped:
+			w.handOver()
+			w.nap(ctx, lookEvery)
+		default:
+			if w.lags() {
+				w.handOver()
+			}
+			w.step(ctx)
+		}
 	}
 }
 
@@ -59,11 +76,19 @@ func (w *worker) takeUp() bool {
 
 // alive says whether the channel goes on: neither it nor its service is dead.
 func (w *worker) alive() bool {
-	if reason, dead := w.s.serviceDead(w.Service); dead {
-		w.note(Stopped, DeadAll, reason)
-		return false
+	if reason, dead := w.s.serviceDead(w.Service); dead && w.State() != Stopped {
+		w.stop(DeadAll, reason)
 	}
 	return w.State() != Stopped
+}
+
+// stop ends the channel until the next start or reload. Its notices have moved before it is seen to have stopped.
+func (w *worker) stop(c Class, reason string) {
+	w.mu.Lock()
+	w.dead, w.state = true, Sends
+	w.mu.Unlock()
+	w.handOver()
+	w.note(Stopped, c, reason)
 }
 
 // step does one thing: waits, or makes one attempt with the notice at the head of the queue.

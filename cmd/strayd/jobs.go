@@ -174,10 +174,16 @@ func (d *daemon) say(topic, but string, lines ...string) {
 
 // delivered tells the other channels of one that died.
 func (d *daemon) delivered(e notify.Event) {
-	if e.Stopped {
-		d.say("dead "+e.Channel, e.Channel, fmt.Sprintf("Channel %s delivers nothing: %s", e.Channel, e.Reason),
-			"Its notices wait. `strayd notices` lists them.")
+	if !e.Stopped {
+		return
 	}
+	second := "Its notices wait. `strayd notices` lists them."
+	for _, ch := range d.inForce().config.Channels {
+		if ch.Name == e.Channel && ch.Fallback != "" {
+			second = fmt.Sprintf("Its notices go to channel %s.", ch.Fallback)
+		}
+	}
+	d.say("dead "+e.Channel, e.Channel, fmt.Sprintf("Channel %s delivers nothing: %s", e.Channel, e.Reason), second)
 }
 
 func (d *daemon) panicked(job string, value any) {

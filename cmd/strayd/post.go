@@ -72,6 +72,9 @@ func (p *postOffice) busy(before time.Time) bool {
 		return false
 	}
 	for _, h := range channels {
+		if h.State == notify.Sends {
+			return true
+		}
 		if h.Waiting == 0 || h.State == notify.Held || h.State == notify.Stopped || h.Class != "" && h.Class != notify.BadPayload {
 			continue // nothing there, or nothing that goes before its hours or another try
 		}
@@ -86,6 +89,8 @@ func (p *postOffice) busy(before time.Time) bool {
 func logEvent(log *slog.Logger, e notify.Event) {
 	at := []any{"channel", e.Channel, "notice", e.Notice.Number, "kind", e.Notice.Kind}
 	switch {
+	case e.Fallback != "":
+		log.Warn("the fallback channel takes a notice over", append(at, "fallback", e.Fallback, "reason", e.Reason)...)
 	case e.Stopped:
 		log.Error("the channel delivers nothing until the next start or reload; its notices wait", append(at, "class", e.Class, "reason", e.Reason)...)
 	case e.Class != "":

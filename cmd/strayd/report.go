@@ -142,7 +142,7 @@ func channelReport(h notify.Health) health.Channel {
 	switch {
 	case h.State == notify.Stopped:
 		c.State, c.Reason = health.ChannelDead, string(h.Class)
-	case h.Class != "" && h.Waiting > 0:
+	case h.Class != "" && h.Waiting > 0, h.Fallback != "":
 		c.State, c.Reason = health.ChannelWaiting, string(h.Class)
 	}
 	return c

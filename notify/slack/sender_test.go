@@ -21,6 +21,7 @@ type outbox struct {
 
 func (o *outbox) Add([]rules.Notice) error                  { return nil }
 func (o *outbox) Sending(string) ([]rules.Notice, error)    { return nil, nil }
+func (o *outbox) Waiting(string) ([]rules.Notice, error)    { return nil, nil }
 func (o *outbox) Notices(func(rules.Notice) bool) error     { return nil }
 func (o *outbox) Depth(string) (int, int, time.Time, error) { return 0, 0, time.Time{}, nil }
 func (o *outbox) Next(string) (rules.Notice, bool, error) {

@@ -133,7 +133,7 @@ func (l *Ledger) Add(notices []rules.Notice) error {
 	return l.write(nil, func(w *writer) error { return w.enqueue(notices) })
 }
 
-// Mark records the new state of a notice under its number. It is durable when Mark returns. A notice that was withdrawn
+// Mark records the new state of a notice under its number, also in the queue of another channel than before. It is durable when Mark returns. A notice that was withdrawn
 // meanwhile stays so, with an error.
 func (l *Ledger) Mark(n rules.Notice) error {
 	return l.write(nil, func(w *writer) error {
@@ -152,6 +152,11 @@ func (l *Ledger) Mark(n rules.Notice) error {
 			return malformed(inOutbox, key, "it cannot be read")
 		case held.State == rules.NoticeWithdrawn:
 			return fmt.Errorf("notice %d was withdrawn", n.Number)
+		}
+		if held.Channel != n.Channel {
+			if err := w.remove(inQueue, queueKey(held.Channel, n.Number)); err != nil {
+				return err
+			}
 		}
 		return w.notice(&n)
 	})
@@ -179,6 +184,17 @@ func (l *Ledger) Next(channel string) (n rules.Notice, ok bool, err error) {
 		})
 	})
 	return n, ok, err
+}
+
+// Waiting lists the waiting notices of a channel, the oldest first.
+func (l *Ledger) Waiting(channel string) (list []rules.Notice, err error) {
+	err = l.reading(func(v *View) error {
+		return v.queue(channel, rules.NoticeWaiting, func(n rules.Notice) bool {
+			list = append(list, n)
+			return true
+		})
+	})
+	return list, err
 }
 
 // Sending lists the notices of a channel whose last attempt has no recorded outcome.
