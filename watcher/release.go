@@ -63,30 +63,10 @@ func (p *Pass) refused(feed, name string) (*releasing, error) {
 		return nil, err
 	}
 	defer v.Close()
-	newest := map[string]FileRow{} // by feed
-	if err := v.Files(func(r FileRow) bool {
-		if !r.Fileless() && r.File.Name == name && (feed == "" || feed == r.File.Feed) {
-			newest[r.File.Feed] = r
-		}
-		return true
-	}); err != nil {
+	r := &releasing{}
+	if r.row, err = refusal(v, feed, name); err != nil {
 		return nil, err
 	}
-	var found []FileRow
-	for _, r := range newest {
-		if r.Outcome == Refused {
-			found = append(found, r)
-		}
-	}
-	switch {
-	case len(newest) == 0:
-		return nil, fmt.Errorf("no file %s was ever read; `strayd flags --kind refused` lists those that were refused", name)
-	case len(found) == 0:
-		return nil, fmt.Errorf("%s was taken: nothing is left to release", name)
-	case len(found) > 1:
-		return nil, fmt.Errorf("more than one feed refused a file %s: name the one you mean by its path", name)
-	}
-	r := &releasing{row: found[0]}
 	err = v.Flags(true, func(f rules.Flag) bool {
 		if f.Kind == rules.KindRefused && f.Step == r.row.Step {
 			r.flag = f
@@ -97,6 +77,34 @@ func (p *Pass) refused(feed, name string) (*releasing, error) {
 		err = fmt.Errorf("the refusal of %s has no flag", name)
 	}
 	return r, err
+}
+
+// refusal is the row of the one file of a name whose newest content was refused.
+func refusal(v View, feed, name string) (FileRow, error) {
+	newest := map[string]FileRow{} // by feed
+	if err := v.Files(func(r FileRow) bool {
+		if !r.Fileless() && r.File.Name == name && (feed == "" || feed == r.File.Feed) {
+			newest[r.File.Feed] = r
+		}
+		return true
+	}); err != nil {
+		return FileRow{}, err
+	}
+	var found []FileRow
+	for _, r := range newest {
+		if r.Outcome == Refused {
+			found = append(found, r)
+		}
+	}
+	switch {
+	case len(newest) == 0:
+		return FileRow{}, fmt.Errorf("no file %s was ever read; `strayd flags --kind refused` lists those that were refused", name)
+	case len(found) == 0:
+		return FileRow{}, fmt.Errorf("%s was taken: nothing is left to release", name)
+	case len(found) > 1:
+		return FileRow{}, fmt.Errorf("more than one feed refused a file %s: name the one you mean by its path", name)
+	}
+	return found[0], nil
 }
 
 // passes says whether a pass takes a file of a name up.

@@ -248,7 +248,7 @@ func TestDecisionsKilled(t *testing.T) {
 	r := rand.New(rand.NewPCG(seed, 1))
 	made, kills, lasting := 0, 0, time.Hour // the first is not killed
 	for n := range rounds(t) {
-		value := fmt.Sprintf("0.00%03d", 101+n)
+		value := fmt.Sprintf("0.00%03d1", 101+n)
 		begun, after := time.Now(), lasting
 		if n > 0 {
 			after = time.Duration(r.Int64N(int64(lasting + lasting/4)))

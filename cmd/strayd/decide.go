@@ -16,8 +16,8 @@ import (
 )
 
 // aboutRecord goes with every command that enters something into the record.
-const aboutRecord = `Several flags are settled together or not at all. Who did it is the user of the operating system (beside a daemon, the one at the other end
-of its socket), never an option; without a daemon only the user to whom the ledger's file belongs may do it.
+const aboutRecord = `Several flags are settled together or not at all. Who did it is the user of the operating system (beside a daemon, the one at
+the other end of its socket), never an option; without a daemon only the user to whom the ledger's file belongs may do it.
 It is an entry of the hash-chained record, and nothing is overwritten: ` + "`strayd explain REF`" + ` shows who did what when.`
 
 // deed is what the command line says of an act.
