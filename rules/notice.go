@@ -23,7 +23,8 @@ const (
 	KindDigest Kind = "digest" // many flags of one step in one message
 	KindDaily  Kind = "daily"  // the line that says all was checked
 	KindTest   Kind = "test"
-	KindNotice Kind = "word" // a word about the program itself: a channel that died, a pass that failed
+	KindUpdate Kind = "update" // what somebody did about flags that were told of before
+	KindNotice Kind = "word"   // a word about the program itself: a channel that died, a pass that failed
 	KindWeekly Kind = "weekly"
 )
 
@@ -46,6 +47,8 @@ type Notice struct {
 	Receipt  string    // what the channel gave back, such as a message's id
 	Error    string    // of the last attempt, without secrets
 	Repeat   bool      // an earlier attempt may have got through
+	Answers  uint64    `json:",omitempty"` // of an update: the notice to the same channel that told of its flags; given by the ledger
+	Under    string    `json:"-"`          // the receipt of that one, when this one is handed out
 
 	For    string    `json:",omitzero"` // the channel it was made for, where Channel stands in for that one
 	Told   string    `json:",omitzero"` // the fallback channel that is told of the same by a notice of its own
@@ -99,4 +102,10 @@ type DayNews struct {
 	OldestRef  uint64
 	Head       string   // of the hash-chained record
 	Dead       []string // channels that do not deliver, with the reason
+}
+
+// ActNews is what somebody did about flags.
+type ActNews struct {
+	Act
+	Flags []Flag // as they stand now
 }

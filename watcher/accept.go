@@ -50,7 +50,7 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	b.File.Counts.Rows = sheet.Rows
 	b.File.Counts.Same = sheet.Rows - b.File.Counts.New - b.File.Counts.Late - b.File.Counts.Restated
 	p.tell(b, newestSeries(sheet))
-	if err := p.release.into(b, p.today()); err != nil {
+	if err := p.release.into(p, b); err != nil {
 		return err
 	}
 	if err := p.Store.Publish(b); err != nil {

@@ -82,7 +82,19 @@ func (d *deciding) step(refs []uint64) (*Batch, error) {
 		}
 	}
 	b.Record = []RecordEntry{entryOf(&d.answer.Entry)}
-	return b, d.put(b)
+	if err := d.put(b); err != nil {
+		return nil, err
+	}
+	b.Notices = d.p.tellActs(&d.answer)
+	return b, nil
+}
+
+// tellActs makes the updates of an act.
+func (p *Pass) tellActs(a *Answer) []rules.Notice {
+	if p.TellActs == nil {
+		return nil
+	}
+	return p.TellActs(rules.ActNews{Act: a.Entry.Act, Flags: a.Flags})
 }
 
 // put puts the flags as they now stand into the batch.

@@ -32,6 +32,8 @@ type Pass struct {
 
 	// Tell makes the notices of a step, which are recorded with it; nil for none.
 	Tell func(rules.News) []rules.Notice
+	// TellActs makes the updates of what somebody did about flags; nil for none.
+	TellActs func(rules.ActNews) []rules.Notice
 	// Report is told of every file as it is done with; nil for nobody.
 	Report func(FileReport)
 	// Progress is told of long work by its name; nil for nobody.

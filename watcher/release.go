@@ -119,12 +119,12 @@ func (r *releasing) admits(f File) error {
 }
 
 // into enters the release into the step that takes the file.
-func (r *releasing) into(b *Batch, today rules.Date) error {
+func (r *releasing) into(p *Pass, b *Batch) error {
 	if r == nil {
 		return nil
 	}
 	r.act.Step = b.Step
-	f, err := r.flag.After(&r.act, today)
+	f, err := r.flag.After(&r.act, p.today())
 	if err != nil {
 		return err
 	}
@@ -132,5 +132,6 @@ func (r *releasing) into(b *Batch, today rules.Date) error {
 	b.Record = append(b.Record, entryOf(&e))
 	b.Flags = append(b.Flags, &FlagRow{Flag: f, SeriesID: NoSeries})
 	r.out = &Answer{Entry: e, Flags: []rules.Flag{f}}
+	b.Notices = append(b.Notices, p.tellActs(r.out)...)
 	return nil
 }

@@ -30,6 +30,7 @@ type chatService struct {
 
 // post is a message that the service took.
 type post struct {
+	Thread               string // the message that it answers
 	Channel, Text, Stamp string
 	Blocks               string
 	Metadata             json.RawMessage
@@ -125,7 +126,7 @@ func (s *chatService) standard(w http.ResponseWriter, r *http.Request) {
 func (s *chatService) take(r *http.Request) (stamp string) {
 	s.mu.Lock()
 	defer s.mu.Unlock()
-	p := post{Channel: r.Form.Get("channel"), Text: r.Form.Get("text"), Blocks: r.Form.Get("blocks"),
+	p := post{Thread: r.Form.Get("thread_ts"), Channel: r.Form.Get("channel"), Text: r.Form.Get("text"), Blocks: r.Form.Get("blocks"),
 		Stamp: fmt.Sprintf("%d.%06d", time.Now().Unix(), len(s.posts))}
 	var meta struct {
 		EventPayload struct {

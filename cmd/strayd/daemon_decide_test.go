@@ -195,6 +195,38 @@ func TestSecondUserAtTheSocket(t *testing.T) {
 	f.must("ledger", "verify")
 }
 
+// What somebody does about a flag is told in the thread of the message that told of it; a channel that was not told of the flag is not
+// told of that.
+func TestDaemonTellsOfActs(t *testing.T) {
+	socketFolder(t)
+	s := newChatService(t)
+	f := deskFolder(t, "desk")
+	d := f.daemon(s.env()...)
+	series, _ := storm()
+	f.arrive("a.csv", csvDays(series, 0, 29, map[string]float64{"fund-00": 0.3}))
+	f.arrive("b.csv", csvDays(series, 30, 30, map[string]float64{"fund-01": 0.25}))
+	f.arrive("c.csv", csvDays(series, 31, 31, map[string]float64{"fund-02": 0.25}))
+	f.allSent()
+	told := s.in(channelID("desk"))
+	if len(told) != 3 {
+		t.Fatalf("the desk has %d messages", len(told))
+	}
+	f.must("acknowledge", "2")
+	f.must("decide", "2", "3", "corrected", "0.25%", "--reason", "data error", "--note", "<!channel> resent")
+	f.allSent()
+	posts := s.in(channelID("desk"))[3:]
+	if len(posts) != 2 || posts[0].Thread != told[1].Stamp || !strings.HasPrefix(posts[0].Text, "ACKNOWLEDGED: fund-01, ref 2") {
+		t.Fatalf("an acknowledgement reaches the desk as %q", posts)
+	}
+	p := posts[1]
+	if p.Thread != told[2].Stamp || !strings.HasPrefix(p.Text, "DECIDED: 2 flags\nfund-01, ref 2\nfund-02, ref 3\nCorrected to +0.25 %, data error, by ") ||
+		strings.Contains(p.Text+p.Blocks, "<!channel>") {
+		t.Errorf("a decision reaches the desk as %q", p)
+	}
+	d.stop()
+	f.must("ledger", "verify")
+}
+
 // publicFolder is a folder that every user may enter.
 func publicFolder(t *testing.T) string {
 	t.Helper()

@@ -233,6 +233,15 @@ func (a *app) today(c *config.Config) (rules.Date, error) {
 	return rules.DateFrom(now.In(c.Location)), nil
 }
 
+// aloud leaves out the channels that print where the command itself prints what it did.
+func aloud(c *config.Config, tell func(rules.ActNews) []rules.Notice) func(rules.ActNews) []rules.Notice {
+	return func(news rules.ActNews) []rules.Notice {
+		return slices.DeleteFunc(tell(news), func(n rules.Notice) bool {
+			return slices.ContainsFunc(c.Channels, func(ch rules.Channel) bool { return ch.Name == n.Channel && ch.Kind == "console" })
+		})
+	}
+}
+
 // entering prepares what enters something into the record: in the daemon's turn, or, on its own, by the ledger's owner.
 func (a *app) entering(do func(*config.Config, *watcher.Pass) error) error {
 	return a.withLedger(ledger.ReadWrite, func(c *config.Config, l *ledger.Ledger) error {
@@ -243,6 +252,7 @@ func (a *app) entering(do func(*config.Config, *watcher.Pass) error) error {
 		if a.held != nil {
 			return a.inTurn(c, func() error { return do(c, p) })
 		}
+		p.TellActs = aloud(c, p.TellActs)
 		who := a.person()
 		if owner, known := ledger.Owner(c.Ledger); !known || owner != who.UID {
 			return fmt.Errorf("the ledger %s does not belong to %s: without a daemon only its owner may enter anything into the record", c.Ledger, who)

@@ -114,7 +114,7 @@ func (a *app) newPass(c *config.Config, l watcher.Store) (*watcher.Pass, error) 
 	}
 	teller := newTeller(c, owners)
 	p := &watcher.Pass{Store: l, Source: source{}, Settings: s, Feeds: c.Feeds, FeedKey: config.FeedKey, Now: now, Zone: c.Location,
-		Who: a.person().String(), Program: version, Tell: teller.Notices}
+		Who: a.person().String(), Program: version, Tell: teller.Notices, TellActs: teller.Updates}
 	if a.held != nil {
 		p.Resident = &a.held.kept
 	}

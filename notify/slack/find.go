@@ -21,6 +21,9 @@ const (
 // Find looks for the notice among the channel's messages since its attempts. It is sure that the notice is not there only when it
 // can read what identifies messages: the token has that scope, or such a message was seen.
 func (c *Channel) Find(ctx context.Context, n rules.Notice) (notify.Found, string) {
+	if n.Under != "" { // the messages of a channel are read without those of its threads
+		return notify.FoundUnknown, ""
+	}
 	params := &slack.GetConversationHistoryParameters{ChannelID: c.id, Oldest: stamp(attempted(n).Add(-skew)), Limit: pageSize,
 		IncludeAllMetadata: true}
 	readable := false

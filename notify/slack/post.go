@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"net/http/httptrace"
+	"strings"
 	"sync/atomic"
 
 	"github.com/slack-go/slack"
@@ -32,6 +33,9 @@ func (c *Channel) PostPlain(ctx context.Context, n rules.Notice) (string, error)
 }
 
 func (c *Channel) post(ctx context.Context, n rules.Notice, more ...slack.MsgOption) (string, error) {
+	if of, stamp, ok := strings.Cut(n.Under, "/"); ok && of == c.id {
+		more = append(more, slack.MsgOptionTS(stamp))
+	}
 	ctx, connected := traced(ctx)
 	channel, stamp, err := c.s.api().PostMessageContext(ctx, c.id, append(more,
 		slack.MsgOptionText(fallback(n.Lines), false), // escaped already

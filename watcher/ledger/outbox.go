@@ -52,6 +52,15 @@ func (w *writer) enqueue(notices []rules.Notice) error {
 		if w.buckets[inOutboxKey].Get(digest) != nil {
 			continue
 		}
+		if n.Kind == rules.KindUpdate {
+			told, err := w.told(&n)
+			if err != nil {
+				return err
+			}
+			if n.Answers = told; told == 0 {
+				continue
+			}
+		}
 		if n.Key == "" || n.Channel == "" || !slices.Contains(rules.NoticeStates, n.State) {
 			return fmt.Errorf("notice %q for channel %q in state %q cannot be kept", n.Key, n.Channel, n.State)
 		}
@@ -66,6 +75,32 @@ func (w *writer) enqueue(notices []rules.Notice) error {
 		}
 	}
 	return nil
+}
+
+// mostAgo is how many notices back the one is looked for that an update goes with.
+const mostAgo = 2000
+
+// told is the newest notice to the channel of an update that told of one of its flags, 0 when none did: what a channel was not told of is
+// not updated there.
+func (w *writer) told(update *rules.Notice) (uint64, error) {
+	c := w.buckets[inOutbox].Cursor()
+	k, value := c.Last()
+	for ago := 0; k != nil && ago < mostAgo; k, value = c.Prev() {
+		body, err := checked(inOutbox, k, value)
+		if err != nil {
+			return 0, err
+		}
+		n, ok := unpackNotice(get64(k), body)
+		if !ok {
+			return 0, malformed(inOutbox, k, "it cannot be read")
+		}
+		if n.Channel == update.Channel && n.Kind != rules.KindUpdate && n.State != rules.NoticeWithdrawn &&
+			slices.ContainsFunc(n.Refs, func(r uint64) bool { return slices.Contains(update.Refs, r) }) {
+			return n.Number, nil
+		}
+		ago++
+	}
+	return 0, nil
 }
 
 // notice puts a notice and keeps its channel's queue right.

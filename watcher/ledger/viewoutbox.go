@@ -51,6 +51,13 @@ func (v *View) queue(channel string, state rules.NoticeState, each func(rules.No
 		if !ok {
 			return malformed(inQueue, queueKey(channel, number), "its notice is not there")
 		}
+		if n.Answers != 0 {
+			told, _, err := v.Notice(n.Answers)
+			if err != nil {
+				return err
+			}
+			n.Under = told.Receipt
+		}
 		if !each(n) {
 			return nil
 		}
