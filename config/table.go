@@ -23,16 +23,6 @@ func when(value, text string) func(*yaml.Node) string {
 	}
 }
 
-// unless notes a key that holds anything but the value.
-func unless(value, text string) func(*yaml.Node) string {
-	return func(n *yaml.Node) string {
-		if n.Value != value {
-			return text
-		}
-		return ""
-	}
-}
-
 // table is the one list of keys: Parse walks it, and Schema is made of it.
 var table = object{what: "keys: ledger, feeds and ranges at least", fields: []field{
 	{key: "ledger", required: true, shape: file("the ledger's file, such as ledger.db", false),

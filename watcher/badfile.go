@@ -20,6 +20,14 @@ func (b *BadFile) Place() string {
 	return s
 }
 
+// Note is the error with what to ask the provider for, also where the form alone is wrong.
+func (b *BadFile) Note() string {
+	if b.Ask == "" && b.Line > 0 {
+		return b.Error() + "; ask the provider for the file with this put right"
+	}
+	return b.Error()
+}
+
 // Message is the reason, the cell and what to ask for, without the place.
 func (b *BadFile) Message() string {
 	s := b.Reason

@@ -291,7 +291,7 @@ func (p *Pass) refuse(bad *BadFile, f rules.Feed, c Candidate) error {
 	flag := &FlagRow{SeriesID: NoSeries, New: true}
 	flag.Ref, flag.Step, flag.RaisedAt, flag.Date = ref, b.Step, p.Now, bad.Date
 	flag.Kind, flag.Standing, flag.Return = rules.KindRefused, rules.Open, rules.Missing
-	flag.Feed, flag.File, flag.Line, flag.Note = f.Name, bad.File.Name, uint32(bad.Line), bad.Error()
+	flag.Feed, flag.File, flag.Line, flag.Note = f.Name, bad.File.Name, uint32(bad.Line), bad.Note()
 	flag.LooksLike = bad.LooksLike
 	b.Flags = []*FlagRow{flag}
 	p.tell(b, 0)
