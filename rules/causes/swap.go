@@ -24,14 +24,14 @@ func (p *Pool) swaps() {
 
 func (p *Pool) swapsOf(w *weighing) {
 	i := w.member
-	if p.isReference[i] || !p.looks[i].hasRef {
+	if p.isReference[i] || !p.looks[i].hasRef || !p.odd(i, leastOdd) {
 		return
 	}
 	best := odd{cause: rules.CauseSwapped, partner: -1}
 	c := &p.states[i].chain
 	for k := range p.slow {
 		j := p.slow[k].member
-		if j == i || p.isReference[j] || p.members[j].Group == p.members[i].Group {
+		if j == i || p.isReference[j] || !p.odd(j, leastOdd/2) || p.members[j].Group == p.members[i].Group {
 			continue
 		}
 		if !p.couldBe(i, j) || !p.couldBe(j, i) {
@@ -56,6 +56,15 @@ func (p *Pool) swapsOf(w *weighing) {
 	c.note(runSwapped, best.ratio/float64(len(p.members)))
 	best.implied = rules.Some(p.looks[best.partner].x)
 	w.odds = append(w.odds, best)
+}
+
+// leastOdd is how many deviations a value must be off to be taken for another series'. Half as many do for the partner, and a swap that
+// goes on needs none.
+const leastOdd = 2.5
+
+func (p *Pool) odd(i int, deviations float64) bool {
+	lk := &p.looks[i]
+	return math.Abs(lk.z) > deviations || lk.coupled || p.states[i].chain.carry[runSwapped] > leastCarried
 }
 
 // couldBe says that j's value is not far off for i.
