@@ -13,12 +13,12 @@ const (
 	priorRepeat     = 1.5e-3
 	priorZero       = 1.3e-3
 	priorSpike      = 3e-4
-	priorMissed     = 1e-3 // without a calendar
+	priorMissed     = 1.5e-3 // without a calendar
 	priorDoubled    = 3e-5
 	priorSplit      = 5e-5
 	priorFX         = 3e-4
-	priorSwap       = 1.5e-3
-	priorCumulative = 4e-4
+	priorSwap       = 2e-3
+	priorCumulative = 3e-4
 	priorShifted    = 5e-5
 	listedMissed    = 0.09 // on a listed date
 	listedDoubled   = 0.03
