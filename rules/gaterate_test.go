@@ -53,7 +53,9 @@ func (f *inventedFile) next() []float64 {
 	return row
 }
 
-func (f *inventedFile) print(v float64) float64 { return math.Round(100*v*f.decimals) / f.decimals / 100 }
+func (f *inventedFile) print(v float64) float64 {
+	return math.Round(100*v*f.decimals) / f.decimals / 100
+}
 
 // day holds a row against the past.
 func (f *inventedFile) day(row []float64, by float64) FileDay {

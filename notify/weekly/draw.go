@@ -45,6 +45,9 @@ func (d *drawing) bars(values []float64, most float64, class func(n int) string,
 	step := float64(drawWidth) / float64(max(1, len(values)))
 	gap := min(4, step*0.25)
 	for n, v := range values {
+		if v <= 0 {
+			continue
+		}
 		h := float64(drawFoot-drawTop) * min(v, most) / most
 		d.Bars = append(d.Bars, bar{at(float64(n)*step + gap/2), at(drawFoot - h), at(max(step-gap, 0.4)), at(h), class(n), tip(n)})
 	}
