@@ -7,7 +7,7 @@ import "strayd/rules"
 const (
 	priorX100       = 1e-4
 	priorX10000     = 1e-4
-	priorX10        = 7e-5
+	priorX10        = 8.5e-5
 	priorDiv100     = 1.5e-3
 	priorSign       = 1.4e-3
 	priorRepeat     = 1.5e-3
