@@ -12,8 +12,10 @@ package causes
 
 import "strayd/rules"
 
-// Memory is how many of the newest dates a pool's state depends on.
-const Memory = 700
+// Memory is how many of the newest dates a pool's state depends on: a line looks back span dates and a week, the log odds in it a run of
+// depth, each over long dates of a scale, whose bounds look back guard dates of residuals, each of a slope that is up to two weeks old and
+// looks back span dates itself.
+const Memory = 720
 
 // Member is one series of a pool. Benchmarks and currencies are members too.
 type Member struct {
