@@ -43,7 +43,8 @@ func Absence(came, files int) float64 {
 func (d *Delivery) Refuse() *Refusal {
 	ask := "ask the provider to send it whole; accept the file if this is all there is"
 	if n := d.Missing.Count; d.Tail && d.Chance < cutChance && float64(d.Expected-n) < cutShort*float64(d.Expected) {
-		return &Refusal{Date: d.Date, Why: fmt.Sprintf("it breaks off after %s: %d of %d expected series, all that usually follow, are not in it: %s", d.Last, n, d.Expected, &d.Missing), Ask: ask}
+		return &Refusal{Date: d.Date,
+			Why: fmt.Sprintf("it breaks off after %s: %d of %d expected series, all that usually follow, are not in it: %s", d.Last, n, d.Expected, &d.Missing), Ask: ask}
 	}
 	usual, steady := d.usualRows()
 	if steady && d.Idle && float64(d.Rows) < cutShort*usual { // such as one of several dates whose newest is cut off

@@ -138,6 +138,7 @@ func RefuseRepeat(d FileDay) *Refusal {
 	if counted < gateSeries || 2*same <= counted {
 		return nil
 	}
-	return &Refusal{Date: d.Date, LooksLike: CauseRepeat, Why: fmt.Sprintf("%d of %d values are those of the date before: it looks like the previous file sent again", same, counted),
+	return &Refusal{Date: d.Date, LooksLike: CauseRepeat,
+		Why: fmt.Sprintf("%d of %d values are those of the date before: it looks like the previous file sent again", same, counted),
 		Ask: fmt.Sprintf("ask the provider for the values of %s", d.Date.Day())}
 }

@@ -31,7 +31,8 @@ func RefuseDates(f FileDates) *Refusal {
 		return r
 	}
 	if n := len(f.New); n > 0 && n <= ancientMost && f.Calendar.Between(f.New[0], f.Last) > ancientDays {
-		return &Refusal{Date: f.New[0], Why: fmt.Sprintf("it has values for %s, more than a year before the newest of this feed, %s", f.New[0].Day(), f.Last),
+		return &Refusal{Date: f.New[0], Why: fmt.Sprintf("it has values for %s, more than a year before the newest of this feed, %s",
+			f.New[0].Day(), f.Last),
 			Ask: "ask the provider for which date they are; accept the file if it is meant"}
 	}
 	return nil

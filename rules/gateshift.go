@@ -106,7 +106,8 @@ func RefuseShift(date, before Date, byReference [][]Follower) *Refusal {
 		return nil
 	}
 	return &Refusal{Date: date, LooksLike: CauseShifted, Ask: "ask the provider for which day the values are",
-		Why: fmt.Sprintf("its values fit the references of %s and not those of %s (%s): its dates look a day off", before.Day(), date.Day(), Counted(n, "series"))}
+		Why: fmt.Sprintf("its values fit the references of %s and not those of %s (%s): its dates look a day off", before.Day(), date.Day(),
+			Counted(n, "series"))}
 }
 
 // logT5 is the log density, but for a constant, of a Student t with five degrees of freedom scaled to unit variance.

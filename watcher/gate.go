@@ -53,7 +53,8 @@ func (p *Pass) gate(j *judging, f rules.Feed, sheet *Sheet, blocks []block) ([]*
 func (p *Pass) gateKey(f rules.Feed) string { return p.FeedKey(f) + p.gateText }
 
 func gateText(s *rules.Settings) string {
-	text, err := json.Marshal(rules.Settings{Calendar: s.Calendar, Calendars: s.Calendars, CalendarOf: s.CalendarOf, Lives: s.Lives, References: s.References})
+	text, err := json.Marshal(rules.Settings{Calendar: s.Calendar, Calendars: s.Calendars, CalendarOf: s.CalendarOf, Lives: s.Lives,
+		References: s.References})
 	if err != nil {
 		panic(err) // texts and whole numbers only
 	}

@@ -76,7 +76,8 @@ func (g *fileGate) closed(date rules.Date) *rules.ClosedDay {
 		}
 	}
 	if fresh > 0 {
-		g.sheet.Notes = append(g.sheet.Notes, fmt.Sprintf("%s of %s, which is no business day under the calendar", rules.Counted(fresh, "value"), date.Day()))
+		g.sheet.Notes = append(g.sheet.Notes, fmt.Sprintf("%s of %s, which is no business day under the calendar", rules.Counted(fresh,
+			"value"), date.Day()))
 	}
 	if c.Series.Count == 0 {
 		return nil
