@@ -76,7 +76,7 @@ func (r *reasons) when(applies bool, format string, args ...any) {
 
 func (w *WeekFigures) actReasons() (r reasons) {
 	r.when(w.Checked.Whole == 0, "nothing was checked")
-	r.when(w.Checked.Whole > 0 && float64(w.Checked.Part) < leastChecked*float64(w.Checked.Whole), "only %s of %s expected series-days were checked",
+	r.when(w.unwatched(), "only %s of %s expected series-days were checked",
 		Thousands(w.Checked.Part), Thousands(w.Checked.Whole))
 	old := w.Ageing.Bands[len(AgeBands)]
 	r.when(old > 0, "%s open for more than %d business days", Counted(old, "flag"), AgeBands[len(AgeBands)-1])
@@ -89,6 +89,11 @@ func (w *WeekFigures) actReasons() (r reasons) {
 	r.when(w.Runs.Failed > 0, "%d of %s failed", w.Runs.Failed, Counted(w.Runs.Made, "pass"))
 	r.when(w.Runs.Undone > 0, "%d of %s failed for good", w.Runs.Undone, Counted(w.Runs.Notices, "message"))
 	return r
+}
+
+// unwatched says that too little of what was expected was checked.
+func (w *WeekFigures) unwatched() bool {
+	return w.Checked.Whole > 0 && float64(w.Checked.Part) < leastChecked*float64(w.Checked.Whole)
 }
 
 func (w *WeekFigures) lookReasons() (r reasons) {
@@ -106,7 +111,7 @@ func (w *WeekFigures) lookReasons() (r reasons) {
 		r.when(v.Verdict == TooMany || v.Verdict == TooFew, "range %s over %s: %s beyond the %s line, %d of %d", c.Range, of, v.Verdict,
 			InPercentPlain(c.Share), v.Beyond, v.Judged)
 	}
-	r.when(w.Checked.Part < w.Checked.Whole, "%s of %s expected series-days have no value", Thousands(w.Checked.Whole-w.Checked.Part), Thousands(w.Checked.Whole))
+	r.when(w.Checked.Part < w.Checked.Whole && !w.unwatched(), "%s of %s expected series-days have no value", Thousands(w.Checked.Whole-w.Checked.Part), Thousands(w.Checked.Whole))
 	r.when(w.Ageing.PastReply > 0, "%s past the reply-by time", Counted(w.Ageing.PastReply, "flag"))
 	for _, x := range w.Feeds {
 		r.when(x.OnTime.Part < x.OnTime.Whole, "feed %s was late for %d of %d dates", x.Feed, x.OnTime.Whole-x.OnTime.Part, x.OnTime.Whole)
