@@ -42,7 +42,8 @@ func TestBesideDaemonSameAnswers(t *testing.T) {
 			lines = append(lines, command+" --format "+format)
 		}
 	}
-	lines = append(lines, "ledger verify", "ledger verify --head 00", "ledger export", "ledger export --what prices", "flags --format xml", "flags --blocking nobody",
+	const drill = "drill --days 8 --kinds x100,x10000 --gap 5 --format csv"
+	lines = append(lines, drill, "ledger verify", "ledger verify --head 00", "ledger export", "ledger export --what prices", "flags --format xml", "flags --blocking nobody",
 		"flags --kind nothing", "explain", "explain 1 2 3", "history", "notices again x", "pass nobody")
 	f.daemon().stop() // so that what it remembers of its own is in the ledger in both cases
 	alone := f.answers(lines)
@@ -51,6 +52,9 @@ func TestBesideDaemonSameAnswers(t *testing.T) {
 		if beside != alone[i] {
 			t.Errorf("strayd %s\nwithout a daemon: %v\nwith one: %v", lines[i], alone[i], beside)
 		}
+	}
+	if out := f.must(strings.Fields(drill)...); !strings.Contains(out, "kind,x100,") {
+		t.Errorf("nothing is planted beside a daemon:\n%s", out)
 	}
 	if code, _, errs := f.try("flags", "--now", "2026-03-01"); code != exitUsage || !strings.Contains(errs, "--now") {
 		t.Errorf("--now: %d %s", code, errs)
