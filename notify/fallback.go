@@ -64,16 +64,17 @@ func tellsAll(k rules.Kind) bool {
 	return k == rules.KindDaily || k == rules.KindNotice || k == rules.KindTest
 }
 
-// markTold notes on each notice of a step whether the channel's fallback is told of all its flags by notices of its own.
+// markTold notes on each notice of a step whether the channel's fallback is told of all its flags by notices of its own, or, where it
+// is about no flag, of the same.
 func (t *Teller) markTold(step []rules.Notice) []rules.Notice {
-	refs := map[string][]uint64{}
+	refs, names := map[string][]uint64{}, map[string]bool{}
 	for _, n := range step {
-		refs[n.Channel] = append(refs[n.Channel], n.Refs...)
+		refs[n.Channel], names[n.Channel] = append(refs[n.Channel], n.Refs...), true
 	}
 	for i := range step {
 		n := &step[i]
 		fallback := t.channel(n.Channel).Fallback
-		if fallback != "" && len(n.Refs) > 0 && !slices.ContainsFunc(n.Refs, func(r uint64) bool { return !slices.Contains(refs[fallback], r) }) {
+		if names[fallback] && !slices.ContainsFunc(n.Refs, func(r uint64) bool { return !slices.Contains(refs[fallback], r) }) {
 			n.Told = fallback
 		}
 	}

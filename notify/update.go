@@ -29,7 +29,7 @@ func (t *Teller) Updates(news rules.ActNews) (out []rules.Notice) {
 		n.Lines = fit(t.update(c, news, flags))
 		out = append(out, n)
 	}
-	return out
+	return t.markTold(out)
 }
 
 // update says what was done, about which flags, by whom and why.

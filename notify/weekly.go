@@ -30,5 +30,5 @@ func (t *Teller) Weekly(w Weekly) []rules.Notice {
 		}
 		out = append(out, n)
 	}
-	return out
+	return t.markTold(out)
 }

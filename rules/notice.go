@@ -50,10 +50,8 @@ type Notice struct {
 	Answers  uint64    `json:",omitempty"` // of an update: the notice to the same channel that told of its flags; given by the ledger
 	Under    string    `json:"-"`          // the receipt of that one, when this one is handed out
 
-	For    string    `json:",omitzero"` // the channel it was made for, where Channel stands in for that one
-	Told   string    `json:",omitzero"` // the fallback channel that is told of the same by a notice of its own
-	Since  time.Time `json:",omitzero"` // when the first of its flags was raised, of one that follows an earlier message
-	Thread string    `json:"-"`         // receipt of that message, known when it is sent; "" for none
+	For  string `json:",omitzero"` // the channel it was made for, where Channel stands in for that one
+	Told string `json:",omitzero"` // the fallback channel that is told of the same by a notice of its own
 }
 
 // News is what one step has to tell.

@@ -34,7 +34,8 @@ func (a *app) runCommand() *cobra.Command {
 		Long: `Runs until it is told to stop (SIGTERM or an interrupt; a second signal ends it at once). SIGHUP reads the configuration again;
 one that is wrong is reported and the last good one stays in force.
 
-The chat token comes from $CREDENTIALS_DIRECTORY/slack_token, the file that STRAYD_SLACK_TOKEN_FILE names, or STRAYD_SLACK_TOKEN.
+The chat token comes from $CREDENTIALS_DIRECTORY/slack_token, the file that STRAYD_SLACK_TOKEN_FILE names, or STRAYD_SLACK_TOKEN;
+the webhook's secret and the mail server's user and password likewise (webhook_secret, mail_user, mail_password).
 STRAYD_HEARTBEAT_URL names an address that is fetched after each good pass.`,
 		Example: "  strayd run\n  strayd run --listen 127.0.0.1:9301\n  strayd run --unit > /etc/systemd/system/strayd.service",
 		Args:    cobra.NoArgs,

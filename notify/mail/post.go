@@ -49,9 +49,9 @@ func (m *Mailer) message(n rules.Notice) *gomail.Msg {
 	msg.SetDateWithValue(m.o.Now())
 	msg.SetMessageIDWithValue(notify.Identity(n) + "@" + domain(m.from.Address))
 	msg.SetGenHeader("Auto-Submitted", "auto-generated") // RFC 3834: no answers of absence
-	if n.Thread != "" {
-		msg.SetGenHeader(gomail.HeaderInReplyTo, n.Thread)
-		msg.SetGenHeader(gomail.HeaderReferences, n.Thread)
+	if strings.HasPrefix(n.Under, "<") {                 // a receipt of ours: of another channel's it may be anything
+		msg.SetGenHeader(gomail.HeaderInReplyTo, n.Under)
+		msg.SetGenHeader(gomail.HeaderReferences, n.Under)
 	}
 	msg.SetBodyString(gomail.TypeTextPlain, strings.Join(n.Lines, "\r\n")+"\r\n")
 	return msg

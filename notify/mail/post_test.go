@@ -110,13 +110,20 @@ func TestThreadsAndRepeats(t *testing.T) {
 	f := newFake(t, nil)
 	m := mailerOf(t, f, Options{})
 	n := notice
-	n.Thread, n.Ended = "<first@example.org>", time.Unix(99, 0)
+	n.Under, n.Ended = "<first@example.org>", time.Unix(99, 0)
 	got, err := m.Post(t.Context(), n)
 	if err != nil || got != "<0f1e2d3c4b5a69788796a5b4c3d2e1f0-99@example.org>" {
 		t.Fatal(got, err)
 	}
 	_, msg, _ := read(t, f.taken()[0])
-	if msg.Header.Get("In-Reply-To") != n.Thread || msg.Header.Get("References") != n.Thread {
+	if msg.Header.Get("In-Reply-To") != n.Under || msg.Header.Get("References") != n.Under {
+		t.Errorf("headers %v", msg.Header)
+	}
+	n.Under = "C0123456789/1773421500.000100" // a receipt of the chat that this channel stands in for
+	if _, err := m.Post(t.Context(), n); err != nil {
+		t.Fatal(err)
+	}
+	if _, msg, _ = read(t, f.taken()[1]); msg.Header.Get("In-Reply-To") != "" {
 		t.Errorf("headers %v", msg.Header)
 	}
 }

@@ -20,11 +20,11 @@ const slowDown = time.Minute
 // codes are the classes of the error codes of the service's documentation for posting a message.
 var codes = classTable(map[notify.Class]string{
 	notify.DeadChannel: `channel_not_found not_in_channel is_archived restricted_action no_permission messages_tab_disabled
-		cannot_reply_to_message team_access_not_granted ekm_access_denied`,
+		team_access_not_granted ekm_access_denied`,
 	notify.DeadAll: `invalid_auth not_authed account_inactive token_revoked token_expired missing_scope not_allowed_token_type
 		org_login_required access_denied accesslimited two_factor_setup_required`,
 	notify.BadPayload: `invalid_blocks msg_too_long msg_blocks_too_long no_text metadata_too_large too_many_attachments
-		invalid_arguments invalid_charset`,
+		cannot_reply_to_message thread_not_found invalid_arguments invalid_charset`,
 	notify.Retry:     `ratelimited rate_limited message_limit_exceeded team_added_to_org`,
 	notify.Ambiguous: `fatal_error internal_error service_unavailable request_timeout`,
 })

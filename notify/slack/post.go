@@ -27,8 +27,9 @@ func (c *Channel) Post(ctx context.Context, n rules.Notice) (string, error) {
 			EventPayload: map[string]any{payloadKey: n.Key, payloadNum: fmt.Sprint(n.Number)}}))
 }
 
-// PostPlain makes one attempt with the text alone.
+// PostPlain makes one attempt with the text alone, in no thread: the message that it would go under may be gone.
 func (c *Channel) PostPlain(ctx context.Context, n rules.Notice) (string, error) {
+	n.Under = ""
 	return c.post(ctx, n)
 }
 

@@ -66,11 +66,11 @@ func TestErrorCodes(t *testing.T) {
 	for class, list := range map[notify.Class]string{
 		notify.DeadChannel: `channel_not_found not_in_channel is_archived restricted_action restricted_action_read_only_channel
 			restricted_action_thread_only_channel restricted_action_non_threadable_channel no_permission messages_tab_disabled
-			cannot_reply_to_message team_access_not_granted ekm_access_denied`,
+			team_access_not_granted ekm_access_denied`,
 		notify.DeadAll: `invalid_auth not_authed account_inactive token_revoked token_expired missing_scope not_allowed_token_type
 			org_login_required access_denied accesslimited two_factor_setup_required`,
 		notify.BadPayload: `invalid_blocks invalid_blocks_format msg_too_long msg_blocks_too_long no_text metadata_too_large
-			invalid_metadata_format invalid_metadata_schema too_many_attachments invalid_arguments invalid_charset`,
+			invalid_metadata_format invalid_metadata_schema too_many_attachments cannot_reply_to_message invalid_arguments invalid_charset`,
 		notify.Retry:     `ratelimited rate_limited message_limit_exceeded team_added_to_org`,
 		notify.Ambiguous: `fatal_error internal_error service_unavailable request_timeout`,
 		notify.Unknown:   `something_new duplicate_message_not_found`,

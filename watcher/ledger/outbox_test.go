@@ -184,3 +184,30 @@ func TestLayersByStep(t *testing.T) {
 		t.Errorf("%q, %v, want %q", got, err, want)
 	}
 }
+
+// A notice that moves to another channel leaves the one queue and stands in the other, in the order of the numbers; the ledger stays whole.
+func TestOutboxMoves(t *testing.T) {
+	l := fresh(t)
+	if err := l.Add([]rules.Notice{notice("desk", "a"), notice("ops", "b"), notice("desk", "c")}); err != nil {
+		t.Fatal(err)
+	}
+	waiting, err := l.Waiting("desk")
+	if err != nil || len(waiting) != 2 || waiting[0].Key != "a" || waiting[1].Key != "c" {
+		t.Fatal(waiting, err)
+	}
+	n := waiting[0]
+	n.Channel, n.For = "ops", "desk"
+	mark(t, l, n, rules.NoticeWaiting)
+	for channel, want := range map[string]string{"desk": "c", "ops": "a"} {
+		if n, ok, err := l.Next(channel); err != nil || !ok || n.Key != want {
+			t.Errorf("%s: %q, %v, %v", channel, n.Key, ok, err)
+		}
+	}
+	moved, err := l.Waiting("ops")
+	if err != nil || len(moved) != 2 || moved[0].For != "desk" {
+		t.Errorf("%+v, %v", moved, err)
+	}
+	if _, err := l.Verify(t.Context(), VerifyOptions{}); err != nil {
+		t.Error(err)
+	}
+}
