@@ -9,13 +9,14 @@ import (
 
 const (
 	// lonePast is how many dates before a value of a lone series say what it looks like.
-	lonePast = 60
+	lonePast = 120
 	// naturalCopies is how many zeros or repeats among them make another one ordinary without being weighed.
 	naturalCopies = 2
 )
 
-// pastRows are the returns of a task's series on the newest dates before the one at hand, without those that were left out. Those of
-// dates that the task did not go through are read when they are first needed.
+// pastRows are the returns of a task's series on the newest dates before the one at hand, as received: what was left out counts too, or a
+// series whose zeros are a habit would never be known for it. Those of dates that the task did not go through are read when they are first
+// needed.
 type pastRows struct {
 	first  rules.Date // of the task
 	loaded bool       // what lies before it is there as far as it is needed
@@ -122,30 +123,10 @@ func (w *worker) readPast(t task) error {
 			p.spare = append(p.spare, row)
 			continue
 		}
-		if err := w.withoutOut(t, d, row); err != nil {
-			return err
-		}
 		older = append(older, row)
 	}
 	slices.Reverse(older)
 	p.rows = append(older, p.rows...)
-	return nil
-}
-
-// withoutOut leaves out of a row of returns those that were left out before.
-func (w *worker) withoutOut(t task, d rules.Date, row []int64) error {
-	if w.j.concluded == 0 {
-		return nil
-	}
-	codes := w.past.roomForCodes(t.width)
-	if err := w.view.Patch(w.j.concluded, d, t.block, t.from, codes); err != nil {
-		return err
-	}
-	for i, c := range codes {
-		if causes.Use(c) == causes.Out {
-			row[i] = Missing64
-		}
-	}
 	return nil
 }
 
@@ -183,11 +164,6 @@ func (w *worker) passPast(t task, date rules.Date) {
 		row = p.row(t.width)
 	}
 	copy(row, raw)
-	for n := range w.hits {
-		if w.hits[n].out {
-			row[w.hits[n].at] = Missing64
-		}
-	}
 	p.rows = append(p.rows, row)
 }
 

@@ -113,41 +113,30 @@ func (r *Reader) weighLone(series string, date rules.Date, step uint32) (*Reweig
 	if err != nil {
 		return nil, err
 	}
-	ids, err := rangeIDs(v)
-	if err != nil {
-		return nil, err
-	}
 	cell := make([]int64, 1)
-	read := func(d rules.Date) (printed, used rules.Units, ok bool, err error) {
-		if ok, err = v.Fill(Returns, d, id/BlockSize, int(id%BlockSize), cell); err != nil || !ok {
-			return rules.Missing, rules.Missing, ok, err
-		}
-		printed, used = rules.Units(cell[0]), rules.Units(cell[0])
-		cell[0] = 0
-		err = v.Patch(ids[concludedKey], d, id/BlockSize, int(id%BlockSize), cell)
-		if causes.Use(cell[0]) == causes.Out {
-			used = rules.Missing
-		}
-		return printed, used, true, err
-	}
-	value, _, _, err := read(date)
-	if err != nil || value == rules.Missing {
+	value := rules.Missing
+	if ok, err := v.Fill(Returns, date, id/BlockSize, int(id%BlockSize), cell); err != nil {
 		return nil, err
+	} else if ok {
+		value = rules.Units(cell[0])
+	}
+	if value == rules.Missing {
+		return nil, nil
 	}
 	before := rules.Missing
 	var past []rules.Units
 	n, _ := slices.BinarySearch(held, date)
 	for n--; n >= 0 && len(past) < lonePast; n-- {
-		printed, used, ok, err := read(held[n])
+		ok, err := v.Fill(Returns, held[n], id/BlockSize, int(id%BlockSize), cell)
 		if err != nil {
 			return nil, err
 		}
-		if ok && len(past) == 0 {
-			before = printed
-		}
 		if ok {
-			past = append(past, used)
+			past = append(past, rules.Units(cell[0]))
 		}
+	}
+	if len(past) > 0 {
+		before = past[0]
 	}
 	slices.Reverse(past)
 	said, _ := causes.NewLone().Weigh(past, before, date, value)
