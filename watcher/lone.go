@@ -188,8 +188,8 @@ func (w *worker) weighLone(t task, d *day, h *hit, out *outcome) error {
 	if !w.j.doubts {
 		v.Kind = ""
 	}
-	h.view, h.out = &v, use(&v) == causes.Out
 	h.flagged = h.flagged || v.Kind != ""
+	h.view, h.out = &v, use(&v) == causes.Out && h.flagged // nothing is left out in silence
 	if earlier && h.out {
 		before := v
 		before.Date = p.on

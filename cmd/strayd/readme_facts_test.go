@@ -47,7 +47,7 @@ func TestReadmeTailTable(t *testing.T) {
 
 // openSizes runs the four open index series under the default range and gives every |z| of a full window.
 func openSizes(t *testing.T) (judged int, sizes []float64) {
-	f := newFolder(t, "ranges:\n  - {name: own}\n")
+	f := newFolder(t, "doubtful: 0%\nranges:\n  - {name: own}\n")
 	for _, series := range openSeries[:4] {
 		rows := reference(t, "data/"+series+".csv")
 		dates := openDates(t, rows)
