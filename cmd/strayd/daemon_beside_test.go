@@ -43,8 +43,8 @@ func TestBesideDaemonSameAnswers(t *testing.T) {
 		}
 	}
 	const drill = "drill --days 8 --kinds x100,x10000 --gap 5 --format csv"
-	lines = append(lines, drill, "ledger verify", "ledger verify --head 00", "ledger export", "ledger export --what prices", "flags --format xml", "flags --blocking nobody",
-		"flags --kind nothing", "explain", "explain 1 2 3", "history", "notices again x", "pass nobody")
+	lines = append(lines, drill, "ledger verify", "ledger verify --head 00", "ledger export", "ledger export --what prices", "flags --format xml",
+		"flags --blocking nobody", "flags --kind nothing", "explain", "explain 1 2 3", "history", "notices again x", "pass nobody")
 	f.daemon().stop() // so that what it remembers of its own is in the ledger in both cases
 	alone := f.answers(lines)
 	d := f.daemon()
