@@ -108,8 +108,8 @@ func (w *WeekFigures) lookReasons() (r reasons) {
 			of = "group " + c.Group
 		}
 		v := c.InnerSays
-		r.when(v.Verdict == TooMany || v.Verdict == TooFew, "range %s over %s: %s beyond the %s line, %d of %d", c.Range, of, v.Verdict,
-			InPercentPlain(c.Share), v.Beyond, v.Judged)
+		r.when(v.Verdict == TooMany || v.Verdict == TooFew, "range %s over %s: %s beyond the %s line, %s of %s", c.Range, of, v.Verdict,
+			InPercentPlain(c.Share), Thousands(v.Beyond), Thousands(v.Judged))
 	}
 	r.when(w.Checked.Part < w.Checked.Whole && !w.unwatched(), "%s of %s expected series-days have no value", Thousands(w.Checked.Whole-w.Checked.Part), Thousands(w.Checked.Whole))
 	r.when(w.Ageing.PastReply > 0, "%s past the reply-by time", Counted(w.Ageing.PastReply, "flag"))

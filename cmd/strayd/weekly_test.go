@@ -3,14 +3,19 @@ package main
 import (
 	"cmp"
 	"fmt"
+	"io"
+	"log/slog"
 	"os"
 	"path/filepath"
 	"slices"
 	"strconv"
 	"strings"
 	"testing"
+	"time"
 
 	"strayd/rules"
+	"strayd/watcher/ledger"
+	"strayd/watcher/schedule"
 )
 
 // figureOf finds one figure of the weekly log's CSV.
@@ -271,5 +276,55 @@ func TestWeeklyUsage(t *testing.T) {
 	// A ledger without anything has a log too, and says so.
 	if out := f.must("weekly", "--now", "2026-03-16T07:00:00Z"); !strings.Contains(out, "Act: nothing was checked") {
 		t.Errorf("an empty ledger: %s", out[:min(len(out), cmp.Or(len(out), 300))])
+	}
+}
+
+// The daemon's schedule makes, keeps and posts the log; a slot that comes again, as after a crash, posts nothing again.
+func TestWeeklyBySchedule(t *testing.T) {
+	f := newFolder(t, "ranges:\n  - {name: own}\nchannels:\n  - {name: desk, console: {}}\nweekly: {schedule: \"30 7 * * mon\"}\n")
+	f.write("inbox/a.csv", "date,series,return\n2026-03-09,alder,0.01\n2026-03-10,alder,0.02\n")
+	f.must("pass", "--settled", "--now", "2026-03-11T07:00:00Z")
+	a := &app{ctx: t.Context(), out: io.Discard, err: io.Discard, configPath: filepath.Join(f.path, "strayd.yaml")}
+	c, err := a.load()
+	if err != nil {
+		t.Fatal(err)
+	}
+	l, err := openLedger(c, ledger.ReadWrite)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer l.Close() //nolint:errcheck // the test is over
+	d := &daemon{log: slog.New(slog.DiscardHandler), ledger: l, program: a, heart: make(chan struct{}, 1), passing: make(chan struct{}, 1)}
+	d.beats.begun = make(chan struct{})
+	if d.setup, err = d.prepare(c); err != nil {
+		t.Fatal(err)
+	}
+	at := slices.IndexFunc(d.setup.jobs, func(j schedule.Job) bool { return j.Name == weeklyJob })
+	if at < 0 {
+		t.Fatal("no job makes the weekly log")
+	}
+	job, slot := d.setup.jobs[at], time.Date(2026, 3, 16, 7, 30, 0, 0, time.UTC)
+	if next := job.When.Next(slot.AddDate(0, 0, -6)); !next.Equal(slot) {
+		t.Errorf("the job's slot is %s, want %s", next, slot)
+	}
+	for range 2 {
+		if err := job.Run(t.Context(), slot); err != nil {
+			t.Fatal(err)
+		}
+	}
+	posted := 0
+	if err := l.Notices(func(n rules.Notice) bool {
+		if n.Kind == rules.KindWeekly {
+			posted++
+			if !strings.Contains(n.Lines[0], "2026-W11") {
+				t.Errorf("the message begins %q", n.Lines[0])
+			}
+		}
+		return true
+	}); err != nil || posted != 1 {
+		t.Errorf("%d messages (%v), want 1", posted, err)
+	}
+	if _, err := os.Stat(filepath.Join(f.path, "weekly", "2026-W11.html")); err != nil {
+		t.Error(err)
 	}
 }
