@@ -52,8 +52,9 @@ var table = object{what: "keys: ledger, feeds and ranges at least", fields: []fi
 		shape: list[rules.Range]{item: rangeTable, least: 1, what: "a list of at least one range"},
 		at:    in(func(c *Config) any { return &c.Ranges })},
 	{key: "doubtful", initial: "0.2%", shape: share(bounds{low: 0, high: 0.1}),
-		doc: "Share of ordinary observations that may be flagged doubtful, stale or repeat, together; 0% for none.",
-		at:  in(func(c *Config) any { return &c.Doubtful })},
+		doc: "Share of ordinary observations that may be flagged doubtful, stale or repeat, together. 0% for none: then series without " +
+			"group and reference go by pending alone.",
+		at: in(func(c *Config) any { return &c.Doubtful })},
 	{key: "channels", initial: "[{name: console, console: {}}]", doc: "Where notices go; the console when left out.",
 		shape: list[rules.Channel]{item: channelTable, least: 1, what: "a list of at least one channel"},
 		at:    in(func(c *Config) any { return &c.Channels })},

@@ -26,8 +26,8 @@ var groupTable = object{what: "keys: name at least", fields: []field{
 }}
 
 const (
-	hard        = "limit" // the key beside which a range has none of its estimates
-	beyondLine  = "line"
+	hard       = "limit" // the key beside which a range has none of its estimates
+	beyondLine = "line"
 )
 
 var rangeTable = object{what: "keys: name at least", fields: []field{

@@ -126,7 +126,7 @@ func TestLater(t *testing.T) {
 	}
 	check(base + "    of: return\n    tail: t5\ncalendar: weekdays\n")
 	check(base+"    of: residual\n    tail: auto\ncalendar: GB\n", "8 ranges[0].tail")
-	check("weekly: {}\n"+base+"groups:\n  - {name: g, series: [a], reference: none, four_eyes: false}\n  - {name: h, series: [b], reference: peers}\n")
+	check("weekly: {}\n" + base + "groups:\n  - {name: g, series: [a], reference: none, four_eyes: false}\n  - {name: h, series: [b], reference: peers}\n")
 }
 
 // Nearest words, by hand: within a third of the word's letters, swaps of neighbours counted once.

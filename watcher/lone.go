@@ -189,7 +189,8 @@ func (w *worker) weighLone(t task, d *day, h *hit, out *outcome) error {
 		v.Kind = ""
 	}
 	h.flagged = h.flagged || v.Kind != ""
-	h.view, h.out = &v, use(&v) == causes.Out && h.flagged // nothing is left out in silence
+	h.view = &v
+	h.out = use(&v) == causes.Out && h.flagged && w.j.doubts // nothing is left out in silence, nor where nobody is to doubt
 	if earlier && h.out {
 		before := v
 		before.Date = p.on

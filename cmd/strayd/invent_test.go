@@ -208,7 +208,7 @@ func inventRanges(random *rand.Rand) []oracleRange {
 }
 
 func rangesText(ranges []oracleRange) string {
-	text := "ranges:\n"
+	text := "doubtful: 0%\nranges:\n" // the oracle judges ranges; what may lie behind a value is not its business
 	for _, r := range ranges {
 		text += r.text
 	}
