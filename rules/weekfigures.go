@@ -109,7 +109,7 @@ func (f *WeekFacts) countFlags(w *WeekFigures) {
 		if g.Log10.OK {
 			w.Largest = append(w.Largest, *g)
 		}
-		if g.Kind == KindDrift || g.Kind == KindVolatility || g.Kind == KindMisfit {
+		if g.Kind.Slow() {
 			w.Slow = append(w.Slow, *g)
 		}
 	}

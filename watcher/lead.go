@@ -121,10 +121,10 @@ func (l *leader) goesOn(next *leader, date rules.Date) (weigher, rules.Date) {
 	return nil, rules.NoDate
 }
 
-// valueless says that no step from one to before another changed a value or the settings: they tell of refused and late files.
+// valueless says that no step from one to before another changed a value or the settings: they tell of refused and late files, and of weeks.
 func valueless(v View, from, before uint32) bool {
 	for s := from; s < before; s++ {
-		if row, err := v.File(s); err != nil || row.Outcome != Refused && row.Outcome != Overdue {
+		if row, err := v.File(s); err != nil || row.Outcome != Refused && row.Outcome != Overdue && row.Outcome != Checked {
 			return false
 		}
 	}

@@ -46,6 +46,7 @@ type Pass struct {
 	gateText   string               // see gateKey
 	taken      map[string][]FileRow // the newest accepted files of each feed that brought something new, in their order
 	row        PassRow
+	slow       slowPast   // of the weeks checked before
 	release    *releasing // the one file to take, because a person released it; nil for all
 	led        *leader    // that of the step before
 
@@ -76,7 +77,8 @@ const (
 	FateAccepted Fate = "accepted"
 	FateRefused  Fate = "refused"
 	FateWaiting  Fate = "waiting"
-	FateSeen     Fate = "seen" // the same content under the same settings: nothing happens
+	FateChecked  Fate = "checked" // not a file: the slow-burn checks of a week, in Why
+	FateSeen     Fate = "seen"    // the same content under the same settings: nothing happens
 )
 
 // Run takes every ready file as one step each and adds a row to the run record. Files that are refused do not stop it: they are
@@ -112,6 +114,11 @@ func (p *Pass) run(ctx context.Context) error {
 			return fmt.Errorf("feed %s: %w", f.Name, err)
 		}
 	}
+	if p.release == nil {
+		if err := p.slowBurn(ctx); err != nil {
+			return fmt.Errorf("slow-burn checks: %w", err)
+		}
+	}
 	p.Resident.giveBack(p.names)
 	return nil
 }
@@ -141,11 +148,13 @@ func (p *Pass) begin() (*seenFiles, error) {
 	}
 	p.names, p.firstNames = names, names.Len()
 	s := &seenFiles{map[string]bool{}, map[int64]bool{}}
+	p.slow = slowPast{began: p.Now}
 	p.taken, p.gateText = map[string][]FileRow{}, gateText(&p.Settings)
 	return s, v.Files(func(r FileRow) bool {
 		s.stamps[stampKey(r.File.Feed, r.File.Name, r.Stamp, r.FeedKey)] = !p.Released[r.File.SHA256] || r.Outcome != Refused
 		s.sizes[r.File.Size] = true
 		p.noteTaken(r)
+		p.slow.note(r)
 		return true
 	})
 }

@@ -208,6 +208,8 @@ const (
 	Acted Outcome = "acted"
 	// Lapsed is the outcome of a step that holds no file: waivers ran out.
 	Lapsed Outcome = "waivers ended"
+	// Checked is the outcome of a step that holds no file: the slow-burn checks of a week, whose dates are First to Last, were made.
+	Checked Outcome = "week checked"
 )
 
 // Fileless says that the row's step was made by no file.

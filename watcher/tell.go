@@ -3,13 +3,14 @@ package watcher
 import "strayd/rules"
 
 // tell puts the notices of a batch's flags into it: of those that are new or open again and ask something of a person.
+// Those of slow-burn checks belong to the weekly log.
 func (p *Pass) tell(b *Batch, series int) {
 	if p.Tell == nil {
 		return
 	}
 	news := rules.News{At: p.Now, Feed: b.File.File.Feed, File: b.File.File.Name, Rows: b.File.Counts.Rows, Series: series}
 	for _, f := range b.Flags {
-		if (f.Step == b.Step || b.File.Outcome == Lapsed) && f.Standing.Asks() {
+		if (f.Step == b.Step || b.File.Outcome == Lapsed) && f.Standing.Asks() && !f.Kind.Slow() {
 			news.Flags = append(news.Flags, rules.FlagNews{Flag: f.Flag, Window: f.Window, WindowTo: f.WindowTo, Used: f.Used, Market: f.Market})
 		}
 	}

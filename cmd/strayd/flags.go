@@ -147,7 +147,7 @@ func (a *app) flags(f *flagFilter) error {
 		var rowErr error
 		err = v.Flags(all, func(g rules.Flag) bool {
 			if f.takes(&g) {
-				blocked = blocked || g.AsksOn(f.today)
+				blocked = blocked || g.AsksOn(f.today) && !g.Kind.Slow()
 				rowErr = l.row(flagCells(&g)...)
 			}
 			return rowErr == nil

@@ -197,6 +197,8 @@ func (d *daemon) logFile(r watcher.FileReport) {
 		d.log.Info("file accepted", "feed", r.Feed, "file", r.Name, "rows", n.Rows, "new", n.New, "late", n.Late, "restated", n.Restated, "flags", n.Flags)
 	case watcher.FateRefused:
 		d.log.Warn("file refused", "feed", r.Feed, "file", r.Name, "why", r.Why)
+	case watcher.FateChecked:
+		d.log.Info(r.Why)
 	case watcher.FateWaiting:
 		d.log.Debug("file waits", "feed", r.Feed, "file", r.Name, "why", r.Why)
 	}

@@ -133,6 +133,8 @@ func (a *app) sayFile(r watcher.FileReport) {
 		}
 	case watcher.FateRefused:
 		fmt.Fprintf(a.err, "refused, nothing of it is kept: %s\n", printable(r.Why))
+	case watcher.FateChecked:
+		fmt.Fprintln(a.out, r.Why)
 	case watcher.FateWaiting:
 		fmt.Fprintf(a.err, "waiting: %s: %s\n", name, r.Why)
 	}

@@ -248,6 +248,9 @@ func keepFile(folder, name string, content []byte) (made bool, err error) {
 func (d *daemon) weekly(ctx context.Context, slot time.Time) error {
 	s := d.inForce()
 	defer s.post.Wake()
+	if err := d.endWeek(ctx, s, slot); err != nil {
+		return err
+	}
 	m := weekMaking{ctx: ctx, config: s.config, ledger: d.ledger, monday: rules.WeekNow(slot, s.config.Location), now: slot.UTC(),
 		by: "the daemon's schedule", progress: func(string, int64, int64) { d.beats.beat() }}
 	log, err := m.log()
@@ -256,6 +259,21 @@ func (d *daemon) weekly(ctx context.Context, slot time.Time) error {
 	}
 	page, _, kept := keepWeek(s.config, log) // where that fails, the message goes all the same
 	return errors.Join(kept, d.ledger.Add(s.teller.Weekly(weekNotice(s.config, log, page, slot))))
+}
+
+// endWeek makes the slow-burn checks that the log lists, as of the log's own time, if no pass has made them.
+func (d *daemon) endWeek(ctx context.Context, s *setup, slot time.Time) error {
+	release, err := d.alone(ctx)
+	if err != nil {
+		return err
+	}
+	defer release()
+	p, err := d.newPass(s.config)
+	if err != nil {
+		return err
+	}
+	p.Now, p.Report = slot.UTC(), d.logFile
+	return p.EndWeek(ctx)
 }
 
 func weekNotice(c *config.Config, log *rules.WeekLog, where string, at time.Time) notify.Weekly {

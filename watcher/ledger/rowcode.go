@@ -25,7 +25,8 @@ func (u *unpacker) counts(c *watcher.Counts) {
 
 // outcomes are numbered in the order of this list: only append.
 func outcomes() []watcher.Outcome {
-	return []watcher.Outcome{watcher.Accepted, watcher.Refused, watcher.Changed, watcher.Overdue, watcher.Acted, watcher.Lapsed}
+	return []watcher.Outcome{watcher.Accepted, watcher.Refused, watcher.Changed, watcher.Overdue, watcher.Acted, watcher.Lapsed,
+		watcher.Checked}
 }
 
 func packFile(dst []byte, f *watcher.FileRow) []byte {
