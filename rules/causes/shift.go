@@ -12,6 +12,7 @@ const (
 	priorShift = 1e-4
 	shiftStays = 0.98 // of a shifted file, on the next date
 	sentAgain  = 3.0  // what a value that is yesterday's again says for it
+	leastEarly = 60   // log odds that the date before fits the benchmark of today: an index file with all its signs lost reaches 50 by chance
 	notSent    = -3.0 // what it says against the first day of it that values are there from yesterday and differ
 	freeReturn = -3.0 // log of what a return costs that may be anything: deviation of the followers' agreement over that of the benchmark
 )
@@ -96,7 +97,7 @@ func (p *Pool) shifted() bool {
 	now := &p.shift.today
 	now.contradicted = wrong > 0
 	now.late = late+prior > max(rival, 0)
-	confirmed := p.shift.contradicted && early > -math.Log(priorShift)
+	confirmed := p.shift.contradicted && early > leastEarly
 	now.early = !now.late && wrong > 0 && (confirmed || p.shift.early) && free+prior > rival
 	return now.late || now.early
 }
