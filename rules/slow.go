@@ -32,7 +32,9 @@ type SlowPast struct {
 type SlowFinding struct {
 	Kind Kind
 	Up   bool // towards higher values, or a larger deviation
-	Note string
+	// Fading says that its spell goes on but that it is back within its limit: no news, though it was some.
+	Fading bool
+	Note   string
 }
 
 // upto is the past up to and including a date.
@@ -68,7 +70,7 @@ func (p *SlowPast) Findings(end Date) (out []SlowFinding) {
 // flag stands for its spell: for as long as it asks something or is waived, and while every week's end since finds the same.
 func (p *SlowPast) News(end Date, told func(Kind) *Flag) (out []SlowFinding) {
 	for _, f := range p.Findings(end) {
-		if old := told(f.Kind); old == nil || !p.lasts(f, old, end) {
+		if old := told(f.Kind); !f.Fading && (old == nil || !p.lasts(f, old, end)) {
 			out = append(out, f)
 		}
 	}

@@ -230,6 +230,34 @@ func TestSlowNewsOncePerSpell(t *testing.T) {
 	}
 }
 
+// A drift that is on its way back within its line is no news, though its spell goes on.
+func TestSlowNewsNotWhenFading(t *testing.T) {
+	back := 0
+	for seed := range uint64(40) {
+		p := slowPast(rand.New(rand.NewPCG(seed, 7)), 500, func(at int, m, e float64) (float64, float64) {
+			if at >= 440 && at < 470 {
+				e += 0.002
+			}
+			return m, e
+		})
+		end := p.Dates[499] + 2
+		for _, f := range p.Findings(end) {
+			if f.Kind != rules.KindDrift || !f.Fading {
+				continue
+			}
+			back++
+			for _, n := range p.News(end, func(rules.Kind) *rules.Flag { return nil }) {
+				if n.Kind == rules.KindDrift {
+					t.Errorf("seed %d: %s is news", seed, n.Note)
+				}
+			}
+		}
+	}
+	if back == 0 {
+		t.Error("none of 40 drifts is on its way back: nothing was tested")
+	}
+}
+
 // Findings depend on nothing after their date, and no series is too short, too flat or too odd for them.
 func TestSlowFindingsLookBackOnly(t *testing.T) {
 	for seed := range uint64(50) {

@@ -66,7 +66,7 @@ func (p *SlowPast) drift() (SlowFinding, bool) {
 	from := len(values) - side.Since
 	before, _ := r.of(max(0, from-slowLong), from)
 	bias := mean(values[from:]) - before
-	return SlowFinding{Kind: KindDrift, Up: way == "higher", Note: fmt.Sprintf(
+	return SlowFinding{Kind: KindDrift, Up: way == "higher", Fading: side.Sum <= c.Line, Note: fmt.Sprintf(
 		"%s lie %s since %s, by %s bp a day on the mean of %d observations; cumulative sum %.1f (it signals beyond %g, and until it is back at 0)",
 		word, way, p.Dates[from], signed(bias*1e4), side.Since, side.Sum, c.Line)}, true
 }
