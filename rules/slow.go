@@ -96,8 +96,8 @@ type running struct {
 	sum, square []float64
 }
 
-func newRunning(values []float64) running {
-	r := running{centre: mean(values), sum: make([]float64, len(values)+1), square: make([]float64, len(values)+1)}
+func newRunning(values []float64) *running {
+	r := &running{centre: mean(values), sum: make([]float64, len(values)+1), square: make([]float64, len(values)+1)}
 	for i, x := range values {
 		d := x - r.centre
 		r.sum[i+1], r.square[i+1] = r.sum[i]+d, r.square[i]+float64(d*d)
@@ -106,11 +106,16 @@ func newRunning(values []float64) running {
 }
 
 // of is over the values from one to before another; there are two at least.
-func (r running) of(from, to int) (mean, deviation float64) {
+func (r *running) of(from, to int) (mean, deviation float64) {
+	mean, variance := r.moments(from, to)
+	return mean, math.Sqrt(variance)
+}
+
+func (r *running) moments(from, to int) (mean, variance float64) {
 	n := float64(to - from)
 	s := r.sum[to] - r.sum[from]
-	variance := (r.square[to] - r.square[from] - float64(s*s)/n) / (n - 1)
-	return r.centre + s/n, math.Sqrt(max(0, variance))
+	variance = (r.square[to] - r.square[from] - float64(s*s)/n) / (n - 1)
+	return r.centre + s/n, max(0, variance)
 }
 
 func mean(values []float64) float64 {

@@ -278,3 +278,12 @@ func TestSlowFindingsLookBackOnly(t *testing.T) {
 		}
 	}
 }
+
+func BenchmarkSlowFindings(b *testing.B) {
+	p := slowPast(rand.New(rand.NewPCG(1, 8)), 265, func(_ int, m, e float64) (float64, float64) { return m, e })
+	p.Residuals = nil
+	b.ReportAllocs()
+	for b.Loop() {
+		p.Findings(p.Dates[264])
+	}
+}

@@ -52,9 +52,9 @@ func (p *SlowPast) drift() (SlowFinding, bool) {
 	}
 	r, c := newRunning(values), NewCUSUM()
 	for n := SlowLeast; n < len(values); n++ {
-		centre, long := r.of(max(0, n-slowLong), n)
-		_, short := r.of(n-slowShort, n)
-		c.Step((values[n] - centre) / max(long, short, ScaleFloor))
+		centre, long := r.moments(max(0, n-slowLong), n)
+		_, short := r.moments(n-slowShort, n)
+		c.Step((values[n] - centre) / math.Sqrt(max(long, short, ScaleFloor*ScaleFloor)))
 	}
 	side, way := c.Up, "higher"
 	if !side.On || c.Down.On && c.Down.Sum > side.Sum {

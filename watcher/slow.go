@@ -13,7 +13,7 @@ import (
 
 // mostLone is how many series without group and reference a week's slow-burn checks look at, so that a million of them do not hold up the
 // pass that makes the checks. The pass says when there are more.
-const mostLone = 20000
+const mostLone = 2 * BlockSize
 
 // slowPast is what the ledger says of the slow-burn checks of before.
 type slowPast struct {
@@ -107,8 +107,10 @@ type slowScan struct {
 	told   map[slowKey]*rules.Flag // the newest flag of each; nil until one is asked for
 	flags  []*FlagRow
 
-	returns, residuals []int64 // of one block: date by date
-	uses               []int64 // of one date
+	returns, residuals []int64        // of one block: date by date
+	uses               []int64        // of one date
+	seen               rules.SlowPast // of one series
+	left               []float64      // its residuals, where it has any
 }
 
 type slowKey struct {
@@ -254,8 +256,10 @@ func (s *slowScan) series(id uint32) error {
 
 // past gathers a series' observations, and says its newest date. It goes by residuals where the newest value has one: then only the dates
 // that have one count.
-func (s *slowScan) past(at int) (p rules.SlowPast, newest rules.Date) {
-	newest = rules.NoDate
+// What it gives is valid until it is called again.
+func (s *slowScan) past(at int) (p *rules.SlowPast, newest rules.Date) {
+	p, newest = &s.seen, rules.NoDate
+	p.Dates, p.Returns = p.Dates[:0], p.Returns[:0]
 	last := len(s.dates) - 1
 	for ; last >= 0 && s.returns[last*BlockSize+at] == Missing64; last-- {
 	}
@@ -264,6 +268,9 @@ func (s *slowScan) past(at int) (p rules.SlowPast, newest rules.Date) {
 	}
 	newest = s.dates[last]
 	referenced := s.residuals[last*BlockSize+at] != Missing64
+	if p.Residuals = nil; referenced {
+		p.Residuals = s.left[:0]
+	}
 	for n, date := range s.dates[:last+1] {
 		x, e := s.returns[n*BlockSize+at], s.residuals[n*BlockSize+at]
 		if x == Missing64 || referenced && e == Missing64 {
@@ -273,6 +280,9 @@ func (s *slowScan) past(at int) (p rules.SlowPast, newest rules.Date) {
 		if referenced {
 			p.Residuals = append(p.Residuals, rules.Units(e).Float())
 		}
+	}
+	if referenced {
+		s.left = p.Residuals
 	}
 	return p, newest
 }
