@@ -8,11 +8,6 @@ import (
 	"strayd/rules"
 )
 
-// always notes a key whatever it holds.
-func always(text string) func(*yaml.Node) string {
-	return func(*yaml.Node) string { return text }
-}
-
 // when notes a key that holds the value.
 func when(value, text string) func(*yaml.Node) string {
 	return func(n *yaml.Node) string {
@@ -124,11 +119,9 @@ var columnsTable = object{what: "keys: date, series, value, status, days", field
 	{key: "value", shape: columnName(), doc: "The return or price (long only); return or price, after the feed's value, when left out.",
 		at: in(func(c *rules.Columns) any { return &c.Value })},
 	{key: "status", shape: columnName(), doc: "estimate or final (long only); none when left out.",
-		later: always("checked now; the status of an estimate is used in a later version"),
-		at:    in(func(c *rules.Columns) any { return &c.Status })},
+		at: in(func(c *rules.Columns) any { return &c.Status })},
 	{key: "days", shape: columnName(), doc: "Business days that the return covers (long only); none when left out.",
-		later: always("checked now; returns over several business days are judged at their length in a later version"),
-		at:    in(func(c *rules.Columns) any { return &c.Days })},
+		at: in(func(c *rules.Columns) any { return &c.Days })},
 }}
 
 func columnName() shape { return text("a column's name in the header row", filledPattern, filled) }

@@ -48,6 +48,7 @@ type Past struct {
 	Sorted  func() stats.Sorted // the same, ascending
 	Group   Num                 // the group's deviation, for provisional verdicts
 	Dormant bool                // the newest used value was too old, so that the window starts anew
+	Days    int                 // business days that the value to be judged covers; 0 and 1 are one
 }
 
 // NewGauge prepares a range. A budget line must have its Level. Errors name the range and the line.
@@ -192,7 +193,8 @@ func (g *Gauge) thinAt(n int) (thinTail, error) {
 	return t, err
 }
 
-// Judge concludes what a return is under the range, given the past before it.
+// Judge concludes what a return is under the range, given the past before it. One over k business days is held against k times the mean
+// and sqrt(k) times the deviation of one day; mean and deviation of the verdict stay those of one day.
 func (g *Gauge) Judge(x Units, p *Past) Verdict {
 	if g.Range.Limit != nil {
 		return JudgeLimit(g.Range.Limit, x)

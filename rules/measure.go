@@ -22,6 +22,7 @@ func (g *Gauge) measure(p *Past) (m measure) {
 	v.N = p.N
 	v.Mean, v.Deviation = g.estimate(p)
 	v.Finding, v.Why = g.standing(p, v)
+	v.Why = also(v.Why, Terms{Days: p.Days}.Covers())
 	v.Provisional = v.Finding == Inside && p.N < LeastNormal
 	if !v.Deviation.OK || v.Deviation.V == 0 || p.N < 2 { // one value gives no degree of freedom
 		return m
@@ -36,9 +37,17 @@ func (g *Gauge) measure(p *Past) (m measure) {
 		return m
 	}
 	if v.Finding == Inside {
-		v.Lines = g.lines(v.Mean.V, m.spread, m.cut)
+		v.Lines = g.lines(float64(p.span()*v.Mean.V), m.spread, m.cut)
 	}
 	return m
+}
+
+// also joins two reasons.
+func also(a, b string) string {
+	if a == "" || b == "" {
+		return a + b
+	}
+	return a + "; " + b
 }
 
 // setTail chooses the tail: the range's own, or the predictive t while history is thin.
@@ -91,8 +100,12 @@ func (g *Gauge) estimate(p *Past) (mean, deviation Num) {
 	return mean, deviation
 }
 
-// distance is how far a return lies from the centre.
+// distance is how far a return lies from the centre, for one over k business days from k times the centre.
 func (g *Gauge) distance(p *Past, x Units) float64 {
+	if p.Days > 1 {
+		center, _ := g.estimate(p)
+		return x.Float() - float64(p.span()*center.V)
+	}
 	switch g.Range.Scale {
 	case Weighted:
 		return x.Float()
@@ -104,17 +117,18 @@ func (g *Gauge) distance(p *Past, x Units) float64 {
 
 // spread is the deviation that a z-score divides by:
 //
-//	max(deviation, floor, group's deviation while provisional) x sqrt(1 + 1/n)
+//	max(sqrt(k) deviation, floor, sqrt(k) group's deviation while provisional) x sqrt(1 + 1/n)
 //
-// with the last factor for a new observation (predictive) on the plain scale, and always while the tail is a predictive t.
+// for a value over k business days (the floors are about how values are written, whatever they cover), with the last factor for a new observation (predictive) on the plain scale, and always while the tail is a predictive t.
 func (g *Gauge) spread(p *Past, v *Verdict) float64 {
-	s := max(v.Deviation.V, ScaleFloor)
-	if tick := tickFloor(p, s); tick > s {
-		s = tick
-	}
+	s := v.Deviation.V
 	thin := p.N < LeastNormal
 	if thin && p.Group.OK {
 		s = max(s, p.Group.V)
+	}
+	s = max(math.Sqrt(p.span())*s, ScaleFloor)
+	if tick := tickFloor(p, s); tick > s {
+		s = tick
 	}
 	if thin || g.Range.Tail.Name == "predictive-t" || g.Range.Predictive && g.Range.Scale == Plain {
 		s *= math.Sqrt(1 + 1/float64(p.N))
@@ -167,9 +181,13 @@ func (g *Gauge) lines(center, spread float64, c cuts) (l Lines) {
 	return l
 }
 
-// judgeRank judges by the rank of the return in its window.
+// judgeRank judges by the rank of the return in its window; one over several business days by the rank of what it comes to a day.
 func (g *Gauge) judgeRank(v *Verdict, x Units, p *Past) {
 	sorted := p.Sorted()
+	if p.Days > 1 {
+		x = daily(x, v.Mean.V, p.span())
+		defer func() { v.Lines = v.Lines.over(v.Mean.V, p.span()) }()
+	}
 	atMost, atLeast := sorted.Ranks(int64(x))
 	tail := stats.RankTail(atMost, atLeast, len(sorted))
 	switch g.Range.Side {

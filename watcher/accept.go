@@ -105,7 +105,7 @@ func (p *Pass) prepare(j *judging, v View) (err error) {
 			j.limits = append(j.limits, n)
 		}
 	}
-	j.concluded, j.residuals = ids[concludedKey], ids[residualKey]
+	j.concluded, j.residuals, j.terms = ids[concludedKey], ids[residualKey], ids[termsKey]
 	j.width = p.taskWidth(j.names.Len())
 	return nil
 }
@@ -164,10 +164,12 @@ func (p *Pass) judgeAll(j *judging, blocks []block, b *Batch) ([]outcome, error)
 		return nil, err
 	}
 	if j.weighed != nil {
-		if b.Used, err = j.conclusions(v); err != nil {
+		concluded, err := j.conclusions(v)
+		if err != nil {
 			return nil, err
 		}
-		blocks = j.replays(blocks, b.Used)
+		b.Used = append(b.Used, concluded...)
+		blocks = j.replays(blocks, concluded)
 		if b.Flags, err = j.marketFlags(v); err != nil {
 			return nil, err
 		}

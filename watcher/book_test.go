@@ -22,6 +22,7 @@ type entry struct {
 	date   rules.Date
 	series string
 	value  rules.Units
+	days   int // business days that the value covers; 0 where the file does not say
 }
 
 // shelf is a source of files that lie in memory.
@@ -47,10 +48,15 @@ func (s *shelf) Read(_ context.Context, c watcher.Candidate, _ rules.Feed, names
 		value rules.Units
 		line  uint32
 	}
+	sheet.Days = s.termed()
 	var cells []placed
 	for n, e := range s.files[c.Name] {
+		if e.days > 1 {
+			sheet.Terms = append(sheet.Terms, watcher.CellTerms{Date: e.date, Series: names.Add([]byte(e.series)), Terms: rules.Terms{Days: e.days}})
+		}
 		cells = append(cells, placed{e.date, names.Add([]byte(e.series)), e.value, uint32(n + 2)})
 	}
+	sheet.Terms = watcher.SortTerms(sheet.Terms)
 	slices.SortFunc(cells, func(a, b placed) int { return cmp.Or(cmp.Compare(a.date, b.date), cmp.Compare(a.id, b.id)) })
 	var build *watcher.Cells
 	for n, p := range cells {
@@ -64,6 +70,16 @@ func (s *shelf) Read(_ context.Context, c watcher.Candidate, _ rules.Feed, names
 		}
 	}
 	return sheet, nil
+}
+
+// termed says that the files tell of the days that values cover.
+func (s *shelf) termed() bool {
+	for _, rows := range s.files {
+		if slices.ContainsFunc(rows, func(e entry) bool { return e.days > 0 }) {
+			return true
+		}
+	}
+	return false
 }
 
 // silent is a pool that has nothing to say.
@@ -82,6 +98,9 @@ func runWith(t *testing.T, m *memory, s *shelf, settings rules.Settings, workers
 	t.Helper()
 	p := &watcher.Pass{Resident: kept, Store: m, Source: s, Settings: settings, Feeds: []rules.Feed{{Name: "book"}}, FeedKey: func(rules.Feed) string { return "key" },
 		Now: time.Date(2026, 1, 1, 0, 0, 0, 0, time.UTC), Settled: true, Workers: workers}
+	if s.termed() {
+		p.Feeds[0].Columns.Days = "days"
+	}
 	p.SetWeigher(func([]causes.Member, []string) watcher.Weigher { return silent{} })
 	if _, err := p.Run(context.Background()); err != nil {
 		t.Fatal(err)
@@ -104,7 +123,7 @@ func randomFiles(r *rand.Rand, series, dates int, rough bool) map[string][]entry
 			case r.IntN(25) == 0, s%7 == 3 && n < dates/2, s%5 == 2 && n > dates/4 && n <= dates/4+18+s/5%4: // gaps of 19 to 22 business days
 				continue
 			}
-			e := entry{d, name, draw(r, place[s])}
+			e := entry{date: d, series: name, value: draw(r, place[s])}
 			at := n
 			if rough && r.IntN(40) == 0 {
 				at += 1 + r.IntN(8)

@@ -14,15 +14,16 @@ func (p *Pass) changes(j *judging, sheet *Sheet, b *Batch) ([]block, error) {
 		return nil, err
 	}
 	defer v.Close()
-	columns := sheet.Columns
+	columns, terms := sheet.Columns, &arriving{v: v, j: j, list: sheet.Terms, days: sheet.Days, status: sheet.Status}
 	if sheet.What == Prices {
-		if columns, b.Prices, err = returnsOf(v, j, sheet); err != nil {
+		if columns, b.Prices, terms.list, err = returnsOf(v, j, sheet); err != nil {
 			return nil, err
 		}
+		terms.days = true
 	}
 	blocks := map[uint32]*block{}
 	for _, c := range columns {
-		d, err := changedDay(v, j, c)
+		d, err := changedDay(v, j, c, terms)
 		if err != nil {
 			return nil, err
 		}
@@ -36,6 +37,7 @@ func (p *Pass) changes(j *judging, sheet *Sheet, b *Batch) ([]block, error) {
 		}
 		blocks[c.Block].days = append(blocks[c.Block].days, d)
 	}
+	b.Used = terms.used
 	var out []block
 	for _, bl := range blocks {
 		out = append(out, *bl)
@@ -45,19 +47,30 @@ func (p *Pass) changes(j *judging, sheet *Sheet, b *Batch) ([]block, error) {
 }
 
 // changedDay compares a column with what is held. It is nil when nothing changes.
-func changedDay(v View, j *judging, c *Column) (*day, error) {
+func changedDay(v View, j *judging, c *Column, terms *arriving) (*day, error) {
 	old, err := heldColumn(v, j, Returns, j.held, c)
 	if err != nil {
 		return nil, err
 	}
-	if old == nil {
-		return &day{date: c.Date, col: c}, nil
+	d := &day{date: c.Date, col: c, old: old, terms: termsIn(terms.list, c.Date, c.Block)}
+	if old == nil && len(d.terms) == 0 {
+		return d, nil
 	}
-	col := differing(c, old, Returns)
-	if col == nil {
+	codes, err := terms.held(c, old)
+	if err != nil {
+		return nil, err
+	}
+	var again []bool
+	if j.terms != 0 {
+		again = terms.compare(c, d, codes, old)
+	}
+	if old == nil {
+		return d, nil
+	}
+	if d.col = differing(c, old, Returns, again); d.col == nil {
 		return nil, nil
 	}
-	return &day{date: c.Date, col: col, old: old}, nil
+	return d, nil
 }
 
 // heldColumn is what is held on the date of a column, nil when nothing is.
@@ -73,9 +86,9 @@ func heldColumn(v View, j *judging, what What, held []rules.Date, c *Column) ([]
 	return old, nil
 }
 
-// differing is a column of only the cells whose value is not the held one; the column itself when that is all of them; nil when
-// there is none.
-func differing(c *Column, old []int64, what What) *Column {
+// differing is a column of only the cells whose value is not the held one, or that are to be taken again; the column itself when that is
+// all of them; nil when there is none.
+func differing(c *Column, old []int64, what What, again []bool) *Column {
 	now := make([]int64, c.Len())
 	c.Fill(now, 0, what.Places())
 	build, lines := NewCells(c.Date, c.Block, what.Places()), c.AllLines()
@@ -83,7 +96,7 @@ func differing(c *Column, old []int64, what What) *Column {
 	for i, x := range now {
 		switch {
 		case x == Missing64:
-		case x == old[i]:
+		case x == old[i] && (again == nil || !again[i]):
 			same = true
 		default:
 			build.Set(i, x, lines[i])

@@ -21,6 +21,9 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 		return err
 	}
 	w.clearHits()
+	if err := w.termsHits(t, d, old, fresh); err != nil {
+		return err
+	}
 	for _, l := range w.lanes {
 		all, now := w.values(t, l)
 		l.rest(d.date, all)
@@ -163,6 +166,7 @@ func (w *worker) judge(date rules.Date, h *hit) {
 			continue
 		}
 		past := l.past(int(h.at))
+		past.Days = h.days
 		if past.N < rules.LeastNormal && past.N >= rules.LeastJudged {
 			past.Group = w.j.scales.lent(l, h.group, date)
 		}
@@ -280,7 +284,7 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 		used = l.used[:t.width]
 		copy(used, all)
 		for n := range w.hits {
-			if h := &w.hits[n]; (h.flagged || h.out) && used[h.at] != Missing64 {
+			if h := &w.hits[n]; (h.flagged || h.out || h.days > 1) && used[h.at] != Missing64 {
 				used[h.at] = int64(h.used(l, k, rules.Units(used[h.at]), rules.Units(w.raw[h.at])))
 			}
 		}
@@ -296,6 +300,9 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 
 // used is what a lane's window takes of a flagged value.
 func (h *hit) used(l *lane, k int, x, raw rules.Units) rules.Units {
+	if h.days > 1 { // whoever decides what of it: it is no daily value
+		return rules.Missing
+	}
 	limits := h.limits
 	if l.residual {
 		limits = nil // they are about returns
@@ -353,7 +360,7 @@ func (w *worker) patch(t task, d *day, l *lane, all, used, stored []int64, out *
 func (w *worker) eachFlagged(f func(i int)) {
 	var at []int
 	for n := range w.hits {
-		if w.hits[n].flagged || w.hits[n].out {
+		if h := &w.hits[n]; h.flagged || h.out || h.days > 1 {
 			at = append(at, int(w.hits[n].at))
 		}
 	}

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math/rand/v2"
 	"slices"
+	"strings"
 	"testing"
 
 	"strayd/rules"
@@ -91,6 +92,44 @@ func TestEachRangeAgainstDefinition(t *testing.T) {
 				}
 			})
 		}
+	}
+}
+
+// Values over several business days, new, late and restated to other days: never in a window, and judged at their length.
+func TestSpansAgainstDefinition(t *testing.T) {
+	for _, rough := range []bool{false, true} {
+		t.Run(fmt.Sprintf("rough %v", rough), func(t *testing.T) {
+			r := rand.New(rand.NewPCG(7, 7))
+			s := &shelf{randomFiles(r, 66, 60, rough)}
+			spans := 0
+			for _, name := range sortedFiles(s) {
+				for n := range s.files[name] {
+					if s.files[name][n].days = 1; r.IntN(12) == 0 {
+						s.files[name][n].days = 2 + r.IntN(4)
+						spans++
+					}
+				}
+			}
+			settings := rules.Settings{Ranges: shapes(), Groups: groups()}
+			d := passed(t, s, settings, 2)
+			d.counts(s, nil)
+			d.flags()
+			if !rough {
+				d.used(&settings)
+			}
+			said, left := 0, 0
+			d.each(func(rows []watcher.Row) {
+				if strings.Contains(rows[0].Why, "covers ") && !strings.Contains(rows[0].Why, "before ") {
+					said++
+					if rows[0].Used == rules.Missing {
+						left++
+					}
+				}
+			})
+			if said != left || said == 0 || !rough && said != spans {
+				t.Errorf("of %d values over several days, %d are said to be and %d are left out", spans, said, left)
+			}
+		})
 	}
 }
 
@@ -291,8 +330,8 @@ func (d *definition) used(settings *rules.Settings) {
 			if flagged {
 				want, ok = rules.UsedValue(pending[row.Range], row.Return, &row.Verdict, limits)
 			}
-			if !ok {
-				want = rules.Missing
+			if !ok || strings.Contains(row.Why, "business days") && strings.Contains(row.Why, "covers") {
+				want = rules.Missing // no daily value
 			}
 			if row.Used != want {
 				d.t.Fatalf("%+v uses %s, want %s", row, row.Used, want)

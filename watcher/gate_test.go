@@ -63,7 +63,7 @@ func printed(v float64, decimals int) rules.Units {
 
 func (b *gated) file(n int, plant func(i int, v float64) float64) (rows []entry) {
 	for i := range b.series {
-		rows = append(rows, entry{b.dates[n], fmt.Sprintf("s%03d", i), printed(plant(i, b.values[n][i]), b.decimals)})
+		rows = append(rows, entry{b.dates[n], fmt.Sprintf("s%03d", i), printed(plant(i, b.values[n][i]), b.decimals), 0})
 	}
 	return rows
 }
@@ -71,7 +71,7 @@ func (b *gated) file(n int, plant func(i int, v float64) float64) (rows []entry)
 // index is the file of the other feed: the four factors themselves.
 func (b *gated) index(n int, plant func(i int, v float64) float64) (rows []entry) {
 	for i, f := range b.factors[n] {
-		rows = append(rows, entry{b.dates[n], fmt.Sprintf("index%d", i), printed(plant(i, 0.01*f), 4)})
+		rows = append(rows, entry{b.dates[n], fmt.Sprintf("index%d", i), printed(plant(i, 0.01*f), 4), 0})
 	}
 	return rows
 }
@@ -193,10 +193,10 @@ func TestGateOfAFile(t *testing.T) {
 		{"cut by one", whole[:59], "missing"},
 		{"a few missing", slices.Delete(slices.Clone(whole), 20, 25), "missing"},
 		{"on a Saturday", other(whole, saturday), "refused"},
-		{"one row on a Saturday", append(slices.Clone(whole), entry{saturday, "s005", 1e12}), "refused"},
-		{"one row of years before", append(slices.Clone(whole), entry{b.dates[0] - 700, "s005", 1e12}), "refused"},
+		{"one row on a Saturday", append(slices.Clone(whole), entry{saturday, "s005", 1e12, 0}), "refused"},
+		{"one row of years before", append(slices.Clone(whole), entry{b.dates[0] - 700, "s005", 1e12, 0}), "refused"},
 		{"day and month exchanged", other(whole, b.dates[80]), ""}, // 28 April cannot be read otherwise
-		{"a new series", append(slices.Clone(whole), entry{b.dates[80], "t000", 1e12}), ""},
+		{"a new series", append(slices.Clone(whole), entry{b.dates[80], "t000", 1e12, 0}), ""},
 	}
 	for _, tt := range tests {
 		t.Run(tt.name, func(t *testing.T) {

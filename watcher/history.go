@@ -65,6 +65,7 @@ type recorded struct {
 	gauges  []*rules.Gauge
 	ids     []uint16
 
+	terms     uint16 // number of terms in the ledger, 0 where there are none
 	residuals uint16 // number of what the ledger keeps of residuals, 0 where it keeps none
 }
 
@@ -187,7 +188,11 @@ func (r *Reader) rows(s *seriesPast, n int, asOf uint32, windows bool) ([]Row, e
 		return nil, err
 	}
 	s.group, s.calendar = set.members.Group(s.name), set.CalendarFor(s.name)
-	arrival, err := r.arrival(s, n, v)
+	now, err := r.terms(s, set, v.Date, asOf)
+	if err != nil {
+		return nil, err
+	}
+	arrival, err := r.arrival(s, n, v, set)
 	if err != nil {
 		return nil, err
 	}
@@ -202,6 +207,9 @@ func (r *Reader) rows(s *seriesPast, n int, asOf uint32, windows bool) ([]Row, e
 			return nil, err
 		}
 		row.Why = join(row.Why, arrival)
+		if now.Estimate {
+			row.Why = join(row.Why, "estimate")
+		}
 		out = append(out, row)
 	}
 	return out, nil
@@ -225,14 +233,19 @@ func (r *Reader) judge(s *seriesPast, n int, v Version, set *recorded, k int, ro
 	if err != nil {
 		return err
 	}
+	terms, err := r.terms(s, set, v.Date, v.Step)
+	if err != nil {
+		return err
+	}
 	if g.Range.Of == rules.Residual {
-		return r.judgeResidual(s, n, v, set, g, used, row, windows)
+		return r.judgeResidual(s, n, v, set, g, used, terms, row, windows)
 	}
 	w := s.window(n, v.Date, v.Step, g, used, nil)
 	w.past.Group, err = r.groupScale(set.ids[k], s.group, v)
 	if err != nil {
 		return err
 	}
+	w.past.Days = terms.Days
 	row.Verdict = g.Judge(row.Return, &w.past)
 	row.WindowFrom, row.WindowTo = w.from, w.to
 	row.Used = rules.Units(usedAt(used, v.Date, v.Value, ^uint32(0)))
@@ -345,7 +358,11 @@ func (r *Reader) groupScale(id uint16, group string, v Version) (rules.Num, erro
 }
 
 // arrival says of a value that it came late or was restated.
-func (r *Reader) arrival(s *seriesPast, n int, v Version) (string, error) {
+func (r *Reader) arrival(s *seriesPast, n int, v Version, set *recorded) (string, error) {
+	now, err := r.terms(s, set, v.Date, v.Step)
+	if err != nil {
+		return "", err
+	}
 	first := s.versions[s.dates[n]]
 	why := ""
 	for i := n + 1; i < len(s.dates); i++ {
@@ -361,5 +378,7 @@ func (r *Reader) arrival(s *seriesPast, n int, v Version) (string, error) {
 	for i := s.dates[n]; s.versions[i].Step < v.Step; i++ {
 		before = s.versions[i]
 	}
-	return join(why, "restated: "+RestatedNote(rules.Units(before.Value), rules.Units(v.Value))), nil
+	was, err := r.terms(s, set, v.Date, before.Step)
+	note := join(RestatedNote(rules.Units(before.Value), rules.Units(v.Value)), now.After(was))
+	return join(why, "restated: "+note), err
 }

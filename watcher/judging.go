@@ -35,6 +35,7 @@ type judging struct {
 	crew       *crew                  // the others, nil for none
 	residuals  uint16                 // number in the ledger of residuals
 	concluded  uint16                 // number in the ledger of what the pool concluded, 0 where it has none
+	terms      uint16                 // number in the ledger of terms, 0 while no feed can have some
 	weighed    *weighed               // nil where no series of the file is weighed together with others
 	decided    map[valueAt]*rules.Act // decisions of this step
 

@@ -277,6 +277,11 @@ func (l *leader) fill(date rules.Date) (any bool, err error) {
 			if col != nil && at < col.Len() && col.has(at) {
 				l.values[m], l.fresh[m] = rules.Units(col.units(at)), true
 			}
+		}
+		if err := l.onlyDaily(date, number, held && int(number)*BlockSize < l.j.heldNames); err != nil {
+			return false, err
+		}
+		for m := from; m < to; m++ {
 			any = any || l.values[m] != rules.Missing
 		}
 	}
@@ -317,7 +322,7 @@ func (l *leader) recall(date rules.Date) error {
 		}
 		from, to := l.crew.in(task{block: number, width: BlockSize})
 		for m := from; m < to; m++ {
-			if use := causes.Use(l.raw[l.crew.series[m]%BlockSize]); use != causes.AsIs && !l.fresh[m] {
+			if use := causes.Use(l.raw[l.crew.series[m]%BlockSize]); use != causes.AsIs && !l.fresh[m] && l.values[m] != rules.Missing {
 				l.know(causes.Known{Member: m, Use: use})
 			}
 		}

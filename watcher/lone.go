@@ -15,7 +15,7 @@ const (
 )
 
 // pastRows are the returns of a task's series on the newest dates before the one at hand, as received: what was left out counts too, or a
-// series whose zeros are a habit would never be known for it. Those of dates that the task did not go through are read when they are first
+// series whose zeros are a habit would never be known for it; but not those that cover several business days. Those of dates that the task did not go through are read when they are first
 // needed.
 type pastRows struct {
 	first  rules.Date // of the task
@@ -123,6 +123,9 @@ func (w *worker) readPast(t task) error {
 			p.spare = append(p.spare, row)
 			continue
 		}
+		if err := w.j.withoutSpans(w.view, d, t.block, t.from, row); err != nil {
+			return err
+		}
 		older = append(older, row)
 	}
 	slices.Reverse(older)
@@ -164,12 +167,17 @@ func (w *worker) passPast(t task, date rules.Date) {
 		row = p.row(t.width)
 	}
 	copy(row, raw)
+	for n := range w.hits {
+		if w.hits[n].days > 1 {
+			row[w.hits[n].at] = Missing64
+		}
+	}
 	p.rows = append(p.rows, row)
 }
 
 // weighLone says what a value of a lone series looks like: one that is flagged, or zero or a repeat.
 func (w *worker) weighLone(t task, d *day, h *hit, out *outcome) error {
-	if !h.fresh || h.view != nil || !w.lonely(t, int(h.at)) || !(h.flagged || w.raw[h.at] == 0 || w.raw[h.at] == w.past.prev[h.at]) {
+	if !h.fresh || h.days > 1 || h.view != nil || !w.lonely(t, int(h.at)) || !(h.flagged || w.raw[h.at] == 0 || w.raw[h.at] == w.past.prev[h.at]) {
 		return nil
 	}
 	if err := w.readPast(t); err != nil {

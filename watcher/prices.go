@@ -9,13 +9,14 @@ import (
 )
 
 // returnsOf turns a sheet of prices into the returns that it makes or changes, and the prices to be stored. A price enters two
-// returns: its own date's and that of the next date with a price.
+// returns: its own date's and that of the next date with a price. A return covers the business days from one price to the next, unless
+// the sheet says otherwise of the row that makes it.
 //
 //	return = price / previous price - 1, exact ratio rounded once, half to even, to a unit of 1e-15
-func returnsOf(v View, j *judging, sheet *Sheet) (returns, prices []*Column, err error) {
+func returnsOf(v View, j *judging, sheet *Sheet) (returns, prices []*Column, terms []CellTerms, err error) {
 	held, err := v.Dates(Prices)
 	if err != nil {
-		return nil, nil, err
+		return nil, nil, nil, err
 	}
 	byBlock := map[uint32][]*Column{}
 	for _, c := range sheet.Columns {
@@ -24,9 +25,9 @@ func returnsOf(v View, j *judging, sheet *Sheet) (returns, prices []*Column, err
 	for number, columns := range byBlock {
 		b := &priceBlock{v: v, j: j, sheet: sheet, number: number, held: held}
 		if err := b.run(columns); err != nil {
-			return nil, nil, err
+			return nil, nil, nil, err
 		}
-		returns, prices = append(returns, b.returns...), append(prices, b.prices...)
+		returns, prices, terms = append(returns, b.returns...), append(prices, b.prices...), append(terms, b.terms...)
 	}
 	byDate := func(x, y *Column) int {
 		if x.Date != y.Date {
@@ -36,7 +37,7 @@ func returnsOf(v View, j *judging, sheet *Sheet) (returns, prices []*Column, err
 	}
 	slices.SortFunc(returns, byDate)
 	slices.SortFunc(prices, byDate)
-	return returns, prices, nil
+	return returns, prices, SortTerms(terms), nil
 }
 
 // priceBlock goes through the dates of one block, carrying the newest price of each series.
@@ -47,14 +48,18 @@ type priceBlock struct {
 	number uint32
 	held   []rules.Date
 
-	last    []int64  // newest price so far, Missing64 when none
-	changed []uint32 // the line on which the file changed that price, 0 when it did not
+	last    []int64      // newest price so far, Missing64 when none
+	on      []rules.Date // its date
+	changed []uint32     // the line on which the file changed that price, 0 when it did not
 	returns []*Column
 	prices  []*Column
+	terms   []CellTerms
+	days    []*rules.Calendar // of each series; nil until one is needed
+	pair    pair
 }
 
 func (b *priceBlock) run(columns []*Column) error {
-	b.last, b.changed = make([]int64, BlockSize), make([]uint32, BlockSize)
+	b.last, b.on, b.changed = make([]int64, BlockSize), make([]rules.Date, BlockSize), make([]uint32, BlockSize)
 	fillMissing(b.last)
 	if err := b.before(columns[0].Date); err != nil {
 		return err
@@ -94,7 +99,7 @@ func (b *priceBlock) before(date rules.Date) error {
 		}
 		for k := range vals {
 			if ok && vals[k] != Missing64 && b.last[k] == Missing64 {
-				b.last[k] = vals[k]
+				b.last[k], b.on[k] = vals[k], b.held[i]
 				open--
 			}
 		}
@@ -117,7 +122,7 @@ func (b *priceBlock) date(date rules.Date, c *Column) error {
 	if c != nil {
 		overlay(now, c, rules.PricePlaces)
 		if col = c; old != nil {
-			col = differing(c, old, Prices)
+			col = differing(c, old, Prices, nil)
 		}
 	}
 	if col != nil {
@@ -166,8 +171,9 @@ func (b *priceBlock) cell(cells *Cells, i int, price int64, line uint32) error {
 				Reason: fmt.Sprintf("return from the price before, %s, is beyond +-9,223", rules.Price(prev))}
 		}
 		cells.Set(i, r, max(line, b.changed[i]))
+		b.termsOf(cells.col.Date, i, line > 0)
 	}
-	b.last[i], b.changed[i] = price, line
+	b.last[i], b.on[i], b.changed[i] = price, cells.col.Date, line
 	return nil
 }
 

@@ -163,7 +163,7 @@ func (w *worker) countArrivals(t task, d *day, fresh []int64, out *outcome) {
 		case d.old != nil && d.old[t.from+i] != Missing64:
 			out.counts.Restated++
 			f, old := w.blank(t, d, i), rules.Units(d.old[t.from+i])
-			f.Kind, f.Note = rules.KindRestated, RestatedNote(old, f.Return)
+			f.Kind, f.Note = rules.KindRestated, join(RestatedNote(old, f.Return), w.termsNote(t, d, i))
 			w.keep(f, true, out)
 		case w.late[i] > d.date:
 			out.counts.Late++

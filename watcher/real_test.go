@@ -23,12 +23,12 @@ func market(r *rand.Rand, dates int) (rows [][]entry) {
 		if n%83 == 82 {
 			factor[n/83%2] = -0.05
 		}
-		day := []entry{{d, "index", round(factor[0])}, {d, "eurusd", round(r.NormFloat64() * 0.005)}}
+		day := []entry{{d, "index", round(factor[0]), 0}, {d, "eurusd", round(r.NormFloat64() * 0.005), 0}}
 		if r.IntN(60) == 0 {
 			day[0].value *= -1
 		}
 		for i := range 20 {
-			e := entry{d, fmt.Sprintf("%c%02d", 'a'+i/10, i), round(factor[i/10]*(0.7+0.05*float64(i%10)) + r.NormFloat64()*0.002)}
+			e := entry{d, fmt.Sprintf("%c%02d", 'a'+i/10, i), round(factor[i/10]*(0.7+0.05*float64(i%10)) + r.NormFloat64()*0.002), 0}
 			switch k := r.IntN(300); {
 			case k == 0:
 				e.value *= 100

@@ -56,7 +56,7 @@ func (r *Reader) ready(parsed *rules.Settings) (*recorded, error) {
 	if s.members, err = rules.NewMembership(parsed); err != nil {
 		return nil, err
 	}
-	s.residuals = ids[residualKey]
+	s.residuals, s.terms = ids[residualKey], ids[termsKey]
 	for n, rng := range parsed.Ranges {
 		g, err := rules.NewGauge(rng)
 		if err != nil {

@@ -64,7 +64,7 @@ func whole(rows []entry, series int) []entry {
 	}
 	for s := range series {
 		if name := fmt.Sprintf("group%d-%05d", s%3, s); !there[name] {
-			rows = append(rows, entry{newest, name, rules.Units(1e10 * int64(s%97-48))})
+			rows = append(rows, entry{newest, name, rules.Units(1e10 * int64(s%97-48)), 0})
 		}
 	}
 	return rows

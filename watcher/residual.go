@@ -115,6 +115,11 @@ func (w *worker) withoutReference(i int) rules.Verdict {
 	return rules.Verdict{Finding: rules.NotJudged, Why: WhyNoResidual(w.j.members.Reference(id, group))}
 }
 
+// spanResidual is why a value over several business days is not held against a reference.
+func spanResidual(days int) string {
+	return rules.Terms{Days: days}.Covers() + ": it has no residual, since a reference speaks of one; its own range judges it at its length"
+}
+
 // WhyNoResidual says why a value has no residual, and the cure, by the reference that its settings give it.
 func WhyNoResidual(reference string) string {
 	switch reference {
@@ -139,6 +144,9 @@ func towards(v rules.Verdict, foreseen float64) rules.Verdict {
 // judgeResidual makes the verdict of a residual lane.
 func (w *worker) judgeResidual(l *lane, h *hit) rules.Verdict {
 	x := w.residuals.now[h.at]
+	if x == Missing64 && h.days > 1 {
+		return rules.Verdict{Finding: rules.NotJudged, Why: spanResidual(h.days)}
+	}
 	if x == Missing64 {
 		return w.withoutReference(int(h.at))
 	}

@@ -18,7 +18,12 @@ func valueOn(versions []Version, date rules.Date, step uint32) int64 {
 }
 
 // judgeResidual fills in a row's verdict under a residual range: as it was given when the residual of the version first was there.
-func (r *Reader) judgeResidual(s *seriesPast, n int, v Version, set *recorded, g *rules.Gauge, used []Version, row *Row, windows bool) error {
+func (r *Reader) judgeResidual(s *seriesPast, n int, v Version, set *recorded, g *rules.Gauge, used []Version, terms rules.Terms, row *Row,
+	windows bool) error {
+	if !terms.Daily() {
+		row.Verdict = rules.Verdict{Finding: rules.NotJudged, Why: spanResidual(terms.Days)}
+		return nil
+	}
 	if set.residuals == 0 {
 		row.Verdict = rules.Verdict{Finding: rules.NotJudged, Why: WhyNoResidual(set.members.Reference(s.name, s.group))}
 		return nil

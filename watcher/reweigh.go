@@ -34,6 +34,9 @@ func (r *Reader) Weigh(series string, date rules.Date, step uint32) (*Reweighed,
 	if err := l.freshAt(date, step); err != nil {
 		return nil, err
 	}
+	if l.values[member] == rules.Missing { // it covers several business days
+		return &Reweighed{}, nil
+	}
 	l.fresh[member] = true
 	if err := l.recall(date); err != nil {
 		return nil, err
@@ -77,7 +80,7 @@ func (r *Reader) leaderAt(series string, step uint32) (*leader, int, error) {
 	if err != nil {
 		return nil, 0, err
 	}
-	j.concluded, j.residuals = ids[concludedKey], ids[residualKey]
+	j.concluded, j.residuals, j.terms = ids[concludedKey], ids[residualKey], ids[termsKey]
 	l := newLeader(crew, j, v)
 	l.pool = newPool(crew.members, crew.groups, set.Doubtful)
 	return l, int(member), nil
@@ -113,6 +116,10 @@ func (r *Reader) weighLone(series string, date rules.Date, step uint32) (*Reweig
 	if err != nil {
 		return nil, err
 	}
+	ids, err := rangeIDs(v)
+	if err != nil {
+		return nil, err
+	}
 	cell := make([]int64, 1)
 	value := rules.Missing
 	if ok, err := v.Fill(Returns, date, id/BlockSize, int(id%BlockSize), cell); err != nil {
@@ -120,8 +127,9 @@ func (r *Reader) weighLone(series string, date rules.Date, step uint32) (*Reweig
 	} else if ok {
 		value = rules.Units(cell[0])
 	}
-	if value == rules.Missing {
-		return nil, nil
+	j := &judging{terms: ids[termsKey]}
+	if err := j.withoutSpans(v, date, id/BlockSize, int(id%BlockSize), cell); err != nil || value == rules.Missing || cell[0] == Missing64 {
+		return nil, err
 	}
 	before := rules.Missing
 	var past []rules.Units
@@ -131,12 +139,16 @@ func (r *Reader) weighLone(series string, date rules.Date, step uint32) (*Reweig
 		if err != nil {
 			return nil, err
 		}
-		if ok {
-			past = append(past, rules.Units(cell[0]))
+		if !ok {
+			continue
 		}
-	}
-	if len(past) > 0 {
-		before = past[0]
+		if len(past) == 0 {
+			before = rules.Units(cell[0])
+		}
+		if err := j.withoutSpans(v, held[n], id/BlockSize, int(id%BlockSize), cell); err != nil {
+			return nil, err
+		}
+		past = append(past, rules.Units(cell[0]))
 	}
 	slices.Reverse(past)
 	said, _ := causes.NewLone().Weigh(past, before, date, value)

@@ -54,7 +54,11 @@ func (p *Pass) newRanges(v View, recorded *rules.Settings) (unknown, again []Ran
 	if err != nil {
 		return nil, nil, err
 	}
-	for _, key := range []string{concludedKey, residualKey} {
+	keys := []string{concludedKey, residualKey}
+	if p.termed() {
+		keys = append(keys, termsKey)
+	}
+	for _, key := range keys {
 		if known[key] == 0 {
 			known[key] = uint16(len(known) + 1)
 			unknown = append(unknown, RangeKey{known[key], key})

@@ -9,11 +9,14 @@ type Sheet struct {
 	Names    *Names // those held, then those new in this file
 	Held     int    // how many of Names the ledger had when the file was read
 	Columns  []*Column
-	Rows     int  // data rows accepted, a repeated identical row counted once
-	Repeated int  // rows that repeated an earlier row of the file exactly
-	Skipped  int  // bad rows left out under bad_rows: skip
-	Missing  int  // values that are a missing token
-	Unended  bool // the last line has no newline, and nobody says that the file is whole
+	Rows     int         // data rows accepted, a repeated identical row counted once
+	Repeated int         // rows that repeated an earlier row of the file exactly
+	Skipped  int         // bad rows left out under bad_rows: skip
+	Missing  int         // values that are a missing token
+	Terms    []CellTerms // see SortTerms; values without an entry have the ordinary ones
+	Days     bool        // the file has a column of the days that values cover
+	Status   bool        // the file has a column that says estimate or final
+	Unended  bool        // the last line has no newline, and nobody says that the file is whole
 	Notes    []string
 }
 

@@ -144,6 +144,9 @@ func (w *weekScan) task(t task) error {
 		if date >= w.week {
 			week.take(w.raw[:t.width])
 		}
+		if err := w.j.withoutSpans(w.view, date, t.block, t.from, w.raw[:t.width]); err != nil { // a promise is about daily values
+			return err
+		}
 		for k, l := range w.lanes {
 			if err := w.scan(t, k, l, n, tracks[k]); err != nil {
 				return err

@@ -55,7 +55,7 @@ func quiet(series, dates int, r *rand.Rand) (rows [][]entry) {
 	for n := range dates {
 		var day []entry
 		for s := range series {
-			day = append(day, entry{first + rules.Date(n/5*7+n%5), fmt.Sprintf("s%02d", s), rules.Units(1e12 + r.Int64N(1e11)*(1-2*r.Int64N(2)))})
+			day = append(day, entry{first + rules.Date(n/5*7+n%5), fmt.Sprintf("s%02d", s), rules.Units(1e12 + r.Int64N(1e11)*(1-2*r.Int64N(2))), 0})
 		}
 		rows = append(rows, day)
 	}

@@ -20,6 +20,8 @@ type day struct {
 	date rules.Date
 	col  *Column // new and changed cells only
 	old  []int64 // the block's values before, nil when nothing was held on the date
+
+	terms []CellTerms // of the new and changed cells, where they are not the ordinary ones
 }
 
 // outcome is what judging a task found.
@@ -53,6 +55,7 @@ type worker struct {
 	stored           []*State     // by lane: what a recheck holds against the replay
 	residuals        *residuals   // nil where no lane judges them
 	task             task         // at hand
+	terms            []int64      // codes that the ledger holds on one date
 	past             pastRows     // of its lone series
 }
 
@@ -71,6 +74,7 @@ type hit struct {
 	broken   []int // indexes of limit ranges that it breaks
 	outsize  bool
 	group    string // of the series, when the value was judged
+	days     int    // business days that the value covers, where these are several
 }
 
 func newWorker(j *judging, v View) *worker {

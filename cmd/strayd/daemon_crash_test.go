@@ -156,7 +156,7 @@ func (c *crashing) finish() {
 	c.must("ledger", "verify")
 	for i, line := range strings.Split(strings.TrimSpace(c.must("ledger", "export")), "\n") {
 		if i > 0 {
-			c.rows[line[:strings.LastIndexByte(line, ',')]]--
+			c.rows[strings.Join(strings.Split(line, ",")[:2], ",")]--
 		}
 	}
 	for cell, n := range c.rows {

@@ -138,7 +138,8 @@ func (a *app) exportCommand() *cobra.Command {
 	cmd := &cobra.Command{
 		Use:   "export",
 		Short: "Write every return held, as CSV",
-		Long: `Writes the newest value of every observation, by date, then series: date,series,return, the return as an exact fraction.
+		Long: `Writes the newest value of every observation, by date, then series: date,series,return,days,status, the return as an
+exact fraction, with the business days that it covers, and estimate where it is one.
 With --what prices, the prices of price feeds instead.`,
 		Example: "  strayd ledger export > returns.csv\n  strayd ledger export --what prices > prices.csv",
 		Args:    takes(0, 0),
@@ -178,17 +179,38 @@ func (a *app) exportOf(v *ledger.View, w watcher.What) error {
 	if err != nil {
 		return err
 	}
-	value := "return"
+	columns := "date,series,return,days,status"
 	if w == watcher.Prices {
-		value = "price"
+		columns = "date,series,price"
 	}
-	l, err := newListing(a.out, "csv", "date,series,"+value)
+	l, err := newListing(a.out, "csv", columns)
+	if err != nil {
+		return err
+	}
+	terms, err := watcher.NewTermsReader(v)
 	if err != nil {
 		return err
 	}
 	err = v.Values(w, func(d rules.Date, series uint32, value int64) error {
 		s := rules.Decimal(value, w.Places())
-		return l.row(date(d), text(string(names.Name(series))), cell{s, s})
+		row := []cell{date(d), text(string(names.Name(series))), {s, s}}
+		if w == watcher.Returns {
+			t, err := terms.At(d, series)
+			if err != nil {
+				return err
+			}
+			row = append(row, termsCells(t)...)
+		}
+		return l.row(row...)
 	})
 	return firstError(err, l.end())
+}
+
+// termsCells are the days that a value covers, and its status where it is an estimate.
+func termsCells(t rules.Terms) []cell {
+	status := ""
+	if t.Estimate {
+		status = "estimate"
+	}
+	return []cell{integer(t.Span()), text(status)}
 }

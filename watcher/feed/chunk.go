@@ -38,6 +38,7 @@ type chunk struct {
 	fresh    [][]byte // names that were unknown when the chunk was parsed, in the order of the rows
 	arena    []byte   // reused by the cursor
 	lines    uint32
+	terms    []rowTerms
 	missing  int
 	records  int       // rows
 	trailers []trailer // control totals
@@ -56,7 +57,7 @@ const mostFaults = 10
 func (c *chunk) reset() {
 	c.runs, c.vals, c.fresh, c.arena = c.runs[:0], c.vals[:0], c.fresh[:0], c.arena[:0]
 	c.lines, c.missing, c.cells, c.skipped, c.bad, c.stop, c.err = 0, 0, 0, 0, nil, false, nil
-	c.records, c.trailers = 0, nil
+	c.records, c.trailers, c.terms = 0, nil, c.terms[:0]
 }
 
 // emit adds a value to the last run when it continues it.
@@ -82,6 +83,22 @@ func (c *chunk) emitFresh(date rules.Date, name []byte, line uint32, v int64, de
 	}
 	c.runs = append(c.runs, run{date: date, id: uint32(len(c.fresh) - 1), line: line, n: 1, dec: dec, fresh: true})
 	c.vals = append(c.vals, v)
+}
+
+// rowTerms are the terms of a value where they are not the ordinary ones.
+type rowTerms struct {
+	date  rules.Date
+	id    uint32 // of the series; with fresh set, an index of the chunk's fresh names
+	fresh bool
+	rules.Terms
+}
+
+// noteTerms notes the terms of the newest value.
+func (c *chunk) noteTerms(date rules.Date, id uint32, fresh bool, t rules.Terms) {
+	if fresh {
+		id = uint32(len(c.fresh) - 1)
+	}
+	c.terms = append(c.terms, rowTerms{date, id, fresh, t})
 }
 
 // rescale gives v at more decimals, when they are the same or the result fits 32 bits.

@@ -50,6 +50,9 @@ func (p *parser) observe(line uint32) {
 	default:
 		p.out.emit(p.date, p.id, line, p.v, p.dec)
 	}
+	if (p.Days > 1 || p.Estimate) && !p.none {
+		p.out.noteTerms(p.date, p.id, p.name != nil, p.Terms)
+	}
 }
 
 // takeOther checks a cell that carries no observation.
@@ -74,9 +77,11 @@ func (p *parser) takeOther(r role) bool {
 func (p *parser) judgeText(cell []byte) string { return p.badText(cell) }
 
 func (p *parser) judgeStatus(cell []byte) string {
-	if s := string(cell); s != "estimate" && s != "final" {
+	s := string(cell)
+	if s != "estimate" && s != "final" {
 		return "the status is neither estimate nor final"
 	}
+	p.Estimate = s == "estimate"
 	return ""
 }
 
@@ -85,6 +90,7 @@ func (p *parser) judgeDays(cell []byte) string {
 	if err != nil || n < 1 || n > mostDays || digitsAt(cell) != len(cell) {
 		return "the number of days is not a whole number from 1 to " + strconv.Itoa(mostDays)
 	}
+	p.Days = n
 	return ""
 }
 

@@ -15,6 +15,7 @@ type merger struct {
 	fresh   []uint32 // numbers of the chunk's fresh names
 	line    uint64   // lines of the chunks taken
 	newest  rules.Date
+	terms   []watcher.CellTerms
 	missing int
 	cells   int
 	skipped int
@@ -44,6 +45,7 @@ func (m *merger) take(c *chunk) {
 			return
 		}
 	}
+	m.takeTerms(c)
 	m.takeTrailers(c)
 	m.missing += c.missing
 	m.cells += c.cells
@@ -59,6 +61,19 @@ func (m *merger) number(fresh [][]byte) {
 	for _, name := range fresh {
 		m.fresh = append(m.fresh, m.names.Add(name))
 	}
+}
+
+// termsBytes is what the terms of a value take in memory.
+const termsBytes = 32
+
+func (m *merger) takeTerms(c *chunk) {
+	for _, t := range c.terms {
+		if t.fresh {
+			t.id = m.fresh[t.id]
+		}
+		m.terms = append(m.terms, watcher.CellTerms{Date: t.date, Series: t.id, Terms: t.Terms})
+	}
+	m.bytes += termsBytes * int64(len(c.terms))
 }
 
 func (m *merger) takeFaults(c *chunk) {

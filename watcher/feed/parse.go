@@ -34,7 +34,8 @@ type parser struct {
 	v    int64
 	dec  uint8
 	none bool // the value is a missing token
-	bad  fault
+	rules.Terms
+	bad fault
 }
 
 func (p *plan) parser(names *watcher.Names) *parser {

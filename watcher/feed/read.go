@@ -113,7 +113,8 @@ func (m *merger) sheet(ctx context.Context, file *os.File, c watcher.Candidate, 
 		return nil, m.badFile(id, c.Date)
 	}
 	sheet := &watcher.Sheet{File: id, What: m.what(), Names: m.names, Columns: m.columns(), Rows: m.rows, Repeated: m.repeated,
-		Skipped: m.skipped, Missing: m.missing, Notes: m.notes(c.Name)}
+		Skipped: m.skipped, Missing: m.missing, Notes: m.notes(c.Name), Terms: watcher.SortTerms(m.terms), Days: !m.wide && m.feed.Columns.Days != "",
+		Status: !m.wide && m.feed.Columns.Status != ""}
 	if sheet.Unended = s.noLast && !c.Sentinel; sheet.Unended {
 		sheet.Notes = append(sheet.Notes, "the last line has no newline: is the file whole?")
 	}
