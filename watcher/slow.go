@@ -197,6 +197,9 @@ func (s *slowScan) read(n int, block uint32) error {
 	if err != nil || !ok {
 		return err
 	}
+	if err := s.j.withoutSpans(s.view, date, block, 0, returns); err != nil {
+		return err
+	}
 	if s.j.residuals != 0 {
 		if err := s.view.Patch(s.j.residuals, date, block, 0, residuals); err != nil {
 			return err

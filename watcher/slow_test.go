@@ -25,10 +25,10 @@ func slowBook(random *rand.Rand, dates, planted int) map[rules.Date][]entry {
 		if n >= planted {
 			followed, drift, scale = other, 0.01, 4.0
 		}
-		rows := []entry{{d, "index", exact(market)}, {d, "fund", exact(followed + 0.002*random.NormFloat64())},
-			{d, "drifter", exact(drift + 0.01*random.NormFloat64())}, {d, "wild", exact(scale * 0.01 * random.NormFloat64())}}
+		rows := []entry{{d, "index", exact(market), 0}, {d, "fund", exact(followed + 0.002*random.NormFloat64()), 0},
+			{d, "drifter", exact(drift + 0.01*random.NormFloat64()), 0}, {d, "wild", exact(scale * 0.01 * random.NormFloat64()), 0}}
 		for s := range 5 {
-			rows = append(rows, entry{d, fmt.Sprintf("calm-%d", s), exact(0.01 * random.NormFloat64())})
+			rows = append(rows, entry{d, fmt.Sprintf("calm-%d", s), exact(0.01 * random.NormFloat64()), 0})
 		}
 		out[d] = rows
 	}
