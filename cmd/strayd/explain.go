@@ -200,6 +200,9 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 		row.Finding, row.Range, ref)
 	w := columns(a.out)
 	line := func(name, format string, args ...any) { fields(w, "  "+name, fmt.Sprintf(format, args...)) }
+	if e.flag != nil && e.flag.Kind.Slow() {
+		line("flagged", "%s", printable(e.flag.Note))
+	}
 	if row.Why != "" {
 		line("why", "%s", printable(row.Why))
 	}
