@@ -115,7 +115,7 @@ func TestLoneSeriesInOneFileOrMany(t *testing.T) {
 // each in a pass of its own; a second look at the same files changes nothing; and what explain weighs again is what the flags say.
 func TestRealPoolInOneFileOrMany(t *testing.T) {
 	const history, days = 260, 60
-	for seed := range uint64(2) {
+	for seed := range uint64(1) {
 		t.Logf("seed %d", seed)
 		rows := market(rand.New(rand.NewPCG(seed, 3)), history+days)
 		var flags, used []string
