@@ -48,7 +48,8 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	b.Flags = append(b.Flags, missing...)
 	p.assemble(b, j, out)
 	b.File.Counts.Rows = sheet.Rows
-	b.File.Counts.Same = sheet.Rows - b.File.Counts.New - b.File.Counts.Late - b.File.Counts.Restated
+	// A price may change two returns, so that more changes than there are rows.
+	b.File.Counts.Same = max(0, sheet.Rows-b.File.Counts.New-b.File.Counts.Late-b.File.Counts.Restated)
 	p.tell(b, newestSeries(sheet))
 	if err := p.release.into(p, b); err != nil {
 		return err

@@ -326,7 +326,7 @@ func TestNoErrorHoldsASecret(t *testing.T) {
 	f.then("AUTH", "535 "+password)
 	_, err := m.Check(t.Context())
 	fmt.Fprintf(&all, "%v\n%v %+v %#v %s\n", err, m, m, m, m)
-	if text, err := json.Marshal(m); err == nil {
+	if text, err := json.Marshal([]any{m}); err == nil {
 		all.Write(text)
 	}
 	for _, s := range []string{password, user, "swordfish", sent} {

@@ -35,12 +35,11 @@ var notice = rules.Notice{Number: 12, Key: "0f1e2d3c4b5a69788796a5b4c3d2e1f0", C
 // receiver to. It counts what it processed.
 type receiver struct {
 	*httptest.Server
-	mu      sync.Mutex
-	script  []http.HandlerFunc
-	calls   []*http.Request
-	bodies  []string
-	taken   map[string]int // by key
-	refused int
+	mu     sync.Mutex
+	script []http.HandlerFunc
+	calls  []*http.Request
+	bodies []string
+	taken  map[string]int // by key
 }
 
 func newReceiver(t *testing.T, script ...http.HandlerFunc) *receiver {
@@ -348,7 +347,7 @@ func TestNoErrorHoldsASecret(t *testing.T) {
 	r.Close()
 	_, err := h.Post(t.Context(), notice)
 	fmt.Fprintf(&all, "%v\n%v %+v %#v %s\n", err, h, h, h, h)
-	if text, err := json.Marshal(h); err == nil {
+	if text, err := json.Marshal([]any{h}); err == nil {
 		all.Write(text)
 	}
 	for _, s := range []string{secret, "secret+of", "place-of-its-own", "ab%2Fcd"} {
