@@ -7,6 +7,7 @@ import (
 	"slices"
 	"strings"
 	"testing"
+	"testing/synctest"
 	"time"
 
 	"strayd/rules"
@@ -69,17 +70,21 @@ func TestLaggingChannelFallsBack(t *testing.T) {
 		swap := &switched{to: desk}
 		s, _ := sendWhile(m, withFallback(swap, ops, 20*time.Minute), func() {
 			time.Sleep(20*time.Minute - time.Second)
+			synctest.Wait()
 			equal(t, "before", m.states(), "waiting waiting")
 			time.Sleep(2 * time.Minute)
+			synctest.Wait()
 			equal(t, "after", m.states(), "sent sent")
 			m.fill("desk", 1)
 			calls := desk.calls
 			time.Sleep(2 * time.Minute)
+			synctest.Wait()
 			equal(t, "the next", m.states(), "sent sent sent")
 			equal(t, "tries", desk.calls-calls, 1)
 			swap.to = newChat()
 			m.fill("desk", 1)
 			time.Sleep(2 * time.Minute)
+			synctest.Wait()
 			equal(t, "back", swap.to.(*chat).arrived, []uint64{4})
 		})
 		equal(t, "arrived", ops.arrived, []uint64{1, 2, 3})

@@ -217,6 +217,9 @@ func TestGateOfAFile(t *testing.T) {
 
 // Over invented books of ordinary files none is refused, and no flag of a whole file is raised.
 func TestGateOfOrdinaryFiles(t *testing.T) {
+	if testing.Short() {
+		t.Skip("many passes")
+	}
 	seeds := uint64(6)
 	if testing.Short() {
 		seeds = 2

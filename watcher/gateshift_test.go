@@ -32,6 +32,9 @@ func (b *gated) day(d *desk, n int, index, funds func(int, float64) float64) {
 // A file whose dates are a day off for five days is refused as such: on the first it repeats the day before, then its values fit the
 // indices of the day before. A day or two on which the indices moved alike may pass.
 func TestShiftedFiles(t *testing.T) {
+	if testing.Short() {
+		t.Skip("many passes")
+	}
 	seeds, caught := 6, 0
 	if testing.Short() {
 		seeds = 3
@@ -74,6 +77,9 @@ func TestShiftedFiles(t *testing.T) {
 
 // A wrong index, whatever is wrong with it, does not refuse the funds' file.
 func TestWrongIndexRefusesNoFile(t *testing.T) {
+	if testing.Short() {
+		t.Skip("many passes")
+	}
 	wrong := []func(int, float64) float64{
 		scaled(-1), scaled(100), scaled(0.01), scaled(0),
 		func(i int, v float64) float64 { return v + 0.01*float64(1-2*(i%2)) },

@@ -114,6 +114,9 @@ func TestLoneSeriesInOneFileOrMany(t *testing.T) {
 // With the real pool too, the same flags stand and the windows take the same, whether dates come in one file, in many files of a pass, or
 // each in a pass of its own; a second look at the same files changes nothing; and what explain weighs again is what the flags say.
 func TestRealPoolInOneFileOrMany(t *testing.T) {
+	if testing.Short() {
+		t.Skip("many passes")
+	}
 	const history, days = 260, 60
 	for seed := range uint64(1) {
 		t.Logf("seed %d", seed)
