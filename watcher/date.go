@@ -24,6 +24,30 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 	if err := w.termsHits(t, d, old, fresh); err != nil {
 		return err
 	}
+	if err := w.findHits(t, d, old, fresh, out); err != nil {
+		return err
+	}
+	present := count(fresh)
+	for n := range w.hits {
+		w.judge(d.date, &w.hits[n])
+	}
+	if w.j.lone {
+		if err := w.lone(t, d, old, out); err != nil {
+			return err
+		}
+	}
+	w.tally(t, present, fresh, out)
+	w.raise(t, d, fresh, out)
+	for k, l := range w.lanes {
+		if err := w.take(t, d, old, k, l, out); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// findHits finds the values of a date that are not plainly inside everything.
+func (w *worker) findHits(t task, d *day, old bool, fresh []int64, out *outcome) error {
 	for _, l := range w.lanes {
 		all, now := w.values(t, l)
 		l.rest(d.date, all)
@@ -50,22 +74,6 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 	w.viewHits(t, d, fresh, out)
 	if w.j.lone && d.col != nil {
 		if err := w.loneHits(t, fresh); err != nil {
-			return err
-		}
-	}
-	present := count(fresh)
-	for n := range w.hits {
-		w.judge(d.date, &w.hits[n])
-	}
-	if w.j.lone {
-		if err := w.lone(t, d, old, out); err != nil {
-			return err
-		}
-	}
-	w.tally(t, present, fresh, out)
-	w.raise(t, d, fresh, out)
-	for k, l := range w.lanes {
-		if err := w.take(t, d, old, k, l, out); err != nil {
 			return err
 		}
 	}

@@ -1,4 +1,4 @@
-// Weigh leads the model of causes alone through invented books with planted errors and prints what it catches and names: the quick way to
+// Command weigh leads the model of causes alone through invented books with planted errors and prints what it catches and names: the quick way to
 // see what a change of the model does. The drill of the program runs the whole pass.
 package main
 
