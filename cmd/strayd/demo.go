@@ -73,7 +73,7 @@ func (a *app) demoWeek(c *config.Config, l *ledger.Ledger, folder string) error 
 		}
 	}
 	fmt.Fprintf(a.out, "\n%s\n\nLook further (from the source, write go run ./cmd/strayd for strayd):\n", caution)
-	for _, next := range []string{"flags", "explain 10", "history birch-income --from 2026-03-09", "ranges --now 2026-03-16", "ledger verify"} {
+	for _, next := range []string{"flags", "explain 27", "history birch-income --from 2026-03-09", "ranges --now 2026-03-16", "weekly 2026-W11", "ledger verify"} {
 		fmt.Fprintf(a.out, "  strayd --config %s %s\n", filepath.Join(folder, "strayd.yaml"), next)
 	}
 	return nil

@@ -40,7 +40,9 @@ func New(token notify.Secret, o Options) (*Service, error) {
 		return nil, err
 	}
 	s := &Service{token: token}
-	client := slack.New(token.Reveal(), slack.OptionHTTPClient(httpClient(o)), slack.OptionAPIURL(base),
+	calls := notify.Client(o.Timeout, o.Transport)
+	calls.Transport = bounded{calls.Transport}
+	client := slack.New(token.Reveal(), slack.OptionHTTPClient(calls), slack.OptionAPIURL(base),
 		slack.OptionOnResponseHeaders(func(_ string, h http.Header) { s.noteScopes(h) }))
 	s.api = func() *slack.Client { return client }
 	return s, nil
@@ -55,23 +57,6 @@ func baseURL(given string) (string, error) {
 		return "", errors.New("address of the chat service: need one such as https://host/api/")
 	}
 	return strings.TrimSuffix(given, "/") + "/", nil // the library joins without looking
-}
-
-// httpClient follows no redirect, which would carry the token along, and keeps no connection: one that the service closed meanwhile
-// would make the next post's outcome doubtful.
-func httpClient(o Options) *http.Client {
-	rt := o.Transport
-	if rt == nil {
-		t := http.DefaultTransport.(*http.Transport).Clone()
-		t.DisableKeepAlives = true
-		rt = t
-	}
-	timeout := o.Timeout
-	if timeout == 0 {
-		timeout = 15 * time.Second
-	}
-	return &http.Client{Timeout: timeout, Transport: bounded{rt},
-		CheckRedirect: func(*http.Request, []*http.Request) error { return http.ErrUseLastResponse }}
 }
 
 // answerMost is how much of an answer is read, in bytes.

@@ -62,7 +62,7 @@ func New(address string, secret notify.Secret, o Options) (*Hook, error) {
 	if n := len(secret.Reveal()); n < secretLeast {
 		return nil, fmt.Errorf("secret for the webhook: it has %d characters, need at least %d", n, secretLeast)
 	}
-	h := &Hook{address: notify.NewSecret(address), host: u.Host, secret: secret, client: client(o), now: o.Now}
+	h := &Hook{address: notify.NewSecret(address), host: u.Host, secret: secret, client: notify.Client(o.Timeout, o.Transport), now: o.Now}
 	if h.now == nil {
 		h.now = time.Now
 	}
@@ -86,23 +86,6 @@ func Address(address string) (*url.URL, error) {
 func loopback(host string) bool {
 	ip := net.ParseIP(host)
 	return host == "localhost" || ip != nil && ip.IsLoopback()
-}
-
-// client follows no redirect, which would carry the notice elsewhere, and keeps no connection: one that the receiver closed meanwhile
-// would make the next attempt's outcome doubtful.
-func client(o Options) *http.Client {
-	rt := o.Transport
-	if rt == nil {
-		t := http.DefaultTransport.(*http.Transport).Clone()
-		t.DisableKeepAlives = true
-		rt = t
-	}
-	timeout := o.Timeout
-	if timeout == 0 {
-		timeout = 15 * time.Second
-	}
-	return &http.Client{Timeout: timeout, Transport: rt,
-		CheckRedirect: func(*http.Request, []*http.Request) error { return http.ErrUseLastResponse }}
 }
 
 // String names the hook by its host.
