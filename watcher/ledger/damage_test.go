@@ -1,6 +1,7 @@
 package ledger
 
 import (
+	"bytes"
 	"context"
 	"crypto/sha256"
 	"errors"
@@ -171,6 +172,41 @@ func TestEveryBitCounts(t *testing.T) {
 	}
 	if _, err := verify(path); err != nil {
 		t.Error(err)
+	}
+}
+
+// TestNamelessIsDamaged flips every bit of the words that say what the file is: it is damaged then, never another program's.
+func TestNamelessIsDamaged(t *testing.T) {
+	path, _ := furnished(t)
+	whole, err := os.ReadFile(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	f, err := os.OpenFile(path, os.O_RDWR, 0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer f.Close()
+	found := map[string]int{string(inMeta.name()): 0, keyIdentity: 0}
+	for _, at := range bytesOfValues(t, path) {
+		for word := range found {
+			if !bytes.HasPrefix(whole[at:], []byte(word)) {
+				continue
+			}
+			found[word]++
+			for bit := range 8 * len(word) {
+				flip(t, f, at+int64(bit/8), uint(bit%8))
+				if _, err := verify(path); !isDamaged(err) {
+					t.Errorf("bit %d of %q: %v", bit, word, err)
+				}
+				flip(t, f, at+int64(bit/8), uint(bit%8))
+			}
+		}
+	}
+	for word, n := range found {
+		if n == 0 {
+			t.Errorf("%q is nowhere in the file", word)
+		}
 	}
 }
 

@@ -205,7 +205,7 @@ func (l *Ledger) identify(own uint32) (err error) {
 	return l.db.View(func(tx *bolt.Tx) error {
 		meta := tx.Bucket(inMeta.name())
 		if meta == nil {
-			return &Foreign{l.path, "it is a database of another program"}
+			return nameless(l.path, tx, "the bucket is not there")
 		}
 		if l.identity, err = readIdentity(l.path, meta); err != nil {
 			return err
@@ -231,10 +231,20 @@ func (l *Ledger) complete() (err error) {
 	})
 }
 
+// nameless is the error for a file that does not say what it is: damaged when other buckets are a ledger's, foreign when none is.
+func nameless(path string, tx *bolt.Tx, why string) error {
+	for b := range buckets {
+		if b != inMeta && tx.Bucket(b.name()) != nil {
+			return &Damaged{Path: path, Where: inMeta.String(), Why: why}
+		}
+	}
+	return &Foreign{path, "it is a database of another program"}
+}
+
 func readIdentity(path string, meta *bolt.Bucket) (identity, error) {
 	v := meta.Get([]byte(keyIdentity))
 	if v == nil {
-		return identity{}, &Foreign{path, "it is a database of another program"}
+		return identity{}, nameless(path, meta.Tx(), "it does not say that this is a ledger")
 	}
 	body, err := opened(inMeta, []byte(keyIdentity), v)
 	if err != nil {
