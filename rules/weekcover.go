@@ -217,19 +217,23 @@ func Pool(covers []Cover) (p Cover) {
 }
 
 // Take counts one series, with its newest CoverDates judged values at the outer and the inner line.
-func (c *Cover) Take(series string, outer, inner CoverTally) {
+func (c *Cover) Take(series string, outer, inner CoverTally) { c.TakeLong(series, outer, inner, inner) }
+
+// TakeLong counts one series with any number of judged values; newest are the last CoverDates of those at the inner line, by which it has
+// its zone.
+func (c *Cover) TakeLong(series string, outer, inner, newest CoverTally) {
 	if inner.Judged == 0 {
 		return
 	}
 	c.Series++
 	c.Outer.Add(outer)
 	c.Inner.Add(inner)
-	if inner.Judged < CoverDates {
+	if newest.Judged < CoverDates {
 		return
 	}
-	s := SeriesCover{Series: series, Group: c.Group, CoverTally: inner}
-	s.Verdict = inner.Judge(c.Share, 1).Verdict
-	s.Zone, _ = stats.ZoneOf(inner.Beyond, inner.Judged, c.Share)
+	s := SeriesCover{Series: series, Group: c.Group, CoverTally: newest}
+	s.Verdict = newest.Judge(c.Share, 1).Verdict
+	s.Zone, _ = stats.ZoneOf(newest.Beyond, newest.Judged, c.Share)
 	switch s.Zone {
 	case stats.Red:
 		c.Zones.Red++
@@ -238,10 +242,10 @@ func (c *Cover) Take(series string, outer, inner CoverTally) {
 	default:
 		c.Zones.Green++
 	}
-	if inner.Beyond == 0 {
+	if newest.Beyond == 0 {
 		c.None++
 	}
-	if inner.Beyond > mostBeyond {
+	if newest.Beyond > mostBeyond {
 		c.Notable = append(c.Notable, s)
 	}
 }

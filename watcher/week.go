@@ -175,7 +175,7 @@ func (w *weekReader) readCovers(f *rules.WeekFacts) error {
 	if err != nil {
 		return err
 	}
-	f.Covers, f.Thin = now.all(), now.thin
+	f.Covers, f.Thin = now.all(rules.CoverDates), now.thin
 	if w.before == nil || len(f.Changes) == 0 {
 		return nil
 	}
@@ -183,7 +183,7 @@ func (w *weekReader) readCovers(f *rules.WeekFacts) error {
 	if err != nil {
 		return err
 	}
-	f.Changes[len(f.Changes)-1].BackRun = backRuns(old.all(), f.Covers)
+	f.Changes[len(f.Changes)-1].BackRun = backRuns(old.all(rules.CoverDates), f.Covers)
 	return nil
 }
 

@@ -14,22 +14,12 @@ const scanSlack = 50
 // values are those of the view; the lines are those of the settings, whatever they were when a date was judged first.
 type weekScan struct {
 	worker
-	dates    []rules.Date              // that are judged, ascending
-	week     rules.Date                // the Monday
-	covers   []map[string]*rules.Cover // by lane, then group
-	at       [][]*rules.Cover          // by lane, then series of the task
+	*coverCount
+	week     rules.Date // the Monday
 	settings *rules.Settings
 	thin     rules.Thin
 	progress func(done, total int64)
 	ctx      context.Context
-}
-
-// track is what the newest dates said of one series under one lane.
-type track struct {
-	judged       int
-	outer, inner []int // at which of its judged values it was beyond
-	thin         bool  // provisional on its newest date
-	unjudged     bool
 }
 
 // scanCover counts every series under every estimated range for the CoverDates dates up to a week's end.
@@ -43,11 +33,7 @@ func scanCover(ctx context.Context, v View, names *Names, s *rules.Settings, mon
 	j.scales = newGroupScales(j, v, nil)
 	w.worker = *newWorker(j, v)
 	end, _ := slices.BinarySearch(j.held, monday+7)
-	w.dates = j.held[max(0, end-rules.CoverDates-scanSlack):end]
-	for range w.lanes {
-		w.covers = append(w.covers, map[string]*rules.Cover{})
-		w.at = append(w.at, make([]*rules.Cover, j.width))
-	}
+	w.coverCount = newCoverCount(w.lanes, j.held[max(0, end-rules.CoverDates-scanSlack):end], j.width)
 	todo := tasks(allBlocks(names.Len(), rules.NoDate), j.width)
 	for n, t := range todo {
 		if err := w.task(t); err != nil {
@@ -76,47 +62,6 @@ func coverSettings(s *rules.Settings) rules.Settings {
 	return c
 }
 
-// all gives the covers by range, then group.
-func (w *weekScan) all() (out []rules.Cover) {
-	for k := range w.lanes {
-		var groups []string
-		for g := range w.covers[k] {
-			groups = append(groups, g)
-		}
-		slices.Sort(groups)
-		for _, g := range groups {
-			c := w.covers[k][g]
-			c.Days = c.Days[max(0, len(c.Days)-rules.CoverDates):]
-			c.Sort()
-			out = append(out, *c)
-		}
-	}
-	return out
-}
-
-// cover is that of a lane and group.
-func (w *weekScan) cover(k int, group string) *rules.Cover {
-	c := w.covers[k][group]
-	if c == nil {
-		r := w.lanes[k].gauge.Range
-		c = &rules.Cover{Range: r.Name, Of: r.Of, Group: group, Level: levelOf(w.lanes[k], r.Breach), Share: levelOf(w.lanes[k], r.Watch)}
-		for _, d := range w.dates {
-			c.Days = append(c.Days, rules.CoverDay{Date: d})
-		}
-		w.covers[k][group] = c
-	}
-	return c
-}
-
-// levelOf is the share that a line promises beyond it, 0 where it states none.
-func levelOf(l *lane, line rules.Line) float64 {
-	f, ok := l.gauge.Forms(line)
-	if !ok {
-		return 0
-	}
-	return f.Tail
-}
-
 func (w *weekScan) task(t task) error {
 	if err := w.ctx.Err(); err != nil || len(w.dates) == 0 {
 		return err
@@ -125,13 +70,7 @@ func (w *weekScan) task(t task) error {
 	if err := w.loadPlain(t, w.dates[0]); err != nil {
 		return err
 	}
-	tracks := make([][]track, len(w.lanes))
-	for k := range tracks {
-		tracks[k] = make([]track, t.width)
-		for i := range t.width {
-			w.at[k][i] = w.cover(k, w.group(i))
-		}
-	}
+	w.open(t, w.group)
 	week := newWeekValues(t.width)
 	for n, date := range w.dates {
 		ok, err := w.view.Fill(Returns, date, t.block, t.from, w.raw[:t.width])
@@ -148,13 +87,13 @@ func (w *weekScan) task(t task) error {
 			return err
 		}
 		for k, l := range w.lanes {
-			if err := w.scan(t, k, l, n, tracks[k]); err != nil {
+			if err := w.scan(t, k, l, n); err != nil {
 				return err
 			}
 		}
 	}
-	w.fold(t, tracks)
-	w.foldThin(t, tracks, week)
+	w.fold(t, w.j.names, rules.CoverDates)
+	w.foldThin(t, week)
 	return nil
 }
 
@@ -174,7 +113,7 @@ func (w *weekScan) loadPlain(t task, before rules.Date) error {
 }
 
 // scan judges one date under one lane and lets its windows take it.
-func (w *weekScan) scan(t task, k int, l *lane, n int, tracks []track) error {
+func (w *weekScan) scan(t task, k int, l *lane, n int) error {
 	date := w.dates[n]
 	raw, err := w.judgedOn(t, l, date)
 	if err != nil {
@@ -182,28 +121,18 @@ func (w *weekScan) scan(t task, k int, l *lane, n int, tracks []track) error {
 	}
 	l.rest(date, raw)
 	w.cand = l.candidates(raw, w.cand[:0])
-	for i := range raw {
-		if raw[i] == Missing64 || !l.judges(i) {
-			continue
-		}
-		size := l.windows.N(i)
-		tracks[i].unjudged, tracks[i].thin = size < rules.LeastJudged, size < rules.LeastNormal
-		if tracks[i].unjudged {
-			continue
-		}
-		tracks[i].judged++
-		w.at[k][i].Days[n].Judged++
-	}
+	w.judgedValues(k, l, n, raw)
 	for _, at := range w.cand {
 		i := int(at)
-		if raw[i] == Missing64 || !l.judges(i) || tracks[i].unjudged {
+		if raw[i] == Missing64 || !l.judges(i) || w.tracks[k][i].unjudged {
 			continue
 		}
 		past := l.past(i)
 		if past.N < rules.LeastNormal {
 			past.Group = w.j.scales.lent(l, w.group(i), date)
 		}
-		w.concluded(k, i, n, l.gauge.Judge(rules.Units(raw[i]), past), &tracks[i])
+		v := l.gauge.Judge(rules.Units(raw[i]), past)
+		w.concluded(k, i, n, &v)
 	}
 	used, err := w.usedOf(t, l, date)
 	if err == nil {
@@ -220,22 +149,4 @@ func (w *weekScan) judgedOn(t task, l *lane, date rules.Date) ([]int64, error) {
 	now := w.residuals.now[:t.width]
 	fillMissing(now)
 	return now, w.view.Patch(w.j.residuals, date, t.block, t.from, now)
-}
-
-func (w *weekScan) concluded(k, i, n int, v rules.Verdict, t *track) {
-	d := &w.at[k][i].Days[n]
-	if v.Finding == rules.NotJudged {
-		t.judged--
-		d.Judged--
-		t.unjudged = true
-		return
-	}
-	if v.Finding == rules.Breach {
-		t.outer = append(t.outer, t.judged)
-		d.Outer++
-	}
-	if v.Tail.OK && v.Tail.V < w.at[k][i].Share {
-		t.inner = append(t.inner, t.judged)
-		d.Inner++
-	}
 }
