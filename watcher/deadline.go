@@ -44,8 +44,9 @@ func (p *Pass) lateStep(v View, f rules.Feed, date rules.Date, due time.Time) (*
 		return nil, nil
 	}
 	raised := false
-	if err := v.Flags(true, func(g rules.Flag) bool {
-		raised = raised || g.Feed == f.Name && g.Date == date && tells(&g)
+	takes := func(h FlagHead) bool { return h.Date == date }
+	if err := v.FlagsOf(true, takes, func(g rules.Flag) bool {
+		raised = g.Feed == f.Name && tells(&g)
 		return !raised
 	}); err != nil || raised {
 		return nil, err

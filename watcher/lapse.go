@@ -27,8 +27,9 @@ func (p *Pass) lapse() error {
 func (p *Pass) lapseStep(v View) (*Batch, error) {
 	var over []rules.Flag
 	today := p.today()
-	if err := v.Flags(false, func(f rules.Flag) bool {
-		if f.Standing == rules.Waived && f.StandingOn(today) != rules.Waived {
+	waived := func(h FlagHead) bool { return h.Standing == rules.Waived }
+	if err := v.FlagsOf(false, waived, func(f rules.Flag) bool {
+		if f.StandingOn(today) != rules.Waived {
 			over = append(over, f)
 		}
 		return true

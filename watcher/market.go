@@ -47,10 +47,9 @@ type groupDay struct {
 // marketDays lists the flags of market days that were raised.
 func marketDays(v View) (map[groupDay]rules.Flag, error) {
 	out := map[groupDay]rules.Flag{}
-	return out, v.Flags(true, func(f rules.Flag) bool {
-		if f.Kind == rules.KindMarketDay {
-			out[groupDay{f.Group, f.Date}] = f
-		}
+	takes := func(h FlagHead) bool { return h.Kind == rules.KindMarketDay }
+	return out, v.FlagsOf(true, takes, func(f rules.Flag) bool {
+		out[groupDay{f.Group, f.Date}] = f
 		return true
 	})
 }

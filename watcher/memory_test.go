@@ -288,10 +288,18 @@ func (v *memoryView) FlagAt(series uint32, date rules.Date, kind rules.Kind) (ou
 	return out, ok, nil
 }
 
-func (v *memoryView) Flags(_ bool, each func(rules.Flag) bool) error {
+func (v *memoryView) Flags(all bool, each func(rules.Flag) bool) error {
+	return v.FlagsOf(all, func(watcher.FlagHead) bool { return true }, each)
+}
+
+func (v *memoryView) FlagsOf(_ bool, takes func(watcher.FlagHead) bool, each func(rules.Flag) bool) error {
 	newest := v.newest()
 	for ref := uint64(1); ref < v.NextRef(); ref++ {
-		if f := newest[ref]; f != nil && !each(f.Flag) {
+		f := newest[ref]
+		if f == nil || !takes(watcher.FlagHead{Kind: f.Kind, Standing: f.Standing, Step: f.Step, Date: f.Date, SeriesID: f.SeriesID}) {
+			continue
+		}
+		if !each(f.Flag) {
 			break
 		}
 	}

@@ -67,11 +67,10 @@ func (p *Pass) refused(feed, name string) (*releasing, error) {
 	if r.row, err = refusal(v, feed, name); err != nil {
 		return nil, err
 	}
-	err = v.Flags(true, func(f rules.Flag) bool {
-		if f.Kind == rules.KindRefused && f.Step == r.row.Step {
-			r.flag = f
-		}
-		return r.flag.Ref == 0
+	takes := func(h FlagHead) bool { return h.Kind == rules.KindRefused && h.Step == r.row.Step }
+	err = v.FlagsOf(true, takes, func(f rules.Flag) bool {
+		r.flag = f
+		return false
 	})
 	if err == nil && r.flag.Ref == 0 {
 		err = fmt.Errorf("the refusal of %s has no flag", name)

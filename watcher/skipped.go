@@ -58,8 +58,9 @@ func daily(before []delivered, days *rules.Calendar) bool {
 
 // told says whether the feed has a flag on the date already, such as one that it is late or that its file was refused.
 func (g *fileGate) told(date rules.Date) (found bool, err error) {
-	err = g.v.Flags(true, func(f rules.Flag) bool {
-		found = found || f.Date == date && f.Series == "" && f.Feed == g.feed.Name
+	takes := func(h FlagHead) bool { return h.Date == date && h.SeriesID == NoSeries }
+	err = g.v.FlagsOf(true, takes, func(f rules.Flag) bool {
+		found = f.Feed == g.feed.Name
 		return !found
 	})
 	return found, err

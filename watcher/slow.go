@@ -212,10 +212,9 @@ func (s *slowScan) series(id uint32) error {
 func (s *slowScan) toldOf(series string, kind rules.Kind) (*rules.Flag, error) {
 	if s.told == nil {
 		s.told = map[slowKey]*rules.Flag{}
-		if err := s.view.Flags(true, func(f rules.Flag) bool {
-			if f.Kind.Slow() {
-				s.told[slowKey{f.Series, f.Kind}] = &f
-			}
+		takes := func(h FlagHead) bool { return h.Kind.Slow() }
+		if err := s.view.FlagsOf(true, takes, func(f rules.Flag) bool {
+			s.told[slowKey{f.Series, f.Kind}] = &f
 			return true
 		}); err != nil {
 			return nil, err

@@ -16,6 +16,15 @@ type Store interface {
 	EndPass(PassRow) error
 }
 
+// FlagHead is what is quickly told of a flag that is held.
+type FlagHead struct {
+	Kind     rules.Kind
+	Standing rules.Standing
+	Step     uint32 // that raised it
+	Date     rules.Date
+	SeriesID uint32 // or NoSeries
+}
+
 // View is a reading of the ledger at one step. Close it before publishing.
 type View interface {
 	Close() error
@@ -69,6 +78,8 @@ type View interface {
 	FlagPast(ref uint64) ([]FlagVersion, error)
 	// Flags calls each with every flag (or only with those that are unfinished, see rules.Flag) by ref, until it returns false.
 	Flags(all bool, each func(rules.Flag) bool) error
+	// FlagsOf is Flags for those only that takes is true of; the others are not read whole.
+	FlagsOf(all bool, takes func(FlagHead) bool, each func(rules.Flag) bool) error
 }
 
 // FlagVersion is a flag as it stood from a step on.

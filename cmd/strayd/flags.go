@@ -111,6 +111,12 @@ func (f *flagFilter) narrow() bool {
 	return f.all || f.date+f.from+f.to+f.kind+f.group+f.series+f.stand+f.feed+f.blocking != ""
 }
 
+// head says whether a flag may be asked for, as far as its head tells.
+func (f *flagFilter) head(h watcher.FlagHead) bool {
+	return (f.kind == "" || f.kind == string(h.Kind)) && (f.on == rules.NoDate || h.Date == f.on) &&
+		h.Date >= f.since && (f.until == rules.NoDate || h.Date <= f.until)
+}
+
 // takes says whether a flag is asked for. Its standing becomes that of today, when a waiver may have run out.
 func (f *flagFilter) takes(g *rules.Flag) bool {
 	asks := g.AsksOn(f.today)
@@ -119,9 +125,8 @@ func (f *flagFilter) takes(g *rules.Flag) bool {
 		return false
 	}
 	is := func(want, have string) bool { return want == "" || want == have }
-	return is(f.kind, string(g.Kind)) && is(f.group, g.Group) && is(f.blocking, g.Group) && is(f.series, g.Series) &&
-		is(f.stand, string(g.Standing)) && is(f.feed, g.Feed) && (f.on == rules.NoDate || g.Date == f.on) &&
-		g.Date >= f.since && (f.until == rules.NoDate || g.Date <= f.until)
+	return is(f.group, g.Group) && is(f.blocking, g.Group) && is(f.series, g.Series) &&
+		is(f.stand, string(g.Standing)) && is(f.feed, g.Feed)
 }
 
 func (a *app) flags(f *flagFilter) error {
@@ -145,7 +150,7 @@ func (a *app) flags(f *flagFilter) error {
 			return err
 		}
 		var rowErr error
-		err = v.Flags(all, func(g rules.Flag) bool {
+		err = v.FlagsOf(all, f.head, func(g rules.Flag) bool {
 			if f.takes(&g) {
 				blocked = blocked || g.AsksOn(f.today) && !g.Kind.Slow()
 				rowErr = l.row(flagCells(&g)...)
@@ -207,7 +212,7 @@ func noteOf(g *rules.Flag) string {
 // them asks something of a person.
 func (a *app) flagTable(v watcher.View, all bool, f *flagFilter, blocked *bool) error {
 	w, n := columns(a.out), 0
-	err := v.Flags(all, func(g rules.Flag) bool {
+	err := v.FlagsOf(all, f.head, func(g rules.Flag) bool {
 		if !f.takes(&g) {
 			return true
 		}

@@ -134,18 +134,27 @@ func packFlag(dst []byte, r *flagRow) []byte {
 	return p.b
 }
 
-func unpackFlag(ref uint64, v []byte) (r flagRow, ok bool) {
-	u := unpacker{b: v}
+// unpackFront reads what a flag begins with.
+func unpackFront(u *unpacker) (r flagRow, ok bool) {
 	r.bits = u.uint()
 	kind, standing := int(u.byte()), int(u.byte())
 	if kind >= len(rules.Kinds) || standing >= len(rules.Standings) {
 		return r, false
 	}
-	f := &r.flag
-	f.Ref, f.Kind, f.Standing = ref, rules.Kinds[kind], rules.Standings[standing]
-	f.Step = uint32(u.uint())
-	f.Date = rules.Date(u.int())
+	r.flag.Kind, r.flag.Standing = rules.Kinds[kind], rules.Standings[standing]
+	r.flag.Step = uint32(u.uint())
+	r.flag.Date = rules.Date(u.int())
 	r.series = uint32(u.uint()) - 1
+	return r, true
+}
+
+func unpackFlag(ref uint64, v []byte) (r flagRow, ok bool) {
+	u := unpacker{b: v}
+	if r, ok = unpackFront(&u); !ok {
+		return r, false
+	}
+	f := &r.flag
+	f.Ref = ref
 	f.Group = u.text()
 	f.Range = u.text()
 	u.figures(r.bits, figures(f))

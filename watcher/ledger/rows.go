@@ -20,6 +20,31 @@ func newest(c *bolt.Cursor, prefix []byte, step uint32) (key, value []byte) {
 	return bytes.Clone(key), value
 }
 
+// rowCursor finds the newest layers of keys that are asked for in ascending order: those that lie close together without a new descent.
+type rowCursor struct {
+	c    *bolt.Cursor
+	k, v []byte // the first that was not looked at; nil before the first question
+}
+
+// nearby is how many keys are stepped over before a descent is cheaper.
+const nearby = 4
+
+// newest is as the function of this name.
+func (r *rowCursor) newest(prefix []byte, step uint32) (key, value []byte) {
+	for n := 0; r.k != nil && n < nearby && bytes.Compare(r.k, prefix) < 0; n++ {
+		r.k, r.v = r.c.Next()
+	}
+	if r.k == nil || bytes.Compare(r.k, prefix) < 0 {
+		r.k, r.v = r.c.Seek(prefix)
+	}
+	for ; r.k != nil && bytes.HasPrefix(r.k, prefix) && len(r.k) == len(prefix)+4; r.k, r.v = r.c.Next() {
+		if stepOf(r.k) <= step {
+			key, value = r.k, r.v
+		}
+	}
+	return key, value
+}
+
 // rows puts what is written only when the batch is published.
 func (w *writer) rows(p *plan) error {
 	for _, f := range p.flags {

@@ -39,6 +39,21 @@ func (v *View) flag(key, value []byte) (f rules.Flag, err error) {
 	return f, err
 }
 
+// flagHead reads the front of a flag.
+func flagHead(key, value []byte) (h watcher.FlagHead, err error) {
+	body, err := checked(inFlags, key, value)
+	if err != nil {
+		return h, err
+	}
+	u := unpacker{b: body}
+	row, ok := unpackFront(&u)
+	if !ok || u.bad {
+		return h, malformed(inFlags, key, "it cannot be read")
+	}
+	f := &row.flag
+	return watcher.FlagHead{Kind: f.Kind, Standing: f.Standing, Step: f.Step, Date: f.Date, SeriesID: row.series}, nil
+}
+
 // namePart is a chunk of names with where each stops.
 type namePart struct {
 	text []byte // in the map
@@ -47,6 +62,11 @@ type namePart struct {
 
 // name is the name of one series, without loading all.
 func (v *View) name(id uint32) (string, error) {
+	if all := v.l.names.Load(); all != nil {
+		if name := all.Name(id); name != nil {
+			return string(name), nil
+		}
+	}
 	c := id / watcher.BlockSize
 	part, ok := v.chunks[c]
 	if !ok {
@@ -116,6 +136,11 @@ func (v *View) Names() (n *watcher.Names, err error) {
 
 // Flags calls each with every flag by ref, or only with those that are unfinished, until it returns false.
 func (v *View) Flags(all bool, each func(rules.Flag) bool) error {
+	return v.FlagsOf(all, nil, each)
+}
+
+// FlagsOf is Flags for those that takes is true of; nil takes all.
+func (v *View) FlagsOf(all bool, takes func(watcher.FlagHead) bool, each func(rules.Flag) bool) error {
 	in := inOpen
 	if all {
 		in = inFlags
@@ -123,38 +148,73 @@ func (v *View) Flags(all bool, each func(rules.Flag) bool) error {
 	if v.tx == nil {
 		return errDone
 	}
-	c := v.buckets[in].Cursor()
-	for ref := uint64(0); ; {
-		f, ok, err := v.nextFlag(c, in, ref)
+	scan := flagScan{v: v, in: in, c: v.buckets[in].Cursor(), rows: rowCursor{c: v.buckets[inFlags].Cursor()}, takes: takes}
+	for {
+		f, ok, err := scan.next()
 		if err != nil || !ok || !each(f) {
 			return err
 		}
-		ref = f.Ref
 	}
 }
 
-// nextFlag finds the first flag after a ref. It stands by itself so that a panic in the caller's function is not taken for
-// damage.
-func (v *View) nextFlag(c *bolt.Cursor, in bucket, after uint64) (f rules.Flag, ok bool, err error) {
+// flagScan walks flags by ref, with cursors of its own, so that other questions may be asked meanwhile.
+type flagScan struct {
+	v     *View
+	in    bucket
+	c     *bolt.Cursor
+	rows  rowCursor
+	begun bool
+	ref   uint64 // of the last one
+	takes func(watcher.FlagHead) bool
+}
+
+// next finds the next flag that is asked for. It stands by itself so that a panic in the caller's function is not taken for damage.
+func (s *flagScan) next() (f rules.Flag, ok bool, err error) {
+	v := s.v
 	defer v.leave(v.enter(&err), &err)
 	if err != nil {
 		return f, false, err
 	}
-	for k, value := c.Seek(put64(nil, after+1)); k != nil; k, value = c.Next() {
-		if _, err := checked(in, k, value); err != nil {
+	for k, value := s.step(); k != nil; k, value = s.step() {
+		if _, err := checked(s.in, k, value); err != nil {
 			return f, false, err
 		}
-		ref := get64(k)
-		key, row := newest(v.cursors[inFlags], k[:8], v.head.step)
-		if key != nil {
-			f, err = v.flag(key, row)
-			return f, err == nil, err
+		key, row := s.rows.newest(k[:8], v.head.step)
+		switch {
+		case key == nil && s.in == inOpen:
+			return f, false, malformed(inOpen, k, fmt.Sprintf("flag %d is not there", get64(k)))
+		case key == nil:
+			continue
 		}
-		if in == inOpen {
-			return f, false, malformed(inOpen, k, fmt.Sprintf("flag %d is not there", ref))
+		if s.takes != nil {
+			head, err := flagHead(key, row)
+			if err != nil {
+				return f, false, err
+			}
+			if !s.takes(head) {
+				continue
+			}
 		}
+		f, err = v.flag(key, row)
+		return f, err == nil, err
 	}
 	return f, false, nil
+}
+
+// step moves to the next ref, past the other layers of the one before.
+func (s *flagScan) step() (k, value []byte) {
+	if s.begun {
+		k, value = s.c.Next()
+	} else {
+		k, value = s.c.First()
+	}
+	for s.begun && k != nil && get64(k) == s.ref {
+		k, value = s.c.Next()
+	}
+	if k != nil {
+		s.begun, s.ref = true, get64(k)
+	}
+	return k, value
 }
 
 // FlagAt finds the flag of a series, date and kind; of several, the newest.
