@@ -12,7 +12,6 @@ import (
 // what stands behind two hyphens is called an option.
 func inWords(root *cobra.Command) {
 	root.Version = version
-	root.CompletionOptions.HiddenDefaultCmd = true
 	root.SetUsageFunc(usage)
 	root.SetFlagErrorFunc(func(_ *cobra.Command, err error) error { return optionError(err) })
 }
@@ -28,7 +27,7 @@ func usage(c *cobra.Command) error {
 		fmt.Fprint(w, "\nCommands:\n")
 		for _, sub := range c.Commands() {
 			if sub.IsAvailableCommand() {
-				fmt.Fprintf(w, "  %-10s %s\n", sub.Name(), sub.Short)
+				fmt.Fprintf(w, "  %-11s %s\n", sub.Name(), sub.Short)
 			}
 		}
 	}

@@ -123,6 +123,7 @@ A flag is a statistical statement about past data: neither advice nor a finding 
 	root.AddCommand(a.demoCommand(), a.initCommand(), a.checkCommand(), a.passCommand(), a.flagsCommand(), a.explainCommand(),
 		a.historyCommand(), a.rangesCommand(), a.weeklyCommand(), a.drillCommand(), a.runCommand(), a.noticesCommand(), a.ledgerCommand(),
 		a.acceptCommand(), a.acknowledgeCommand(), a.decideCommand(), a.waiveCommand(), a.signOffCommand())
+	a.completed(root)
 	return root
 }
 
