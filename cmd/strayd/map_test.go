@@ -44,6 +44,7 @@ var doors = []struct {
 	rooms  []string
 }{
 	{"gonum.org/v1/gonum", []string{"stats"}},
+	{"gonum.org/v1/plot", []string{"notify/chart"}},
 	{"go.etcd.io/bbolt", []string{"watcher/ledger"}},
 	{"github.com/robfig/cron", []string{"watcher/schedule"}},
 	{"github.com/rickar/cal", []string{"watcher/calendar"}},
