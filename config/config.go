@@ -56,6 +56,7 @@ type Options struct {
 	Stat     func(path string) (fs.FileInfo, error)                                // nil: os.Stat
 	Zone     func(name string) (*time.Location, error)                             // nil: time.LoadLocation
 	Absolute func(path string) (absolute string, err error)                        // nil: filepath.Abs
+	Set      []string                                                              // lines, PATH=VALUE, in place of the file's
 }
 
 func (o Options) filled() Options {
@@ -99,6 +100,7 @@ func Parse(name string, data []byte, opt Options) (*Config, error) {
 	d := newDecoder(opt, folder)
 	c := &Config{File: name}
 	if root := d.document(data); root != nil {
+		d.set(root, opt.Set)
 		d.tree(root, "")
 		table.read(d, "", root, c)
 		d.cross(c)

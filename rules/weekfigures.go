@@ -2,6 +2,7 @@ package rules
 
 import (
 	"cmp"
+	"iter"
 	"slices"
 )
 
@@ -74,38 +75,53 @@ type groupDate struct {
 	date  Date
 }
 
-func (f *WeekFacts) marketDays() map[groupDate]bool {
+func (f *WeekFacts) marketDays() map[groupDate]bool { return marketDaysOf(f.weekFlags()) }
+
+func marketDaysOf(flags []*Flag) map[groupDate]bool {
 	out := map[groupDate]bool{}
-	for i := range f.Flags {
-		if g := &f.Flags[i]; g.Kind == KindMarketDay && f.inWeek(g) {
+	for _, g := range flags {
+		if g.Kind == KindMarketDay {
 			out[groupDate{g.Group, g.Date}] = true
 		}
 	}
 	return out
 }
 
-func (f *WeekFacts) countFlags(w *WeekFigures) {
-	market := f.marketDays()
-	w.Markets = len(market)
+// weekFlags are those that belong to the week.
+func (f *WeekFacts) weekFlags() (out []*Flag) {
+	for i := range f.Flags {
+		if g := &f.Flags[i]; f.inWeek(g) {
+			out = append(out, g)
+		}
+	}
+	return out
+}
+
+// SeparateEvents counts what some flags are about: those of one series and date are one event, and so is a market day with the breaches of
+// its group.
+func SeparateEvents(flags []*Flag) int {
 	type about struct {
 		series string
 		date   Date
 	}
-	counts, events := map[Kind]int{}, map[about]bool{}
-	for i := range f.Flags {
-		g := &f.Flags[i]
-		if !f.inWeek(g) {
-			continue
-		}
-		w.Flags++
-		counts[g.Kind]++
+	market, apart, events := marketDaysOf(flags), 0, map[about]bool{}
+	for _, g := range flags {
 		switch {
 		case g.Kind == KindMarketDay, g.Kind == KindBreach && g.Group != "" && market[groupDate{g.Group, g.Date}]:
 		case g.Series == "":
-			w.Events++
+			apart++
 		default:
 			events[about{g.Series, g.Date}] = true
 		}
+	}
+	return apart + len(events) + len(market)
+}
+
+func (f *WeekFacts) countFlags(w *WeekFigures) {
+	flags, counts := f.weekFlags(), map[Kind]int{}
+	w.Flags, w.Markets, w.Events = len(flags), len(marketDaysOf(flags)), SeparateEvents(flags)
+	for _, g := range flags {
+		counts[g.Kind]++
 		if g.Log10.OK {
 			w.Largest = append(w.Largest, *g)
 		}
@@ -113,7 +129,6 @@ func (f *WeekFacts) countFlags(w *WeekFigures) {
 			w.Slow = append(w.Slow, *g)
 		}
 	}
-	w.Events += len(events) + w.Markets
 	for _, k := range Kinds {
 		w.Raised = append(w.Raised, KindCount{k, counts[k]})
 	}
@@ -142,23 +157,42 @@ type CoverFigures struct {
 }
 
 func (f *WeekFacts) ranges(w *WeekFigures) {
-	for from := 0; from < len(f.Covers); {
-		to := from
-		for to < len(f.Covers) && f.Covers[to].Range == f.Covers[from].Range {
-			to++
-		}
-		all := Pool(f.Covers[from:to])
+	for covers := range byRange(f.Covers) {
+		all := Pool(covers)
 		r := f.rangeFigures(&all)
-		r.Separate = f.separate(f.Covers[from:to])
+		r.Separate = f.separate(covers)
 		w.Ranges = append(w.Ranges, r)
-		w.Covers = append(w.Covers, judged(all))
-		if to-from > 1 {
-			for _, c := range f.Covers[from:to] {
-				w.Covers = append(w.Covers, judged(c))
+	}
+	w.Covers = CoverTable(f.Covers)
+}
+
+// byRange goes through covers, which stand by range, one range at a time.
+func byRange(covers []Cover) iter.Seq[[]Cover] {
+	return func(yield func([]Cover) bool) {
+		for len(covers) > 0 {
+			n := 1
+			for n < len(covers) && covers[n].Range == covers[0].Range {
+				n++
+			}
+			if !yield(covers[:n]) {
+				return
+			}
+			covers = covers[n:]
+		}
+	}
+}
+
+// CoverTable judges covers, which stand by range: those of each range pooled, then each where there are several.
+func CoverTable(covers []Cover) (out []CoverFigures) {
+	for one := range byRange(covers) {
+		out = append(out, judged(Pool(one)))
+		if len(one) > 1 {
+			for _, c := range one {
+				out = append(out, judged(c))
 			}
 		}
-		from = to
 	}
+	return out
 }
 
 // separate counts the week's values beyond the breach line, those of a group on a market day as one; what the market left unexplained

@@ -217,6 +217,9 @@ func (p *Pass) work(j *judging, todo []task, outs []outcome, next, done *atomic.
 		j.keeping.Lock()
 		defer j.keeping.Unlock()
 		j.keptNow = append(j.keptNow, w.keptNow...)
+		if w.count != nil {
+			j.back.join(w.count)
+		}
 	}()
 	for {
 		n := int(next.Add(1)) - 1

@@ -10,6 +10,7 @@ import (
 // one after another. One worker's at a time.
 type coverCount struct {
 	under  []*lane
+	shares []float64                 // that the inner lines promise beyond them
 	dates  []rules.Date              // that are counted, ascending
 	covers []map[string]*rules.Cover // by lane, then group
 	at     [][]*rules.Cover          // by lane, then series of the task
@@ -26,7 +27,8 @@ type track struct {
 
 func newCoverCount(lanes []*lane, dates []rules.Date, width int) *coverCount {
 	c := &coverCount{under: lanes, dates: dates}
-	for range lanes {
+	for _, l := range lanes {
+		c.shares = append(c.shares, levelOf(l, l.gauge.Range.Watch))
 		c.covers = append(c.covers, map[string]*rules.Cover{})
 		c.at = append(c.at, make([]*rules.Cover, width))
 		c.tracks = append(c.tracks, make([]track, width))
@@ -49,7 +51,7 @@ func (c *coverCount) cover(k int, group string) *rules.Cover {
 	got := c.covers[k][group]
 	if got == nil {
 		r := c.under[k].gauge.Range
-		got = &rules.Cover{Range: r.Name, Of: r.Of, Group: group, Level: levelOf(c.under[k], r.Breach), Share: levelOf(c.under[k], r.Watch)}
+		got = &rules.Cover{Range: r.Name, Of: r.Of, Group: group, Level: levelOf(c.under[k], r.Breach), Share: c.shares[k]}
 		for _, d := range c.dates {
 			got.Days = append(got.Days, rules.CoverDay{Date: d})
 		}

@@ -36,6 +36,9 @@ func (w *worker) date(t task, d *day, old bool, out *outcome) error {
 			return err
 		}
 	}
+	if w.count != nil {
+		w.countDate(t, d.date)
+	}
 	w.tally(t, present, fresh, out)
 	w.raise(t, d, fresh, out)
 	for k, l := range w.lanes {
@@ -72,6 +75,7 @@ func (w *worker) findHits(t task, d *day, old bool, fresh []int64, out *outcome)
 		}
 	}
 	w.viewHits(t, d, fresh, out)
+	w.decidedHits(t, d.date, fresh)
 	if w.j.lone && d.col != nil {
 		if err := w.loneHits(t, fresh); err != nil {
 			return err
@@ -292,7 +296,7 @@ func (w *worker) take(t task, d *day, old bool, k int, l *lane, out *outcome) er
 		used = l.used[:t.width]
 		copy(used, all)
 		for n := range w.hits {
-			if h := &w.hits[n]; (h.flagged || h.out || h.days > 1) && used[h.at] != Missing64 {
+			if h := &w.hits[n]; (h.flagged || h.out || h.days > 1 || h.decided != nil) && used[h.at] != Missing64 {
 				used[h.at] = int64(h.used(l, k, rules.Units(used[h.at]), rules.Units(w.raw[h.at])))
 			}
 		}

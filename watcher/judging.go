@@ -39,6 +39,9 @@ type judging struct {
 	weighed    *weighed               // nil where no series of the file is weighed together with others
 	decided    map[valueAt]*rules.Act // decisions of this step
 
+	decidedOn map[rules.Date][]decidedValue // of values that are judged now: of a back-run, else nil
+	back      *backCount                    // of a back-run, else nil
+
 	kept    map[keptKey]*kept // what the resident keeps; nil without one
 	keeping sync.Mutex
 	keptNow []keptTask // what it is to keep after this step

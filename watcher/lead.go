@@ -255,6 +255,7 @@ func (l *leader) step(date rules.Date) (*causes.Result, error) {
 	if err := l.recall(date); err != nil {
 		return nil, err
 	}
+	l.decidedNow(date)
 	l.upto = date
 	return l.pool.Step(causes.Day{Date: date, Values: l.values, Fresh: l.fresh, Known: l.known}), nil
 }

@@ -57,6 +57,7 @@ type worker struct {
 	task             task         // at hand
 	terms            []int64      // codes that the ledger holds on one date
 	past             pastRows     // of its lone series
+	count            *workerCount // of a back-run, else nil
 }
 
 // hit is a series that is not plainly inside everything on the date at hand.
@@ -97,6 +98,9 @@ func newWorker(j *judging, v View) *worker {
 	for i := range w.slot {
 		w.slot[i] = -1
 	}
+	if j.back != nil {
+		w.count = j.back.of(w)
+	}
 	return w
 }
 
@@ -108,6 +112,9 @@ func (w *worker) run(t task) (outcome, error) {
 		first = t.days[0].date
 	}
 	w.begin(t)
+	if w.count != nil {
+		w.count.open(t, w.group)
+	}
 	w.beginPast(first)
 	replay := w.j.heldFrom(t.block, first)
 	if err := w.noteNewest(t, replay); err != nil {
@@ -129,6 +136,9 @@ func (w *worker) run(t task) (outcome, error) {
 	}
 	w.keepStates(t, &out)
 	w.leave(t)
+	if w.count != nil {
+		w.count.fold(t, w.j.names, len(w.count.dates))
+	}
 	w.room = out
 	out.flags, out.used = slices.Clone(out.flags), slices.Clone(out.used)
 	return out, w.failed

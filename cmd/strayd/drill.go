@@ -3,7 +3,6 @@ package main
 import (
 	"errors"
 	"fmt"
-	"io"
 	"os"
 	"path/filepath"
 	"strings"
@@ -16,7 +15,6 @@ import (
 	"strayd/rules/causes"
 	"strayd/rules/drill"
 	"strayd/watcher"
-	"strayd/watcher/desk"
 	"strayd/watcher/ledger"
 )
 
@@ -159,23 +157,10 @@ const leastPast = 20
 
 // drillBook reads the history, through a running daemon's own backup where one holds the ledger.
 func (a *app) drillBook(c *config.Config, o *drillOptions, folder string) (b *drill.Book, s rules.Settings, err error) {
-	path := c.Ledger
-	if _, there := desk.Path(c.Ledger); there {
-		copied := filepath.Join(folder, "daemon.db")
-		caller := *a
-		caller.args, caller.out = []string{"ledger", "backup", copied}, io.Discard
-		done, err := caller.callDaemon()
-		if err != nil {
-			return nil, s, err
-		}
-		if done {
-			path = copied
-		}
-	}
 	if s, _, err = settings(c); err != nil {
 		return nil, s, err
 	}
-	l, err := ledger.Open(path, ledger.Options{Mode: ledger.ReadOnly})
+	l, err := a.heldLedger(c, folder)
 	if err != nil {
 		return nil, s, err
 	}

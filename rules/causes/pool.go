@@ -202,6 +202,9 @@ func (p *Pool) known(d Day) {
 		switch k.Use {
 		case AsIs:
 			p.looks[k.Member].full = true
+			if !st.isWrong && d.Fresh != nil && d.Fresh[k.Member] { // decided before it is judged, as in a back-run
+				st.isOut = false
+			}
 		case Out:
 			st.isOut = true
 		case Instead:
