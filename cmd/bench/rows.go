@@ -26,6 +26,7 @@ func rowList() []row {
 		{"day", (*bench).days},
 		{"daemon", (*bench).daemons},
 		{"commands", (*bench).commands},
+		{"backrun", (*bench).backRuns},
 		{"rerun", (*bench).rerun},
 		{"age", (*bench).age},
 		{"drill", (*bench).drills},
@@ -145,21 +146,8 @@ func (d *desk) fill(series, from, to int) error {
 
 // commands measures what people ask of a ledger of ten million rows.
 func (b *bench) commands() error {
-	d, err := b.newDesk("")
+	d, k, err := b.tenMillion()
 	if err != nil {
-		return err
-	}
-	if err := d.fresh(); err != nil {
-		return err
-	}
-	k := book{series: b.share(2000), dates: history}
-	if err := d.deliver("history.csv", k); err != nil {
-		return err
-	}
-	if _, err := d.run(pass...); err != nil {
-		return err
-	}
-	if err := d.empty(); err != nil {
 		return err
 	}
 	series := string(name(nil, k.series/2))
@@ -175,6 +163,48 @@ func (b *bench) commands() error {
 			f.rows = k.rows()
 		}
 		b.print(f)
+	}
+	return os.RemoveAll(d.dir)
+}
+
+// tenMillion is a desk whose ledger holds ten million rows.
+func (b *bench) tenMillion() (*desk, book, error) {
+	k := book{series: b.share(2000), dates: history}
+	d, err := b.newDesk("")
+	if err != nil {
+		return nil, k, err
+	}
+	if err := d.fresh(); err != nil {
+		return nil, k, err
+	}
+	if err := d.deliver("history.csv", k); err != nil {
+		return nil, k, err
+	}
+	if _, err := d.run(pass...); err != nil {
+		return nil, k, err
+	}
+	return d, k, d.empty()
+}
+
+// backRuns measures the past judged again: under its own settings, beside others, at a budget, and in a group held against its peers. The
+// rows count once a side.
+func (b *bench) backRuns() error {
+	d, k, err := b.tenMillion()
+	if err != nil {
+		return err
+	}
+	line, group := "ranges.own.breach={tail: 0.5%}", `groups=[{name: all, series: ["fund*"], reference: peers}]`
+	for _, x := range []struct {
+		work  string
+		sides int
+		args  []string
+	}{{"these", 1, nil}, {"these and a line", 2, []string{"--set", line}}, {"all dates compared", 2, []string{"--set", line, "--days", "5000"}},
+		{"a budget", 3, []string{"--budget", "100"}}, {"and peers", 2, []string{"--set", group}}} {
+		u, err := b.median(func() error { return nil }, func() (usage, error) { return d.run(append([]string{"back-run"}, x.args...)...) })
+		if err != nil {
+			return err
+		}
+		b.print(figures{row: "back-run", work: x.work, usage: u, rows: x.sides * k.rows()})
 	}
 	return os.RemoveAll(d.dir)
 }
