@@ -20,26 +20,27 @@ func (b *blank) EndPass(PassRow) error { return errBlank }
 // Close and the methods after it make it a View.
 func (b *blank) Close() error { return nil }
 
-func (b *blank) Step() uint32                                     { return 0 }
-func (b *blank) AsOf(uint32) View                                 { return b }
-func (b *blank) NextRef() uint64                                  { return 1 }
-func (b *blank) Names() (*Names, error)                           { return NewNames(nil, nil), nil }
-func (b *blank) Dates(What) ([]rules.Date, error)                 { return nil, nil }
-func (b *blank) Series(What, uint32) ([]Version, error)           { return nil, nil }
-func (b *blank) Used(uint16, uint32) ([]Version, error)           { return nil, nil }
-func (b *blank) State(uint16, uint32) (*State, error)             { return nil, nil }
-func (b *blank) File(uint32) (FileRow, error)                     { return FileRow{}, errBlank }
-func (b *blank) Files(func(FileRow) bool) error                   { return nil }
-func (b *blank) LastPass() (PassRow, bool, error)                 { return PassRow{}, false, nil }
-func (b *blank) Head() (string, error)                            { return "", nil }
-func (b *blank) Ranges() ([]RangeKey, error)                      { return b.ranges, nil }
-func (b *blank) Settings(uint32) ([]byte, error)                  { return nil, errBlank }
-func (b *blank) LastSettings() (uint32, error)                    { return 0, nil }
-func (b *blank) Flag(uint64) (rules.Flag, bool, error)            { return rules.Flag{}, false, nil }
-func (b *blank) FlagPast(uint64) ([]FlagVersion, error)           { return nil, nil }
-func (b *blank) Flags(bool, func(rules.Flag) bool) error          { return nil }
-func (b *blank) Marked(rules.Date, uint32) ([]int, error)         { return nil, nil }
-func (b *blank) GroupScales(uint16, string) ([]GroupScale, error) { return nil, nil }
+func (b *blank) Step() uint32                                                   { return 0 }
+func (b *blank) AsOf(uint32) View                                               { return b }
+func (b *blank) NextRef() uint64                                                { return 1 }
+func (b *blank) Names() (*Names, error)                                         { return NewNames(nil, nil), nil }
+func (b *blank) Dates(What) ([]rules.Date, error)                               { return nil, nil }
+func (b *blank) Series(What, uint32) ([]Version, error)                         { return nil, nil }
+func (b *blank) Used(uint16, uint32) ([]Version, error)                         { return nil, nil }
+func (b *blank) State(uint16, uint32) (*State, error)                           { return nil, nil }
+func (b *blank) File(uint32) (FileRow, error)                                   { return FileRow{}, errBlank }
+func (b *blank) Files(func(FileRow) bool) error                                 { return nil }
+func (b *blank) LastPass() (PassRow, bool, error)                               { return PassRow{}, false, nil }
+func (b *blank) Head() (string, error)                                          { return "", nil }
+func (b *blank) Ranges() ([]RangeKey, error)                                    { return b.ranges, nil }
+func (b *blank) Settings(uint32) ([]byte, error)                                { return nil, errBlank }
+func (b *blank) LastSettings() (uint32, error)                                  { return 0, nil }
+func (b *blank) Flag(uint64) (rules.Flag, bool, error)                          { return rules.Flag{}, false, nil }
+func (b *blank) FlagPast(uint64) ([]FlagVersion, error)                         { return nil, nil }
+func (b *blank) Flags(bool, func(rules.Flag) bool) error                        { return nil }
+func (b *blank) FlagsOf(bool, func(FlagHead) bool, func(rules.Flag) bool) error { return nil }
+func (b *blank) Marked(rules.Date, uint32) ([]int, error)                       { return nil, nil }
+func (b *blank) GroupScales(uint16, string) ([]GroupScale, error)               { return nil, nil }
 
 func (b *blank) Fill(What, rules.Date, uint32, int, []int64) (bool, error) { return false, nil }
 func (b *blank) Patch(uint16, rules.Date, uint32, int, []int64) error      { return nil }
