@@ -49,17 +49,28 @@ func (w *worker) attempt(ctx context.Context, n rules.Notice) {
 		w.nap(ctx, storeRetry)
 		return
 	}
-	post, plain := w.To.Post, w.plain == n.Number
-	if plain {
-		post = w.To.(Plainer).PostPlain
-	}
-	receipt, err := w.call(ctx, post, n)
+	plain := w.plain == n.Number
+	receipt, err := w.call(ctx, w.way(n, plain), n)
 	if err == nil {
 		n.Receipt = receipt
 		w.finish(ctx, &n, rules.NoticeSent, "", "")
+		w.attach(&n)
 		return
 	}
 	w.failed(ctx, &n, failure(err), plain)
+}
+
+// way is how a notice is posted: as bare text when the service did not take its form, else with its picture where messages hold one.
+func (w *worker) way(n rules.Notice, plain bool) func(context.Context, rules.Notice) (string, error) {
+	if plain {
+		return w.To.(Plainer).PostPlain
+	}
+	if to, ok := w.To.(Illustrator); ok {
+		if p := w.picture(n); p != nil {
+			return func(ctx context.Context, n rules.Notice) (string, error) { return to.PostWith(ctx, n, p) }
+		}
+	}
+	return w.To.Post
 }
 
 // arrived asks the channel whether an earlier attempt got through.

@@ -27,6 +27,8 @@ type Sending struct {
 	Zone   *time.Location // of the date in a late notice; nil for UTC
 	Grace  time.Duration  // how long a call in hand may go on after a stop; 10 s when 0
 
+	// Picture draws what goes with a notice, nil where nothing does; nil for no pictures.
+	Picture func(rules.Notice) (*Picture, error)
 	// Jitter gives an even share of a span, from 0 up to but not including it; nil for a random one.
 	Jitter func(time.Duration) time.Duration
 	// Report is told of every outcome, from several goroutines; nil for nobody.
@@ -42,6 +44,7 @@ type Event struct {
 	Stopped bool // the channel delivers nothing until the next start or reload
 
 	Fallback string // the channel that the notice was handed to, "" for none
+	Picture  bool   // of the notice's picture alone: its words are on their way, or there
 }
 
 // Sender delivers the outbox: one worker a channel, first in, first out. It is started once.
@@ -70,7 +73,7 @@ func NewSender(o Sending) *Sender {
 		if r.Service != "" && s.turns[r.Service] == nil {
 			s.turns[r.Service] = make(chan struct{}, 1)
 		}
-		s.workers = append(s.workers, &worker{Route: r, s: s, wake: make(chan struct{}, 1), state: Idle})
+		s.workers = append(s.workers, &worker{Route: r, s: s, wake: make(chan struct{}, 1), state: Idle, pictures: make(chan rules.Notice, picturesAhead)})
 	}
 	return s
 }

@@ -21,6 +21,8 @@ type worker struct {
 	s    *Sender
 	wake chan struct{}
 
+	pictures chan rules.Notice // sent, with a picture to follow
+
 	pause  time.Time // no call before
 	plain  uint64    // number of the notice that is to go as bare text
 	oddOne uint64    // number of the notice that failed last for an unknown reason,
@@ -40,6 +42,10 @@ func (w *worker) run(ctx context.Context) {
 	w.mu.Lock()
 	w.began = now()
 	w.mu.Unlock()
+	var pictures sync.WaitGroup
+	pictures.Go(func() { w.attaching(ctx) })
+	defer pictures.Wait()
+	defer close(w.pictures)
 	for !w.takeUp() {
 		if !w.nap(ctx, storeRetry) {
 			return
@@ -143,10 +149,8 @@ func (w *worker) stored(err error) bool {
 
 // call hands the notice to the channel. A stop leaves it the grace to finish. A panic is an unknown error of this notice.
 func (w *worker) call(ctx context.Context, post func(context.Context, rules.Notice) (string, error), n rules.Notice) (receipt string, err error) {
-	inner, cancel := context.WithCancel(context.WithoutCancel(ctx))
+	inner, cancel := w.grace(ctx)
 	defer cancel()
-	stop := context.AfterFunc(ctx, func() { time.AfterFunc(w.s.Grace, cancel) })
-	defer stop()
 	if p, ok := w.To.(Pacer); ok {
 		w.pause = now().Add(p.Pace())
 	}

@@ -3,6 +3,7 @@ package main
 import (
 	"encoding/json"
 	"fmt"
+	"image/png"
 	"net/http"
 	"net/http/httptest"
 	"os"
@@ -21,6 +22,8 @@ type chatService struct {
 	*httptest.Server
 	mu     sync.Mutex
 	posts  []post
+	shown  []string // pictures, as channel/thread and size
+	size   int      // of the picture that came last
 	script map[string][]http.HandlerFunc // of postMessage, by channel; then it answers as the service does
 	dead   map[string]string             // error code of postMessage, by channel
 	blind  bool                          // the token may not read back what identifies messages
@@ -51,7 +54,7 @@ func (s *chatService) serve(w http.ResponseWriter, r *http.Request) {
 		fmt.Fprint(w, `{"ok":false,"error":"invalid_auth"}`)
 		return
 	}
-	scopes := "chat:write,channels:read"
+	scopes := "chat:write,files:write,channels:read"
 	if !s.blind {
 		scopes += ",channels:history,metadata.message:read"
 	}
@@ -65,8 +68,32 @@ func (s *chatService) serve(w http.ResponseWriter, r *http.Request) {
 		fmt.Fprint(w, `{"ok":true,"team":"Example","user":"strayd","user_id":"U1","bot_id":"B1"}`)
 	case "conversations.info":
 		fmt.Fprintf(w, `{"ok":true,"channel":{"id":%q,"name":"returns","is_member":true}}`, r.Form.Get("channel"))
+	case "files.getUploadURLExternal", "upload", "files.completeUploadExternal":
+		s.picture(w, r)
 	default:
 		fmt.Fprint(w, `{"ok":false,"error":"unknown_method"}`)
+	}
+}
+
+// picture takes each of the three calls of an upload.
+func (s *chatService) picture(w http.ResponseWriter, r *http.Request) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	switch strings.TrimPrefix(r.URL.Path, "/api/") {
+	case "files.getUploadURLExternal":
+		fmt.Fprintf(w, `{"ok":true,"upload_url":%q,"file_id":"F1"}`, s.URL+"/api/upload")
+	case "upload":
+		file, _, err := r.FormFile("file")
+		if err == nil {
+			img, err := png.Decode(file)
+			if err == nil {
+				s.size = img.Bounds().Dx()
+			}
+		}
+		fmt.Fprint(w, "OK")
+	default:
+		s.shown = append(s.shown, fmt.Sprintf("%s/%s %d", r.Form.Get("channel_id"), r.Form.Get("thread_ts"), s.size))
+		fmt.Fprint(w, `{"ok":true,"files":[{"id":"F1"}]}`)
 	}
 }
 

@@ -5,6 +5,7 @@ import (
 	"net/http"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"syscall"
 	"testing"
@@ -87,6 +88,12 @@ func TestDaemonTells(t *testing.T) {
 		t.Errorf("%d lines", n)
 	}
 
+	// Each of the two breaches has its chart in the thread of its message, in both channels.
+	until(t, "the charts are there", func() bool { s.mu.Lock(); defer s.mu.Unlock(); return len(s.shown) == 4 })
+	if want := fmt.Sprintf("%s/%s 960", p.Channel, p.Stamp); !slices.Contains(s.shown, want) {
+		t.Errorf("charts %q, none is %s", s.shown, want)
+	}
+
 	f.arrive("c.csv", csvDays(series, 32, 32, out))
 	f.allSent()
 	if p := s.in(channelID("desk"))[2]; !strings.HasPrefix(p.Text, "DIGEST of 12 flags") {
@@ -113,6 +120,9 @@ func TestDaemonTells(t *testing.T) {
 		t.Errorf("the console has %d breaches\n%s", n, d.out)
 	}
 	d.stop()
+	if len(s.shown) != 5 || d.times("a notice goes without its chart") != 0 {
+		t.Errorf("charts %q", s.shown) // the digest has none; that sent again has its own once more
+	}
 	f.must("ledger", "verify")
 }
 

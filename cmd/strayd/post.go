@@ -24,10 +24,16 @@ type postOffice struct {
 // callGrace is how long a call in hand may go on after a stop.
 const callGrace = 5 * time.Second
 
+// mailroom is the ledger as the sending loop needs it.
+type mailroom interface {
+	notify.Outbox
+	viewer
+}
+
 // openPost prepares the channels of a configuration. A missing credential is an error only where a channel needs it.
-func openPost(c *config.Config, outbox notify.Outbox, console io.Writer, log *slog.Logger, told func(notify.Event)) (*postOffice, error) {
+func openPost(c *config.Config, outbox mailroom, console io.Writer, log *slog.Logger, told func(notify.Event)) (*postOffice, error) {
 	teller := newTeller(c, nil)
-	s := notify.Sending{Outbox: outbox, Zone: c.Location, Grace: callGrace, Report: func(e notify.Event) {
+	s := notify.Sending{Outbox: outbox, Zone: c.Location, Grace: callGrace, Picture: pictures(c, outbox), Report: func(e notify.Event) {
 		logEvent(log, e)
 		told(e)
 	}}
@@ -89,6 +95,8 @@ func (p *postOffice) busy(before time.Time) bool {
 func logEvent(log *slog.Logger, e notify.Event) {
 	at := []any{"channel", e.Channel, "notice", e.Notice.Number, "kind", e.Notice.Kind}
 	switch {
+	case e.Picture:
+		log.Warn("a notice goes without its chart", append(at, "class", e.Class, "reason", e.Reason)...)
 	case e.Fallback != "":
 		log.Warn("the fallback channel takes a notice over", append(at, "fallback", e.Fallback, "reason", e.Reason)...)
 	case e.Stopped:

@@ -135,7 +135,7 @@ func jobReport(s schedule.Status, zone *time.Location) health.Job {
 }
 
 func channelReport(h notify.Health) health.Channel {
-	c := health.Channel{Name: h.Channel, State: health.ChannelOK, Waiting: h.Waiting, Failed: h.Failed, Error: string(h.Class)}
+	c := health.Channel{Name: h.Channel, State: health.ChannelOK, Waiting: h.Waiting, Failed: h.Failed, Error: string(h.Class), Fallback: h.Fallback}
 	if h.Overdue > 0 {
 		c.Oldest = time.Now().Add(-h.Overdue)
 	}

@@ -1,8 +1,10 @@
 package mail
 
 import (
+	"bytes"
 	"context"
 	"fmt"
+	"html"
 	"strings"
 	"time"
 
@@ -16,8 +18,17 @@ import (
 const quitMost = 2 * time.Second
 
 // Post makes one attempt. The receipt is the Message-ID.
-func (m *Mailer) Post(ctx context.Context, n rules.Notice) (string, error) {
-	msg := m.message(n)
+func (m *Mailer) Post(ctx context.Context, n rules.Notice) (string, error) { return m.PostWith(ctx, n, nil) }
+
+// PostPlain makes one attempt without a picture, which the server may have found too large.
+func (m *Mailer) PostPlain(ctx context.Context, n rules.Notice) (string, error) { return m.PostWith(ctx, n, nil) }
+
+// PostWith is Post with a picture in the mail, nil for none.
+func (m *Mailer) PostWith(ctx context.Context, n rules.Notice, p *notify.Picture) (string, error) {
+	msg, err := m.message(n, p)
+	if err != nil {
+		return "", err
+	}
 	c := call{ctx: ctx}
 	defer c.end()
 	client, err := m.client(&c)
@@ -40,8 +51,9 @@ func (m *Mailer) Post(ctx context.Context, n rules.Notice) (string, error) {
 	return "", m.hide(refused(err))
 }
 
-// message lays a notice out as a mail. Long lines and letters beyond ASCII are encoded by the library.
-func (m *Mailer) message(n rules.Notice) *gomail.Msg {
+// message lays a notice out as a mail. Long lines and letters beyond ASCII are encoded by the library. With a picture, the same words follow once
+// more as a page that shows it below them, for who reads pages.
+func (m *Mailer) message(n rules.Notice, p *notify.Picture) (*gomail.Msg, error) {
 	msg := gomail.NewMsg(gomail.WithNoDefaultUserAgent(), gomail.WithCharset(gomail.CharsetUTF8), gomail.WithEncoding(gomail.EncodingQP))
 	msg.FromMailAddress(m.from)
 	msg.ToMailAddress(m.to...)
@@ -54,7 +66,22 @@ func (m *Mailer) message(n rules.Notice) *gomail.Msg {
 		msg.SetGenHeader(gomail.HeaderReferences, n.Under)
 	}
 	msg.SetBodyString(gomail.TypeTextPlain, strings.Join(n.Lines, "\r\n")+"\r\n")
-	return msg
+	if p == nil {
+		return msg, nil
+	}
+	msg.AddAlternativeString(gomail.TypeTextHTML, page(n.Lines, p))
+	return msg, msg.EmbedReader(p.Name, bytes.NewReader(p.PNG), gomail.WithFileContentType("image/png"))
+}
+
+// page is a notice as a page with its picture.
+func page(lines []string, p *notify.Picture) string {
+	var b strings.Builder
+	b.WriteString("<html><body>\r\n")
+	for _, l := range lines {
+		fmt.Fprintf(&b, "<p>%s</p>\r\n", html.EscapeString(l))
+	}
+	fmt.Fprintf(&b, "<p><img src=\"cid:%s\" alt=\"%s\" width=\"480\"></p>\r\n</body></html>\r\n", p.Name, html.EscapeString(p.Text))
+	return b.String()
 }
 
 // subject is the first line. Whatever could end a header ends nothing.

@@ -8,6 +8,7 @@ import (
 	"fmt"
 	"io"
 	"mime"
+	"mime/multipart"
 	"mime/quotedprintable"
 	"net"
 	netmail "net/mail"
@@ -346,5 +347,65 @@ func TestHostIsChecked(t *testing.T) {
 	m := mailerOf(t, f, Options{}, func(a *Account) { a.Server = "localhost:" + port })
 	if _, err := m.Post(t.Context(), notice); class(err) != notify.Retry || !strings.Contains(err.Error(), "localhost") {
 		t.Errorf("%q, %v", class(err), err)
+	}
+}
+
+// A picture comes within the mail: the words as text, the same as a page, and the picture that the page shows, with its words. Nothing that a
+// file holds becomes markup.
+func TestPictureInTheMail(t *testing.T) {
+	f := newFake(t, nil)
+	p := &notify.Picture{Name: "strayd-7.png", PNG: []byte("\x89PNG\r\nnot quite"), Text: `60 returns of <alder> & "birch"`}
+	n := notice
+	n.Lines = []string{"BREACH <script>alert(1)</script> returned -4.12 %", "second & last"}
+	if _, err := mailerOf(t, f, Options{}).PostWith(context.Background(), n, p); err != nil {
+		t.Fatal(err)
+	}
+	_, m, body := read(t, f.mails[0])
+	parts := partsOf(t, m.Header.Get("Content-Type"), body)
+	if got, want := parts["text/plain"], "BREACH <script>alert(1)</script> returned -4.12 %\r\nsecond & last\r\n"; got != want {
+		t.Errorf("text %q, want %q", got, want)
+	}
+	page := parts["text/html"]
+	for _, want := range []string{"<p>BREACH &lt;script&gt;alert(1)&lt;/script&gt; returned -4.12 %</p>", `src="cid:strayd-7.png"`,
+		`alt="60 returns of &lt;alder&gt; &amp; &#34;birch&#34;"`} {
+		if !strings.Contains(page, want) {
+			t.Errorf("the page lacks %s:\n%s", want, page)
+		}
+	}
+	if parts["image/png"] != string(p.PNG) || parts["id image/png"] != "<strayd-7.png>" {
+		t.Errorf("picture %q, id %q", parts["image/png"], parts["id image/png"])
+	}
+}
+
+// partsOf takes the parts of a mail apart, by their kinds.
+func partsOf(t *testing.T, kind, body string) map[string]string {
+	t.Helper()
+	out := map[string]string{}
+	media, params, err := mime.ParseMediaType(kind)
+	if err != nil {
+		t.Fatalf("%q: %v", kind, err)
+	}
+	if !strings.HasPrefix(media, "multipart/") {
+		return map[string]string{media: body}
+	}
+	in := multipart.NewReader(strings.NewReader(body), params["boundary"])
+	for {
+		part, err := in.NextPart()
+		if err != nil {
+			return out
+		}
+		var content io.Reader = part
+		if part.Header.Get("Content-Transfer-Encoding") == "base64" {
+			content = base64.NewDecoder(base64.StdEncoding, part)
+		}
+		b, err := io.ReadAll(content)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for k, v := range partsOf(t, part.Header.Get("Content-Type"), string(b)) {
+			out[k] = v
+		}
+		inner, _, _ := mime.ParseMediaType(part.Header.Get("Content-Type"))
+		out["id "+inner] = part.Header.Get("Content-ID")
 	}
 }

@@ -53,6 +53,9 @@ func (c *Channel) Check(ctx context.Context) (Access, error) {
 		a.Notes = append(a.Notes, "without the permissions channels:history (groups:history) and metadata.message:read "+
 			"a message whose answer is lost is sent again as a possible repeat")
 	}
+	if known && !c.s.has(attachScope) {
+		a.Notes = append(a.Notes, "without the permission "+attachScope+" no chart goes with an alert")
+	}
 	return a, c.checkChannel(ctx, &a)
 }
 

@@ -3,6 +3,7 @@ package slack
 import (
 	"encoding/json"
 	"fmt"
+	"io"
 	"net/http"
 	"net/http/httptest"
 	"net/url"
@@ -28,6 +29,7 @@ type fake struct {
 	script   map[string][]http.HandlerFunc
 	calls    map[string][]url.Values
 	messages []message
+	uploads  []string // files that came: name, size, and where they were shown, once that was said
 	scopes   string
 	channel  string // conversations.info's answer, as JSON members
 }
@@ -40,7 +42,7 @@ type message struct {
 
 func newFake(t *testing.T) *fake {
 	f := &fake{script: map[string][]http.HandlerFunc{}, calls: map[string][]url.Values{},
-		scopes: "chat:write,channels:read,channels:history,metadata.message:read", channel: `"name":"returns","is_member":true`}
+		scopes: "chat:write,files:write,channels:read,channels:history,metadata.message:read", channel: `"name":"returns","is_member":true`}
 	f.Server = httptest.NewServer(http.HandlerFunc(f.serve))
 	t.Cleanup(f.Close)
 	return f
@@ -63,6 +65,10 @@ func (f *fake) serve(w http.ResponseWriter, r *http.Request) {
 func (f *fake) standard(w http.ResponseWriter, r *http.Request) {
 	w.Header().Set("X-OAuth-Scopes", f.scopes)
 	w.Header().Set("Content-Type", "application/json")
+	if r.URL.Path == "/api/upload" {
+		f.upload(w, r)
+		return
+	}
 	if r.Form.Get("token") != token {
 		fmt.Fprint(w, `{"ok":false,"error":"invalid_auth"}`)
 		return
@@ -70,6 +76,13 @@ func (f *fake) standard(w http.ResponseWriter, r *http.Request) {
 	switch strings.TrimPrefix(r.URL.Path, "/api/") {
 	case "chat.postMessage":
 		fmt.Fprintf(w, `{"ok":true,"channel":%q,"ts":%q}`, r.Form.Get("channel"), f.process(r))
+	case "files.getUploadURLExternal":
+		fmt.Fprintf(w, `{"ok":true,"upload_url":%q,"file_id":"F1"}`, f.URL+"/api/upload")
+	case "files.completeUploadExternal":
+		f.mu.Lock()
+		f.uploads = append(f.uploads, "shown in "+r.Form.Get("channel_id")+"/"+r.Form.Get("thread_ts"))
+		f.mu.Unlock()
+		fmt.Fprint(w, `{"ok":true,"files":[{"id":"F1","title":"x"}]}`)
 	case "conversations.history":
 		f.history(w, r)
 	case "auth.test":
@@ -77,6 +90,20 @@ func (f *fake) standard(w http.ResponseWriter, r *http.Request) {
 	case "conversations.info":
 		fmt.Fprintf(w, `{"ok":true,"channel":{"id":%q,%s}}`, r.Form.Get("channel"), f.channel)
 	}
+}
+
+// upload takes a file in, as the service's own address for that does.
+func (f *fake) upload(w http.ResponseWriter, r *http.Request) {
+	file, head, err := r.FormFile("file")
+	if err != nil || r.Header.Get("Authorization") != "Bearer "+token {
+		w.WriteHeader(http.StatusBadRequest)
+		return
+	}
+	n, _ := io.Copy(io.Discard, file)
+	f.mu.Lock()
+	f.uploads = append(f.uploads, fmt.Sprintf("%s of %d bytes", head.Filename, n))
+	f.mu.Unlock()
+	fmt.Fprintf(w, "OK - %d", n)
 }
 
 // process takes a message in.

@@ -11,7 +11,7 @@
 //	/state    always 200: everything, as JSON
 //	/metrics  always 200: figures in the OpenMetrics 1.0 text format
 //
-// Troubles are: not alive; not ready; a dead channel; a notice that has waited for more than 15 minutes; a job whose due slot has
+// Troubles are: not alive; not ready; a dead channel, or one whose fallback has taken over; a notice that has waited for more than 15 minutes; a job whose due slot has
 // not run for more than twice its interval. A dead channel does not make the daemon unready: starting it anew would not help,
 // and a script that waits for the start to succeed must not fail because the chat is down.
 //
@@ -26,7 +26,8 @@
 //	ledger         {open, path, step, bytes, series}
 //	configuration  {valid, hash, error, error_at}  error: of the last reload, when it was refused; the one before is in force
 //	jobs           [{job, last_slot, outcome, error, next_slot, running_since, overdue, runs, failed, panics, missed, coalesced}]
-//	channels       [{channel, state, reason, waiting, failed, oldest_waiting, error}]  state: ok, waiting, dead
+//	channels       [{channel, state, reason, waiting, failed, oldest_waiting, error, fallback}]  state: ok, waiting, dead;
+//	                                               fallback: the channel that has taken over
 //	feeds          [{feed, file, date, at}]        the last accepted file of each
 //	last_pass      {number, started, ended, error, accepted, refused, waiting, verdicts: {FINDING: n}, flags: {KIND: n}}, or null
 //	open_flags     {KIND: n}                       those that still ask something of a person

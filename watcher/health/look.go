@@ -70,13 +70,24 @@ func (r *Report) unready() []string {
 
 func (c *Channel) troubles(now time.Time) []string {
 	var all []string
-	if c.State == ChannelDead {
-		all = append(all, fmt.Sprintf("channel %q is dead: %s", c.Name, c.Reason))
+	switch {
+	case c.State == ChannelDead:
+		all = append(all, fmt.Sprintf("channel %q is dead: %s%s", c.Name, c.Reason, c.standIn()))
+	case c.Fallback != "":
+		all = append(all, fmt.Sprintf("channel %q delivers nothing%s", c.Name, c.standIn()))
 	}
 	if age := c.age(now); age > undeliveredAfter {
 		all = append(all, fmt.Sprintf("channel %q has a notice that has waited for %v, the limit is %v", c.Name, age.Round(time.Second), undeliveredAfter))
 	}
 	return all
+}
+
+// standIn names the channel that has taken over.
+func (c *Channel) standIn() string {
+	if c.Fallback == "" {
+		return ""
+	}
+	return fmt.Sprintf(", channel %q stands in", c.Fallback)
 }
 
 // age is how long the oldest waiting notice has waited; 0 when none waits.

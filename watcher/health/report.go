@@ -77,6 +77,8 @@ type Channel struct {
 	// these began; zero when none could go yet.
 	Oldest time.Time
 	Error  string // class of the last error
+
+	Fallback string // the channel that has taken over, "" for none
 }
 
 // Feed is the last accepted file of a feed.

@@ -63,6 +63,7 @@ type (
 		Failed        int          `json:"failed"`
 		OldestWaiting *string      `json:"oldest_waiting"`
 		Error         *string      `json:"error"`
+		Fallback      *string      `json:"fallback"`
 	}
 	feedJSON struct {
 		Feed string  `json:"feed"`
@@ -108,7 +109,7 @@ func (j Job) json(now time.Time) jobJSON {
 
 func (c Channel) json() channelJSON {
 	return channelJSON{Channel: c.Name, State: c.State, Reason: text(c.Reason), Waiting: c.Waiting, Failed: c.Failed,
-		OldestWaiting: moment(c.Oldest), Error: text(c.Error)}
+		OldestWaiting: moment(c.Oldest), Error: text(c.Error), Fallback: text(c.Fallback)}
 }
 
 func (f Feed) json() feedJSON {
