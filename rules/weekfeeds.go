@@ -43,7 +43,8 @@ func (w *FeedWeek) add(o FeedWeek) {
 	w.Rows, w.Refused, w.Restated = w.Rows+o.Rows, w.Refused+o.Refused, w.Restated+o.Restated
 }
 
-func (f *WeekFacts) feed(feed *Feed) FeedFigures {
+// FeedRecord is what one feed delivered, over the weeks of the trend.
+func (f *WeekFacts) FeedRecord(feed *Feed) FeedFigures {
 	out := FeedFigures{Feed: feed.Name, Oldest: NoDate}
 	for back := TrendWeeks - 1; back >= 0; back-- {
 		span := f.Span

@@ -54,7 +54,7 @@ func (f *WeekFacts) Figures() *WeekFigures {
 	w.Waivers = f.waivers()
 	w.Runs = f.runs()
 	for i := range f.Feeds {
-		w.Feeds = append(w.Feeds, f.feed(&f.Feeds[i]))
+		w.Feeds = append(w.Feeds, f.FeedRecord(&f.Feeds[i]))
 	}
 	return w
 }

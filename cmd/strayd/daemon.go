@@ -64,6 +64,7 @@ type daemon struct {
 	signals *signals
 	kept    watcher.Resident // between passes; for whoever holds passing
 	passing chan struct{}    // full while a pass or anything else that makes notices is under way
+	desk    deskPage
 
 	mu    sync.Mutex
 	setup *setup    // the last good one
@@ -81,6 +82,7 @@ type setup struct {
 	teller *notify.Teller
 	post   *postOffice
 	jobs   []schedule.Job
+	owners map[string]string // whom the register names, by series; nil without one
 }
 
 // badSetting is an environment in which the configuration cannot be in force: a person must put it right.
@@ -160,7 +162,7 @@ func (d *daemon) prepare(c *config.Config) (*setup, error) {
 	if err != nil {
 		return nil, badSetting{err}
 	}
-	return &setup{config: c, hash: configHash(c), teller: newTeller(c, owners), post: post, jobs: jobs}, nil
+	return &setup{config: c, hash: configHash(c), teller: newTeller(c, owners), post: post, jobs: jobs, owners: owners}, nil
 }
 
 // install puts a setup in force. The channels of the one before have ended when the new ones begin: two senders of one outbox would
@@ -224,6 +226,7 @@ func (d *daemon) run(ctx context.Context, server *desk.Server, pages net.Listene
 	server.Close(stopCalls)
 	work.Wait()
 	d.inForce().post.Finish(drainMost)
+	d.desk.close()
 	stopTelling()
 	tell.Wait()
 	d.log.Info("stopped")

@@ -65,6 +65,7 @@ func (f *folder) beside() *besides {
 	f.t.Cleanup(func() { l.Close() })
 	d := &daemon{log: slog.New(slog.NewTextHandler(io.Discard, nil)), ledger: l, passing: make(chan struct{}, 1),
 		program: &app{ctx: f.t.Context(), out: io.Discard, err: io.Discard}}
+	d.beats.begun = make(chan struct{})
 	if d.setup, err = d.prepare(c); err != nil {
 		f.t.Fatal(err)
 	}

@@ -10,8 +10,8 @@ import (
 	"testing"
 )
 
-// page is what a file system of memory gives out at a time.
-const page = 4096
+// diskPage is what a file system of memory gives out at a time.
+const diskPage = 4096
 
 // smallDisk mounts a file system of so many bytes; resize changes that.
 type smallDisk struct{ path string }
@@ -62,7 +62,7 @@ func TestDiskFull(t *testing.T) {
 	}
 	var sizes []int64
 	for n := range steps { // the small files, the large one, and its last pages with the run record
-		sizes = append(sizes, least+2*n*page, (least+n*(most-least)/steps)&^(page-1), most-n*page)
+		sizes = append(sizes, least+2*n*diskPage, (least+n*(most-least)/steps)&^(diskPage-1), most-n*diskPage)
 	}
 	failed := map[string]int{}
 	for _, size := range sizes {

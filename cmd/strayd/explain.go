@@ -87,7 +87,7 @@ func findExplained(r *watcher.Reader, args []string, rangeName string) (*explain
 		return nil, err
 	}
 	if !ok {
-		return nil, fmt.Errorf("no flag has the ref %d; `strayd flags --all` lists them", ref)
+		return nil, &watcher.UnknownRef{Ref: ref}
 	}
 	if f.Series == "" {
 		return &explained{flag: &f}, nil
@@ -191,15 +191,29 @@ func (a *app) explainFile(f *rules.Flag) {
 }
 
 func (a *app) explainTable(r *watcher.Reader, e *explained) error {
-	row := &e.row
-	ref := ""
+	fmt.Fprintln(a.out, e.headline())
+	w := columns(a.out)
+	line := func(name, format string, args ...any) { fields(w, "  "+name, fmt.Sprintf(format, args...)) }
+	if err := firstError(e.evidence(line, r), w.Flush()); err != nil {
+		return err
+	}
+	fmt.Fprintln(a.out, "\n"+caution)
+	return nil
+}
+
+// headline is the verdict in a line.
+func (e *explained) headline() string {
+	row, ref := &e.row, ""
 	if e.flag != nil {
 		ref = fmt.Sprintf(", ref %d (%s, %s)", e.flag.Ref, e.flag.Kind, e.flag.Standing)
 	}
-	fmt.Fprintf(a.out, "%s  %s  for %s: %s under range %q%s\n", printable(row.Series), rules.InPercent(row.Return.Float()), row.Date.Time().Format("Monday 2006-01-02"),
-		row.Finding, row.Range, ref)
-	w := columns(a.out)
-	line := func(name, format string, args ...any) { fields(w, "  "+name, fmt.Sprintf(format, args...)) }
+	return fmt.Sprintf("%s  %s  for %s: %s under range %q%s", printable(row.Series), rules.InPercent(row.Return.Float()),
+		row.Date.Time().Format("Monday 2006-01-02"), row.Finding, row.Range, ref)
+}
+
+// evidence says, line by line, all that stands behind a verdict.
+func (e *explained) evidence(line func(name, format string, args ...any), r *watcher.Reader) error {
+	row := &e.row
 	if e.flag != nil && e.flag.Kind.Slow() {
 		line("flagged", "%s", printable(e.flag.Note))
 	}
@@ -218,7 +232,7 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 		if err != nil {
 			return err
 		}
-		a.explainWindow(line, row, e.versions[len(e.versions)-1].Step > row.Step, decided)
+		explainWindow(line, row, e.versions[len(e.versions)-1].Step > row.Step, decided)
 	}
 	for i, v := range e.versions {
 		file, err := r.File(v.Step)
@@ -231,15 +245,11 @@ func (a *app) explainTable(r *watcher.Reader, e *explained) error {
 		}
 		line(name, "%s as %s in %s, line %d (feed %s)", file.Received.Format(time.RFC3339), rules.Units(v.Value), printable(file.File.Name), v.Line, file.File.Feed)
 	}
-	if err := firstError(a.explainTurns(line, r, e.flag), w.Flush()); err != nil {
-		return err
-	}
-	fmt.Fprintln(a.out, "\n"+caution)
-	return nil
+	return explainTurns(line, r, e.flag)
 }
 
 // explainWindow says what the verdict was made of; restated: a newer version of the observation is held.
-func (a *app) explainWindow(line func(name, format string, args ...any), row *watcher.Row, restated bool, decided *rules.Act) {
+func explainWindow(line func(name, format string, args ...any), row *watcher.Row, restated bool, decided *rules.Act) {
 	if row.N > 0 {
 		line("made of", "%s from %s to %s", rules.Counted(row.N, "observation"), day(row.WindowFrom), day(row.WindowTo))
 		line("mean, deviation", "%s, %s", percentNum(row.Mean), width(row.Deviation))

@@ -64,7 +64,7 @@ func (t *turn) cells() ([]string, []cell) {
 }
 
 // explainTurns lists how a flag's standing came about.
-func (a *app) explainTurns(line func(name, format string, args ...any), r *watcher.Reader, f *rules.Flag) error {
+func explainTurns(line func(name, format string, args ...any), r *watcher.Reader, f *rules.Flag) error {
 	if f == nil {
 		return nil
 	}
@@ -99,7 +99,7 @@ func turnsJSON(r *watcher.Reader, f *rules.Flag) (string, error) {
 func (a *app) explainFileTurns(r *watcher.Reader, f *rules.Flag) error {
 	w := columns(a.out)
 	line := func(name, format string, args ...any) { fields(w, "  "+name, fmt.Sprintf(format, args...)) }
-	return firstError(a.explainTurns(line, r, f), w.Flush())
+	return firstError(explainTurns(line, r, f), w.Flush())
 }
 
 // takesWords say what the window takes of a value that it does not simply take as it is; decided is what somebody decided of the value.

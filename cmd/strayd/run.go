@@ -121,8 +121,8 @@ A flag is a statistical statement about past data: neither advice nor a finding 
 	root.PersistentFlags().StringVar(&a.configPath, "config", "strayd.yaml", "configuration `FILE`")
 	root.PersistentFlags().StringVar(&a.nowText, "now", "", "take this `TIME` for the clock: 2026-03-13 or 2026-03-13T07:00:00Z")
 	root.AddCommand(a.demoCommand(), a.initCommand(), a.checkCommand(), a.passCommand(), a.flagsCommand(), a.explainCommand(),
-		a.historyCommand(), a.rangesCommand(), a.weeklyCommand(), a.drillCommand(), a.backRunCommand(), a.runCommand(), a.noticesCommand(), a.ledgerCommand(),
-		a.acceptCommand(), a.acknowledgeCommand(), a.decideCommand(), a.waiveCommand(), a.signOffCommand())
+		a.historyCommand(), a.rangesCommand(), a.weeklyCommand(), a.drillCommand(), a.backRunCommand(), a.runCommand(), a.deskCommand(),
+		a.noticesCommand(), a.ledgerCommand(), a.acceptCommand(), a.acknowledgeCommand(), a.decideCommand(), a.waiveCommand(), a.signOffCommand())
 	a.completed(root)
 	return root
 }

@@ -16,7 +16,7 @@ func guard(h http.Handler) http.Handler {
 		case r.Method != http.MethodGet && r.Method != http.MethodHead:
 			w.Header().Set("Allow", "GET, HEAD")
 			refuse(w, http.StatusMethodNotAllowed, "only GET and HEAD are answered")
-		case !loopbackHost(r.Host):
+		case !LoopbackHost(r.Host):
 			refuse(w, http.StatusMisdirectedRequest, "the Host of a request must be localhost or a loopback address")
 		case !ownOrigin(r):
 			refuse(w, http.StatusForbidden, "requests from other origins are not answered")
@@ -37,9 +37,9 @@ func harden(h http.Header) {
 	h.Set("X-Frame-Options", "DENY")
 }
 
-// loopbackHost says whether a Host, with or without port, is localhost or a loopback address. What a name resolves to is not
+// LoopbackHost says whether a Host, with or without port, is localhost or a loopback address. What a name resolves to is not
 // asked: that is what a rebound name lies about.
-func loopbackHost(hostport string) bool {
+func LoopbackHost(hostport string) bool {
 	host, _, err := net.SplitHostPort(hostport)
 	if err != nil { // without a port
 		host = strings.TrimSuffix(strings.TrimPrefix(hostport, "["), "]")

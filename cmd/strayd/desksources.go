@@ -1,0 +1,91 @@
+package main
+
+import (
+	"bytes"
+	"context"
+	"errors"
+	"fmt"
+	"os"
+	"strconv"
+	"time"
+
+	"strayd/notify"
+	"strayd/rules"
+	"strayd/watcher"
+	"strayd/watcher/desk"
+	"strayd/watcher/health"
+	"strayd/watcher/page"
+)
+
+// pageSources hand the page what it needs of the daemon.
+func (d *daemon) pageSources() page.Sources {
+	return page.Sources{
+		Now:     time.Now,
+		View:    d.ledger.View,
+		Book:    d.pageBook,
+		Explain: evidenceOf,
+		Do:      d.doFor,
+		Expect:  d.expectFor,
+		Host:    health.LoopbackHost,
+		Log:     d.log,
+	}
+}
+
+// doFor carries a command line out for somebody at the page, as if it had come over the socket.
+func (d *daemon) doFor(ctx context.Context, who rules.Person, args []string) (ok bool, text string) {
+	var out bytes.Buffer
+	code := d.command(ctx, desk.Call{Args: args, Settings: d.inForce().hash, Who: who}, &out, &out)
+	return code == exitDone, out.String()
+}
+
+// pageBook is what the configuration in force says to the page.
+func (d *daemon) pageBook() page.Book {
+	s := d.inForce()
+	c := s.config
+	b := page.Book{Zone: c.Location, Groups: c.Groups, Feeds: c.Feeds, Business: c.Calendar.Days, Weeks: os.DirFS(weekFolder(c))}
+	if s.owners != nil {
+		b.Owner = func(series string) string { return s.owners[series] }
+	}
+	if channels, err := s.post.sender.Health(); err == nil {
+		b.Troubles = notify.Troubles(channels)
+	}
+	return b
+}
+
+// expectFor says what would be in range next for a series.
+func (d *daemon) expectFor(series string, each func(watcher.Expected) error) error {
+	s := d.inForce()
+	p, err := d.program.newPass(s.config, d.ledger)
+	if err != nil {
+		return err
+	}
+	return p.Expect(series, rules.DateFrom(p.Now.In(s.config.Location)), each)
+}
+
+// evidenceOf is what explain says of a flag; nil where there is no such flag.
+func evidenceOf(v watcher.View, ref uint64) (*page.Evidence, error) {
+	r, err := watcher.NewReader(v)
+	if err != nil {
+		return nil, err
+	}
+	e, err := findExplained(r, []string{strconv.FormatUint(ref, 10)}, "")
+	var unknown *watcher.UnknownRef
+	switch {
+	case errors.As(err, &unknown):
+		return nil, nil
+	case err != nil:
+		return nil, err
+	}
+	out := &page.Evidence{Flag: *e.flag}
+	line := func(name, format string, args ...any) {
+		out.Facts = append(out.Facts, page.Fact{Name: name, Text: fmt.Sprintf(format, args...)})
+	}
+	if e.flag.Series == "" {
+		var text bytes.Buffer
+		(&app{out: &text}).explainFile(e.flag)
+		out.Title = text.String()
+		return out, explainTurns(line, r, e.flag)
+	}
+	out.Title = e.headline()
+	return out, e.evidence(line, r)
+}
