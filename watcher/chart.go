@@ -14,26 +14,33 @@ type ChartOf struct {
 	Marked rules.Date // the date that a flag is about, NoDate for none
 	To     rules.Date // the last date shown, NoDate for the newest
 	Points int        // at most so many dates; 0 for 60
+	AsOf   uint32     // the step whose knowledge is shown; 0 for the newest
 }
 
-// ChartFor is what a chart shows of a flag: its series, and the dates up to it.
+// ChartFor is what a chart shows of a flag: its series, and the dates up to it, as they were known when it was raised.
 func ChartFor(f *rules.Flag) ChartOf {
-	return ChartOf{Series: f.Series, Range: f.Range, Marked: f.Date, To: f.Date}
+	return ChartOf{Series: f.Series, Range: f.Range, Marked: f.Date, To: f.Date, AsOf: f.Step}
 }
 
 const chartPoints = 60
 
-// Chart gathers the figures of a chart. Each date has the verdict and the lines of its newest version, as History gives them. Beside the return
+// Chart gathers the figures of a chart. Each date has the verdict and the lines of its newest version then, as History gives them. Beside the return
 // stands, under a residual range, what the reference foresaw of it; else the return of the reference, where that is a series.
 func (r *Reader) Chart(of ChartOf) (*rules.Chart, error) {
 	s, err := r.series(of.Series)
 	if err != nil {
 		return nil, err
 	}
+	if of.AsOf == 0 {
+		of.AsOf = ^uint32(0)
+	}
 	c := &rules.Chart{Series: of.Series, Marked: of.Marked, Range: of.Range}
 	from, to := s.lastDates(of.To, of.Points)
 	for n := from; n < to; n++ {
-		rows, err := r.rows(s, n, ^uint32(0), false)
+		if _, known := s.latest(n, of.AsOf); !known {
+			continue
+		}
+		rows, err := r.rows(s, n, of.AsOf, false)
 		if err != nil {
 			return nil, err
 		}
@@ -44,7 +51,7 @@ func (r *Reader) Chart(of ChartOf) (*rules.Chart, error) {
 	if len(c.Points) == 0 {
 		return nil, fmt.Errorf("series %q has no judged return to draw", of.Series)
 	}
-	return c, r.beside(s, c)
+	return c, r.beside(s, c, of.AsOf)
 }
 
 // lastDates are the places of the last dates up to one.
@@ -84,7 +91,7 @@ func pointOf(rows []Row, c *rules.Chart) (p rules.ChartPoint, ok bool) {
 const foreseen = "foreseen"
 
 // beside adds the returns of the reference, where that is a series and the chart does not say what it foresaw.
-func (r *Reader) beside(s *seriesPast, c *rules.Chart) error {
+func (r *Reader) beside(s *seriesPast, c *rules.Chart, asOf uint32) error {
 	set, err := r.settingsOf(s.versions[len(s.versions)-1].Step)
 	if err != nil || c.Reference != "" {
 		return err
@@ -100,7 +107,7 @@ func (r *Reader) beside(s *seriesPast, c *rules.Chart) error {
 	}
 	c.Reference = name
 	for n := range c.Points {
-		if v := valueOn(values, c.Points[n].Date, ^uint32(0)); v != Missing64 {
+		if v := valueOn(values, c.Points[n].Date, asOf); v != Missing64 {
 			c.Points[n].Reference = rules.Some(rules.Units(v).Float())
 		}
 	}

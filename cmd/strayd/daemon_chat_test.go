@@ -22,8 +22,8 @@ type chatService struct {
 	*httptest.Server
 	mu     sync.Mutex
 	posts  []post
-	shown  []string // pictures, as channel/thread and size
-	size   int      // of the picture that came last
+	shown  []string                      // pictures, as channel/thread and size
+	size   int                           // of the picture that came last
 	script map[string][]http.HandlerFunc // of postMessage, by channel; then it answers as the service does
 	dead   map[string]string             // error code of postMessage, by channel
 	blind  bool                          // the token may not read back what identifies messages

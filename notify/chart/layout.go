@@ -1,7 +1,7 @@
 package chart
 
 import (
-	"fmt"
+	"slices"
 
 	"gonum.org/v1/plot/font"
 	"gonum.org/v1/plot/font/liberation"
@@ -84,10 +84,10 @@ func (p *plan) frame() {
 		widest = max(widest, words.Width(t.text))
 	}
 	p.box = vg.Rectangle{Min: vg.Point{X: c.Min.X + edge + widest + 6, Y: c.Min.Y + edge + 2.7*wordSize},
-		Max: vg.Point{X: c.Max.X - edge - 6, Y: c.Max.Y - edge}}
+		Max: vg.Point{X: c.Max.X - edge - 6, Y: c.Max.Y - 2*edge}}
 	if p.heading != "" {
 		p.line(p.style(headingInk, headingSize, draw.XLeft, draw.YTop), c.Max.Y-edge, notify.Safe(p.heading, 100))
-		p.box.Max.Y -= 1.9 * headingSize
+		p.box.Max.Y -= 1.5 * headingSize
 	}
 }
 
@@ -124,10 +124,15 @@ func (p *plan) axes() {
 
 // legend says in one line what is drawn how.
 func (p *plan) legend() {
-	s := "Line: returns. Shaded: expected, darker: not even watched."
+	s := "Line: returns"
 	if p.Reference != "" {
-		s = fmt.Sprintf("Line: returns, dashed: %s. Shaded: expected.", notify.Name(p.Reference))
+		s += ", dashed: " + notify.Name(p.Reference)
 	}
+	s += ". Shaded: expected"
+	if slices.ContainsFunc(p.Points, func(q rules.ChartPoint) bool { return q.WatchLow.OK || q.WatchHigh.OK }) {
+		s += ", the inner part not even watched"
+	}
+	s += "."
 	if p.Marked != rules.NoDate {
 		s += " Ring: flagged."
 	}

@@ -15,7 +15,7 @@ import (
 )
 
 // SVG writes a chart as one element to be set into a page. It holds no script, no style and no outside reference, takes the page's colour and font,
-// and says what it shows in words. The page's style may address the classes: chart on the whole, chart-range, chart-watch, chart-edge, chart-zero,
+// and says what it shows in words. The page's style may give each class a color: chart on the whole, chart-range, chart-watch, chart-edge, chart-zero,
 // chart-return, chart-reference, chart-flag, chart-word. Id must be unique in the page, and safe in an attribute; it is "" without a point.
 func SVG(c *rules.Chart, id string, s Size) string {
 	if len(c.Points) == 0 {

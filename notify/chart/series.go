@@ -136,6 +136,10 @@ func (p *plan) mark() {
 		style.XAlign, x = draw.XLeft, at.X+11
 	}
 	y := min(max(at.Y, p.box.Min.Y+7), p.box.Max.Y-7)
+	if p.Points[n].Finding != rules.Breach { // among the other returns: above them
+		y = p.box.Max.Y + 5
+		p.canvas.StrokeLine2(draw.LineStyle{Color: flagInk, Width: 0.8}, at.X, y-7, at.X, at.Y+7)
+	}
 	p.canvas.FillText(style, vg.Point{X: x, Y: y}, words)
 }
 

@@ -18,10 +18,14 @@ import (
 const quitMost = 2 * time.Second
 
 // Post makes one attempt. The receipt is the Message-ID.
-func (m *Mailer) Post(ctx context.Context, n rules.Notice) (string, error) { return m.PostWith(ctx, n, nil) }
+func (m *Mailer) Post(ctx context.Context, n rules.Notice) (string, error) {
+	return m.PostWith(ctx, n, nil)
+}
 
 // PostPlain makes one attempt without a picture, which the server may have found too large.
-func (m *Mailer) PostPlain(ctx context.Context, n rules.Notice) (string, error) { return m.PostWith(ctx, n, nil) }
+func (m *Mailer) PostPlain(ctx context.Context, n rules.Notice) (string, error) {
+	return m.PostWith(ctx, n, nil)
+}
 
 // PostWith is Post with a picture in the mail, nil for none.
 func (m *Mailer) PostWith(ctx context.Context, n rules.Notice, p *notify.Picture) (string, error) {

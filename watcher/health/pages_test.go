@@ -74,7 +74,9 @@ func TestPagesRefuseForTheirOwnReasons(t *testing.T) {
 		{"reload refused", func(r *Report) { r.Configuration.Error, r.Configuration.ErrorAt = "strayd.yaml:3:1: unknown key", noon }, "", ""},
 		{"channel waits", func(r *Report) { r.Channels[0].State, r.Channels[0].Reason = ChannelWaiting, "rate limit" }, "", ""},
 		{"channel dead", func(r *Report) { r.Channels[0].State, r.Channels[0].Reason = ChannelDead, "invalid_auth" }, "/healthy", `channel "desk" is dead: invalid_auth`},
-		{"dead with a fallback", func(r *Report) { r.Channels[0].State, r.Channels[0].Reason, r.Channels[0].Fallback = ChannelDead, "invalid_auth", "ops" },
+		{"dead with a fallback", func(r *Report) {
+			r.Channels[0].State, r.Channels[0].Reason, r.Channels[0].Fallback = ChannelDead, "invalid_auth", "ops"
+		},
 			"/healthy", `channel "desk" is dead: invalid_auth, channel "ops" stands in`},
 		{"fallback took over", func(r *Report) { r.Channels[0].State, r.Channels[0].Fallback = ChannelWaiting, "ops" }, "/healthy",
 			`channel "desk" delivers nothing, channel "ops" stands in`},
