@@ -62,7 +62,7 @@ func (a *app) load() (*config.Config, error) {
 	}
 	c, err := config.Load(a.configPath, configOptions())
 	if errors.Is(err, os.ErrNotExist) {
-		fmt.Fprintf(a.err, "strayd: no configuration %s here; name yours with --config, or begin with `strayd check --example > %s`\n", a.configPath, a.configPath)
+		fmt.Fprintf(a.err, "strayd: no configuration %s here; name yours with --config, or have one written with `strayd init FILE...` from sample files\n", a.configPath)
 		return nil, quiet{exitConfig}
 	}
 	return c, err

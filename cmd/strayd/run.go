@@ -23,6 +23,9 @@ const (
 	exitConfig  = 78
 )
 
+// defaultConfig is the configuration that a command goes by when none is named.
+const defaultConfig = "strayd.yaml"
+
 // quiet is an error whose words have been printed already; only its exit code is left.
 type quiet struct{ code int }
 
@@ -103,8 +106,8 @@ flags what strayed, and keeps the record.
 
 A flag is a statistical statement about past data: neither advice nor a finding of error; no flag is no certificate.`,
 		Example: `  strayd demo                       a small invented book, judged from start to end
-  strayd check --example            a configuration to begin with
-  strayd init                       make the ledger that the configuration names
+  strayd init inbox/*.csv           write a configuration from sample files, and make the ledger
+  strayd check                      how the files are understood, and what each line means
   strayd pass                       read what has arrived, judge it, say what strayed
   strayd flags                      the flags that still ask something of a person
   strayd explain 12                 every figure behind a flag`,
@@ -118,7 +121,7 @@ A flag is a statistical statement about past data: neither advice nor a finding 
 		RunE: func(cmd *cobra.Command, _ []string) error { return cmd.Help() },
 	}
 	inWords(root)
-	root.PersistentFlags().StringVar(&a.configPath, "config", "strayd.yaml", "configuration `FILE`")
+	root.PersistentFlags().StringVar(&a.configPath, "config", defaultConfig, "configuration `FILE`")
 	root.PersistentFlags().StringVar(&a.nowText, "now", "", "take this `TIME` for the clock: 2026-03-13 or 2026-03-13T07:00:00Z")
 	root.AddCommand(a.demoCommand(), a.initCommand(), a.checkCommand(), a.passCommand(), a.flagsCommand(), a.explainCommand(),
 		a.historyCommand(), a.rangesCommand(), a.weeklyCommand(), a.drillCommand(), a.backRunCommand(), a.runCommand(), a.deskCommand(),
