@@ -77,14 +77,18 @@ func told(t *testing.T, m *memory) (out []string) {
 	t.Helper()
 	v, _ := m.View()
 	if err := v.Flags(true, func(f rules.Flag) bool {
-		out = append(out, fmt.Sprintf("%s %s %s%s %s %s %v %v %v %s ref %q %v %v: %s", f.Date, f.Series, f.Group, f.Range, f.Kind, f.LooksLike, f.Share, f.Implied,
-			f.Return, fmt.Sprint(f.Low, f.High, f.Z, f.Tail), f.Reference, f.ReferenceReturn, f.Residual, f.Note))
+		out = append(out, toldOf(&f))
 		return true
 	}); err != nil {
 		t.Fatal(err)
 	}
 	slices.Sort(out)
 	return out
+}
+
+func toldOf(f *rules.Flag) string {
+	return fmt.Sprintf("%s %s %s%s %s %s %v %v %v %s ref %q %v %v: %s", f.Date, f.Series, f.Group, f.Range, f.Kind, f.LooksLike, f.Share, f.Implied,
+		f.Return, fmt.Sprint(f.Low, f.High, f.Z, f.Tail), f.Reference, f.ReferenceReturn, f.Residual, f.Note)
 }
 
 // taken lists every used value that differs from its return, as it stands.
