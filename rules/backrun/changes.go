@@ -53,12 +53,13 @@ func (c *Comparison) Changes() (out []Change, kept int) {
 	return out, kept
 }
 
-// issued are the ledger's flags of the compared dates and kinds.
+// issued are the ledger's flags of the compared dates and kinds, and those of restated values that were decided.
 func (c *Comparison) issued() map[subject]*rules.Flag {
 	out := map[subject]*rules.Flag{}
 	for i := range c.Issued {
 		f := &c.Issued[i]
-		if _, in := slices.BinarySearch(c.Dates, f.Date); !in || !slices.Contains(Kinds, f.Kind) {
+		about := slices.Contains(Kinds, f.Kind) || f.Kind == rules.KindRestated && f.Decided != nil
+		if _, in := slices.BinarySearch(c.Dates, f.Date); !in || !about {
 			continue
 		}
 		if old := out[subjectOf(f)]; old == nil || old.Decided == nil && f.Decided != nil {
