@@ -29,7 +29,7 @@ func (p *Past) Judge(ctx context.Context, r BackRun) (*backrun.Side, error) {
 	s.Ranges = slices.Clone(s.Ranges)
 	resolveBudgets(&s, p.recorded, p.Series)
 	store := numbered(&s, len(p.terms) > 0)
-	pass := &Pass{Store: store, Settings: s, Now: r.Now, Workers: r.Workers, Progress: r.Progress}
+	pass := &Pass{Store: store, Settings: s, Now: r.Now, Workers: r.Workers, Progress: r.Progress, again: &p.weighed}
 	j := &judging{names: p.names, newest: p.last(), now: r.Now, step: 1, nextRef: 1, decidedOn: p.decided}
 	if err := pass.prepare(j, store); err != nil {
 		return nil, err
@@ -59,6 +59,26 @@ func (p *Past) last() rules.Date {
 		return rules.NoDate
 	}
 	return p.Dates[len(p.Dates)-1]
+}
+
+// weighedOnce is what a pool said of a past: the next back-run takes it up where it would say the same, since lines change nothing about it.
+type weighedOnce struct {
+	said      *weighed
+	doubtful  float64
+	residuals bool // are there
+}
+
+func (o *weighedOnce) weighs(c *crew, j *judging, doubtful float64) *weighed {
+	if o == nil || o.said == nil || o.doubtful != doubtful || j.ofResiduals() && !o.residuals || !o.said.crew.same(c) {
+		return nil
+	}
+	return o.said
+}
+
+func (o *weighedOnce) keep(said *weighed, j *judging, doubtful float64) {
+	if o != nil && said != nil {
+		o.said, o.doubtful, o.residuals = said, doubtful, j.ofResiduals()
+	}
 }
 
 // backCount gathers what the workers of a back-run count.

@@ -54,6 +54,9 @@ func TestBackRunSaysWhatThePassesSaid(t *testing.T) {
 			takeRows(t, m, rows[260:], 1, settings)
 			batches := fmt.Sprintf("%+v", m.batches)
 			p := pastOf(t, m)
+			for _, before := range otherSettings(settings) { // what a back-run keeps for the next must not show there
+				backRun(t, p, before, 2)
+			}
 			for _, workers := range []int{1, 3} {
 				got := toldBy(backRun(t, p, settings, workers))
 				if len(got) < 20 {
@@ -66,6 +69,13 @@ func TestBackRunSaysWhatThePassesSaid(t *testing.T) {
 			}
 		}
 	}
+}
+
+// otherSettings are some for which a pool would say something else, or the same about less.
+func otherSettings(s rules.Settings) []rules.Settings {
+	apart, strict, fewer := s, s, s
+	apart.Groups, strict.Doubtful, fewer.Ranges = nil, 0.05, s.Ranges[:1]
+	return []rules.Settings{apart, strict, fewer}
 }
 
 // The same for ranges of every scale, tail and side, and for values that cover several business days.

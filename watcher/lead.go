@@ -47,6 +47,7 @@ type leader struct {
 
 	j        *judging
 	view     View
+	progress Progress          // nil: not told
 	released bool              // a person released the file
 	blocks   map[uint32][]*day // what the file changes
 
@@ -67,7 +68,11 @@ func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 	if crew == nil {
 		return nil, nil
 	}
+	if w := p.again.weighs(crew, j, p.Settings.Doubtful); w != nil {
+		return w, nil
+	}
 	l := newLeader(crew, j, v)
+	l.progress = p.progress("weighing")
 	l.released = p.Released[j.file.SHA256]
 	for _, b := range blocks {
 		if _, ok := slices.BinarySearch(crew.blocks, b.number); ok {
@@ -94,6 +99,7 @@ func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 	if p.led = l; err != nil {
 		p.led = nil
 	}
+	p.again.keep(out, j, p.Settings.Doubtful)
 	return out, err
 }
 
@@ -240,6 +246,9 @@ func (l *leader) lead(todo []rules.Date) (*weighed, error) {
 			}
 			r.Foreseen, r.Reference = nil, nil
 			out.days[d] = day
+		}
+		if l.progress != nil {
+			l.progress(int64(n+1), int64(len(dates)))
 		}
 	}
 	out.conclude(l.j.held)

@@ -46,9 +46,10 @@ type Pass struct {
 	gateText   string               // see gateKey
 	taken      map[string][]FileRow // the newest accepted files of each feed that brought something new, in their order
 	row        PassRow
-	slow       slowPast   // of the weeks checked before
-	release    *releasing // the one file to take, because a person released it; nil for all
-	led        *leader    // that of the step before
+	slow       slowPast     // of the weeks checked before
+	release    *releasing   // the one file to take, because a person released it; nil for all
+	led        *leader      // that of the step before
+	again      *weighedOnce // of a back-run, else nil
 
 	newWeigher func([]causes.Member, []string, float64) weigher // nil for the real one
 }

@@ -8,7 +8,7 @@ import (
 )
 
 // Past is everything that a ledger holds, in memory, to be judged again under any settings: the newest version of every value, and what
-// persons decided of these. It is only read once it is there.
+// persons decided of these. One back-run at a time.
 type Past struct {
 	Dates  []rules.Date // on which something is held, ascending
 	Series int
@@ -20,6 +20,7 @@ type Past struct {
 	terms    []CellTerms
 	decided  map[rules.Date][]decidedValue // by series
 	recorded *rules.Settings               // newest in the ledger
+	weighed  weighedOnce
 }
 
 // decidedValue is what a person decided of a value as it stands.
