@@ -11,6 +11,7 @@ type Delivery struct {
 	Expected int     // series that the files before brought regularly and that should have a value on the date
 	Missing  Naming  // of them, those that have none
 	Tail     bool    // they are all that usually follow the last one that came
+	Whole    bool    // and they are those of whole groups
 	Chance   float64 // that all of them are missing by themselves, by how often each was before
 	Last     string  // that one
 	Idle     bool    // the file changes nothing
@@ -39,10 +40,11 @@ func Absence(came, files int) float64 {
 	return (float64(max(0, files-came)) + 0.5) / (float64(files) + 1)
 }
 
-// Refuse refuses a file that breaks off; nil when it does not. Series that are missing here and there do not refuse it.
+// Refuse refuses a file that breaks off; nil when it does not. Series that are missing here and there do not refuse it, nor do whole groups: a
+// holiday of theirs looks so.
 func (d *Delivery) Refuse() *Refusal {
 	ask := "ask the provider to send it whole; accept the file if this is all there is"
-	if n := d.Missing.Count; d.Tail && d.Chance < cutChance && float64(d.Expected-n) < cutShort*float64(d.Expected) {
+	if n := d.Missing.Count; d.Tail && !d.Whole && d.Chance < cutChance && float64(d.Expected-n) < cutShort*float64(d.Expected) {
 		return &Refusal{Date: d.Date,
 			Why: fmt.Sprintf("it breaks off after %s: %d of %d expected series, all that usually follow, are not in it: %s", d.Last, n, d.Expected, &d.Missing), Ask: ask}
 	}

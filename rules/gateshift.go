@@ -9,13 +9,32 @@ import (
 
 // Follower is one series of a file beside a reference that another feed brings: how it followed it before, and both on the date.
 type Follower struct {
-	Return       float64
-	Here, Before float64 // the reference on the date, and on the date before
-	Line         FitLine
+	Return                float64
+	Here, Before, Earlier float64 // the reference on the date, on the date before, and on the one before that
+	Line                  FitLine
 }
 
-// FitLine is a least-squares line of a series on its reference.
-type FitLine struct{ Intercept, Slope, Deviation float64 }
+// Followers are the series that are held against one reference.
+type Followers struct {
+	List []Follower
+	// Alike is how much of what the reference leaves they have in common: the variance of the mean of their residuals, each in its deviation, on the
+	// dates before. 1/len(List) where they have nothing in common.
+	Alike float64
+}
+
+// weight is what each follower counts for where they move alike beyond the reference: together no more than as many that do not.
+func (f *Followers) weight() float64 {
+	return min(1, 1/(float64(len(f.List))*max(f.Alike, 1e-3)))
+}
+
+// FitLine is a least-squares plane of a series on its reference on the same date and on the date before: funds priced partly on yesterday's
+// market follow both.
+type FitLine struct{ Intercept, Slope, Lag, Deviation float64 }
+
+// At is what the line foresees of a reference's returns on a date and on the one before.
+func (l FitLine) At(x, before float64) float64 {
+	return l.Intercept + float64(l.Slope*x) + float64(l.Lag*before)
+}
 
 const (
 	leastPairs  = 40  // for a line
@@ -26,83 +45,90 @@ const (
 	shiftAll    = 10  // and that of all of them together
 )
 
-// Fit draws the least-squares line of y on x, without the pairs that lie far off a first one; ok is false when there are too few or x
-// does not vary. Deviation has the divisor n-2.
-func Fit(x, y []float64) (line FitLine, ok bool) {
-	line, ok = leastSquares(x, y)
+// Pair is a return with its reference's returns of the date and of the one before.
+type Pair struct{ X, Before, Y float64 }
+
+// Fit draws the least-squares plane, without the pairs that lie far off a first one; ok is false when there are too few or the reference
+// does not vary. Deviation has the divisor n-3.
+func Fit(pairs []Pair) (line FitLine, ok bool) {
+	line, ok = leastSquares(pairs)
 	if !ok || line.Deviation == 0 {
 		return line, ok
 	}
-	sizes := make([]float64, len(x))
-	for i := range x {
-		sizes[i] = math.Abs(line.residual(x[i], y[i]))
+	sizes := make([]float64, len(pairs))
+	for i, p := range pairs {
+		sizes[i] = math.Abs(p.Y - line.At(p.X, p.Before))
 	}
 	typical, _ := stats.Median(sizes)
-	var nearX, nearY []float64
-	for i := range x {
+	var near []Pair
+	for i, p := range pairs {
 		if sizes[i] <= trimmed*1.4826*typical {
-			nearX, nearY = append(nearX, x[i]), append(nearY, y[i])
+			near = append(near, p)
 		}
 	}
-	if len(nearX) == len(x) {
+	if len(near) == len(pairs) {
 		return line, true
 	}
-	return leastSquares(nearX, nearY)
+	return leastSquares(near)
 }
 
-func (l FitLine) residual(x, y float64) float64 { return y - l.Intercept - float64(l.Slope*x) }
-
-func leastSquares(x, y []float64) (line FitLine, ok bool) {
-	n := float64(len(x))
-	if len(x) < leastPairs {
+// leastSquares solves the two normal equations about the means.
+func leastSquares(pairs []Pair) (line FitLine, ok bool) {
+	n := float64(len(pairs))
+	if len(pairs) < leastPairs {
 		return line, false
 	}
-	var meanX, meanY, xx, xy, ee float64
-	for i := range x {
-		meanX += x[i] / n
-		meanY += y[i] / n
+	var mean Pair
+	for _, p := range pairs {
+		mean.X, mean.Before, mean.Y = mean.X+p.X/n, mean.Before+p.Before/n, mean.Y+p.Y/n
 	}
-	for i := range x {
-		xx += float64((x[i] - meanX) * (x[i] - meanX))
-		xy += float64((x[i] - meanX) * (y[i] - meanY))
+	var xx, bb, xb, xy, by float64
+	for _, p := range pairs {
+		x, b, y := p.X-mean.X, p.Before-mean.Before, p.Y-mean.Y
+		xx, bb, xb, xy, by = xx+float64(x*x), bb+float64(b*b), xb+float64(x*b), xy+float64(x*y), by+float64(b*y)
 	}
-	if xx == 0 {
+	det := float64(xx*bb) - float64(xb*xb)
+	if det <= 1e-9*float64(xx*bb) {
 		return line, false
 	}
-	line.Slope = xy / xx
-	line.Intercept = meanY - float64(line.Slope*meanX)
-	for i := range x {
-		e := line.residual(x[i], y[i])
+	line.Slope = (float64(bb*xy) - float64(xb*by)) / det
+	line.Lag = (float64(xx*by) - float64(xb*xy)) / det
+	line.Intercept = mean.Y - float64(line.Slope*mean.X) - float64(line.Lag*mean.Before)
+	ee := 0.0
+	for _, p := range pairs {
+		e := p.Y - line.At(p.X, p.Before)
 		ee += float64(e * e)
 	}
-	line.Deviation = math.Sqrt(ee / (n - 2))
+	line.Deviation = math.Sqrt(ee / (n - 3))
 	return line, true
 }
 
 // RefuseShift refuses a file whose values fit the references of the date before and not those of the date; nil when they do not, or when a
 // reference has no part in it. Each reference's followers are one slice: one that fits its own date speaks against a shift, so that a
 // reference which is wrong by itself does not make the file look wrong.
-func RefuseShift(date, before Date, byReference [][]Follower) *Refusal {
-	gain, n := 0.0, 0
+func RefuseShift(date, before Date, byReference []Followers) *Refusal {
+	gain, n, counted := 0.0, 0, 0.0
 	var here, there []float64
 	for _, followers := range byReference {
 		own := 0.0
-		for _, f := range followers {
+		for _, f := range followers.List {
 			if f.Line.Deviation <= 0 {
 				continue
 			}
-			h, b := f.Line.residual(f.Here, f.Return)/f.Line.Deviation, f.Line.residual(f.Before, f.Return)/f.Line.Deviation
+			h := (f.Return - f.Line.At(f.Here, f.Before)) / f.Line.Deviation
+			b := (f.Return - f.Line.At(f.Before, f.Earlier)) / f.Line.Deviation
 			own += logT5(b) - logT5(h)
 			here, there = append(here, math.Abs(h)), append(there, math.Abs(b))
 		}
-		if own < -shiftEach*float64(len(followers)) {
+		if own < -shiftEach*float64(len(followers.List)) {
 			return nil
 		}
-		gain, n = gain+own, n+len(followers)
+		weight := followers.weight()
+		gain, n, counted = gain+weight*own, n+len(followers.List), counted+weight*float64(len(followers.List))
 	}
 	fits, _ := stats.Median(there)
 	off, _ := stats.Median(here)
-	if n < leastFollow || gain < max(shiftAll, shiftEach*float64(n)) || fits > shiftFits || fits >= off {
+	if n < leastFollow || gain < max(shiftAll, shiftEach*counted) || fits > shiftFits || fits >= off {
 		return nil
 	}
 	return &Refusal{Date: date, LooksLike: CauseShifted, Ask: "ask the provider for which day the values are",

@@ -235,9 +235,29 @@ func (g *fileGate) delivery(before []delivered, came []uint8, last rules.Date) (
 		}
 	}
 	if d.Tail = first > newest && newest >= 0; d.Tail {
-		d.Last = g.name(uint32(newest))
+		d.Last, d.Whole = g.name(uint32(newest)), g.wholeGroups(newest, came, len(before))
 	}
 	return d, nil
+}
+
+// wholeGroups says that the series which follow the last one that came are those of whole groups: it may be a holiday of theirs.
+func (g *fileGate) wholeGroups(newest int, came []uint8, files int) bool {
+	m := g.j.members
+	if m.Groupless() {
+		return false
+	}
+	absent := map[string]bool{}
+	for id := newest + 1; id < len(came); id++ {
+		if rules.Regular(int(came[id]), files) {
+			absent[m.Group(g.name(uint32(id)))] = true
+		}
+	}
+	for id := 0; id <= newest; id++ {
+		if rules.Regular(int(came[id]), files) && absent[m.Group(g.name(uint32(id)))] {
+			return false
+		}
+	}
+	return !absent[""]
 }
 
 // mark notes which of a block's series have a value.

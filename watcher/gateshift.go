@@ -206,37 +206,79 @@ func (g *grid) newestWith(pairs []follow) int {
 	return -1
 }
 
-// byReference draws the line of every follower whose reference has a value on the last date and on the one before.
-func (g *grid) byReference(pairs []follow, before int) (out [][]rules.Follower) {
+// byReference draws the line of every follower whose reference has a value on the last date and on the two before.
+func (g *grid) byReference(pairs []follow, before int) []rules.Followers {
+	var out []*followers
 	at := map[uint32]int{}
 	last := len(g.dates) - 1
 	for _, p := range pairs {
 		y, x := g.of(p.series), g.of(p.reference)
-		if y[last] == Missing64 || x[last] == Missing64 || x[before] == Missing64 {
-			continue
-		}
-		line, ok := fitOf(x[:last], y[:last])
-		if !ok {
+		if before < 1 || y[last] == Missing64 || x[last] == Missing64 || x[before] == Missing64 || x[before-1] == Missing64 {
 			continue
 		}
 		n, known := at[p.reference]
 		if !known {
 			n = len(out)
 			at[p.reference] = n
-			out = append(out, nil)
+			out = append(out, &followers{sum: make([]float64, last), counted: make([]int, last)})
 		}
-		out[n] = append(out[n], rules.Follower{Return: rules.Units(y[last]).Float(), Here: rules.Units(x[last]).Float(),
-			Before: rules.Units(x[before]).Float(), Line: line})
+		out[n].add(x, y, before)
 	}
-	return out
+	var all []rules.Followers
+	for _, f := range out {
+		f.Alike = f.alike()
+		all = append(all, f.Followers)
+	}
+	return all
 }
 
-func fitOf(x, y []int64) (rules.FitLine, bool) {
-	var xs, ys []float64
-	for n := range x {
-		if x[n] != Missing64 && y[n] != Missing64 {
-			xs, ys = append(xs, rules.Units(x[n]).Float()), append(ys, rules.Units(y[n]).Float())
+// followers gathers those of one reference, with the sum of their residuals by date.
+type followers struct {
+	rules.Followers
+	sum     []float64
+	counted []int
+}
+
+// add draws the line of one of them, where there are dates enough.
+func (f *followers) add(x, y []int64, before int) {
+	last := len(f.sum)
+	var list []rules.Pair
+	on := make([]int, 0, last)
+	for n := 1; n < last; n++ {
+		if x[n] != Missing64 && x[n-1] != Missing64 && y[n] != Missing64 {
+			list = append(list, rules.Pair{X: fraction(x[n]), Before: fraction(x[n-1]), Y: fraction(y[n])})
+			on = append(on, n)
 		}
 	}
-	return rules.Fit(xs, ys)
+	line, ok := rules.Fit(list)
+	if !ok {
+		return
+	}
+	f.List = append(f.List, rules.Follower{Return: fraction(y[last]), Here: fraction(x[last]), Before: fraction(x[before]), Earlier: fraction(x[before-1]),
+		Line: line})
+	if line.Deviation <= 0 {
+		return
+	}
+	for k, p := range list {
+		z := (p.Y - line.At(p.X, p.Before)) / line.Deviation
+		f.sum[on[k]] += min(max(z, -farResidual), farResidual)
+		f.counted[on[k]]++
+	}
+}
+
+// farResidual is how many deviations a residual counts for at most.
+const farResidual = 4
+
+func fraction(v int64) float64 { return rules.Units(v).Float() }
+
+// alike is the mean square of the mean residual of a date.
+func (f *followers) alike() float64 {
+	n, square := 0, 0.0
+	for t, of := range f.counted {
+		if of > 0 {
+			mean := f.sum[t] / float64(of)
+			n, square = n+1, square+float64(mean*mean)
+		}
+	}
+	return square / float64(max(n, 1))
 }

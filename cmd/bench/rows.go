@@ -31,6 +31,7 @@ func rowList() []row {
 		{"age", (*bench).age},
 		{"drill", (*bench).drills},
 		{"regimes", (*bench).regimes},
+		{"honest", (*bench).honest},
 	}
 }
 

@@ -17,6 +17,7 @@ func (p *Pool) Clone() *Pool {
 			days[t].bins = slices.Clone(days[t].bins)
 		}
 	}
+	c.alike = slices.Clone(p.alike)
 	c.happens = slices.Clone(p.happens)
 	c.scratch = scratch{}
 	return &c

@@ -35,6 +35,7 @@ type Pool struct {
 	happens []float64 // by group: how often something happens
 
 	shift shift
+	alike []alike // by place in benchmarks
 
 	scratch
 }
@@ -76,6 +77,7 @@ func NewPool(members []Member, groups []string, doubtful float64) *Pool {
 	for i := range members {
 		if len(p.followers[i]) > 0 {
 			p.benchmarks = append(p.benchmarks, i)
+			p.alike = append(p.alike, newAlike())
 		}
 	}
 	p.odds = make([]histogram, len(groups)+2)
@@ -221,6 +223,9 @@ func (p *Pool) followed(i int, d Day) bool {
 // close takes today's values into the windows.
 func (p *Pool) close(d Day) {
 	judged := p.odds[:len(p.odds):len(p.odds)]
+	for k := range p.alike {
+		p.alike[k].learn(p.t)
+	}
 	for i := range p.members {
 		st, lk := &p.states[i], &p.looks[i]
 		if h := &st.held; h.is {

@@ -27,8 +27,8 @@ type shift struct {
 type shiftDay struct{ late, early, contradicted bool }
 
 // offDates works out how much better a benchmark's followers fit its return of yesterday, and how much better their values of yesterday fit
-// its return of today.
-func (p *Pool) offDates(c *contradiction) {
+// its return of today. weight is what each of them counts for.
+func (p *Pool) offDates(c *contradiction, weight float64) {
 	m1 := p.states[c.benchmark].yesterday // also where it was thought to be wrong
 	if m1 != m1 {
 		return
@@ -58,6 +58,7 @@ func (p *Pool) offDates(c *contradiction) {
 			c.early += p.gain(i, x, before, st.fit.at(lk.m, m1))
 		}
 	}
+	c.late, c.early = float64(weight*c.late), float64(weight*c.early)
 }
 
 // gain is the logarithm of how much better a return fits one centre than another.
@@ -102,13 +103,26 @@ func (p *Pool) shifted() bool {
 	return now.late || now.early
 }
 
-// repeated says that a member's value is yesterday's again.
-func (p *Pool) repeated(i int) bool { return p.looks[i].mark&(markRepeat|markZero) != 0 }
+// repeated says that a member's value is yesterday's again, or zero, which is no habit of it.
+func (p *Pool) repeated(i int) bool {
+	st := &p.states[i]
+	switch {
+	case p.looks[i].mark&markZero != 0:
+		return !usually(st.zeros, st.seen)
+	case p.looks[i].mark&markRepeat != 0:
+		return !usually(st.repeats, st.seen)
+	}
+	return false
+}
+
+// usually says that more than a tenth of a series' days are so.
+func usually(c coincidence, of int) bool { return 10*c.days > of }
 
 // setAside reports the members whose values belong to another date, with all that came by the same feed, and holds them against nothing.
 func (p *Pool) setAside(r *Result) {
 	feeds := map[string]bool{}
 	for _, c := range p.contra {
+		p.alike[c.at].today = math.NaN()
 		if c.late <= 0 && c.wrong <= 0 {
 			continue
 		}

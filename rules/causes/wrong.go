@@ -22,6 +22,7 @@ type implied struct{ m, dev float64 }
 // contradiction is what the followers of a benchmark say against it.
 type contradiction struct {
 	benchmark, followers int
+	at                   int     // of the benchmark among them
 	agreed               float64 // the return they agree on
 	wrong                float64 // log odds that the benchmark is wrong
 	late                 float64 // log odds, before any prior, that their values are those of the date before
@@ -33,7 +34,7 @@ type contradiction struct {
 // contradictions finds the references that do not fit, and files that are a day off. The followers are then held against their own past.
 func (p *Pool) contradictions(r *Result) {
 	p.contra = p.contra[:0]
-	for _, b := range p.benchmarks {
+	for k, b := range p.benchmarks {
 		if x := p.looks[b].x; x != x {
 			continue
 		}
@@ -41,9 +42,11 @@ func (p *Pool) contradictions(r *Result) {
 		if len(said) < leastFollowers {
 			continue
 		}
-		c := contradiction{benchmark: b, followers: len(said)}
-		c.agreed, c.wrong = p.disagreement(said, p.looks[b].x)
-		p.offDates(&c)
+		c := contradiction{benchmark: b, at: k, followers: len(said)}
+		a := &p.alike[k]
+		a.today = p.inCommon(b)
+		c.agreed, c.wrong = p.disagreement(said, p.looks[b].x, a)
+		p.offDates(&c, a.weight(len(said)))
 		p.contra = append(p.contra, c)
 	}
 	if p.shifted() {
@@ -60,6 +63,7 @@ func (p *Pool) contradictions(r *Result) {
 func (p *Pool) wrong(c contradiction, r *Result) {
 	st := &p.states[c.benchmark]
 	st.isOut, st.isWrong = true, true
+	p.alike[c.at].today = math.NaN()
 	r.Wrong = append(r.Wrong, WrongSeries{Member: c.benchmark, Followers: c.followers, Implied: rules.Some(c.agreed)})
 	for _, i := range p.followers[c.benchmark] {
 		p.alone(i)
@@ -90,21 +94,20 @@ func (p *Pool) say(i int) (v implied, ok bool) {
 }
 
 // disagreement is the return that followers agree on, their weighted median, and the logarithm of the odds that the reference is wrong.
-func (p *Pool) disagreement(said []implied, m float64) (agreed, odds float64) {
+func (p *Pool) disagreement(said []implied, m float64, a *alike) (agreed, odds float64) {
 	agreed = weightedMedian(said)
-	odds = math.Log(priorWrong)
-	agree := 0
+	gains, agree := 0.0, 0
 	for _, v := range said {
 		gain := better((v.m-agreed)/v.dev, (v.m-m)/v.dev)
-		odds += gain
+		gains += gain
 		if gain > 1 {
 			agree++
 		}
 	}
-	if 2*agree < len(said) || agree < leastFollowers {
+	if 2*agree < len(said) || agree < leastFollowers || a.usual(len(said)) {
 		return agreed, math.Inf(-1)
 	}
-	return agreed, odds
+	return agreed, math.Log(priorWrong) + float64(a.weight(len(said))*gains)
 }
 
 // better is the logarithm of how much likelier one distance is than another, in deviations. A follower may be wrong itself: a small share of a
