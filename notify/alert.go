@@ -68,10 +68,7 @@ func subject(f *rules.FlagNews) string {
 }
 
 func refWords(e event) string {
-	var refs []string
-	for _, f := range e {
-		refs = append(refs, fmt.Sprint(f.Ref))
-	}
+	refs := strings.Fields(words(e))
 	if len(refs) == 1 {
 		return "ref " + refs[0]
 	}
@@ -172,11 +169,30 @@ func (t *Teller) arrivalLine(f *rules.FlagNews, at time.Time) string {
 	return ""
 }
 
+// answerLine says how to answer: what to look at, and the command that settles it. A flag that is about no single value can only be seen to.
 func answerLine(e event) string {
-	if e[0].Kind == rules.KindLate {
-		return fmt.Sprintf("What has come: strayd explain %d", e[0].Ref)
+	refs, first := words(e), e[0].Ref
+	switch kind := e[0].Kind; {
+	case kind == rules.KindLate:
+		return fmt.Sprintf("What has come: strayd explain %d. Seen to: strayd acknowledge %s", first, refs)
+	case kind == rules.KindRefused:
+		return fmt.Sprintf("What is behind it: strayd explain %d. Right as it is: strayd accept FILE --note WHY. Seen to: strayd acknowledge %s", first, refs)
+	case kind == rules.KindMarketDay:
+		return fmt.Sprintf("What is behind it: strayd explain %d. Answer: strayd decide REFS genuine --reason market-move --note WHY", first)
+	case slices.Contains(rules.Concluded, kind):
+		return fmt.Sprintf("What is behind it: strayd explain %d. Answer: strayd decide %s genuine | error | corrected VALUE --reason WHY --note TEXT",
+			first, refs)
 	}
-	return fmt.Sprintf("What is behind it: strayd explain %d", e[0].Ref)
+	return fmt.Sprintf("What is behind it: strayd explain %d. Seen to: strayd acknowledge %s", first, refs)
+}
+
+// words are the refs of an event as a command takes them.
+func words(e event) string {
+	var refs []string
+	for _, f := range e {
+		refs = append(refs, fmt.Sprint(f.Ref))
+	}
+	return strings.Join(refs, " ")
 }
 
 func upperFirst(s string) string {

@@ -39,15 +39,7 @@ func refWords(refs []uint64) string {
 
 // flagWords say what a flag is about.
 func flagWords(f *rules.Flag) string {
-	s := string(f.Kind)
-	switch {
-	case f.Series != "":
-		s += " " + printable(f.Series)
-	case f.Group != "":
-		s += " group " + printable(f.Group)
-	default:
-		s += " " + printable(strings.TrimSuffix(f.Feed+": "+f.File, ": "))
-	}
+	s := string(f.Kind) + " " + printable(flagSubject(f))
 	if f.Return != rules.Missing {
 		s += " " + rules.InPercent(f.Return.Float())
 	}
@@ -55,6 +47,17 @@ func flagWords(f *rules.Flag) string {
 		s += " for " + f.Date.Day()
 	}
 	return s
+}
+
+// flagSubject is the series, the group, or the feed with its file that a flag is about.
+func flagSubject(f *rules.Flag) string {
+	switch {
+	case f.Series != "":
+		return f.Series
+	case f.Group != "":
+		return "group " + f.Group
+	}
+	return strings.TrimSuffix(f.Feed+": "+f.File, ": ")
 }
 
 // actWords say what else an act says beside the standing that it leads to.

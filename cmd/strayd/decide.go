@@ -25,20 +25,24 @@ type deed struct {
 	reason, note, override, until string
 }
 
-func (a *app) acknowledgeCommand() *cobra.Command {
+// settling completes a command that does one deed about flags, and gives what its options say.
+func (a *app) settling(what rules.Deed, cmd *cobra.Command) (*cobra.Command, *deed) {
 	d := &deed{}
-	cmd := &cobra.Command{
+	cmd.Long += "\n\n" + aboutRecord
+	cmd.Args = takes(1, mostRefs)
+	cmd.RunE = func(_ *cobra.Command, args []string) error { return a.act(args, d, rules.Act{Deed: what}) }
+	d.options(cmd)
+	return beside(cmd), d
+}
+
+func (a *app) acknowledgeCommand() *cobra.Command {
+	cmd, _ := a.settling(rules.Acknowledge, &cobra.Command{
 		Use:     "acknowledge REF...",
 		Short:   "Say that a flag is seen and being looked at",
-		Long:    "Says that flags are seen and being looked at. They still ask for a decision.\n\n" + aboutRecord,
+		Long:    "Says that flags are seen and being looked at. They still ask for a decision.",
 		Example: "  strayd acknowledge 12 13 --note \"asked the administrator\"",
-		Args:    takes(1, mostRefs),
-		RunE: func(_ *cobra.Command, args []string) error {
-			return a.act(args, d, rules.Act{Deed: rules.Acknowledge})
-		},
-	}
-	d.options(cmd)
-	return beside(cmd)
+	})
+	return cmd
 }
 
 // mostRefs is how many flags one command takes.
@@ -74,39 +78,25 @@ what the reference leaves unexplained is in range, or with --override and why.
 }
 
 func (a *app) waiveCommand() *cobra.Command {
-	d := &deed{}
-	cmd := &cobra.Command{
+	cmd, d := a.settling(rules.Waive, &cobra.Command{
 		Use:   "waive REF... --until DATE",
 		Short: "Let a flag ask nothing of anyone up to a date",
 		Long: `Lets flags ask nothing of anyone up to and including a date; then they are open again. Their values stay undecided.
-Without --until, five business days from today.
-
-` + aboutRecord,
+Without --until, five business days from today.`,
 		Example: "  strayd waive 12 --until 2026-03-20 --note \"provider investigates\"",
-		Args:    takes(1, mostRefs),
-		RunE: func(_ *cobra.Command, args []string) error {
-			return a.act(args, d, rules.Act{Deed: rules.Waive})
-		},
-	}
-	d.options(cmd)
+	})
 	cmd.Flags().StringVar(&d.until, "until", "", "the last `DATE` on which they ask nothing")
-	return beside(cmd)
+	return cmd
 }
 
 func (a *app) signOffCommand() *cobra.Command {
-	d := &deed{}
-	cmd := &cobra.Command{
+	cmd, _ := a.settling(rules.SignOff, &cobra.Command{
 		Use:     "sign-off REF...",
 		Short:   "Agree with what was decided",
-		Long:    "Closes flags that are decided. In a group with four_eyes, a second person must do it.\n\n" + aboutRecord,
+		Long:    "Closes flags that are decided. In a group with four_eyes, a second person must do it.",
 		Example: "  strayd sign-off 12 13",
-		Args:    takes(1, mostRefs),
-		RunE: func(_ *cobra.Command, args []string) error {
-			return a.act(args, d, rules.Act{Deed: rules.SignOff})
-		},
-	}
-	d.options(cmd)
-	return beside(cmd)
+	})
+	return cmd
 }
 
 func (d *deed) options(cmd *cobra.Command) {

@@ -246,11 +246,5 @@ func flagFields(g *rules.Flag) []string {
 	if g.Z.OK {
 		z, rare = fmt.Sprintf("%+.1f", g.Z.V), onceIn(g.Tail)
 	}
-	what := g.Series
-	if what == "" && g.Group != "" {
-		what = "group " + g.Group
-	} else if what == "" {
-		what = g.Feed + ": " + g.File
-	}
-	return []string{fmt.Sprint(g.Ref), day(g.Date), printable(what), string(g.Kind), value, between(g.Low, g.High), z, rare, string(g.Standing), printable(noteOf(g))}
+	return []string{fmt.Sprint(g.Ref), day(g.Date), printable(flagSubject(g)), string(g.Kind), value, between(g.Low, g.High), z, rare, string(g.Standing), printable(noteOf(g))}
 }
