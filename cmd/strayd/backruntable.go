@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"slices"
 	"strconv"
+	"strings"
 
 	"strayd/rules"
 	"strayd/rules/backrun"
@@ -262,8 +263,8 @@ func (r *backRunning) printDecisions() error {
 		return err
 	}
 	pro, con := backrun.Balance(all)
-	_, err := fmt.Fprintf(r.app.out, "To who looks for wrong values: %d for the other settings (wrong ones gained, genuine ones lost), %d against, of %d decided.\n"+
-		"To who wants to know of every large move, a genuine one that is no longer flagged speaks against.\n", pro, con, sum)
+	_, err := fmt.Fprintf(r.app.out, "Where wrong values matter: %d for the other settings (wrong ones gained, genuine ones lost), %d against, of %d decided.\n"+
+		"Where every large move matters, a genuine one that is no longer flagged speaks against them.\n", pro, con, sum)
 	return err
 }
 
@@ -272,13 +273,13 @@ func (r *backRunning) printAdvice() {
 	if a == nil {
 		return
 	}
-	fmt.Fprintf(out, "\nFor %g flags a week: ", a.Budget)
+	fmt.Fprintf(out, "\nFor a budget of %g flags a week: ", a.Budget)
 	if a.Level == 0 {
 		fmt.Fprintf(out, "no line. %s.\n", a.Why)
 		return
 	}
 	actual := float64(r.compare.Counts()[0].Flags[1]) / r.compare.Weeks()
-	fmt.Fprintf(out, "breach: {tail: %s}, which is about one in %.0f.\n", rules.InPercentPlain(a.Level), 1/a.Level)
+	fmt.Fprintf(out, "breach: {tail: %s}, which is about one in %.0f.\n", strings.ReplaceAll(rules.InPercentPlain(a.Level), " ", ""), 1/a.Level)
 	if a.Why != "" {
 		fmt.Fprintf(out, "  Not what the budget asks for: %s.\n", a.Why)
 	}
