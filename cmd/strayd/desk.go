@@ -13,6 +13,7 @@ import (
 	"path/filepath"
 	"strings"
 	"sync"
+	"time"
 
 	"github.com/spf13/cobra"
 	"golang.org/x/term"
@@ -108,6 +109,7 @@ func browse(ctx context.Context, link string) error {
 type deskPage struct {
 	mu   sync.Mutex
 	page *page.Page
+	now  func() time.Time // nil for the clock
 	at   net.Addr
 	stop context.CancelFunc
 	done chan struct{}

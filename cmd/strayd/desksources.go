@@ -5,11 +5,13 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"html/template"
 	"os"
 	"strconv"
 	"time"
 
 	"strayd/notify"
+	"strayd/notify/chart"
 	"strayd/rules"
 	"strayd/watcher"
 	"strayd/watcher/desk"
@@ -19,13 +21,18 @@ import (
 
 // pageSources hand the page what it needs of the daemon.
 func (d *daemon) pageSources() page.Sources {
+	now := d.desk.now
+	if now == nil {
+		now = time.Now
+	}
 	return page.Sources{
-		Now:     time.Now,
+		Now:     now,
 		View:    d.ledger.View,
 		Book:    d.pageBook,
 		Explain: evidenceOf,
 		Do:      d.doFor,
 		Expect:  d.expectFor,
+		Draw:    drawn,
 		Host:    health.LoopbackHost,
 		Log:     d.log,
 	}
@@ -60,6 +67,22 @@ func (d *daemon) expectFor(series string, each func(watcher.Expected) error) err
 		return err
 	}
 	return p.Expect(series, rules.DateFrom(p.Now.In(s.config.Location)), each)
+}
+
+// drawn is a chart as the page takes it.
+func drawn(v watcher.View, of watcher.ChartOf) (*page.Picture, error) {
+	r, err := watcher.NewReader(v)
+	if err != nil {
+		return nil, err
+	}
+	c, err := r.Chart(of)
+	if err != nil {
+		return nil, err
+	}
+	svg := func(id string, width, height int) template.HTML { // the chart's room escapes every name
+		return template.HTML(chart.SVG(c, id, chart.Size{Width: width, Height: height}))
+	}
+	return &page.Picture{Wide: svg("chart", 760, 280), Narrow: svg("small-chart", 370, 260), Text: chart.Text(c)}, nil
 }
 
 // evidenceOf is what explain says of a flag; nil where there is no such flag.

@@ -60,7 +60,7 @@ var doors = []struct {
 }
 
 // onlyInTests are packages that no program is built from.
-var onlyInTests = []string{"github.com/rogpeppe/go-internal", "github.com/santhosh-tekuri/jsonschema", "pgregory.net/rapid", "testing"}
+var onlyInTests = []string{"github.com/chromedp/chromedp", "github.com/chromedp/cdproto", "github.com/rogpeppe/go-internal", "github.com/santhosh-tekuri/jsonschema", "pgregory.net/rapid", "testing"}
 
 // pure are the rooms without file, socket and clock, and what stands for these.
 var (

@@ -2,7 +2,6 @@ package page
 
 import (
 	"fmt"
-	"html/template"
 	"net/http"
 	"slices"
 	"strconv"
@@ -18,7 +17,7 @@ type flagPage struct {
 	rules.Flag
 	Title   string
 	Facts   []Fact
-	Picture template.HTML
+	Picture *Picture
 	Beside  []rules.Flag // other flags of the series and date
 	Around  *watcher.Neighbours
 	Blocks  string
@@ -87,15 +86,18 @@ func (p *Page) readFlag(view watcher.View, ref uint64, who rules.Person, old typ
 		if out.Around, err = neighbours(view, &e.Flag); err != nil {
 			return nil, err
 		}
-		if p.src.Draw != nil {
-			if out.Picture, err = p.src.Draw(view, e.Flag.Series, e.Flag.Date); err != nil {
-				return nil, err
-			}
+		of := watcher.ChartFor(&e.Flag)
+		of.To += daysAfter
+		if out.Picture, err = p.src.Draw(view, of); err != nil {
+			return nil, err
 		}
 	}
 	out.Deed = newDeed(append([]rules.Flag{e.Flag}, out.Beside...), 1, who, &book, day, old)
 	return out, nil
 }
+
+// daysAfter is up to how long after a flag's date its picture goes.
+const daysAfter = 14
 
 // mostAround is how many neighbours are listed.
 const mostAround = 40

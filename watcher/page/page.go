@@ -20,9 +20,8 @@ type Sources struct {
 	// Do carries out a command line for a person and gives all that it said.
 	Do func(ctx context.Context, who rules.Person, args []string) (ok bool, text string)
 	// Expect calls each with what would be in range next for a series.
-	Expect func(series string, each func(watcher.Expected) error) error
-	// Draw is a picture of a series around a date, with a text that says what it shows; "" for none. Nil for no pictures.
-	Draw    func(v watcher.View, series string, date rules.Date) (picture template.HTML, err error)
+	Expect  func(series string, each func(watcher.Expected) error) error
+	Draw    func(v watcher.View, of watcher.ChartOf) (*Picture, error)
 	Host    func(hostport string) bool // a Host that is ours: a loopback name, or the proxy's
 	Proxied func(Asked) (who rules.Person, ok bool)
 	Log     *slog.Logger
@@ -50,6 +49,12 @@ type Evidence struct {
 	Flag  rules.Flag
 	Title string // the verdict in a line; of a flag about a file, all that there is to say
 	Facts []Fact
+}
+
+// Picture is a drawing of a series with its range, for wide and for narrow screens, and what it shows in words.
+type Picture struct {
+	Wide, Narrow template.HTML
+	Text         string
 }
 
 // Fact is one labelled line of evidence.

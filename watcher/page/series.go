@@ -1,7 +1,6 @@
 package page
 
 import (
-	"html/template"
 	"net/http"
 	"net/url"
 	"strings"
@@ -17,7 +16,7 @@ type seriesPage struct {
 	Zone     *time.Location
 	Group    string
 	Owner    string
-	Picture  template.HTML
+	Picture  *Picture
 	Next     []watcher.Expected
 	Days     []seriesDay // newest first
 	Restated []restated
@@ -112,8 +111,8 @@ func (p *Page) readSeries(view watcher.View, name string, upto rules.Date) (*ser
 	if owner := p.src.Book().Owner; owner != nil {
 		out.Owner = owner(name)
 	}
-	if p.src.Draw != nil {
-		if out.Picture, err = p.src.Draw(view, name, shown[len(shown)-1]); err != nil {
+	if len(out.Days) > 0 {
+		if out.Picture, err = p.src.Draw(view, watcher.ChartOf{Series: name, Marked: rules.NoDate, To: shown[len(shown)-1]}); err != nil {
 			return nil, err
 		}
 	}
