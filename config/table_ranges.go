@@ -23,6 +23,9 @@ var groupTable = object{what: "keys: name at least", fields: []field{
 		at: in(func(g *rules.Group) any { g.Release = &rules.Due{}; return g.Release })},
 	{key: "four_eyes", initial: "false", shape: yes(), doc: "Whether a second person must sign a decision off.",
 		at: in(func(g *rules.Group) any { return &g.FourEyes })},
+	{key: "materiality", shape: share(bounds{low: 0.0001, high: 1}),
+		doc: "Size of an error, as a share of the NAV, from which your own rules call it material; the weekly log counts by it. None when left out.",
+		at:  in(func(g *rules.Group) any { return &g.Materiality })},
 }}
 
 const (

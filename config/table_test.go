@@ -30,7 +30,7 @@ feeds[].due.timezone feeds[].layout feeds[].columns feeds[].columns.date feeds[]
 feeds[].columns.status feeds[].columns.days feeds[].value feeds[].unit feeds[].date feeds[].decimal feeds[].separator
 feeds[].encoding feeds[].missing feeds[].settle feeds[].sentinel feeds[].bad_rows feeds[].bad_rows.skip series events groups
 groups[].name groups[].series groups[].reference groups[].owner groups[].reply groups[].release groups[].release.at
-groups[].release.days groups[].release.timezone groups[].four_eyes ranges ranges[].name ranges[].of ranges[].for ranges[].window
+groups[].release.days groups[].release.timezone groups[].four_eyes groups[].materiality ranges ranges[].name ranges[].of ranges[].for ranges[].window
 ranges[].scale ranges[].decay ranges[].tail ranges[].tail.t ranges[].predictive ranges[].side ranges[].watch ranges[].watch.tail
 ranges[].watch.confidence ranges[].watch.z ranges[].watch.budget ranges[].breach ranges[].breach.tail ranges[].breach.confidence
 ranges[].breach.z ranges[].breach.budget ranges[].pending ranges[].limit doubtful channels channels[].name channels[].slack

@@ -78,6 +78,8 @@ type Group struct {
 	Reply     time.Duration
 	Release   *Due
 	FourEyes  bool
+
+	Materiality float64 // size of an error, as a fraction of the NAV, from which the house's rules call it material; 0 for none
 }
 
 // Basis is what a range judges.

@@ -114,6 +114,7 @@ type WeekFacts struct {
 	Days     []WeekDay               // business days of the week that were over
 	Covers   []Cover                 // by range, then group
 	Restated map[string]Restatements // by feed: values of which the week brought another version
+	Arrived  map[uint64]time.Time    // by ref, of flags decided to be wrong in the week: when the value came that the flag is about
 	Thin     Thin
 	Settings uint32 // number of those in force
 	Head     string // of the record
@@ -185,7 +186,7 @@ type Change struct {
 
 // BackRun holds the flags that a range would have raised over the dates before a change, under the settings before and after.
 type BackRun struct {
-	Range                 string
+	Range                 string // "" for the flags of every kind together, of the values that there are
 	Dates                 int
 	JudgedOld, BeyondOld  int
 	JudgedNew, BeyondNew  int

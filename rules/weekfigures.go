@@ -21,6 +21,7 @@ type WeekFigures struct {
 	Covers   []CoverFigures // each range: all groups, then each
 	Ageing   Ageing
 	Closed   Closed
+	Found    Found
 	Feeds    []FeedFigures
 	Largest  []Flag
 	Repeats  []Repeat
@@ -49,7 +50,7 @@ func (f *WeekFacts) Figures() *WeekFigures {
 	f.countFlags(w)
 	f.ranges(w)
 	w.Ageing = f.ageing()
-	w.Closed = f.closed()
+	w.Closed, w.Found = f.closed(), f.found()
 	w.Repeats = f.repeats()
 	w.Waivers = f.waivers()
 	w.Runs = f.runs()

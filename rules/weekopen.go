@@ -3,7 +3,6 @@ package rules
 import (
 	"cmp"
 	"slices"
-	"strings"
 	"time"
 )
 
@@ -116,17 +115,13 @@ type Override struct {
 }
 
 func (f *WeekFacts) closed() (c Closed) {
-	last, byRef := map[uint64]*Entry{}, f.byRef()
+	last, byRef := f.lastDecisions(), f.byRef()
 	for i := range f.Acts {
 		e := &f.Acts[i]
 		if !f.Span.During(e.At) {
 			continue
 		}
 		switch e.Deed {
-		case Decide:
-			for _, ref := range e.Refs {
-				last[ref] = e
-			}
 		case SignOff:
 			c.SignedOff += len(e.Refs)
 		case Acknowledge:
@@ -178,10 +173,10 @@ func (c *Closed) conclude(e *Entry, g *Flag) {
 	default:
 		c.Erroneous++
 	}
-	switch note := strings.ToLower(e.Note); {
-	case strings.Contains(note, "found by client"):
+	switch finderOf(e, g) {
+	case FoundByClient:
 		c.ByClient++
-	case strings.Contains(note, "found by provider"), g != nil && g.Kind == KindRestated:
+	case FoundByProvider:
 		c.ByProvider++
 	default:
 		c.ByUs++

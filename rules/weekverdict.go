@@ -82,6 +82,7 @@ func (w *WeekFigures) actReasons() (r reasons) {
 	r.when(old > 0, "%s open for more than %d business days", Counted(old, "flag"), AgeBands[len(AgeBands)-1])
 	r.when(w.Ageing.PastRelease > 0, "%s still open after the release that it blocks", Counted(w.Ageing.PastRelease, "flag"))
 	r.when(w.Closed.ByClient > 0, "%s found by a client", Counted(w.Closed.ByClient, "error"))
+	r.when(w.Found.Material > 0, "%s at or above the materiality that you set", Counted(w.Found.Material, "error"))
 	for i := range w.Covers {
 		c := &w.Covers[i]
 		r.when(c.Group == "" && c.Zones.Red > 0, "%d of %d series are in the red zone of range %s", c.Zones.Red, c.Zones.Whole(), c.Range)

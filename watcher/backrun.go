@@ -27,7 +27,9 @@ func (p *Past) Judge(ctx context.Context, r BackRun) (*backrun.Side, error) {
 	}
 	s := r.Settings
 	s.Ranges = slices.Clone(s.Ranges)
-	resolveBudgets(&s, p.recorded, p.Series)
+	if unresolved(&s) {
+		resolveBudgets(&s, p.recorded, p.Series)
+	}
 	store := numbered(&s, len(p.terms) > 0)
 	pass := &Pass{Store: store, Settings: s, Now: r.Now, Workers: r.Workers, Progress: r.Progress, again: &p.weighed}
 	j := &judging{names: p.names, newest: p.last(), now: r.Now, step: 1, nextRef: 1, decidedOn: p.decided}
@@ -52,6 +54,13 @@ func (p *Past) Judge(ctx context.Context, r BackRun) (*backrun.Side, error) {
 		}
 	}
 	return side, nil
+}
+
+// unresolved says that a line is stated as a budget and not turned into a level yet: settings of the record are.
+func unresolved(s *rules.Settings) bool {
+	return slices.ContainsFunc(s.Ranges, func(r rules.Range) bool {
+		return r.Watch.Budget > 0 && r.Watch.Level == 0 || r.Breach.Budget > 0 && r.Breach.Level == 0
+	})
 }
 
 func (p *Past) last() rules.Date {

@@ -31,12 +31,18 @@ type decidedValue struct {
 
 // ReadPast reads all that a view holds.
 func ReadPast(ctx context.Context, v View, progress Progress) (*Past, error) {
-	p := &Past{decided: map[rules.Date][]decidedValue{}}
-	var err error
-	if p.names, err = v.Names(); err != nil {
+	dates, err := v.Dates(Returns)
+	if err != nil {
 		return nil, err
 	}
-	if p.Dates, err = v.Dates(Returns); err != nil {
+	return readPast(ctx, v, dates, progress)
+}
+
+// readPast reads what a view holds on some dates, ascending.
+func readPast(ctx context.Context, v View, dates []rules.Date, progress Progress) (*Past, error) {
+	p := &Past{Dates: dates, decided: map[rules.Date][]decidedValue{}}
+	var err error
+	if p.names, err = v.Names(); err != nil {
 		return nil, err
 	}
 	if _, p.recorded, err = lastSettings(v); err != nil {

@@ -2,7 +2,6 @@ package watcher
 
 import (
 	"context"
-	"slices"
 	"time"
 
 	"strayd/rules"
@@ -34,7 +33,7 @@ type WeekAsk struct {
 func WeekFacts(ctx context.Context, v Chronicle, ask WeekAsk) (*rules.WeekFacts, error) {
 	w := &weekReader{ctx: ctx, v: v, ask: ask, files: map[uint32]FileRow{}}
 	f := &rules.WeekFacts{Span: ask.Span, Zone: ask.Zone, Groups: ask.Groups, Owner: ask.Owner, Feeds: ask.Feeds}
-	for _, part := range []func(*rules.WeekFacts) error{w.readFiles, w.readFlags, w.readRecord, w.readRuns, w.readDays, w.readRestated, w.readCovers} {
+	for _, part := range []func(*rules.WeekFacts) error{w.readFiles, w.readFlags, w.readRecord, w.readRuns, w.readDays, w.readRestated, w.readArrivals, w.readCovers} {
 		if err := part(f); err != nil {
 			return nil, err
 		}
@@ -165,7 +164,7 @@ func (w *weekReader) readRuns(f *rules.WeekFacts) error {
 	})
 }
 
-// readCovers judges the dates up to the week once more, and where the settings changed in it, those before under the old ones too.
+// readCovers judges the dates up to the week once more, and where the settings changed in it, runs them back under the old and the new ones.
 func (w *weekReader) readCovers(f *rules.WeekFacts) error {
 	names, err := w.v.Names()
 	if err != nil {
@@ -179,12 +178,8 @@ func (w *weekReader) readCovers(f *rules.WeekFacts) error {
 	if w.before == nil || len(f.Changes) == 0 {
 		return nil
 	}
-	old, err := scanCover(w.ctx, w.then, names, w.before, w.ask.Span.Monday, w.progress("settings before"))
-	if err != nil {
-		return err
-	}
-	f.Changes[len(f.Changes)-1].BackRun = backRuns(old.all(rules.CoverDates), f.Covers)
-	return nil
+	f.Changes[len(f.Changes)-1].BackRun, err = w.backRuns()
+	return err
 }
 
 func (w *weekReader) progress(work string) func(done, total int64) {
@@ -193,30 +188,4 @@ func (w *weekReader) progress(work string) func(done, total int64) {
 			w.ask.Progress(work, done, total)
 		}
 	}
-}
-
-// backRuns holds what each range would have flagged under the settings before against those after.
-func backRuns(old, now []rules.Cover) (out []rules.BackRun) {
-	at := func(name string) *rules.BackRun {
-		n := slices.IndexFunc(out, func(b rules.BackRun) bool { return b.Range == name })
-		if n < 0 {
-			out, n = append(out, rules.BackRun{Range: name}), len(out)
-		}
-		return &out[n]
-	}
-	for _, c := range now {
-		b := at(c.Range)
-		b.HeldAfter, b.Dates = true, len(c.Days)
-		for _, d := range c.Days {
-			b.JudgedNew, b.BeyondNew = b.JudgedNew+d.Judged, b.BeyondNew+d.Outer
-		}
-	}
-	for _, c := range old {
-		b := at(c.Range)
-		b.HeldBefore, b.Dates = true, max(b.Dates, len(c.Days))
-		for _, d := range c.Days {
-			b.JudgedOld, b.BeyondOld = b.JudgedOld+d.Judged, b.BeyondOld+d.Outer
-		}
-	}
-	return out
 }

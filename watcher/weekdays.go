@@ -2,6 +2,7 @@ package watcher
 
 import (
 	"slices"
+	"time"
 
 	"strayd/rules"
 )
@@ -163,4 +164,41 @@ func (w *weekReader) restatedIn(f *rules.WeekFacts, date rules.Date, bl block, s
 		}
 		return nil
 	})
+}
+
+// readArrivals finds when the values came that were decided to be wrong in the week: of each, the version that its flag is about.
+func (w *weekReader) readArrivals(f *rules.WeekFacts) error {
+	wrong := map[uint64]bool{}
+	for i := range f.Acts {
+		if e := &f.Acts[i]; e.Deed == rules.Decide && e.Conclusion != rules.Genuine && w.ask.Span.During(e.At) {
+			for _, ref := range e.Refs {
+				wrong[ref] = true
+			}
+		}
+	}
+	if len(wrong) == 0 {
+		return nil
+	}
+	names, err := w.v.Names()
+	if err != nil {
+		return err
+	}
+	f.Arrived = map[uint64]time.Time{}
+	for i := range f.Flags {
+		g := &f.Flags[i]
+		id, known := names.Find([]byte(g.Series))
+		if !wrong[g.Ref] || !known {
+			continue
+		}
+		versions, err := w.v.Series(Returns, id)
+		if err != nil {
+			return err
+		}
+		for _, v := range versions {
+			if file, ok := w.files[v.Step]; ok && v.Date == g.Date && v.Step <= g.Step {
+				f.Arrived[g.Ref] = file.Received
+			}
+		}
+	}
+	return nil
 }

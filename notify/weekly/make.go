@@ -108,7 +108,8 @@ func (b *builder) flags() *section {
 	for _, r := range b.now.Ranges {
 		o := last[r.Range]
 		t.Rows = append(t.Rows, row{foreign(r.Range), []cell{only(level(r.Level)), counts(r.Observed, r.Judged, o.Observed, o.Judged),
-			counts(r.Separate, r.Judged, o.Separate, o.Judged), both(real(r.Expected, 1), real(o.Expected, 1)), only(band(r.Low, r.High)), only(band(r.Narrow, r.Wide)), only(real(r.Together, 1))}})
+			counts(r.Separate, r.Judged, o.Separate, o.Judged), both(real(r.Expected, 1), real(o.Expected, 1)), both(band(r.Low, r.High), band(o.Low, o.High)),
+			both(band(r.Narrow, r.Wide), band(o.Narrow, o.Wide)), both(real(r.Together, 1), real(o.Together, 1))}})
 	}
 	kinds := table{Key: "kind", Title: "Flags by kind", Head: []string{"kind", "flags of all"}, Empty: "No flag was raised."}
 	for n, k := range b.now.Raised {

@@ -69,18 +69,22 @@ func coverName(c *rules.CoverFigures) string {
 }
 
 func innerRow(c, o *rules.CoverFigures) row {
-	v := &c.InnerSays
-	clusters := "no"
-	if v.Cluster {
-		clusters = "yes"
-	}
+	v, w := &c.InnerSays, &o.InnerSays
 	return row{foreign(coverName(c)), []cell{only(level(c.Share)), counts(c.Inner.Beyond, c.Inner.Judged, o.Inner.Beyond, o.Inner.Judged),
-		both(real(v.Expected, 1), real(o.InnerSays.Expected, 1)), only(optional(v.Kupiec, chance)), only(optional(v.Moving, chance)),
-		both(text(string(v.Verdict)), lastVerdict(o)), only(optional(v.Apart, chance)), only(text(clusters))}}
+		both(real(v.Expected, 1), real(o.InnerSays.Expected, 1)), both(optional(v.Kupiec, chance), optional(w.Kupiec, chance)), both(optional(v.Moving, chance), optional(w.Moving, chance)),
+		both(text(string(v.Verdict)), lastVerdict(o)), both(optional(v.Apart, chance), optional(w.Apart, chance)), both(clusters(v), clusters(w))}}
+}
+
+// clusters says whether beyond follows beyond.
+func clusters(c *rules.Coverage) value {
+	if c.Cluster {
+		return text("yes")
+	}
+	return text("no")
 }
 
 func outerRow(c, o *rules.CoverFigures) row {
-	v := &c.OuterSays
+	v, w := &c.OuterSays, &o.OuterSays
 	verdict, before := text(string(v.Verdict)), text(string(o.OuterSays.Verdict))
 	if c.Level == 0 {
 		verdict = text("the line promises no share")
@@ -89,7 +93,8 @@ func outerRow(c, o *rules.CoverFigures) row {
 		before = text(string(rules.TooLittle))
 	}
 	return row{foreign(coverName(c)), []cell{only(level(c.Level)), counts(c.Outer.Beyond, c.Outer.Judged, o.Outer.Beyond, o.Outer.Judged),
-		both(real(v.Expected, 1), real(o.OuterSays.Expected, 1)), only(optional(v.Kupiec, chance)), only(optional(v.Moving, chance)), both(verdict, before)}}
+		both(real(v.Expected, 1), real(o.OuterSays.Expected, 1)), both(optional(v.Kupiec, chance), optional(w.Kupiec, chance)),
+		both(optional(v.Moving, chance), optional(w.Moving, chance)), both(verdict, before)}}
 }
 
 func zoneRow(c, o *rules.CoverFigures) row {

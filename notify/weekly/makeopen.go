@@ -98,8 +98,7 @@ func (b *builder) feeds() *section {
 		t.Rows = append(t.Rows, row{foreign(f.Feed), []cell{portions(f.OnTime, o.OnTime), portions(f.Complete, o.Complete), both(count(f.Rows), count(o.Rows)),
 			counts(f.Refused, f.Refused+f.Files, o.Refused, o.Refused+o.Files), both(count(f.Errors), count(o.Errors)), both(perThousand(&f), perThousand(&o)),
 			only(text(likeWords(f.Like)))}})
-		size := func(v float64) value { return value{fmt.Sprintf("%.2f bp", 1e4*v), real(v, 6).Raw} }
-		again.Rows = append(again.Rows, row{foreign(f.Feed), []cell{both(count(f.Changed), count(o.Changed)), both(optional(f.Largest, size), optional(o.Largest, size)),
+		again.Rows = append(again.Rows, row{foreign(f.Feed), []cell{both(count(f.Changed), count(o.Changed)), both(optional(f.Largest, inBP), optional(o.Largest, inBP)),
 			both(date(f.Oldest), date(o.Oldest))}})
 		trend.Rows = append(trend.Rows, row{foreign(f.Feed), []cell{portions(f.Four.OnTime, o.Four.OnTime), portions(f.All.OnTime, o.All.OnTime),
 			both(count(f.Four.Refused), count(o.Four.Refused)), both(count(f.All.Refused), count(o.All.Refused)),
@@ -138,7 +137,7 @@ func (b *builder) changes() *section {
 	s.say("Changes of the settings", both(count(len(b.now.Changes)), count(len(b.last.Changes))))
 	t := table{Key: "change", Title: "Changes", Head: []string{"settings number", "at", "by", "old to new"}, Empty: "None."}
 	runs := table{Key: "back-run", Title: fmt.Sprintf("The last %d dates under the settings at the week's beginning and at its end", rules.CoverDates),
-		Head: []string{"range", "beyond before", "beyond after"}, Empty: "No change to run back."}
+		Head: []string{"what", "before, of values", "after, of values"}, Empty: "No change to run back."}
 	for _, c := range b.now.Changes {
 		what := c.What
 		if len(what) == 0 {
@@ -154,7 +153,11 @@ func (b *builder) changes() *section {
 			if r.HeldAfter {
 				cells[1] = cell{Now: count(r.BeyondNew), Of: count(r.JudgedNew)}
 			}
-			runs.Rows = append(runs.Rows, row{foreign(r.Range), cells})
+			subject := text("flags of every kind")
+			if r.Range != "" {
+				subject = foreign("beyond " + r.Range)
+			}
+			runs.Rows = append(runs.Rows, row{subject, cells})
 		}
 	}
 	s.Tables = []table{t, runs}
@@ -180,18 +183,6 @@ func (b *builder) waivers() *section {
 		}
 	}
 	s.Tables = []table{t}
-	return s
-}
-
-func (b *builder) found() *section {
-	s := &section{Key: "found", Title: "Who found the errors"}
-	now, last := &b.now.Closed, &b.last.Closed
-	all, before := now.ByUs+now.ByProvider+now.ByClient, last.ByUs+last.ByProvider+last.ByClient
-	s.say("By us", counts(now.ByUs, all, last.ByUs, before))
-	s.say("By the provider", counts(now.ByProvider, all, last.ByProvider, before))
-	s.first("By a client", counts(now.ByClient, all, last.ByClient, before))
-	s.Notes = []string{"Of the flags decided error or corrected: by a client or the provider where the decision's note says \"found by client\" or " +
-		"\"found by provider\", or where the provider's own restatement raised the flag; the rest by us."}
 	return s
 }
 

@@ -58,7 +58,7 @@ func facts(series string, shift int) *rules.WeekFacts {
 	back := -7 * 24 * time.Duration(shift) * time.Hour
 	span := rules.NewWeekSpan(monday, clock(2026, 3, 16, 7).Add(back), time.UTC)
 	f := &rules.WeekFacts{Span: span, Zone: time.UTC, Settings: 3, Head: strings.Repeat("ab", 32), Due: 30 - shift,
-		Groups: []rules.Group{{Name: "g " + series, Owner: "o " + series, Reply: time.Hour, Release: &rules.Due{Minutes: 660, Days: 1}}},
+		Groups: []rules.Group{{Name: "g " + series, Owner: "o " + series, Reply: time.Hour, Release: &rules.Due{Minutes: 660, Days: 1}, Materiality: 0.005}},
 		Feeds:  []rules.Feed{{Name: "administrator", Due: &rules.Due{Minutes: 19*60 + 30}}, {Name: "index"}}}
 	for n := range 5 - shift {
 		f.Flags = append(f.Flags, breach(uint64(n+1), series, monday+rules.Date(n%5)))
@@ -76,11 +76,14 @@ func facts(series string, shift int) *rules.WeekFacts {
 	by := rules.Person{UID: 1002, Name: "bo " + series}
 	f.Acts = []rules.Entry{
 		{Act: rules.Act{Deed: rules.Decide, By: by, At: monday.Time().Add(50 * time.Hour), Conclusion: rules.Erroneous, Reason: rules.DataError, Note: "found by client " + series}, Refs: []uint64{1}},
-		{Act: rules.Act{Deed: rules.Decide, By: by, At: monday.Time().Add(60 * time.Hour), Conclusion: rules.Genuine, Reason: rules.MarketMove, Override: "the index too " + series}, Refs: []uint64{2}}}
+		{Act: rules.Act{Deed: rules.Decide, By: by, At: monday.Time().Add(60 * time.Hour), Conclusion: rules.Genuine, Reason: rules.MarketMove, Override: "the index too " + series}, Refs: []uint64{2}},
+		{Act: rules.Act{Deed: rules.Decide, By: by, At: monday.Time().Add(90 * time.Hour), Conclusion: rules.Corrected, Value: -2200000000000, Reason: rules.ForDistribution, Note: "ex-date notice of " + series}, Refs: []uint64{3}}}
+	f.Arrived = map[uint64]time.Time{1: f.Flags[0].RaisedAt, 3: f.Flags[2].RaisedAt.Add(-90 * time.Minute)}
 	f.Flags[0].Standing, f.Flags[0].Decided = rules.Decided, &f.Acts[0].Act
 	f.Flags[1].Standing, f.Flags[1].Decided = rules.Decided, &f.Acts[1].Act
+	f.Flags[2].Standing, f.Flags[2].Decided = rules.Decided, &f.Acts[2].Act
 	f.Changes = []rules.Change{{Number: 3, At: monday.Time().Add(80 * time.Hour), Who: "ada " + series, What: []string{"range own: window 60 to 120", "range " + series + " added"},
-		BackRun: []rules.BackRun{{Range: "own", Dates: 250, JudgedOld: 6000, BeyondOld: 17, JudgedNew: 5900, BeyondNew: 11, HeldBefore: true, HeldAfter: true},
+		BackRun: []rules.BackRun{{Dates: 250, JudgedOld: 6100, BeyondOld: 29, JudgedNew: 6100, BeyondNew: 21, HeldBefore: true, HeldAfter: true}, {Range: "own", Dates: 250, JudgedOld: 6000, BeyondOld: 17, JudgedNew: 5900, BeyondNew: 11, HeldBefore: true, HeldAfter: true},
 			{Range: series, Dates: 250, JudgedNew: 10, HeldAfter: true}}}}
 	for n := range 5 {
 		f.Days = append(f.Days, rules.WeekDay{Date: monday + rules.Date(n), Portion: rules.Portion{Part: 23 + n%2, Whole: 24},

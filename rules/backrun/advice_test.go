@@ -99,7 +99,7 @@ func TestAdviceKnowsHowSureItIs(t *testing.T) {
 	const n, flags = 1000, 400
 	for range flags {
 		apart.Tails = append(apart.Tails, Tail{Level: 0.01 * r.Float64(), Date: r.IntN(n)})
-		clustered.Tails = append(clustered.Tails, Tail{Level: 0.01 * r.Float64(), Date: 40*r.IntN(n/40) % 200})
+		clustered.Tails = append(clustered.Tails, Tail{Level: 0.01 * r.Float64(), Date: 40 * r.IntN(n/40) % 200})
 	}
 	apart.SortTails()
 	clustered.SortTails()
