@@ -55,7 +55,8 @@ func (w *weekReader) reach() int {
 
 // backRuns holds what two settings flag against each other: of every kind together, then what is beyond each range's line.
 func backRuns(old, now *backrun.Side, dates, values int) []rules.BackRun {
-	out := []rules.BackRun{{Dates: dates, JudgedOld: values, BeyondOld: len(old.Flags), JudgedNew: values, BeyondNew: len(now.Flags), HeldBefore: true, HeldAfter: true}}
+	out := []rules.BackRun{{Dates: dates, JudgedOld: values, BeyondOld: len(old.Flags), JudgedNew: values, BeyondNew: len(now.Flags),
+		HeldBefore: true, HeldAfter: true}}
 	at := func(name string) *rules.BackRun {
 		n := slices.IndexFunc(out, func(b rules.BackRun) bool { return b.Range == name })
 		if n < 0 {

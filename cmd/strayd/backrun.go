@@ -61,9 +61,9 @@ many flags a week; the past is then judged again under it.
 }
 
 // backRunCaution goes with every table of a back-run.
-const backRunCaution = `Lines chosen on a past fit that past: the more settings are tried on it, the more of what the best of them gains is chance. Decisions are
-there only for what was flagged when it came; what nobody flagged is in no count (strayd drill plants such errors). They count from their
-value's own date on, so the dates until they were made are judged with hindsight. A market day's flags count one by one.
+const backRunCaution = `Lines chosen on a past fit that past: the more settings are tried on it, the more of what the best of them gains is chance.
+Decisions are there only for what was flagged when it came; what nobody flagged is in no count (strayd drill plants such errors). They count
+from their value's own date on, so the dates until they were made are judged with hindsight. A market day's flags count one by one.
 ` + caution
 
 func (o *backRunOptions) check(files []string) error {

@@ -263,7 +263,8 @@ func (r *backRunning) printDecisions() error {
 		return err
 	}
 	pro, con := backrun.Balance(all)
-	_, err := fmt.Fprintf(r.app.out, "Where wrong values matter: %d for the other settings (wrong ones gained, genuine ones lost), %d against, of %d decided.\n"+
+	_, err := fmt.Fprintf(r.app.out,
+		"Where wrong values matter: %d for the other settings (wrong ones gained, genuine ones lost), %d against, of %d decided.\n"+
 		"Where every large move matters, a genuine one that is no longer flagged speaks against them.\n", pro, con, sum)
 	return err
 }
@@ -286,10 +287,12 @@ func (r *backRunning) printAdvice() {
 	for _, name := range r.kept {
 		fmt.Fprintf(out, "  Range %s keeps its own line: the level does not go with its window or its watch line.\n", printable(name))
 	}
-	fmt.Fprintf(out, "  Judged again under it: %.2f flags a week. By resampling the dates in blocks of 20: %.2f to %.2f (middle 90 %%).\n", actual, a.RateLow, a.RateHigh)
+	fmt.Fprintf(out, "  Judged again under it: %.2f flags a week. By resampling the dates in blocks of 20: %.2f to %.2f (middle 90 %%).\n",
+		actual, a.RateLow, a.RateHigh)
 	fmt.Fprintf(out, "  Another past of this length might have given a line between %s and %s.\n", levelWords(a.LevelLow), levelWords(a.LevelHigh))
 	if a.HalfLevel.OK {
-		fmt.Fprintf(out, "  Chosen on the first half of the dates alone: %s, with %.2f a week in the second half.\n", levelWords(a.HalfLevel.V), a.HalfRate.V)
+		fmt.Fprintf(out, "  Chosen on the first half of the dates alone: %s, with %.2f a week in the second half.\n",
+			levelWords(a.HalfLevel.V), a.HalfRate.V)
 	}
 }
 

@@ -14,7 +14,8 @@ import (
 // against the materiality that is set, and how long they stood. A new week does not change what was told.
 func TestWeeklyRunsChangesBack(t *testing.T) {
 	b := invent(7)
-	first, second := "ranges:\n  - {name: own, window: 40}\n", "ranges:\n  - {name: own, window: 40, breach: {tail: 0.9%}}\n  - {name: wide, window: 20, breach: {tail: 0.5%}}\n"
+	first := "ranges:\n  - {name: own, window: 40}\n"
+	second := "ranges:\n  - {name: own, window: 40, breach: {tail: 0.9%}}\n  - {name: wide, window: 20, breach: {tail: 0.5%}}\n"
 	group := "groups:\n  - {name: all, series: [series-*], reference: none, materiality: 0.5%}\n"
 	feed := "feeds:\n  - {name: book, files: inbox/*.csv, unit: fraction}\n"
 	f := newFolder(t, group+first)
@@ -47,7 +48,8 @@ func TestWeeklyRunsChangesBack(t *testing.T) {
 	log := f.list("weekly", rules.WeekName(monday), "--now", now)
 	f.write("old.yaml", "ledger: none.db\n"+feed+group+first)
 	run := f.backRun("--with", filepath.Join(f.path, "old.yaml"), "--now", now)
-	for _, x := range []struct{ subject, key string }{{"", "flags|||all"}, {"own", "coverage||own|breach beyond"}, {"wide", "coverage||wide|breach beyond"}} {
+	for _, x := range []struct{ subject, key string }{{"", "flags|||all"}, {"own", "coverage||own|breach beyond"},
+		{"wide", "coverage||wide|breach beyond"}} {
 		subject := "flags of every kind"
 		if x.subject != "" {
 			subject = "beyond " + x.subject
@@ -61,7 +63,8 @@ func TestWeeklyRunsChangesBack(t *testing.T) {
 			t.Errorf("%s: of %s in the log, of %s in back-run", subject, after["of"], run[x.key]["these_of"])
 		}
 	}
-	if figureOf(t, log, "settings", "back-run", "beyond own", "before, of values")["value"] == figureOf(t, log, "settings", "back-run", "beyond own", "after, of values")["value"] {
+	own := func(when string) string { return figureOf(t, log, "settings", "back-run", "beyond own", when)["value"] }
+	if own("before, of values") == own("after, of values") {
 		t.Error("the wider line flags as much: the test sees too little")
 	}
 

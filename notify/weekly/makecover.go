@@ -32,8 +32,8 @@ func (b *builder) coverage() *section {
 	}
 	s.Tables = []table{t, outer, zones, b.notable(last)}
 	b.firstCoverage(s, last)
-	s.Notes = []string{"Judged again under the settings in force, over values as known now. Kupiec's p (1995) is the probability of a count as far off by chance; " +
-		"together divides its ratio by the scatter of the counts of a day (Rao and Scott 1981), and the verdict goes by it.",
+	s.Notes = []string{"Judged again under the settings in force, over values as known now. Kupiec's p (1995) is the probability of a count as " +
+		"far off by chance; together divides its ratio by the scatter of the counts of a day (Rao and Scott 1981), and the verdict goes by it.",
 		"Christoffersen's p (1998) asks whether beyond follows beyond. Zones: Basle Committee, January 1996. Fewer than 250 judged, or a count of which " +
 			"even none would be usual, is too little data to say."}
 	return s
@@ -71,7 +71,8 @@ func coverName(c *rules.CoverFigures) string {
 func innerRow(c, o *rules.CoverFigures) row {
 	v, w := &c.InnerSays, &o.InnerSays
 	return row{foreign(coverName(c)), []cell{only(level(c.Share)), counts(c.Inner.Beyond, c.Inner.Judged, o.Inner.Beyond, o.Inner.Judged),
-		both(real(v.Expected, 1), real(o.InnerSays.Expected, 1)), both(optional(v.Kupiec, chance), optional(w.Kupiec, chance)), both(optional(v.Moving, chance), optional(w.Moving, chance)),
+		both(real(v.Expected, 1), real(o.InnerSays.Expected, 1)), both(optional(v.Kupiec, chance), optional(w.Kupiec, chance)),
+		both(optional(v.Moving, chance), optional(w.Moving, chance)),
 		both(text(string(v.Verdict)), lastVerdict(o)), both(optional(v.Apart, chance), optional(w.Apart, chance)), both(clusters(v), clusters(w))}}
 }
 

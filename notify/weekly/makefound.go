@@ -23,8 +23,8 @@ func (b *builder) found() *section {
 	s.say("With a size, and no materiality set", counts(x.Unset, x.Sized, y.Unset, y.Sized))
 	s.say("Without a size, since no better value is known", counts(len(x.Errors)-x.Sized, len(x.Errors), len(y.Errors)-y.Sized, len(y.Errors)))
 	t := table{Key: "error", Title: "Values decided to be wrong, with what was put in their place", Empty: "None.",
-		Head: []string{"flag", "series", "date", "received", "put in its place", "size", "materiality", "found by", "hours to the flag", "hours to the decision",
-			"decided by", "note"}}
+		Head: []string{"flag", "series", "date", "received", "put in its place", "size", "materiality", "found by", "hours to the flag",
+			"hours to the decision", "decided by", "note"}}
 	for i := range x.Errors {
 		t.Rows = append(t.Rows, errorRow(&x.Errors[i]))
 	}

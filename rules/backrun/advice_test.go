@@ -148,7 +148,8 @@ func TestAdviceSaysWhyNot(t *testing.T) {
 }
 
 func TestLevelsAreRoundedDown(t *testing.T) {
-	for _, c := range []struct{ level, want float64 }{{0.0027, 0.0027}, {0.00279, 0.0027}, {0.01, 0.01}, {0.000999, 0.00099}, {0.0042, 0.0042}, {0.0005, 0.0005}} {
+	for _, c := range []struct{ level, want float64 }{{0.0027, 0.0027}, {0.00279, 0.0027}, {0.01, 0.01}, {0.000999, 0.00099},
+		{0.0042, 0.0042}, {0.0005, 0.0005}} {
 		if got := down(c.level); got != c.want {
 			t.Errorf("%v: %v, want %v", c.level, got, c.want)
 		}
