@@ -161,14 +161,14 @@ func TestPassAtBlockEdge(t *testing.T) {
 	}
 	for _, series := range []int{watcher.BlockSize, watcher.BlockSize + 1} {
 		t.Run(fmt.Sprint(series, " series"), func(t *testing.T) {
-			s := &shelf{randomFiles(rand.New(rand.NewPCG(1, uint64(series))), series, 24, false)}
-			last := fmt.Sprintf("f%04d", 23)
+			s := &shelf{randomFiles(rand.New(rand.NewPCG(1, uint64(series))), series, 14, false)}
+			last := fmt.Sprintf("f%04d", 13)
 			s.files[last] = slices.DeleteFunc(s.files[last], func(e entry) bool { return e.series[7:] < fmt.Sprintf("%05d", watcher.BlockSize-1) })
 			settings := rules.Settings{Ranges: []rules.Range{ranged("t5", nil), ranged("rank", func(r *rules.Range) {
 				r.Tail, r.Breach, r.Watch = rules.TailModel{Name: "rank"}, rules.Line{Tail: 0.1}, rules.Line{Tail: 0.2}
 			})}}
 			d := passed(t, s, settings, 2)
-			d.counts(s, func(file string) bool { return file >= "f0020" })
+			d.counts(s, func(file string) bool { return file >= "f0012" })
 			d.flags()
 		})
 	}
