@@ -54,6 +54,7 @@ func (p *Pass) accept(sheet *Sheet, f rules.Feed, c Candidate) error {
 	if err := p.release.into(p, b); err != nil {
 		return err
 	}
+	b.Spend = true
 	if err := p.Store.Publish(b); err != nil {
 		return err
 	}

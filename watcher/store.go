@@ -113,6 +113,7 @@ type Batch struct {
 	Flags     []*FlagRow
 	Notices   []rules.Notice // of this step's flags; one whose key is there already is passed over
 	Withdraw  []uint64       // flags that ask nothing any more: a waiting notice of these alone is not sent
+	Spend     bool           // nobody needs the cells of the columns any more: a Store may let go of each once it is written
 }
 
 // UsedColumn holds the cells of one date and block whose used value under a range differs from the return.

@@ -75,6 +75,9 @@ func (w *writer) layers(p *plan) error {
 			if err := w.put(bucketOf(watcher.What(what)), key, func(dst []byte) []byte { return appendColumn(dst, c) }); err != nil {
 				return err
 			}
+			if p.batch.Spend {
+				c.V32, c.V64, c.Lines.At = nil, nil, nil
+			}
 		}
 	}
 	for _, u := range p.used {
