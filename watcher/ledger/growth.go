@@ -1,5 +1,7 @@
 package ledger
 
+import "runtime"
+
 const (
 	leastGrowth = 256 << 10
 	mostGrowth  = 64 << 20
@@ -11,6 +13,9 @@ const (
 func (w *writer) grow(coming int64) {
 	if coming > 0 {
 		w.coming, w.garbage = coming, coming
+	}
+	if coming > commitSize {
+		runtime.GC() // what judging left serves the arena and the pages
 	}
 	share := min(max(w.tx.Size()/64, leastGrowth), mostGrowth)
 	w.l.db.AllocSize = int(max(share, coming-commitSize))
