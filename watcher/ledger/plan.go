@@ -18,7 +18,7 @@ type plan struct {
 	states  []*watcher.State
 	scales  []keyed[*watcher.GroupScale]
 	flags   []*watcher.FlagRow
-	index   [][]byte // keys of the index of flags
+	index   []flagAt // keys of the index of flags
 	held    uint32   // names before the batch
 }
 
@@ -27,6 +27,9 @@ type keyed[T any] struct {
 	key   []byte
 	value T
 }
+
+// flagAt is a key of the index of flags, see flagAtKey.
+type flagAt [17]byte
 
 func newPlan(b *watcher.Batch) (*plan, error) {
 	p := &plan{batch: b}
@@ -123,18 +126,19 @@ func (p *plan) planScales() {
 }
 
 func (p *plan) planFlags() error {
+	p.flags, p.index = make([]*watcher.FlagRow, 0, len(p.batch.Flags)), make([]flagAt, 0, len(p.batch.Flags))
 	for _, f := range p.batch.Flags {
 		if !slices.Contains(rules.Kinds, f.Kind) || !slices.Contains(rules.Standings, f.Standing) {
 			return fmt.Errorf("flag %d: kind %q or standing %q is not known", f.Ref, f.Kind, f.Standing)
 		}
 		p.flags = append(p.flags, f)
 		if f.New && f.SeriesID != watcher.NoSeries {
-			p.index = append(p.index, flagAtKey(f.Date, f.SeriesID, byte(indexOf(rules.Kinds, f.Kind)), f.Ref))
+			p.index = append(p.index, flagAt(flagAtKey(f.Date, f.SeriesID, byte(indexOf(rules.Kinds, f.Kind)), f.Ref)))
 		}
 	}
 	order := func(a, b *watcher.FlagRow) int { return cmp.Compare(a.Ref, b.Ref) }
 	slices.SortFunc(p.flags, order)
-	slices.SortFunc(p.index, bytes.Compare)
+	slices.SortFunc(p.index, func(a, b flagAt) int { return bytes.Compare(a[:], b[:]) })
 	return twice(p.flags, order, func(f *watcher.FlagRow) string { return fmt.Sprintf("flag %d", f.Ref) })
 }
 
@@ -178,7 +182,7 @@ func (p *plan) staging() staging {
 	add(inStates, len(p.states), func(i int) []byte { return stateKey(p.states[i].Range, p.states[i].Block, step) })
 	add(inScales, len(p.scales), func(i int) []byte { return p.scales[i].key })
 	add(inFlags, len(p.flags), func(i int) []byte { return flagKey(p.flags[i].Ref, step) })
-	add(inFlagAt, len(p.index), func(i int) []byte { return p.index[i] })
+	add(inFlagAt, len(p.index), func(i int) []byte { return p.index[i][:] })
 	return s
 }
 

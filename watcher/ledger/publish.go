@@ -165,8 +165,8 @@ func (w *writer) flags(p *plan) error {
 			return err
 		}
 	}
-	for _, key := range p.index {
-		if err := w.put(inFlagAt, key, func(dst []byte) []byte { return dst }); err != nil {
+	for i := range p.index {
+		if err := w.put(inFlagAt, p.index[i][:], func(dst []byte) []byte { return dst }); err != nil {
 			return err
 		}
 	}
