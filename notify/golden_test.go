@@ -172,6 +172,14 @@ func TestGoldenMessages(t *testing.T) {
 				note(t, text, kind, n)
 			}
 		}
+		for _, news := range goldenActs(series) {
+			for _, n := range teller.Updates(news) {
+				note(t, text, string(news.Deed), n)
+			}
+		}
+		for _, n := range teller.Notices(goldenReopened(series)) {
+			note(t, text, "open again", n)
+		}
 		for _, n := range teller.Daily(goldenDaily(series)) {
 			note(t, text, "daily", n)
 		}
@@ -182,6 +190,45 @@ func TestGoldenMessages(t *testing.T) {
 		note(t, text, "test", teller.Test(rules.Channel{Name: series}, made))
 		golden(t, what, text.String())
 	}
+}
+
+// goldenActs are what somebody whose name and words come from elsewhere as well did about flags.
+func goldenActs(series string) (out []rules.ActNews) {
+	by := rules.Person{UID: 1001, Name: series}
+	one := []rules.Flag{breachOf(series, 12).Flag}
+	var many []rules.Flag
+	for n := range 5 {
+		many = append(many, breachOf(series+strings.Repeat("x", n), uint64(12+n)).Flag)
+	}
+	for _, a := range []struct {
+		rules.Act
+		flags []rules.Flag
+	}{
+		{rules.Act{Deed: rules.Acknowledge, Note: series}, one},
+		{rules.Act{Deed: rules.Decide, Conclusion: rules.Genuine, Reason: rules.MarketMove, Note: series, Override: series}, one},
+		{rules.Act{Deed: rules.Decide, Conclusion: rules.Corrected, Value: 4100000000000, Reason: rules.DataError, Note: "resent"}, many},
+		{rules.Act{Deed: rules.Waive, Until: dated(2026, 3, 20), Note: series}, one},
+		{rules.Act{Deed: rules.SignOff}, many},
+		{rules.Act{Deed: rules.Accept, Note: series}, []rules.Flag{aboutFile(rules.KindRefused, series, "x").Flag}},
+	} {
+		a.By, a.At, a.Step = by, made, uint32(len(out)+1)
+		out = append(out, rules.ActNews{Act: a.Act, Flags: a.flags})
+	}
+	return out
+}
+
+// goldenReopened is a waiver that ran out, a restatement that takes back two flags of one value, and late files.
+func goldenReopened(series string) rules.News {
+	waived, breach, limit := breachOf("elm", 11).Flag, breachOf(series, 12).Flag, limitOf(series, 13).Flag
+	waived.Note = "waived until 2026-03-12, which is over; " + series
+	breach.Note, limit.Note = "restated to -0.41 %, for which it would not be raised", "restated to -0.41 %, for which it would not be raised"
+	late := aboutFile(rules.KindLate, "", series).Flag
+	news := newsOf()
+	news.Reopened = []rules.Flag{waived, breach, limit, late}
+	for i := range news.Reopened {
+		news.Reopened[i].Standing = rules.Reopened
+	}
+	return news
 }
 
 // note writes a notice to the golden text after holding it to its bounds.

@@ -25,6 +25,7 @@ type Teller struct {
 func (t *Teller) Notices(news rules.News) []rules.Notice {
 	var out []rules.Notice
 	for _, c := range t.Channels {
+		out = append(out, t.reopened(c, news)...)
 		events := t.events(c, news.Flags)
 		if len(events) > storm {
 			out = append(out, t.digest(c, news, events))

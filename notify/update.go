@@ -39,13 +39,8 @@ func (t *Teller) update(c rules.Channel, news rules.ActNews, flags []*rules.Flag
 		head = fmt.Sprintf("%s: %s, ref %d", strings.ToUpper(string(news.Deed.To())), subject(flags[0]), flags[0].Ref)
 	}
 	lines := []string{head}
-	for _, f := range flags[:min(len(flags), mostTold)] {
-		if len(flags) > 1 {
-			lines = append(lines, fmt.Sprintf("%s, ref %d", subject(f), f.Ref))
-		}
-	}
-	if more := len(flags) - mostTold; more > 0 {
-		lines = append(lines, fmt.Sprintf("and %s more", rules.Thousands(more)))
+	if len(flags) > 1 {
+		lines = append(lines, namedFlags(flags, mostTold)...)
 	}
 	if c.Short {
 		return lines

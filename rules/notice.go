@@ -26,7 +26,13 @@ const (
 	KindUpdate Kind = "update" // what somebody did about flags that were told of before
 	KindNotice Kind = "word"   // a word about the program itself: a channel that died, a pass that failed
 	KindWeekly Kind = "weekly"
+
+	KindReopened   Kind = "reopened"   // flags that were settled and ask again
+	KindEscalation Kind = "escalation" // flags that nobody has answered, or that still hold a release back
 )
+
+// Follows says that a notice of this kind goes with the one that told of its flags before.
+func (k Kind) Follows() bool { return k == KindUpdate || k == KindReopened || k == KindEscalation }
 
 // Notice is one message to one channel. It is written with the flags that it tells of, in the same step.
 type Notice struct {
@@ -47,7 +53,7 @@ type Notice struct {
 	Receipt  string    // what the channel gave back, such as a message's id
 	Error    string    // of the last attempt, without secrets
 	Repeat   bool      // an earlier attempt may have got through
-	Answers  uint64    `json:",omitempty"` // of an update: the notice to the same channel that told of its flags; given by the ledger
+	Answers  uint64    `json:",omitempty"` // of one that follows: the notice to the same channel that told of its flags; given by the ledger
 	Under    string    `json:"-"`          // the receipt of that one, when this one is handed out
 
 	For  string `json:",omitzero"` // the channel it was made for, where Channel stands in for that one
@@ -62,6 +68,8 @@ type News struct {
 	Rows   int // rows of the file
 	Series int // series that it has values of on its newest date
 	Flags  []FlagNews
+
+	Reopened []Flag // raised before, settled, and open again
 }
 
 // FlagNews is a flag that asks something, with what its message says beyond the flag itself.

@@ -48,7 +48,9 @@ func (p *Pass) lapseStep(v View) (*Batch, error) {
 	b.File = FileRow{Step: b.Step, Settings: settings, Outcome: Lapsed, Received: p.Now, First: rules.NoDate, Last: rules.NoDate}
 	for _, f := range over {
 		f.Standing, f.Note = rules.Reopened, join(f.Note, "waived until "+f.Last.Until.String()+", which is over")
-		b.Flags = append(b.Flags, flagRow(names, f))
+		row := flagRow(names, f)
+		row.Reopens = true
+		b.Flags = append(b.Flags, row)
 	}
 	return b, nil
 }

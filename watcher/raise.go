@@ -141,11 +141,12 @@ func (w *worker) amend(f *FlagRow, kind rules.Kind, out *outcome) {
 		w.failed = err
 	}
 	if ok {
-		if old.Last != nil && !old.Standing.Asks() {
+		reopens := old.Last != nil && !old.Standing.Asks()
+		if reopens {
 			old.Standing, old.Last, old.Decided = rules.Reopened, nil, nil
 		}
 		old.Note = "restated to " + rules.InPercent(f.Return.Float()) + ", for which it would not be raised"
-		out.flags = append(out.flags, &FlagRow{Flag: old, SeriesID: f.SeriesID})
+		out.flags = append(out.flags, &FlagRow{Flag: old, SeriesID: f.SeriesID, Reopens: reopens})
 	}
 }
 

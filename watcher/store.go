@@ -180,6 +180,9 @@ type FlagRow struct {
 	// Of a first load: an open one becomes history once a newer date comes in within the same pass. Not stored.
 	First bool
 
+	// Settled until this step, which opens it again. Not stored.
+	Reopens bool
+
 	// For the message only; not stored.
 	Market   *rules.MarketNews
 	Window   int         // observations behind the range

@@ -10,12 +10,16 @@ func (p *Pass) tell(b *Batch, series int) {
 	}
 	news := rules.News{At: p.Now, Feed: b.File.File.Feed, File: b.File.File.Name, Rows: b.File.Counts.Rows, Series: series}
 	for _, f := range b.Flags {
-		if (f.Step == b.Step || b.File.Outcome == Lapsed) && f.Standing.Asks() && !f.Kind.Slow() {
+		switch {
+		case !f.Standing.Asks() || f.Kind.Slow():
+		case f.Reopens:
+			news.Reopened = append(news.Reopened, f.Flag)
+		case f.Step == b.Step:
 			news.Flags = append(news.Flags, rules.FlagNews{Flag: f.Flag, Window: f.Window, WindowTo: f.WindowTo, Used: f.Used, Market: f.Market})
 		}
 	}
 	cover(news.Flags)
-	if len(news.Flags) > 0 {
+	if len(news.Flags)+len(news.Reopened) > 0 {
 		b.Notices = p.Tell(news)
 	}
 }

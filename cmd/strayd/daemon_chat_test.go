@@ -34,6 +34,7 @@ type chatService struct {
 // post is a message that the service took.
 type post struct {
 	Thread               string // the message that it answers
+	Broadcast            string // "true" where the channel is to see that answer, too
 	Channel, Text, Stamp string
 	Blocks               string
 	Metadata             json.RawMessage
@@ -153,7 +154,7 @@ func (s *chatService) standard(w http.ResponseWriter, r *http.Request) {
 func (s *chatService) take(r *http.Request) (stamp string) {
 	s.mu.Lock()
 	defer s.mu.Unlock()
-	p := post{Thread: r.Form.Get("thread_ts"), Channel: r.Form.Get("channel"), Text: r.Form.Get("text"), Blocks: r.Form.Get("blocks"),
+	p := post{Thread: r.Form.Get("thread_ts"), Broadcast: r.Form.Get("reply_broadcast"), Channel: r.Form.Get("channel"), Text: r.Form.Get("text"), Blocks: r.Form.Get("blocks"),
 		Stamp: fmt.Sprintf("%d.%06d", time.Now().Unix(), len(s.posts))}
 	var meta struct {
 		EventPayload struct {

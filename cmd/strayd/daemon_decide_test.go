@@ -224,6 +224,24 @@ func TestDaemonTellsOfActs(t *testing.T) {
 		strings.Contains(p.Text+p.Blocks, "<!channel>") {
 		t.Errorf("a decision reaches the desk as %q", p)
 	}
+
+	// A restatement opens again what was decided: the thread says so, and the channel sees it.
+	f.arrive("d.csv", csvDays(series, 31, 31, map[string]float64{"fund-02": 0.0005}))
+	f.allSent()
+	again := 0
+	for _, p := range s.in(channelID("desk"))[5:] {
+		if !strings.HasPrefix(p.Text, "OPEN AGAIN: ") {
+			continue
+		}
+		again++
+		if p.Thread != told[2].Stamp || p.Broadcast != "true" || !strings.HasPrefix(p.Text, "OPEN AGAIN: BREACH fund-02 returned +25.00 %") ||
+			!strings.Contains(p.Text, "Restated to ") || !strings.Contains(p.Text, "strayd decide 3 ") {
+			t.Errorf("the desk is told %q", p)
+		}
+	}
+	if again != 1 || posts[0].Broadcast != "" {
+		t.Errorf("told of %d reopened flags", again)
+	}
 	d.stop()
 	f.must("ledger", "verify")
 }

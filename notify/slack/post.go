@@ -36,6 +36,9 @@ func (c *Channel) PostPlain(ctx context.Context, n rules.Notice) (string, error)
 func (c *Channel) post(ctx context.Context, n rules.Notice, more ...slack.MsgOption) (string, error) {
 	if of, stamp, ok := strings.Cut(n.Under, "/"); ok && of == c.id {
 		more = append(more, slack.MsgOptionTS(stamp))
+		if n.Kind != rules.KindUpdate { // it asks something: the channel is to see it, too
+			more = append(more, slack.MsgOptionBroadcast())
+		}
 	}
 	ctx, connected := traced(ctx)
 	channel, stamp, err := c.s.api().PostMessageContext(ctx, c.id, append(more,

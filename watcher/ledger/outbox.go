@@ -52,12 +52,12 @@ func (w *writer) enqueue(notices []rules.Notice) error {
 		if w.buckets[inOutboxKey].Get(digest) != nil {
 			continue
 		}
-		if n.Kind == rules.KindUpdate {
+		if n.Kind.Follows() {
 			told, err := w.told(&n)
 			if err != nil {
 				return err
 			}
-			if n.Answers = told; told == 0 {
+			if n.Answers = told; told == 0 && n.Kind == rules.KindUpdate {
 				continue
 			}
 		}
@@ -94,7 +94,7 @@ func (w *writer) told(update *rules.Notice) (uint64, error) {
 		if !ok {
 			return 0, malformed(inOutbox, k, "it cannot be read")
 		}
-		if n.Channel == update.Channel && n.Kind != rules.KindUpdate && n.State != rules.NoticeWithdrawn &&
+		if n.Channel == update.Channel && !n.Kind.Follows() && n.State != rules.NoticeWithdrawn &&
 			slices.ContainsFunc(n.Refs, func(r uint64) bool { return slices.Contains(update.Refs, r) }) {
 			return n.Number, nil
 		}
