@@ -13,20 +13,22 @@ import (
 
 // Config is a checked configuration. Paths are absolute.
 type Config struct {
-	File     string // as given to Load or Parse
-	Ledger   string
-	Timezone string // name of Location
-	Location *time.Location
-	Calendar Calendar
-	Feeds    []rules.Feed
-	Series   string // path of the register; "" for none
-	Events   string // path of the events; "" for none
-	Groups   []rules.Group
-	Ranges   []rules.Range
-	Doubtful float64 // share of ordinary observations, a fraction
-	Channels []rules.Channel
-	Weekly   *Weekly // nil when there is none
-	Later    []Note  // what is set now and works in a later version, in the order of the file
+	File          string // as given to Load or Parse
+	Ledger        string
+	Timezone      string // name of Location
+	Location      *time.Location
+	Calendar      Calendar
+	Feeds         []rules.Feed
+	Series        string // path of the register; "" for none
+	Events        string // path of the events; "" for none
+	Groups        []rules.Group
+	Ranges        []rules.Range
+	Doubtful      float64 // share of ordinary observations, a fraction
+	Channels      []rules.Channel
+	Weekly        *Weekly // nil when there is none
+	RootForbidden bool    // root may enter nothing into the record
+
+	Later []Note // what is set now and works in a later version, in the order of the file
 }
 
 // Calendar says which days are business days, in parts joined by +: a week, a nation's, or those of a file.

@@ -173,6 +173,11 @@ func (d *decoder) routes(c *Config) {
 	for i := range c.Channels {
 		d.channel(fmt.Sprintf("channels[%d]", i), &c.Channels[i], c.Channels)
 	}
+	for i, g := range c.Groups {
+		if d.sound("channels") {
+			d.known(fmt.Sprintf("groups[%d].escalate", i), "channel", g.Escalate, channels)
+		}
+	}
 	if c.Weekly != nil && d.sound("channels") {
 		d.known("weekly.channels", "channel", c.Weekly.Channels, channels)
 	}

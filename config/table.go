@@ -50,6 +50,9 @@ var table = object{what: "keys: ledger, feeds and ranges at least", fields: []fi
 		doc: "Share of ordinary observations that may be flagged doubtful, stale or repeat, together. 0% for none: then series without " +
 			"group and reference go by pending alone.",
 		at: in(func(c *Config) any { return &c.Doubtful })},
+	{key: "root", initial: "allowed", shape: words(word[bool]{"allowed", false}, word[bool]{"forbidden", true}),
+		doc: "Whether root may enter anything into the record. What root does is recorded as such; it may be anybody who has that right.",
+		at:  in(func(c *Config) any { return &c.RootForbidden })},
 	{key: "channels", initial: "[{name: console, console: {}}]", doc: "Where notices go; the console when left out.",
 		shape: list[rules.Channel]{item: channelTable, least: 1, what: "a list of at least one channel"},
 		at:    in(func(c *Config) any { return &c.Channels })},

@@ -2,6 +2,7 @@ package config
 
 import (
 	"encoding/json"
+	"slices"
 	"strings"
 	"testing"
 	"time"
@@ -38,6 +39,9 @@ channels[].slack.channel channels[].webhook channels[].webhook.url channels[].ma
 channels[].mail.server channels[].mail.tls channels[].console channels[].for channels[].kinds channels[].hours channels[].form
 channels[].fallback channels[].fallback_after weekly weekly.schedule weekly.channels`
 
+// furtherKeys came later, each with the key that it stands after.
+var furtherKeys = map[string]string{"root": "doubtful", "groups[].escalate": "groups[].release.timezone"}
+
 func TestTableHasTheKeysOfTheDesign(t *testing.T) {
 	var got []string
 	each(table, "", func(path string, f field) {
@@ -49,7 +53,11 @@ func TestTableHasTheKeysOfTheDesign(t *testing.T) {
 			t.Errorf("%s does not say what it expects", path)
 		}
 	})
-	if want := strings.Fields(designKeys); strings.Join(got, " ") != strings.Join(want, " ") {
+	want := strings.Fields(designKeys)
+	for key, after := range furtherKeys {
+		want = slices.Insert(want, slices.Index(want, after)+1, key)
+	}
+	if strings.Join(got, " ") != strings.Join(want, " ") {
 		t.Errorf("keys\n got %s\nwant %s", got, want)
 	}
 }

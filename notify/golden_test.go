@@ -212,6 +212,9 @@ func goldenActs(series string) (out []rules.ActNews) {
 		{rules.Act{Deed: rules.Accept, Note: series}, []rules.Flag{aboutFile(rules.KindRefused, series, "x").Flag}},
 	} {
 		a.By, a.At, a.Step = by, made, uint32(len(out)+1)
+		if a.Deed != rules.Waive {
+			a.Until = rules.NoDate
+		}
 		out = append(out, rules.ActNews{Act: a.Act, Flags: a.flags})
 	}
 	return out

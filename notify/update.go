@@ -34,9 +34,9 @@ func (t *Teller) Updates(news rules.ActNews) (out []rules.Notice) {
 
 // update says what was done, about which flags, by whom and why.
 func (t *Teller) update(c rules.Channel, news rules.ActNews, flags []*rules.FlagNews) []string {
-	head := fmt.Sprintf("%s: %s", strings.ToUpper(string(news.Deed.To())), rules.Counted(len(flags), "flag"))
+	head := fmt.Sprintf("%s: %s", strings.ToUpper(string(news.To())), rules.Counted(len(flags), "flag"))
 	if len(flags) == 1 {
-		head = fmt.Sprintf("%s: %s, ref %d", strings.ToUpper(string(news.Deed.To())), subject(flags[0]), flags[0].Ref)
+		head = fmt.Sprintf("%s: %s, ref %d", strings.ToUpper(string(news.To())), subject(flags[0]), flags[0].Ref)
 	}
 	lines := []string{head}
 	if len(flags) > 1 {
@@ -49,7 +49,7 @@ func (t *Teller) update(c rules.Channel, news rules.ActNews, flags []*rules.Flag
 	if news.Conclusion != "" {
 		what = append(what, news.Words())
 	}
-	if news.Deed == rules.Waive {
+	if news.To() == rules.Waived {
 		what = append(what, "until "+news.Until.Day())
 	}
 	if news.Reason != "" {

@@ -93,8 +93,8 @@ type Act struct {
 	Reason     Reason     // "" where none was given
 	Note       string
 	Override   string // why a market move is the reason although the residual does not say so
-	Until      Date   // of waive: the last day on which the flag asks nothing of anyone; else NoDate
-	Second     bool   // the group asks for four eyes: another person than who decides must sign off
+	Until      Date   // of waive, and of the sign-off of a waiver: the last day on which the flag asks nothing of anyone; else NoDate
+	Second     bool   // the group asks for four eyes: another person than who decides or waives must sign off
 }
 
 // Same says that two acts are one and the same.

@@ -77,6 +77,7 @@ type Group struct {
 	Owner     string
 	Reply     time.Duration
 	Release   *Due
+	Escalate  []string `json:",omitempty"` // channels, those that take a flag when empty
 	FourEyes  bool
 
 	Materiality float64 // size of an error, as a fraction of the NAV, from which the house's rules call it material; 0 for none

@@ -16,9 +16,14 @@ func (f *Flag) StandingOn(day Date) Standing {
 	return f.Standing
 }
 
-// AwaitsSecond says that a second person must sign off what was decided.
+// AwaitsSecond says that a second person must sign off what was decided, or the waiver.
 func (f *Flag) AwaitsSecond() bool {
-	return f.Standing == Decided && f.Decided != nil && f.Decided.Second
+	return f.Standing == Decided && f.Decided != nil && f.Decided.Second || f.waiverAwaits()
+}
+
+// waiverAwaits says that a waiver does not hold before a second person signs it off.
+func (f *Flag) waiverAwaits() bool {
+	return f.Standing == Waived && f.Last != nil && f.Last.Deed == Waive && f.Last.Second
 }
 
 // AsksOn says whether the flag asks something of a person on a day.
@@ -44,6 +49,14 @@ func (d Deed) from() []Standing {
 	return Standings
 }
 
+// To is the standing that an act leads to: a waiver that is signed off stays one.
+func (a *Act) To() Standing {
+	if a.Deed == SignOff && a.Until != NoDate {
+		return Waived
+	}
+	return a.Deed.To()
+}
+
 // To is the standing that a deed leads to.
 func (d Deed) To() Standing {
 	switch d {
@@ -61,6 +74,10 @@ func (d Deed) To() Standing {
 func (f Flag) After(a *Act, today Date) (Flag, error) {
 	standing := f.StandingOn(today)
 	switch {
+	case a.Deed == SignOff && f.waiverAwaits() && standing == Waived:
+		if f.Last.By.UID == a.By.UID {
+			return f, fmt.Errorf("flag %d was waived by %s: a second person must sign it off", f.Ref, f.Last.By)
+		}
 	case !slices.Contains(a.Deed.from(), standing):
 		return f, fmt.Errorf("flag %d is %s%s: %s", f.Ref, standing, f.lastWords(), a.Deed.needs())
 	case a.Conclusion == Corrected && !slices.Contains(Concluded, f.Kind):
@@ -72,7 +89,7 @@ func (f Flag) After(a *Act, today Date) (Flag, error) {
 	case a.Deed == SignOff && a.Second && f.Decided != nil && f.Decided.By.UID == a.By.UID:
 		return f, fmt.Errorf("flag %d was decided by %s: a second person must sign it off", f.Ref, f.Decided.By)
 	}
-	f.Standing, f.Last = a.Deed.To(), a
+	f.Standing, f.Last = a.To(), a
 	if a.Deed == Decide || a.Deed == Accept {
 		f.Decided = a
 	}

@@ -206,7 +206,7 @@ func (f *WeekFacts) waivers() (w Waivers) {
 	soon := f.Calendar.Add(today, waiverSoon)
 	for i := range f.Flags {
 		g := &f.Flags[i]
-		if g.Last == nil || g.Last.Deed != Waive {
+		if g.Last == nil || g.Last.Until == NoDate {
 			continue
 		}
 		switch until := g.Last.Until; {

@@ -71,6 +71,9 @@ func (d *deciding) step(refs []uint64) (*Batch, error) {
 		return nil, err
 	}
 	b.File = FileRow{Step: b.Step, Settings: settings, Outcome: Acted, Received: d.p.Now, First: rules.NoDate, Last: rules.NoDate}
+	if err := d.ofWaivers(refs); err != nil {
+		return nil, err
+	}
 	for _, ref := range refs {
 		if err := d.one(ref); err != nil {
 			return nil, err
@@ -87,6 +90,29 @@ func (d *deciding) step(refs []uint64) (*Batch, error) {
 	}
 	b.Notices = d.p.tellActs(&d.answer)
 	return b, nil
+}
+
+// ofWaivers gives the sign-off of waivers their last day. One act has one: waivers of several, and decisions, are signed off apart.
+func (d *deciding) ofWaivers(refs []uint64) error {
+	if d.act.Deed != rules.SignOff {
+		return nil
+	}
+	for n, ref := range refs {
+		f, ok, err := d.view.Flag(ref)
+		if err != nil {
+			return err
+		}
+		until := rules.NoDate
+		if ok && f.StandingOn(d.p.today()) == rules.Waived && f.AwaitsSecond() {
+			until = f.Last.Until
+		}
+		if n > 0 && until != d.act.Until {
+			return fmt.Errorf("flags %d and %d are waived until different days, or one is decided: sign them off apart", refs[0], ref)
+		}
+		d.act.Until = until
+	}
+	d.answer.Entry.Act = d.act
+	return nil
 }
 
 // tellActs makes the updates of an act.

@@ -21,7 +21,7 @@ func (a *app) sayActed(answer *watcher.Answer) error {
 	for _, n := range answer.Notes {
 		fmt.Fprintln(a.out, upper(n)+".")
 	}
-	if len(e.Second) > 0 && e.Deed == rules.Decide {
+	if len(e.Second) > 0 && e.Deed != rules.SignOff && e.Deed != rules.Acknowledge {
 		fmt.Fprintf(a.out, "A second person must agree: strayd sign-off %s\n", refWords(e.Second))
 	}
 	return a.sayDiffers(e)
@@ -66,7 +66,10 @@ func actWords(act *rules.Act) string {
 	switch act.Deed {
 	case rules.Decide:
 		parts = append(parts, act.Words())
-	case rules.Waive:
+	case rules.Waive, rules.SignOff:
+		if act.Until == rules.NoDate {
+			break
+		}
 		parts = append(parts, "until "+act.Until.Day())
 	case rules.Accept:
 		parts = append(parts, "released")

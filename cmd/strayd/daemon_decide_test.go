@@ -115,6 +115,43 @@ func TestFourEyes(t *testing.T) {
 	b.expect(alice, "decide 4 error --reason data-error --note x --now 2026-01-01", exitUsage, "--now")
 }
 
+// So does a waiver: until another person signs it off, the flag still asks and holds the release back; then up to its end it does not.
+func TestFourEyesOfWaivers(t *testing.T) {
+	b := flaggedFolder(t, fourEyes).beside()
+	until := time.Now().AddDate(0, 0, 9).Format(time.DateOnly)
+	b.expect(alice, "waive 1 2 --until "+until, exitDone, "A second person must agree: strayd sign-off 1\n")
+	b.expect(alice, "flags --format csv", exitDone, ",waived,")
+	b.expect(alice, "flags --blocking pair", exitFailed, "fund-00")
+	b.expect(alice, "sign-off 1", exitFailed, "flag 1 was waived by alice (uid 1001): a second person must sign it off")
+	b.expect(alias, "sign-off 1", exitFailed, "a second person must sign it off")
+	b.expect(bob, "sign-off 2", exitFailed, "flag 2 is waived by alice (uid 1001): only what is decided")
+	b.expect(alice, "decide 3 error --reason data-error --note x", exitDone, "decided")
+	b.expect(bob, "sign-off 1 3", exitFailed, "sign them off apart")
+	b.expect(bob, "sign-off 1", exitDone, "waived (until ")
+	b.expect(bob, "flags --blocking pair", exitDone, "No flag fits")
+	b.expect(bob, "sign-off 1", exitFailed, "flag 1 is waived by bob")
+	b.expect(bob, "explain 1", exitDone, "by bob (uid 1002)")
+	b.expect(alice, "ledger verify", exitDone, "is whole")
+	b.expect(bob, "waive 1", exitDone, "A second person must agree: strayd sign-off 1\n")
+	b.expect(bob, "flags --blocking pair", exitFailed, "fund-00")
+	b.expect(alice, "sign-off 1", exitDone, "waived (until ")
+	b.expect(alice, "decide 1 genuine --reason unexplained --note x", exitDone, "A second person must agree")
+	b.expect(bob, "sign-off 1", exitDone, "signed off")
+	b.expect(alice, "ledger verify", exitDone, "is whole")
+}
+
+// Where root is forbidden, nothing that root says enters the record; where it is not, it is marked.
+func TestRootForbidden(t *testing.T) {
+	b := flaggedFolder(t, fourEyes+"root: forbidden\n").beside()
+	root := rules.Person{Name: "root"}
+	for _, line := range []string{"acknowledge 1", "decide 2 error --reason data-error --note x", "waive 2", "sign-off 2", "accept a.csv --note x"} {
+		b.expect(root, line, exitFailed, "root may enter nothing into the record (root: forbidden)")
+	}
+	b.expect(root, "flags --format csv", exitDone, "1,")
+	b.expect(alice, "acknowledge 1", exitDone, "acknowledged, by alice")
+	b.expect(alice, "ledger verify", exitDone, "2 entries in the record")
+}
+
 // A decision waits for the pass under way; one whose caller hangs up meanwhile is not made, and no other is lost.
 func TestDecisionsWaitTheirTurn(t *testing.T) {
 	b := flaggedFolder(t, deskBook).beside()

@@ -82,7 +82,7 @@ func (a *app) waiveCommand() *cobra.Command {
 		Use:   "waive REF... --until DATE",
 		Short: "Let a flag ask nothing of anyone up to a date",
 		Long: `Lets flags ask nothing of anyone up to and including a date; then they are open again. Their values stay undecided.
-Without --until, five business days from today.`,
+Without --until, five business days from today. In a group with four_eyes, they ask until a second person signs the waiver off.`,
 		Example: "  strayd waive 12 --until 2026-03-20 --note \"provider investigates\"",
 	})
 	cmd.Flags().StringVar(&d.until, "until", "", "the last `DATE` on which they ask nothing")
@@ -93,7 +93,7 @@ func (a *app) signOffCommand() *cobra.Command {
 	cmd, _ := a.settling(rules.SignOff, &cobra.Command{
 		Use:     "sign-off REF...",
 		Short:   "Agree with what was decided",
-		Long:    "Closes flags that are decided. In a group with four_eyes, a second person must do it.",
+		Long:    "Closes flags that are decided, and lets waivers hold. In a group with four_eyes, a second person must do it.",
 		Example: "  strayd sign-off 12 13",
 	})
 	return cmd
@@ -235,6 +235,9 @@ func aloud(c *config.Config, tell func(rules.ActNews) []rules.Notice) func(rules
 // entering prepares what enters something into the record: in the daemon's turn, or, on its own, by the ledger's owner.
 func (a *app) entering(do func(*config.Config, *watcher.Pass) error) error {
 	return a.withLedger(ledger.ReadWrite, func(c *config.Config, l *ledger.Ledger) error {
+		if c.RootForbidden && a.person().Root() {
+			return errors.New("root may enter nothing into the record (root: forbidden): act as the user that you are")
+		}
 		p, err := a.newPass(c, l)
 		if err != nil {
 			return err

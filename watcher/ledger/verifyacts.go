@@ -55,8 +55,8 @@ func (c *verifier) follows(f *rules.Flag, step uint32) bool {
 	case f.Last == nil:
 		return f.Decided == nil && (f.Standing == rules.Open || f.Standing == rules.Reopened || f.Standing == rules.OfHistory)
 	case f.Last.Step < step:
-		return f.Standing == f.Last.Deed.To() || f.Standing == rules.Reopened
+		return f.Standing == f.Last.To() || f.Standing == rules.Reopened
 	}
 	c.met++
-	return f.Standing == f.Last.Deed.To() && (f.Standing != rules.Decided || f.Decided != nil && f.Decided.Step == step)
+	return f.Standing == f.Last.To() && (f.Standing != rules.Decided || f.Decided != nil && f.Decided.Step == step)
 }

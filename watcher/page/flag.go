@@ -179,6 +179,7 @@ func (d *deedPart) can(f *rules.Flag, day rules.Date) {
 	fits(rules.Acknowledge, rules.Open, rules.Reopened)
 	fits(rules.Waive, rules.Open, rules.Reopened, rules.Acknowledged, rules.Waived)
 	fits(rules.SignOff, rules.Decided)
+	d.Can[string(rules.SignOff)] = d.Can[string(rules.SignOff)] || standing == rules.Waived && f.AwaitsSecond()
 	if f.Kind == rules.KindRefused {
 		fits(rules.Accept, rules.Open, rules.Reopened, rules.Acknowledged, rules.Waived, rules.Decided, rules.OfHistory)
 	}
