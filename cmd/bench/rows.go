@@ -25,6 +25,7 @@ func rowList() []row {
 		{"gzip", loads("gzip", 2000, []int{1}, byDate, long, "")},
 		{"day", (*bench).days},
 		{"daemon", (*bench).daemons},
+		{"desk", (*bench).pages},
 		{"commands", (*bench).commands},
 		{"backrun", (*bench).backRuns},
 		{"rerun", (*bench).rerun},

@@ -85,13 +85,16 @@ func drawn(v watcher.View, of watcher.ChartOf) (*page.Picture, error) {
 	return &page.Picture{Wide: svg("chart", 760, 280), Narrow: svg("small-chart", 370, 260), Text: chart.Text(c)}, nil
 }
 
-// evidenceOf is what explain says of a flag; nil where there is no such flag.
-func evidenceOf(v watcher.View, ref uint64) (*page.Evidence, error) {
+// evidenceOf is what explain says of a flag; nil where there is no such flag. Without weighing, the flag's own figures stand for it.
+func evidenceOf(v watcher.View, ref uint64, weigh bool) (*page.Evidence, error) {
 	r, err := watcher.NewReader(v)
 	if err != nil {
 		return nil, err
 	}
 	e, err := findExplained(r, []string{strconv.FormatUint(ref, 10)}, "")
+	if err == nil && weigh {
+		err = e.weigh(r)
+	}
 	var unknown *watcher.UnknownRef
 	switch {
 	case errors.As(err, &unknown):
@@ -110,5 +113,18 @@ func evidenceOf(v watcher.View, ref uint64) (*page.Evidence, error) {
 		return out, explainTurns(line, r, e.flag)
 	}
 	out.Title = e.headline()
+	if !weigh {
+		flagWeighing(line, e.flag)
+	}
 	return out, e.evidence(line, r)
+}
+
+// flagWeighing says what the weighing said when the flag was raised.
+func flagWeighing(line func(name, format string, args ...any), f *rules.Flag) {
+	if f.Reference != "" {
+		line("reference", "%s returned %s; %s is left unexplained", printable(f.Reference), percentNum(f.ReferenceReturn), percentNum(f.Residual))
+	}
+	if f.LooksLike != "" {
+		line("looks like", "%s (%s), %.1f %% if the day is not ordinary, a hypothesis", f.LooksLike.Words(), f.LooksLike, 100*f.Share.V)
+	}
 }

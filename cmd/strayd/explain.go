@@ -50,6 +50,9 @@ func (a *app) explain(c *config.Config, v watcher.View, args []string, rangeName
 		return err
 	}
 	e, err := findExplained(r, args, rangeName)
+	if err == nil {
+		err = e.weigh(r)
+	}
 	if err != nil {
 		return notFound(err)
 	}
@@ -118,8 +121,15 @@ func explainObservation(r *watcher.Reader, series string, d rules.Date, asOf uin
 	if at < 0 {
 		return nil, fmt.Errorf("no range %q judged series %q on %s", rangeName, series, d)
 	}
-	weighed, err := r.Weigh(series, d, rows[at].Step)
-	return &explained{rows[at], versions, f, weighed}, err
+	return &explained{row: rows[at], versions: versions, flag: f}, nil
+}
+
+// weigh makes the weighing of the value again. It reads the past of every series that is weighed together with it.
+func (e *explained) weigh(r *watcher.Reader) (err error) {
+	if e.row.Series != "" {
+		e.weighed, err = r.Weigh(e.row.Series, e.row.Date, e.row.Step)
+	}
+	return err
 }
 
 // heaviest is the row to explain when none is asked for: the worst verdict, and of equal ones the smallest tail.

@@ -28,8 +28,7 @@ const actTime = 5 * time.Minute
 
 // act carries out what a form says, by the command line that says the same.
 func (p *Page) act(v *visit) error {
-	_ = http.NewResponseController(v.w).SetWriteDeadline(time.Now().Add(actTime)) // where it cannot be set, the server's own holds
-	_ = http.NewResponseController(v.w).SetReadDeadline(time.Now().Add(actTime))
+	v.mayTake(actTime)
 	if err := v.ownForm(); err != nil {
 		return err
 	}

@@ -61,10 +61,9 @@ func (p *Page) feedFacts(book *Book, now time.Time) (*feedFacts, error) {
 		}); err != nil {
 			return err
 		}
-		return view.Flags(true, func(f rules.Flag) bool {
-			if f.Kind == rules.KindLate {
-				out.week.Flags = append(out.week.Flags, f)
-			}
+		late := func(h watcher.FlagHead) bool { return h.Kind == rules.KindLate }
+		return view.FlagsOf(true, late, func(f rules.Flag) bool {
+			out.week.Flags = append(out.week.Flags, f)
 			return true
 		})
 	})

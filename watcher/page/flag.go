@@ -23,6 +23,7 @@ type flagPage struct {
 	Blocks  string
 	Deed    *deedPart
 	Status  rules.Standing
+	Unsaid  bool // its causes are not weighed again here
 }
 
 // deedPart is the form by which something is done about flags.
@@ -57,9 +58,10 @@ func (p *Page) showFlag(v *visit) error {
 
 // flagPage shows one flag, with what was typed into its form before.
 func (p *Page) flagPage(v *visit, status int, ref uint64, old typed, said *Outcome) error {
+	v.mayTake(actTime)
 	var body *flagPage
 	err := p.reading(func(view watcher.View) (err error) {
-		body, err = p.readFlag(view, ref, v.desk.who, old)
+		body, err = p.readFlag(view, ref, v.r.URL.Query().Get("weigh") != "", v.desk.who, old)
 		return err
 	})
 	if err != nil {
@@ -68,17 +70,25 @@ func (p *Page) flagPage(v *visit, status int, ref uint64, old typed, said *Outco
 	return v.show(status, "flag", fmt.Sprintf("Flag %d", ref), "today", body, said)
 }
 
-func (p *Page) readFlag(view watcher.View, ref uint64, who rules.Person, old typed) (*flagPage, error) {
+// mostWeighed is up to how many series a flag's causes are weighed again without being asked for: beyond, that takes seconds.
+const mostWeighed = 250
+
+func (p *Page) readFlag(view watcher.View, ref uint64, weigh bool, who rules.Person, old typed) (*flagPage, error) {
 	book := p.src.Book()
 	day := rules.DateFrom(p.src.Now().In(book.Zone))
-	e, err := p.src.Explain(view, ref)
+	names, err := view.Names()
+	if err != nil {
+		return nil, err
+	}
+	weigh = weigh || names.Len() <= mostWeighed
+	e, err := p.src.Explain(view, ref, weigh)
 	if err != nil {
 		return nil, err
 	}
 	if e == nil {
 		return nil, notThere("no flag has the ref %d", ref)
 	}
-	out := &flagPage{Flag: e.Flag, Title: e.Title, Facts: e.Facts, Status: e.Flag.StandingOn(day), Blocks: p.blocks(&e.Flag, &book)}
+	out := &flagPage{Unsaid: !weigh && e.Flag.Series != "", Flag: e.Flag, Title: e.Title, Facts: e.Facts, Status: e.Flag.StandingOn(day), Blocks: p.blocks(&e.Flag, &book)}
 	if e.Flag.Series != "" {
 		if out.Beside, err = beside(view, &e.Flag); err != nil {
 			return nil, err

@@ -13,10 +13,11 @@ import (
 
 // Sources are what the page needs of the program around it. All of them may be called from many goroutines.
 type Sources struct {
-	Now     func() time.Time
-	View    func() (watcher.View, error)
-	Book    func() Book
-	Explain func(v watcher.View, ref uint64) (*Evidence, error) // nil where there is no such flag
+	Now  func() time.Time
+	View func() (watcher.View, error)
+	Book func() Book
+	// Explain is what stands behind a flag, nil where there is none. To weigh its causes again reads the past of all series with a group.
+	Explain func(v watcher.View, ref uint64, weigh bool) (*Evidence, error)
 	// Do carries out a command line for a person and gives all that it said.
 	Do func(ctx context.Context, who rules.Person, args []string) (ok bool, text string)
 	// Expect calls each with what would be in range next for a series.

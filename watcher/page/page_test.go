@@ -21,7 +21,7 @@ import (
 // stand is a page over a ledger with one open flag, at a time that the test moves.
 type stand struct {
 	*Page
-	t    *testing.T
+	t    testing.TB
 	now  time.Time
 	log  strings.Builder
 	done [][]string // command lines, behind who gave them
@@ -32,7 +32,7 @@ var ada = rules.Person{UID: 1001, Name: "ada"}
 
 const hostile = "</td><script>alert(1)</script>\u202e&\""
 
-func newStand(t *testing.T) *stand {
+func newStand(t testing.TB) *stand {
 	t.Helper()
 	s := &stand{t: t, now: time.Date(2026, 3, 12, 20, 0, 0, 0, time.UTC)}
 	flag := rules.Flag{Ref: 7, Date: 20524, RaisedAt: s.now, Series: hostile, Group: "bond", Kind: rules.KindBreach, Return: rules.One / 10, Low: rules.Some(-0.01),
@@ -44,7 +44,7 @@ func newStand(t *testing.T) *stand {
 		Book: func() Book {
 			return Book{Zone: time.UTC, Weeks: fstest.MapFS{"2026-W11.html": {Data: []byte("a log")}, "secret.txt": {}}}
 		},
-		Explain: func(_ watcher.View, ref uint64) (*Evidence, error) { return nil, nil },
+		Explain: func(watcher.View, uint64, bool) (*Evidence, error) { return nil, nil },
 		Do: func(_ context.Context, who rules.Person, args []string) (bool, string) {
 			s.done = append(s.done, append([]string{who.String()}, args...))
 			return !s.fail, "what came of it\n"

@@ -79,15 +79,23 @@ type groupToday struct {
 	release time.Time
 }
 
-// line is one series and date with its flags.
+// line is one series and date with its flags, in the words that the page shows: a page may have thousands.
 type line struct {
-	rules.Flag
-	Refs   []uint64
-	Kinds  []rules.Kind
-	Status rules.Standing
-	Second bool
-	Days   int // business days that it has waited
-	Owner  string
+	Ref      uint64 // the first
+	Refs     string // all of them, with commas between
+	Series   string // "" where it is about none
+	What     string
+	Kinds    string
+	Date     string
+	Return   string
+	Marks    *marks
+	Expected string
+	Rare     string
+	Looks    string
+	Note     string
+	Standing string
+
+	flags []*rules.Flag
 }
 
 // mostLines is how many lines of one group the first page shows; the rest follows on request.
@@ -128,6 +136,9 @@ func (p *Page) readToday(view watcher.View, all string) (*todayPage, error) {
 		if g := &out.Groups[n]; len(g.Lines) > mostLines && all != g.Name {
 			g.More = len(g.Lines) - mostLines
 			g.Lines = g.Lines[:mostLines]
+		}
+		for i := range out.Groups[n].Lines {
+			out.Groups[n].Lines[i].say(&book, day)
 		}
 	}
 	return out, nil
@@ -246,7 +257,7 @@ func groupsOf(flags []rules.Flag, book *Book, now time.Time, day rules.Date) []g
 			at[f.Group] = n
 			out = append(out, newGroup(f.Group, book))
 		}
-		out[n].take(f, book, day)
+		out[n].take(f)
 	}
 	for n := range out {
 		out[n].finish(book, now)
@@ -287,28 +298,62 @@ func groupIn(book *Book, name string) *rules.Group {
 	return nil
 }
 
-// take puts a flag into its line: flags of one series and date share one.
-func (g *groupToday) take(f *rules.Flag, book *Book, day rules.Date) {
-	for n := len(g.Lines) - 1; n >= 0 && f.Series != ""; n-- {
-		if l := &g.Lines[n]; l.Series == f.Series && l.Date == f.Date && l.Flag.Standing == f.Standing {
-			l.Refs, l.Kinds = append(l.Refs, f.Ref), append(l.Kinds, f.Kind)
+// take puts a flag into its line: flags of one series and date share one. They lie beside each other.
+func (g *groupToday) take(f *rules.Flag) {
+	for n := len(g.Lines) - 1; n >= max(0, len(g.Lines)-8) && f.Series != ""; n-- {
+		if first := g.Lines[n].flags[0]; first.Series == f.Series && first.Date == f.Date && first.Standing == f.Standing {
+			g.Lines[n].flags = append(g.Lines[n].flags, f)
 			return
-		} else if n < len(g.Lines)-8 {
-			break // flags of one value lie beside each other
 		}
 	}
-	l := line{Flag: *f, Refs: []uint64{f.Ref}, Kinds: []rules.Kind{f.Kind}, Status: f.StandingOn(day), Second: f.AwaitsSecond()}
-	l.Days = book.Business.Between(rules.DateFrom(f.RaisedAt.In(book.Zone)), day)
-	if book.Owner != nil && f.Series != "" {
-		l.Owner = book.Owner(f.Series)
+	g.Lines = append(g.Lines, line{flags: []*rules.Flag{f}})
+}
+
+// say puts a line into words.
+func (l *line) say(book *Book, day rules.Date) {
+	f := l.flags[0]
+	var refs []uint64
+	var kinds []string
+	for _, g := range l.flags {
+		refs, kinds = append(refs, g.Ref), append(kinds, string(g.Kind))
 	}
-	g.Lines = append(g.Lines, l)
+	l.Ref, l.Refs, l.Kinds = f.Ref, refWords(refs), strings.Join(kinds, ", ")
+	l.Series, l.What, l.Note = f.Series, Safe(whatOf(f)), Safe(f.Note)
+	l.Date, l.Return, l.Marks, l.Looks = dateWords(f.Date), unitWords(f.Return), newMarks(*f), looksWords(*f)
+	l.Expected = rules.Between(f.Low, f.High)
+	if f.Tail.OK {
+		l.Rare = onceWords(f.Tail)
+	}
+	l.Standing = string(f.StandingOn(day))
+	if f.AwaitsSecond() {
+		l.Standing += ", waits for a second person"
+	}
+	if days := book.Business.Between(rules.DateFrom(f.RaisedAt.In(book.Zone)), day); days > 0 {
+		l.Standing += " " + rules.Counted(days, "day")
+	}
+	if book.Owner != nil && f.Series != "" && book.Owner(f.Series) != "" {
+		l.Standing += " · " + Safe(book.Owner(f.Series))
+	}
+}
+
+// whatOf is what a flag is about.
+func whatOf(f *rules.Flag) string {
+	switch {
+	case f.Series != "":
+		return f.Series
+	case f.Group != "":
+		return "group " + f.Group
+	case f.File != "":
+		return f.Feed + ": " + f.File
+	}
+	return f.Feed
 }
 
 // finish orders the lines, the newest date first and on it the rarest, and says what they hold back.
 func (g *groupToday) finish(book *Book, now time.Time) {
-	slices.SortStableFunc(g.Lines, func(a, b line) int {
-		return cmp.Or(cmp.Compare(b.Date, a.Date), cmp.Compare(rarity(&a.Flag), rarity(&b.Flag)), cmp.Compare(a.Ref, b.Ref))
+	slices.SortStableFunc(g.Lines, func(x, y line) int {
+		a, b := x.flags[0], y.flags[0]
+		return cmp.Or(cmp.Compare(b.Date, a.Date), cmp.Compare(rarity(a), rarity(b)), cmp.Compare(a.Ref, b.Ref))
 	})
 	known := groupIn(book, g.Name)
 	if known == nil || known.Release == nil {
@@ -316,10 +361,11 @@ func (g *groupToday) finish(book *Book, now time.Time) {
 	}
 	zone := zoneOf(known.Release, book.Zone)
 	for _, l := range g.Lines {
-		if l.Date == rules.NoDate || l.Kind.Slow() {
+		f := l.flags[0]
+		if f.Date == rules.NoDate || f.Kind.Slow() {
 			continue
 		}
-		if at := rules.DueAt(*known.Release, l.Date, zone); g.release.IsZero() || at.Before(g.release) {
+		if at := rules.DueAt(*known.Release, f.Date, zone); g.release.IsZero() || at.Before(g.release) {
 			g.release = at
 		}
 	}

@@ -10,6 +10,7 @@ import (
 	"io/fs"
 	"net/http"
 	"strings"
+	"time"
 
 	"strayd/watcher"
 )
@@ -68,6 +69,13 @@ type visit struct {
 	desk *desk
 	w    http.ResponseWriter
 	r    *http.Request
+}
+
+// mayTake gives an answer more time than the server does. Where that cannot be set, the server's own holds.
+func (v *visit) mayTake(long time.Duration) {
+	c := http.NewResponseController(v.w)
+	_ = c.SetWriteDeadline(time.Now().Add(long))
+	_ = c.SetReadDeadline(time.Now().Add(long))
 }
 
 // refusal is an error that is the visitor's to put right.

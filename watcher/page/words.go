@@ -3,7 +3,6 @@ package page
 import (
 	"fmt"
 	"html/template"
-	"net/url"
 	"strconv"
 	"strings"
 	"time"
@@ -16,9 +15,9 @@ import (
 func words() template.FuncMap {
 	return template.FuncMap{
 		"safe": Safe, "date": dateWords, "units": unitWords, "num": numWords, "between": betweenWords, "once": onceWords, "z": zWords,
-		"count": rules.Counted, "thousands": rules.Thousands, "at": clockWords, "query": url.QueryEscape, "refs": refWords, "kinds": kindWords,
-		"marks": newMarks, "looks": looksWords, "deed": newForm, "person": personWords,
-		"iso": func(d rules.Date) string { return d.String() }, "share": func(n rules.Num) string { return fmt.Sprintf("%.0f %%", 100*n.V) },
+		"count": rules.Counted, "thousands": rules.Thousands, "at": clockWords,
+		"looks": looksWords, "deed": newForm,
+		"iso": func(d rules.Date) string { return d.String() },
 	}
 }
 
@@ -83,14 +82,6 @@ func clockWords(t time.Time, zone *time.Location) string {
 
 func refWords(refs []uint64) string { return strings.Join(texts(refs), ",") }
 
-func kindWords(kinds []rules.Kind) string {
-	var out []string
-	for _, k := range kinds {
-		out = append(out, string(k))
-	}
-	return strings.Join(out, ", ")
-}
-
 // looksWords say what a flag looks like.
 func looksWords(f rules.Flag) string {
 	if f.LooksLike == "" {
@@ -102,8 +93,6 @@ func looksWords(f rules.Flag) string {
 	}
 	return s
 }
-
-func personWords(p rules.Person) string { return p.String() }
 
 // marks is the small drawing of a return beside its range: the range is the middle half of the strip, and what lies far out stands at its end.
 type marks struct {
