@@ -187,3 +187,17 @@ func (p *Past) blocks() []block {
 	}
 	return slices.DeleteFunc(out, func(b block) bool { return len(b.days) == 0 })
 }
+
+// ValuesFrom counts the values of a date and those after it.
+func (p *Past) ValuesFrom(date rules.Date) (n int) {
+	for _, columns := range p.columns {
+		for _, c := range columns {
+			for i := range c.Len() {
+				if c.Date >= date && c.has(i) {
+					n++
+				}
+			}
+		}
+	}
+	return n
+}

@@ -39,7 +39,7 @@ func (w *weekReader) backRuns() ([]rules.BackRun, error) {
 		}
 		sides = append(sides, side)
 	}
-	return backRuns(sides[0], sides[1], end-first, past.valuesFrom(held[first])), nil
+	return backRuns(sides[0], sides[1], end-first, past.ValuesFrom(held[first])), nil
 }
 
 // reach is how many dates before the first one compared decide about it.
@@ -75,18 +75,4 @@ func backRuns(old, now *backrun.Side, dates, values int) []rules.BackRun {
 		b.JudgedOld, b.BeyondOld = b.JudgedOld+c.Outer.Judged, b.BeyondOld+c.Outer.Beyond
 	}
 	return out
-}
-
-// valuesFrom counts the values of a date and those after it.
-func (p *Past) valuesFrom(date rules.Date) (n int) {
-	for _, columns := range p.columns {
-		for _, c := range columns {
-			for i := range c.Len() {
-				if c.Date >= date && c.has(i) {
-					n++
-				}
-			}
-		}
-	}
-	return n
 }

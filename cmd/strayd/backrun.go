@@ -145,7 +145,7 @@ func (r *backRunning) all(files []string) (err error) {
 	}
 	dates = dates[max(0, len(dates)-r.options.days):]
 	r.from = dates[0]
-	r.compare = backrun.Comparison{Dates: dates, Issued: r.past.Flags}
+	r.compare = backrun.Comparison{Dates: dates, Values: r.past.ValuesFrom(r.from), Issued: r.past.Flags}
 	if err := r.judge(r.config.File, these); err != nil || !r.options.two() {
 		return err
 	}

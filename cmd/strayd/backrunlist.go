@@ -53,7 +53,7 @@ func (r *backRunning) headRows() (out []backRunRow) {
 	for _, x := range []struct {
 		figure string
 		value  cell
-	}{{"values", integer(r.past.Values)}, {"dates", integer(len(d))}, {"from", date(d[0])}, {"to", date(d[len(d)-1])}} {
+	}{{"values", integer(r.past.Values)}, {"values compared", integer(r.compare.Values)}, {"dates", integer(len(d))}, {"from", date(d[0])}, {"to", date(d[len(d)-1])}} {
 		row := backRunRow{part: "past", figure: x.figure}
 		for n := range r.names {
 			row.values[n][0] = x.value
@@ -79,13 +79,22 @@ func (r *backRunning) countRows() (out []backRunRow) {
 		week := backRunRow{part: "flags", group: c.Group, figure: string(c.Kind) + " a week"}
 		for n, flags := range c.Flags {
 			total.values[n][0] = integer(flags)
+			if c.Group == "" && c.Kind != backrun.Busiest && c.Kind != rules.KindMarketDay {
+				total.values[n][1] = integer(r.compare.Values)
+			}
 			week.values[n][0] = number(rules.Some(float64(flags) / r.compare.Weeks()))
 		}
 		if out = append(out, total); c.Kind != backrun.Busiest {
 			out = append(out, week)
 		}
 	}
-	return out
+	breaches, doubts := backRunRow{part: "flags", figure: "expected beyond breach lines"}, backRunRow{part: "flags", figure: "doubtful, stale, repeat at most"}
+	for n, s := range r.compare.Sides {
+		beyond, most := r.compare.Expected(s)
+		breaches.values[n][0] = number(rules.Some(beyond))
+		doubts.values[n] = [2]cell{number(rules.Some(most)), integer(r.compare.Values)}
+	}
+	return append(out, breaches, doubts)
 }
 
 // coverRows are the figures of coverage, those of both sides beside each other.

@@ -37,8 +37,8 @@ func (r *backRunning) sides() []string { return sideWords[:len(r.names)] }
 
 func (r *backRunning) printHead() {
 	d, out := r.compare.Dates, r.app.out
-	fmt.Fprintf(out, "%s judged again in all, compared over %s, %s to %s (%.1f weeks of five dates). Nothing is changed.\n",
-		rules.Counted(r.past.Values, "value"), rules.Counted(len(d), "date"), d[0], d[len(d)-1], r.compare.Weeks())
+	fmt.Fprintf(out, "%s judged again; compared are %s on %s, %s to %s (%.1f weeks of five dates). Nothing is changed.\n",
+		rules.Counted(r.past.Values, "value"), rules.Thousands(r.compare.Values), rules.Counted(len(d), "date"), d[0], d[len(d)-1], r.compare.Weeks())
 	for n, name := range r.names {
 		fmt.Fprintf(out, "%s: %s\n", sideWords[n], printable(name))
 	}
@@ -69,7 +69,26 @@ func (r *backRunning) printCounts() error {
 		}
 		fields(w, row...)
 	}
+	for _, doubts := range []bool{false, true} {
+		fields(w, r.expectedRow(doubts)...)
+	}
 	return w.Flush()
+}
+
+// expectedRow is what the lines promise beyond them, or how much is doubted at most.
+func (r *backRunning) expectedRow(doubts bool) []string {
+	row := []string{"expected beyond breach lines"}
+	if doubts {
+		row[0] = "doubtful, stale, repeat at most"
+	}
+	for _, s := range r.compare.Sides {
+		n, most := r.compare.Expected(s)
+		if doubts {
+			n = most
+		}
+		row = append(row, fmt.Sprintf("%.2f", n/r.compare.Weeks()), fmt.Sprintf("%.1f", n))
+	}
+	return row
 }
 
 func countName(c *backrun.Count) string {
@@ -265,7 +284,7 @@ func (r *backRunning) printDecisions() error {
 	pro, con := backrun.Balance(all)
 	_, err := fmt.Fprintf(r.app.out,
 		"Where wrong values matter: %d for the other settings (wrong ones gained, genuine ones lost), %d against, of %d decided.\n"+
-		"Where every large move matters, a genuine one that is no longer flagged speaks against them.\n", pro, con, sum)
+			"Where every large move matters, a genuine one that is no longer flagged speaks against them.\n", pro, con, sum)
 	return err
 }
 

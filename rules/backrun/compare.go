@@ -15,12 +15,22 @@ const datesAWeek = 5
 // Comparison is one past under one set of settings, or two.
 type Comparison struct {
 	Dates  []rules.Date // that are compared, ascending
+	Values int          // on these
 	Sides  []*Side
 	Issued []rules.Flag // that the ledger has, of whatever date and kind
 }
 
 // Weeks is how many weeks of five dates are compared.
 func (c *Comparison) Weeks() float64 { return float64(len(c.Dates)) / datesAWeek }
+
+// Expected is how many values the breach lines of a side promise beyond them, over all ranges that state a share; and how many at most are
+// doubtful, stale or repeat.
+func (c *Comparison) Expected(s *Side) (breaches, doubts float64) {
+	for i := range s.Covers {
+		breaches += s.Covers[i].Level * float64(s.Covers[i].Outer.Judged)
+	}
+	return breaches, s.Settings.Doubtful * float64(c.Values)
+}
 
 // Count is how many flags of a sort each side raises.
 type Count struct {
