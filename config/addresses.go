@@ -5,6 +5,7 @@ import (
 	"net"
 	"net/mail"
 	"net/url"
+	"regexp"
 	"slices"
 	"strconv"
 	"strings"
@@ -55,6 +56,42 @@ func hostPort() shape {
 		}
 		return filled(d, s)
 	})
+}
+
+// The names of hosts and of headers. The JSON Schema holds them too.
+const (
+	hostPattern   = `^[A-Za-z0-9]([A-Za-z0-9.-]*[A-Za-z0-9])?$`
+	headerPattern = `^[A-Za-z][A-Za-z0-9-]*$`
+)
+
+// fitting is text that fits a pattern.
+func fitting(what, example, pattern string) shape {
+	fits := regexp.MustCompile(pattern)
+	return text(what+" such as "+example, pattern, func(_ *decoder, s string) error {
+		if !fits.MatchString(s) {
+			return errors.New("not " + what)
+		}
+		return nil
+	})
+}
+
+// loopback is an address that this machine alone reaches, and its port.
+func loopback() shape {
+	return text("a loopback address and its port such as 127.0.0.1:9302", `^\S+:[0-9]{1,5}$`, func(d *decoder, s string) error {
+		host, port, err := net.SplitHostPort(s)
+		n, bad := strconv.Atoi(port)
+		if err != nil || bad != nil || n < 1 || n > 65535 || !thisMachine(host) {
+			return errors.New("not a loopback address and a port")
+		}
+		return nil
+	})
+}
+
+// page checks what ties the keys of the page together.
+func (d *decoder) page(p *Page) {
+	if p.Identity != "" && (p.Host == "" || p.Listen == "") && d.sound("page") {
+		d.failAt("page.identity", trouble{message: "a header is believed of a proxy alone", got: p.Identity, want: "listen and host beside it"})
+	}
 }
 
 // channel checks what ties the keys of a channel together and to other channels.

@@ -26,7 +26,8 @@ type Config struct {
 	Doubtful      float64 // share of ordinary observations, a fraction
 	Channels      []rules.Channel
 	Weekly        *Weekly // nil when there is none
-	RootForbidden bool    // root may enter nothing into the record
+	Page          Page
+	RootForbidden bool // root may enter nothing into the record
 
 	Later []Note // what is set now and works in a later version, in the order of the file
 }
@@ -42,6 +43,13 @@ type Calendar struct {
 type Weekly struct {
 	Schedule string
 	Channels []string // empty for all
+}
+
+// Page is where the desk's page is served, beyond a free port of this machine.
+type Page struct {
+	Listen   string // loopback address, "" for a free port
+	Host     string // by which a reverse proxy serves it, "" for none
+	Identity string // the header in which that proxy names who asks, "" where nobody is believed
 }
 
 // Note says of a key that it is set and valid and that its work comes in a later version.

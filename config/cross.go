@@ -27,6 +27,7 @@ func (d *decoder) cross(c *Config) {
 		d.expected(fmt.Sprintf("ranges[%d]", i), &c.Ranges[i])
 	}
 	d.routes(c)
+	d.page(&c.Page)
 }
 
 // distinct refuses a name that an earlier entry of the list has.

@@ -58,6 +58,19 @@ var table = object{what: "keys: ledger, feeds and ranges at least", fields: []fi
 		at:    in(func(c *Config) any { return &c.Channels })},
 	{key: "weekly", shape: weeklyTable, doc: "The weekly log.",
 		at: in(func(c *Config) any { c.Weekly = &Weekly{}; return c.Weekly })},
+	{key: "page", shape: pageTable, doc: "The desk's page; when left out it is served on a free port, from the first link on.",
+		at: in(func(c *Config) any { return &c.Page })},
+}}
+
+var pageTable = object{what: "keys: listen, host, identity", fields: []field{
+	{key: "listen", shape: loopback(), doc: "The loopback address of the page, such as 127.0.0.1:9302; a free port when left out.",
+		at: in(func(p *Page) any { return &p.Listen })},
+	{key: "host", shape: fitting("a host's name", "desk.example.org", hostPattern),
+		doc: "The name under which a reverse proxy on this machine serves the page.",
+		at:  in(func(p *Page) any { return &p.Host })},
+	{key: "identity", shape: fitting("a header's name", "X-Remote-User", headerPattern),
+		doc: "The header in which that proxy names the user of the operating system who asks; the proxy proves itself by a secret.",
+		at:  in(func(p *Page) any { return &p.Identity })},
 }}
 
 var weeklyTable = object{what: "keys: schedule, channels", fields: []field{

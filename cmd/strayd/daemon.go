@@ -82,6 +82,7 @@ type setup struct {
 	teller *notify.Teller
 	post   *postOffice
 	jobs   []schedule.Job
+	proxy  *pageProxy        // nil where none is believed
 	owners map[string]string // whom the register names, by series; nil without one
 }
 
@@ -145,6 +146,12 @@ func (d *daemon) serve(ctx context.Context, c *config.Config, listen string) err
 	}
 	d.loop = &schedule.Loop{Jobs: s.jobs, Slots: d.ledger, Log: d.log, Beat: d.beats.beat, Panicked: d.panicked}
 	d.install(s)
+	if c.Page.Listen != "" {
+		if err := d.openPage(c.Page.Listen); err != nil {
+			server.Close(0)
+			return err
+		}
+	}
 	return d.run(ctx, server, pages)
 }
 
@@ -158,11 +165,15 @@ func (d *daemon) prepare(c *config.Config) (*setup, error) {
 	if err != nil {
 		return nil, err
 	}
+	proxy, err := openProxy(c)
+	if err != nil {
+		return nil, badSetting{err}
+	}
 	post, err := openPost(c, d.ledger, d.program.out, d.log, d.delivered)
 	if err != nil {
 		return nil, badSetting{err}
 	}
-	return &setup{config: c, hash: configHash(c), teller: newTeller(c, owners), post: post, jobs: jobs, owners: owners}, nil
+	return &setup{config: c, hash: configHash(c), teller: newTeller(c, owners), post: post, jobs: jobs, owners: owners, proxy: proxy}, nil
 }
 
 // install puts a setup in force. The channels of the one before have ended when the new ones begin: two senders of one outbox would

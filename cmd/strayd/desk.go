@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"cmp"
 	"context"
+	"crypto/subtle"
 	"errors"
 	"fmt"
 	"html"
@@ -18,7 +19,10 @@ import (
 	"github.com/spf13/cobra"
 	"golang.org/x/term"
 
+	"strayd/config"
+	"strayd/notify"
 	"strayd/rules"
+	"strayd/watcher/desk"
 	"strayd/watcher/health"
 	"strayd/watcher/page"
 )
@@ -74,11 +78,14 @@ func (a *app) openDesk(only bool) error {
 }
 
 func (a *app) inviteToDesk() error {
-	link, err := a.held.invite(a.person())
+	link, through, err := a.held.invite(a.person())
 	if err != nil {
 		return err
 	}
 	fmt.Fprintln(a.out, link)
+	if through != "" {
+		fmt.Fprintln(a.out, "or", through)
+	}
 	fmt.Fprintf(a.err, "note: for %s, good for %s and for one use\n", a.person(), page.LinkTime())
 	return nil
 }
@@ -156,10 +163,60 @@ func (p *deskPage) close() {
 	}
 }
 
-// invite makes a link for the person who asked.
-func (d *daemon) invite(who rules.Person) (link string, err error) {
-	if err := d.openPage(anyPort); err != nil {
-		return "", err
+// invite makes a link for the person who asked; through is the same one by way of the proxy, "" without one.
+func (d *daemon) invite(who rules.Person) (link, through string, err error) {
+	c := d.inForce().config
+	if err := d.openPage(cmp.Or(c.Page.Listen, anyPort)); err != nil {
+		return "", "", err
 	}
-	return "http://" + d.desk.at.String() + d.desk.page.Invite(who), nil
+	path := d.desk.page.Invite(who)
+	if c.Page.Host != "" {
+		through = "https://" + c.Page.Host + path
+	}
+	return "http://" + d.desk.at.String() + path, through, nil
+}
+
+// pageProxy is the reverse proxy that is believed when it names who asks.
+type pageProxy struct {
+	host, identity string
+	secret         notify.Secret
+}
+
+// proxyHeader is where the proxy says its secret. Without one, every user of the machine could name whom they like.
+const proxyHeader = "Strayd-Proxy-Secret"
+
+// leastSecret is how many characters the secret has at least.
+const leastSecret = 16
+
+// openProxy finds the secret of the proxy that the configuration names; nil where it names none.
+func openProxy(c *config.Config) (*pageProxy, error) {
+	if c.Page.Identity == "" {
+		return nil, nil
+	}
+	credential := notify.Credential{What: "secret of the page's proxy", File: "page_secret", Variable: "STRAYD_PAGE_SECRET"}
+	secret, err := credential.Find(os.Getenv)
+	if err == nil && len(secret.Reveal()) < leastSecret {
+		err = fmt.Errorf("the %s has %d characters, fewer than %d", credential.What, len(secret.Reveal()), leastSecret)
+	}
+	if err != nil {
+		return nil, fmt.Errorf("page.identity: %w", err)
+	}
+	return &pageProxy{c.Page.Host, c.Page.Identity, secret}, nil
+}
+
+// vouches says for whom a request of the proxy is. What comes under another host, or without the secret, is not the proxy's.
+func (p *pageProxy) vouches(r page.Asked) (who rules.Person, ok bool) {
+	if p == nil || !sameHost(r.Host, p.host) || subtle.ConstantTimeCompare([]byte(r.Header(proxyHeader)), []byte(p.secret.Reveal())) != 1 {
+		return who, false
+	}
+	return desk.PersonNamed(r.Header(p.identity))
+}
+
+// sameHost compares a Host, with or without a port, with a name.
+func sameHost(hostport, name string) bool {
+	host, _, err := net.SplitHostPort(hostport)
+	if err != nil {
+		host = hostport
+	}
+	return name != "" && strings.EqualFold(host, name)
 }

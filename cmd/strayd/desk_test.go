@@ -5,6 +5,7 @@ import (
 	"net/http"
 	"net/http/cookiejar"
 	"net/url"
+	"os/user"
 	"regexp"
 	"strings"
 	"testing"
@@ -140,5 +141,59 @@ func TestDeskWithoutDaemon(t *testing.T) {
 	f := flaggedFolder(t, deskBook)
 	if code, _, errs := f.try("desk"); code != exitFailed || !strings.Contains(errs, "begin with `strayd run`") {
 		t.Errorf("exit %d\n%s", code, errs)
+	}
+}
+
+// A proxy is believed under its own host and with its secret alone, and only of users whom the system has.
+func TestDeskBehindAProxy(t *testing.T) {
+	me, err := user.Current()
+	if err != nil {
+		t.Fatal(err)
+	}
+	const secret = "0123456789abcdef"
+	keys := fourEyes + "page: {listen: \"127.0.0.1:9\", host: desk.example.org, identity: X-Remote-User}\n"
+	f := flaggedFolder(t, keys)
+	t.Setenv("STRAYD_PAGE_SECRET", secret)
+	b := f.beside()
+	b.t.Cleanup(b.d.desk.close)
+	if err := b.d.openPage(anyPort); err != nil {
+		t.Fatal(err)
+	}
+	for name, c := range map[string]struct {
+		host, secret, user string
+		status             int
+	}{
+		"the proxy":        {"desk.example.org", secret, me.Username, http.StatusOK},
+		"with a port":      {"Desk.Example.org:443", secret, me.Username, http.StatusOK},
+		"no secret":        {"desk.example.org", "", me.Username, http.StatusUnauthorized},
+		"another secret":   {"desk.example.org", "0123456789abcdee", me.Username, http.StatusUnauthorized},
+		"by this machine":  {"127.0.0.1", secret, me.Username, http.StatusUnauthorized},
+		"no such user":     {"desk.example.org", secret, "nobody-of-that-name", http.StatusUnauthorized},
+		"no user":          {"desk.example.org", secret, "", http.StatusUnauthorized},
+		"another's host":   {"other.example.org", secret, me.Username, http.StatusMisdirectedRequest},
+		"a name as a path": {"desk.example.org", secret, "../" + me.Username, http.StatusUnauthorized},
+	} {
+		r, err := http.NewRequest("GET", "http://"+b.d.desk.at.String()+"/", nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		r.Host = c.host
+		r.Header.Set("X-Remote-User", c.user)
+		r.Header.Set(proxyHeader, c.secret)
+		res, err := http.DefaultClient.Do(r)
+		if err != nil {
+			t.Fatal(err)
+		}
+		text, _ := io.ReadAll(res.Body)
+		res.Body.Close()
+		if res.StatusCode != c.status || c.status == http.StatusOK && !strings.Contains(string(text), me.Username+" (uid "+me.Uid+")") {
+			t.Errorf("%s: %s", name, res.Status)
+		}
+	}
+	for _, bad := range []string{"", "short"} {
+		t.Setenv("STRAYD_PAGE_SECRET", bad)
+		if _, err := b.d.prepare(b.d.setup.config); err == nil || !strings.Contains(err.Error(), "page.identity") {
+			t.Errorf("secret %q: %v", bad, err)
+		}
 	}
 }

@@ -33,7 +33,10 @@ func (d *daemon) pageSources() page.Sources {
 		Do:      d.doFor,
 		Expect:  d.expectFor,
 		Draw:    drawn,
-		Host:    health.LoopbackHost,
+		Host: func(host string) bool {
+			return health.LoopbackHost(host) || sameHost(host, d.inForce().config.Page.Host)
+		},
+		Proxied: func(r page.Asked) (rules.Person, bool) { return d.inForce().proxy.vouches(r) },
 		Log:     d.log,
 	}
 }

@@ -17,6 +17,19 @@ func PersonOf(uid int) rules.Person {
 	return p
 }
 
+// PersonNamed is the user of a name, as the system has it; ok is false where it has none.
+func PersonNamed(name string) (p rules.Person, ok bool) {
+	if !plainName(name) {
+		return p, false
+	}
+	u, err := user.Lookup(name)
+	if err != nil {
+		return p, false
+	}
+	uid, err := strconv.Atoi(u.Uid)
+	return rules.Person{UID: uid, Name: u.Username}, err == nil && plainName(u.Username)
+}
+
 // plainName says that a name has only what names of users have: no blank, no bracket, no control character.
 func plainName(name string) bool {
 	return name != "" && strings.IndexFunc(name, func(r rune) bool {

@@ -120,10 +120,8 @@ func (p *Page) atDesk(w http.ResponseWriter, r *http.Request) {
 
 // deskOf is the desk of whoever asks: of the one whom a proxy names, or of the cookie's.
 func (p *Page) deskOf(r *http.Request) *desk {
-	if p.src.Proxied != nil {
-		if who, ok := p.src.Proxied(Asked{r.Host, r.Header.Get}); ok {
-			return p.door.vouched(who)
-		}
+	if who, ok := p.src.Proxied(Asked{r.Host, r.Header.Get}); ok {
+		return p.door.vouched(who)
 	}
 	if c, err := r.Cookie(cookieName); err == nil {
 		return p.door.find(c.Value)

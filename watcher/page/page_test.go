@@ -49,8 +49,11 @@ func newStand(t testing.TB) *stand {
 			s.done = append(s.done, append([]string{who.String()}, args...))
 			return !s.fail, "what came of it\n"
 		},
-		Host: func(host string) bool { return host == "127.0.0.1:9" },
-		Log:  slog.New(slog.NewTextHandler(&s.log, nil)),
+		Host: func(host string) bool { return host == "127.0.0.1:9" || host == "desk.example.org" },
+		Proxied: func(r Asked) (rules.Person, bool) {
+			return ada, r.Host == "desk.example.org" && r.Header("Sec-Fetch-Site") == "same-origin"
+		},
+		Log: slog.New(slog.NewTextHandler(&s.log, nil)),
 	})
 	if err != nil {
 		t.Fatal(err)
@@ -251,6 +254,24 @@ func TestWeeklyLogsAlone(t *testing.T) {
 	for _, name := range []string{"secret.txt", "../secret.txt", "2026-W12.html", "", "2026-W11.html/", "2026-W11.ledger"} {
 		s.want(asked{path: path + "/week?file=" + url.QueryEscape(name), cookie: cookie}, http.StatusNotFound, "no weekly log")
 	}
+}
+
+// Behind a proxy that says who asks there is no link and no cookie; forms carry a token all the same.
+func TestProxyNamesWhoAsks(t *testing.T) {
+	s := newStand(t)
+	proxied := asked{path: "/", host: "desk.example.org", site: "same-origin"}
+	res := s.want(proxied, http.StatusOK, "ada (uid 1001)")
+	body, _ := io.ReadAll(res.Body)
+	token := regexp.MustCompile(`name="form" value="([^"]+)"`).FindStringSubmatch(string(body))[1]
+	proxied.method, proxied.path, proxied.kind = "POST", "/act", form
+	proxied.form = "deed=acknowledge&ref=7"
+	s.want(proxied, http.StatusForbidden, "made for another desk")
+	proxied.form += "&form=" + token
+	if res := s.want(proxied, http.StatusSeeOther, ""); res.Header.Get("Location") != "/flag?ref=7" || len(s.done) != 1 {
+		t.Errorf("%v, %q", res.Header, s.done)
+	}
+	s.want(asked{path: "/", host: "desk.example.org"}, http.StatusUnauthorized, "Nobody is known")
+	s.want(asked{path: "/", host: "127.0.0.1:9", site: "same-origin"}, http.StatusUnauthorized, "Nobody is known")
 }
 
 func TestLeaving(t *testing.T) {
