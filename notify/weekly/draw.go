@@ -90,7 +90,7 @@ func breachDrawings(l *rules.WeekLog) (out []drawing) {
 		d.write(0, drawHeight-3, "start", first.String())
 		d.write(drawWidth, drawHeight-3, "end", last.String())
 		d.write(0, drawTop-4, "start", fmt.Sprintf("most %d", most))
-		d.Text = fmt.Sprintf("%s values beyond the line on %d dates from %s to %s, at most %d on one; the week's dates are the dark bars", rules.Thousands(sum),
+		d.Text = fmt.Sprintf("%s values beyond the line on %d dates from %s to %s, at most %d on one; the week's dates are the strong bars", rules.Thousands(sum),
 			len(c.Days), first, last, most)
 		out = append(out, d)
 	}
@@ -122,7 +122,7 @@ func ageDrawing(l *rules.WeekLog) drawing {
 		d.write((float64(n)+0.5)*step, drawHeight-3, "middle", bandWords(n))
 		d.write((float64(n)+0.5)*step, drawTop-4, "middle", fmt.Sprintf("%d (%d)", now[n], last[n]))
 	}
-	d.Text = text + ". Dark: this week"
+	d.Text = text + ". Strong: this week"
 	return d
 }
 
