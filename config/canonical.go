@@ -21,8 +21,9 @@ func FeedKey(f rules.Feed) string {
 		Encoding       string
 		Missing        []string
 		Skip           float64
+		Sheet          string `json:",omitempty"`
 	}{1, string(f.Layout), string(f.Value), f.Columns, string(f.Unit), f.DateStyle, string(f.Decimal), string(f.Separator),
-		f.Encoding, ordered(f.Missing), f.SkipShare})
+		f.Encoding, ordered(f.Missing), f.SkipShare, f.Sheet})
 }
 
 // FeedKey is FeedKey of the feed of that name, "" when there is none.

@@ -100,7 +100,7 @@ func TestFeedKeySeesWhatChangesReading(t *testing.T) {
 	seen := map[string]string{parsed(t, said).FeedKey("a"): "nothing"}
 	for _, line := range []string{"layout: wide", "columns: {date: d}", "columns: {status: s}", "columns: {days: n}", "value: price",
 		"unit: percent", "date: YYYYMMDD", "separator: ;", `decimal: ","` + "\n    separator: tab", "encoding: latin-1", `missing: [""]`,
-		"bad_rows: {skip: 1%}"} {
+		"bad_rows: {skip: 1%}", "sheet: returns"} {
 		key := parsed(t, strings.Replace(said, "groups:", "    "+line+"\ngroups:", 1)).FeedKey("a")
 		if other, ok := seen[key]; ok || key == "" {
 			t.Errorf("%q gives the key of %q", line, other)

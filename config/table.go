@@ -108,6 +108,8 @@ var feedTable = object{what: "keys: name and files at least", fields: []field{
 	{key: "separator", initial: `","`, doc: "What stands between two cells.",
 		shape: words(word[byte]{",", ','}, word[byte]{";", ';'}, word[byte]{"\t", '\t'}, word[byte]{"tab", '\t'}, word[byte]{"|", '|'}),
 		at:    in(func(f *rules.Feed) any { return &f.Separator })},
+	{key: "sheet", shape: text("a sheet's name", filledPattern, filled), doc: "The sheet of a spreadsheet (.xlsx); its only visible one when left out.",
+		at: in(func(f *rules.Feed) any { return &f.Sheet })},
 	{key: "encoding", initial: "utf-8", shape: named("utf-8", "utf-16", "latin-1"), doc: "The encoding of the text.",
 		at: in(func(f *rules.Feed) any { return &f.Encoding })},
 	{key: "missing", initial: `["", NA, n/a]`, doc: "Cells that mean that there is no value.",

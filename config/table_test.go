@@ -28,7 +28,7 @@ func each(o object, path string, visit func(path string, f field)) {
 // The keys of DESIGN.md, section 7, written out by hand: the table has these and no others.
 const designKeys = `ledger timezone calendar feeds feeds[].name feeds[].files feeds[].schedule feeds[].due feeds[].due.at feeds[].due.days
 feeds[].due.timezone feeds[].layout feeds[].columns feeds[].columns.date feeds[].columns.series feeds[].columns.value
-feeds[].columns.status feeds[].columns.days feeds[].value feeds[].unit feeds[].date feeds[].decimal feeds[].separator
+feeds[].columns.status feeds[].columns.days feeds[].value feeds[].unit feeds[].date feeds[].decimal feeds[].separator feeds[].sheet
 feeds[].encoding feeds[].missing feeds[].settle feeds[].sentinel feeds[].bad_rows feeds[].bad_rows.skip series events groups
 groups[].name groups[].series groups[].reference groups[].owner groups[].reply groups[].release groups[].release.at
 groups[].release.days groups[].release.timezone groups[].four_eyes groups[].materiality ranges ranges[].name ranges[].of ranges[].for ranges[].window

@@ -16,6 +16,7 @@ type Feed struct {
 	DateStyle string // YYYY-MM-DD and the like: tokens YYYY YY MM DD MMM, or excel for serial days
 	Decimal   byte   // '.' or ','
 	Separator byte   // ',' ';' '\t' '|'
+	Sheet     string // of a spreadsheet; "" for its only one
 	Encoding  string // utf-8, utf-16, latin-1
 	Missing   []string
 	Settle    time.Duration

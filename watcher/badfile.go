@@ -11,6 +11,9 @@ const longestCell = 60
 // Place is the file with as much of line and column as is known.
 func (b *BadFile) Place() string {
 	s := b.File.Name
+	if b.Where != "" {
+		return s + ":" + b.Where
+	}
 	if b.Line > 0 {
 		s += ":" + strconv.Itoa(b.Line)
 		if b.Column > 0 {

@@ -47,8 +47,9 @@ func (s *Sheet) Last() rules.Date {
 // BadFile is why a file was refused: where in the file, what stood there, and what is wrong with it.
 type BadFile struct {
 	File   File
-	Line   int // from 1; 0 when the whole file is meant
-	Column int // byte column of the cell, from 1; 0 when the whole line is meant
+	Line   int    // from 1; 0 when the whole file is meant
+	Column int    // byte column of the cell, from 1; 0 when the whole line is meant
+	Where  string // in the words of a file that is no text, in place of line and column
 	Cell   string
 	Date   rules.Date // the file's date where it is known, else NoDate
 	Reason string

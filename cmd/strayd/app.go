@@ -15,7 +15,9 @@ import (
 	"strayd/watcher/desk"
 	"strayd/watcher/feed"
 	"strayd/watcher/ledger"
+	"strayd/watcher/parquet"
 	"strayd/watcher/schedule"
+	"strayd/watcher/spreadsheet"
 )
 
 // app is one command line being carried out.
@@ -141,6 +143,11 @@ func (a *app) person() rules.Person {
 	return desk.PersonOf(os.Getuid())
 }
 
+// grids are what opens files that are no text, by the ending of their names.
+func grids() map[string]watcher.OpenGrid {
+	return map[string]watcher.OpenGrid{".parquet": parquet.Open, ".xlsx": spreadsheet.Open}
+}
+
 // source hands the feed room to the pass. Whether a file has settled is told by the real clock too, since files know no --now.
 type source struct{}
 
@@ -152,5 +159,5 @@ func (source) Find(f rules.Feed, now time.Time, settled bool) (watcher.Found, er
 }
 
 func (source) Read(ctx context.Context, c watcher.Candidate, f rules.Feed, names *watcher.Names, now time.Time, progress watcher.Progress) (*watcher.Sheet, error) {
-	return feed.Read(ctx, c, f, names, feed.Options{Now: now, Progress: progress})
+	return feed.Read(ctx, c, f, names, feed.Options{Now: now, Progress: progress, Grids: grids()})
 }

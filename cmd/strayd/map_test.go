@@ -46,6 +46,9 @@ var doors = []struct {
 	{"gonum.org/v1/gonum", []string{"stats"}},
 	{"gonum.org/v1/plot", []string{"notify/chart"}},
 	{"go.etcd.io/bbolt", []string{"watcher/ledger"}},
+	{"github.com/parquet-go/parquet-go", []string{"watcher/parquet"}},
+	{"github.com/xuri/excelize", []string{"watcher/spreadsheet"}},
+	{"github.com/klauspost/compress", []string{"watcher/parquet"}},
 	{"github.com/robfig/cron", []string{"watcher/schedule"}},
 	{"github.com/rickar/cal", []string{"watcher/calendar"}},
 	{"github.com/slack-go/slack", []string{"notify/slack"}},
@@ -61,6 +64,9 @@ var doors = []struct {
 
 // onlyInTests are packages that no program is built from.
 var onlyInTests = []string{"github.com/chromedp/chromedp", "github.com/chromedp/cdproto", "github.com/rogpeppe/go-internal", "github.com/santhosh-tekuri/jsonschema", "pgregory.net/rapid", "testing"}
+
+// madeInTests are packages with which tests of the whole program make files for it to read.
+var madeInTests = []string{"github.com/parquet-go/parquet-go", "github.com/xuri/excelize"}
 
 // pure are the rooms without file, socket and clock, and what stands for these.
 var (
@@ -239,7 +245,7 @@ func (m *mapped) imported(room, name, imported string, test bool) {
 	case !test && within(imported, onlyInTests):
 		m.say("%s: %s is for tests only", name, imported)
 	case strings.Contains(first, "."):
-		if !test || !within(imported, onlyInTests) {
+		if !test || !within(imported, onlyInTests) && !(roomIn(room, []string{"cmd/*"}) && within(imported, madeInTests)) {
 			m.thirdParty(room, name, imported)
 		}
 	case !test && slices.Contains(pure, room) && slices.Contains(effectful, imported):

@@ -9,6 +9,7 @@ type cursor struct {
 	line      uint32 // newlines before lineStart
 	lineStart int
 	sep       byte
+	flat      bool   // every line is a record, whatever its cells hold: a grid laid out as text
 	arena     []byte // holds the cells whose doubled quotes were taken out
 }
 
@@ -87,7 +88,7 @@ func (c *cursor) quoted(from int) ([]byte, string) {
 
 // crossLines counts the newlines within a quoted cell.
 func (c *cursor) crossLines(from, to int) {
-	for {
+	for !c.flat {
 		i := bytes.IndexByte(c.text[from:to], '\n')
 		if i < 0 {
 			return

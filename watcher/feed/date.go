@@ -11,10 +11,11 @@ import (
 
 // dateStyle is a declared way to write dates, taken apart. Everything that is no token must stand there as it is.
 type dateStyle struct {
-	text   string
-	excel  bool
-	tokens []dateToken
-	width  int
+	text     string
+	excel    bool
+	from1904 bool // serial days count from 1904-01-01, as a workbook says
+	tokens   []dateToken
+	width    int
 }
 
 // dateToken is YYYY, YY, MM, DD or MMM; or, with kind 0, one literal byte.
@@ -32,6 +33,8 @@ const (
 	// excelShift is serial day 0 of the 1900 system counted from 1970-01-01, for serials after its 29 February 1900 (serial 60),
 	// a day that never was (ECMA-376, part 1, 18.17.4.1).
 	excelShift = -25569
+	// shift1904 is serial day 0 of the 1904 system in the 1900 system.
+	shift1904 = 1462
 )
 
 var dateTokens = []struct {
@@ -78,7 +81,7 @@ func nextToken(s string) dateToken {
 // date reads a cell. The reason is empty when it is good.
 func (s *dateStyle) date(cell []byte) (rules.Date, string) {
 	if s.excel {
-		return excelDate(cell)
+		return s.serial(cell)
 	}
 	if len(cell) != s.width {
 		return rules.NoDate, "date is not written " + s.text
@@ -142,12 +145,15 @@ func monthNamed(part []byte) int {
 	return i/4 + 1
 }
 
-func excelDate(cell []byte) (rules.Date, string) {
+// serial reads a serial day.
+func (s *dateStyle) serial(cell []byte) (rules.Date, string) {
 	n, err := strconv.Atoi(string(cell))
 	if err != nil || digitsAt(cell) != len(cell) || len(cell) > 7 {
 		return rules.NoDate, "date is not a whole serial day (45292 is 2024-01-01)"
 	}
 	switch {
+	case s.from1904:
+		return rules.Date(n + excelShift + shift1904), ""
 	case n == 60:
 		return rules.NoDate, "serial day 60 stands for 29 February 1900, which never was"
 	case n < 60:

@@ -49,7 +49,7 @@ func (p *plan) header(c *cursor, names *watcher.Names) (ok bool, bad *fault) {
 func (p *plan) eachCell(c *cursor, take func(headerCell) *fault) *fault {
 	for n := 0; ; n++ {
 		start := c.at
-		cell := headerCell{column: c.at - c.lineStart + 1}
+		cell := headerCell{column: c.column(c.at, c.lineStart)}
 		var problem string
 		cell.name, problem = c.cell()
 		switch {

@@ -12,8 +12,9 @@ type merger struct {
 	*plan
 	*builder
 	names   *watcher.Names
-	fresh   []uint32 // numbers of the chunk's fresh names
-	line    uint64   // lines of the chunks taken
+	grid    *gridText // nil where the file is text
+	fresh   []uint32  // numbers of the chunk's fresh names
+	line    uint64    // lines of the chunks taken
 	newest  rules.Date
 	terms   []watcher.CellTerms
 	missing int
@@ -103,7 +104,7 @@ func (m *merger) checkBounds() {
 func (m *merger) clashed(c *chunk, clash *clash) *fault {
 	bad := &fault{line: clash.line, reason: fmt.Sprintf("series %s has another value for %s on line %d of this file",
 		watcher.QuoteCell(string(m.names.Name(clash.id))), clash.date, clash.oldLine)}
-	cur := cursor{text: c.text, sep: m.comma}
+	cur := cursor{text: c.text, sep: m.comma, flat: m.asGrid}
 	for target := clash.line - uint32(m.line) - 1; cur.line < target; {
 		if _, problem := cur.record(); problem != "" {
 			return bad
@@ -117,7 +118,7 @@ func (m *merger) clashed(c *chunk, clash *clash) *fault {
 	for cur.space(cur.text[cur.at]) {
 		cur.at++
 	}
-	bad.column = cur.at - cur.lineStart + 1
+	bad.column = cur.column(cur.at, cur.lineStart)
 	cell, _ := cur.cell()
 	bad.cell = string(cell)
 	return bad
@@ -138,11 +139,15 @@ func (m *merger) skippedTooMany() {
 func (m *merger) notes(name string) []string {
 	var notes []string
 	for _, f := range m.faults {
-		b := watcher.BadFile{File: watcher.File{Name: name}, Line: int(f.line), Column: f.column, Cell: f.cell, Reason: f.reason}
+		b := watcher.BadFile{File: watcher.File{Name: name}}
+		m.place(&b, &f)
 		notes = append(notes, "skipped "+b.Error())
 	}
 	if more := m.skipped - len(m.faults); more > 0 {
 		notes = append(notes, fmt.Sprintf("skipped %d more", more))
+	}
+	if m.grid != nil {
+		notes = append(notes, m.grid.Notes()...)
 	}
 	return notes
 }

@@ -4,6 +4,8 @@ import (
 	"math"
 	"runtime"
 	"time"
+
+	"strayd/watcher"
 )
 
 // Options bounds and watches one reading. The zero value works: every zero stands for the default beside it.
@@ -12,7 +14,8 @@ type Options struct {
 	Progress func(done, total int64) // called with the bytes read from disk; none
 	Workers  int                     // chunks parsed at a time; the processors, at most 4
 	Limits   Limits
-	chunk    int // bytes a chunk, for tests; chunkBytes
+	Grids    map[string]watcher.OpenGrid // what opens files that are no text, by the lower-case ending of their names, such as .xlsx; none
+	chunk    int                         // bytes a chunk, for tests; chunkBytes
 }
 
 // Limits are the bounds on a file. Each error names the limit that it broke.

@@ -45,7 +45,7 @@ func (p *plan) parser(names *watcher.Names) *parser {
 // parse works through a chunk.
 func (p *parser) parse(c *chunk) {
 	p.out, p.name = c, nil
-	p.cursor = cursor{text: c.text, sep: p.comma, arena: c.arena}
+	p.cursor = cursor{text: c.text, sep: p.comma, flat: p.asGrid, arena: c.arena}
 	p.guess = p.guessFirst(c)
 	for p.at < len(p.text) {
 		if b := p.text[p.at]; b <= ' ' && p.blank() {
@@ -108,12 +108,12 @@ func (p *parser) note(bad fault) bool {
 }
 
 func (p *parser) quotingFault(problem string) fault {
-	return fault{line: p.line, column: p.at - p.lineStart + 1, reason: problem, fatal: true}
+	return fault{line: p.line, column: p.column(p.at, p.lineStart), reason: problem, fatal: true}
 }
 
 // fail sets the fault of a cell that began at a byte of the current line.
 func (p *parser) fail(at int, line uint32, start int, cell []byte, reason string) bool {
-	p.bad = fault{line: line, column: at - start + 1, cell: string(cell), reason: reason}
+	p.bad = fault{line: line, column: p.column(at, start), cell: string(cell), reason: reason}
 	return false
 }
 
@@ -125,7 +125,7 @@ func (p *parser) take(judge func(*parser, []byte) string) bool {
 	}
 	cell, problem := p.cell()
 	if problem != "" {
-		p.bad = fault{line: line, column: at - start + 1, cell: string(cell), reason: problem, fatal: true}
+		p.bad = fault{line: line, column: p.column(at, start), cell: string(cell), reason: problem, fatal: true}
 		return false
 	}
 	if reason := judge(p, cell); reason != "" {

@@ -29,6 +29,7 @@ type plan struct {
 	limits  Limits
 	wide    bool
 	comma   byte
+	asGrid  bool // the cells come from a grid
 	style   dateStyle
 	newest  rules.Date
 	missing [][]byte

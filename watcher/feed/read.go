@@ -94,7 +94,17 @@ func (m *merger) sheet(ctx context.Context, file *os.File, c watcher.Candidate, 
 	if !strings.HasSuffix(c.Name, gzipSuffix) {
 		s.size = int(min(int64(s.size), c.Size+1)) // fresh memory is slow: a small file gets a small buffer
 	}
-	err := m.read(d, s, c.Name, opt)
+	err := m.openGrid(file, c, opt)
+	if m.grid != nil {
+		defer m.grid.Close() //nolint:errcheck // only read
+		s.size = opt.chunk
+	}
+	if err == nil {
+		err = m.read(d, s, c.Name, opt)
+	}
+	if m.grid != nil && m.gridEnd() {
+		err = nil
+	}
 	if r, ok := err.(refusal); ok && m.bad == nil {
 		m.bad = &fault{reason: string(r)}
 	} else if err != nil && !ok {
@@ -122,7 +132,8 @@ func (m *merger) sheet(ctx context.Context, file *os.File, c watcher.Candidate, 
 }
 
 func (m *merger) badFile(id watcher.File, named rules.Date) *watcher.BadFile {
-	bad := &watcher.BadFile{File: id, Line: int(m.bad.line), Column: m.bad.column, Cell: m.bad.cell, Date: m.newest, Reason: m.bad.reason}
+	bad := &watcher.BadFile{File: id, Date: m.newest}
+	m.place(bad, m.bad)
 	if bad.Date == rules.NoDate {
 		bad.Date = named
 	}
@@ -143,14 +154,18 @@ func (m *merger) read(d *disk, s *splitter, name string, opt Options) error {
 		} else if err != nil {
 			return err
 		}
-		cur := cursor{text: first.text, sep: m.comma}
+		cur := cursor{text: first.text, sep: m.comma, flat: m.asGrid}
 		ok, bad := m.header(&cur, m.names)
 		if bad != nil {
-			bad.line += uint32(m.line) + 1
+			if bad.line += uint32(m.line) + 1; m.grid != nil && m.grid.zero {
+				bad.line = 0
+			}
 			m.bad = bad
 			return nil
 		}
-		m.line += uint64(cur.line)
+		if m.line += uint64(cur.line); m.grid != nil && m.grid.zero {
+			m.line = 0
+		}
 		if ok {
 			first.text = first.text[cur.at:]
 			return m.pipeline(s, first, opt.Workers)

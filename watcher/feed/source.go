@@ -101,7 +101,11 @@ func (b *bounded) explain(err error) error {
 }
 
 // opened gives the decoded text of a file.
-func (p *plan) opened(d *disk, name string) (io.Reader, error) {
+func (m *merger) opened(d *disk, name string) (io.Reader, error) {
+	if m.grid != nil {
+		return m.grid, nil
+	}
+	p := m.plan
 	b := &bounded{src: d, disk: d, limits: p.limits, gzip: strings.HasSuffix(name, gzipSuffix)}
 	if b.gzip {
 		z, err := gzip.NewReader(bufio.NewReaderSize(d, 1<<18))

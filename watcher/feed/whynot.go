@@ -38,6 +38,9 @@ func (p *plan) notNumber(s string) string {
 	case strings.ContainsAny(s, "()"):
 		return "the value is in parentheses; deliver a minus sign"
 	case strings.ContainsAny(s, "%"):
+		if p.asGrid {
+			return "the cell is shown as per cent: a number so shown holds the fraction, declare unit: fraction; a text, deliver the bare number"
+		}
 		return "the value carries a percent sign; deliver the bare number and declare unit: percent"
 	case strings.HasSuffix(lower, "bp"):
 		return "the value carries its unit; deliver the bare number and declare unit: bp"

@@ -46,7 +46,7 @@ func (p *parser) wideDate() bool {
 	for range p.dateAt {
 		at := p.at
 		if cell, problem := p.cell(); problem != "" {
-			p.bad = fault{line: p.line, column: at - p.lineStart + 1, cell: string(cell), reason: problem, fatal: true}
+			p.bad = fault{line: p.line, column: p.column(at, p.lineStart), cell: string(cell), reason: problem, fatal: true}
 			return false
 		}
 		if !p.separator() {
