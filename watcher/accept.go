@@ -227,6 +227,9 @@ func (p *Pass) work(j *judging, todo []task, outs []outcome, next, done *atomic.
 		if n >= len(todo) {
 			return nil
 		}
+		if p.stopped != nil && p.stopped() != nil {
+			return p.stopped()
+		}
 		if outs[n], err = w.run(todo[n]); err != nil {
 			next.Store(int64(len(todo))) // the others need not go on
 			return err

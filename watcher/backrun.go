@@ -31,7 +31,7 @@ func (p *Past) Judge(ctx context.Context, r BackRun) (*backrun.Side, error) {
 		resolveBudgets(&s, p.recorded, p.Series)
 	}
 	store := numbered(&s, len(p.terms) > 0)
-	pass := &Pass{Store: store, Settings: s, Now: r.Now, Workers: r.Workers, Progress: r.Progress, again: &p.weighed}
+	pass := &Pass{Store: store, Settings: s, Now: r.Now, Workers: r.Workers, Progress: r.Progress, again: &p.weighed, stopped: ctx.Err}
 	j := &judging{names: p.names, newest: p.last(), now: r.Now, step: 1, nextRef: 1, decidedOn: p.decided}
 	if err := pass.prepare(j, store); err != nil {
 		return nil, err

@@ -2,6 +2,7 @@ package watcher_test
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math/rand/v2"
 	"slices"
@@ -104,5 +105,27 @@ func TestBackRunOfEveryShape(t *testing.T) {
 			t.Errorf("spans %v: only %d flags", spans, len(want))
 		}
 		differ(t, fmt.Sprintf("spans %v: flags", spans), toldBy(backRun(t, pastOf(t, m), settings, 2)), want)
+	}
+}
+
+// A back-run ends where it is when it is told to: while the pool goes forward, and between two tasks.
+func TestBackRunStops(t *testing.T) {
+	weighed, many := &memory{}, &memory{}
+	takeRows(t, weighed, market(rand.New(rand.NewPCG(1, 3)), 80), 80, marketSettings())
+	run(t, many, &shelf{randomFiles(rand.New(rand.NewPCG(1, 4)), 400, 10, false)}, loneSettings(), 1)
+	for work, m := range map[string]*memory{"weighing": weighed, "judging": many} {
+		settings := marketSettings()
+		if m == many {
+			settings = loneSettings()
+		}
+		ctx, stop := context.WithCancel(context.Background())
+		_, err := pastOf(t, m).Judge(ctx, watcher.BackRun{Settings: settings, Workers: 1, Progress: func(at string, _, _ int64) {
+			if at == work {
+				stop()
+			}
+		}})
+		if !errors.Is(err, context.Canceled) {
+			t.Errorf("stopped while %s: %v", work, err)
+		}
 	}
 }

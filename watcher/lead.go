@@ -48,6 +48,7 @@ type leader struct {
 	j        *judging
 	view     View
 	progress Progress          // nil: not told
+	stopped  func() error      // nil: nobody can stop it
 	released bool              // a person released the file
 	blocks   map[uint32][]*day // what the file changes
 
@@ -72,7 +73,7 @@ func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
 		return w, nil
 	}
 	l := newLeader(crew, j, v)
-	l.progress = p.progress("weighing")
+	l.progress, l.stopped = p.progress("weighing"), p.stopped
 	l.released = p.Released[j.file.SHA256]
 	for _, b := range blocks {
 		if _, ok := slices.BinarySearch(crew.blocks, b.number); ok {
@@ -229,6 +230,9 @@ func (l *leader) lead(todo []rules.Date) (*weighed, error) {
 	for n, d := range dates {
 		if n == len(dates)-1 {
 			l.keepBehind()
+		}
+		if l.stopped != nil && l.stopped() != nil {
+			return nil, l.stopped()
 		}
 		r, err := l.step(d)
 		if err != nil {

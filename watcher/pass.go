@@ -50,6 +50,7 @@ type Pass struct {
 	release    *releasing   // the one file to take, because a person released it; nil for all
 	led        *leader      // that of the step before
 	again      *weighedOnce // of a back-run, else nil
+	stopped    func() error // says why a back-run is to end, else nil
 
 	newWeigher func([]causes.Member, []string, float64) weigher // nil for the real one
 }

@@ -39,6 +39,9 @@ func (r *backRunning) printHead() {
 	d, out := r.compare.Dates, r.app.out
 	fmt.Fprintf(out, "%s judged again; compared are %s on %s, %s to %s (%.1f weeks of five dates). Nothing is changed.\n",
 		rules.Counted(r.past.Values, "value"), rules.Thousands(r.compare.Values), rules.Counted(len(d), "date"), d[0], d[len(d)-1], r.compare.Weeks())
+	if len(d) < backrun.LeastDates {
+		fmt.Fprintf(out, "Fewer than %d dates are too little data to say much of a week.\n", backrun.LeastDates)
+	}
 	for n, name := range r.names {
 		fmt.Fprintf(out, "%s: %s\n", sideWords[n], printable(name))
 	}
@@ -102,6 +105,10 @@ func countName(c *backrun.Count) string {
 }
 
 func (r *backRunning) printCoverage() error {
+	if !r.estimated() {
+		_, err := fmt.Fprintf(r.app.out, "\nNo range is estimated, or none has judged anything: there is no coverage to speak of.\n")
+		return err
+	}
 	w := columns(r.app.out)
 	fields(w)
 	fields(w, "range and group", "side", "line", "beyond, of judged", "expected", "Kupiec p", "p, together", "verdict", "Christoffersen p")
@@ -118,6 +125,11 @@ func (r *backRunning) printCoverage() error {
 		line(c.Level, c.Outer, c.OuterSays)
 	})
 	return w.Flush()
+}
+
+// estimated says that some estimated range has judged something.
+func (r *backRunning) estimated() bool {
+	return slices.ContainsFunc(r.compare.Sides, func(s *backrun.Side) bool { return len(s.Covers) > 0 })
 }
 
 // eachCover goes through what the sides have of every range and group, those of one beside each other.
@@ -161,6 +173,9 @@ func chanceWords(p rules.Num) string {
 }
 
 func (r *backRunning) printZones() error {
+	if !r.estimated() {
+		return nil
+	}
 	w := columns(r.app.out)
 	fields(w)
 	fields(w, "zones of the series", "side", "green", "yellow", "red", "more than 4, by chance", "none, by chance")

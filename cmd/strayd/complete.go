@@ -34,7 +34,7 @@ func (a *app) completed(root *cobra.Command) {
 	}
 	options := map[string]offer{"group": groupNames, "blocking": groupNames, "series": allSeries, "feed": feedNames, "range": rangeNames,
 		"kind": fixed(rules.Kinds), "standing": fixed(rules.Standings), "reason": fixed(rules.Reasons)}
-	files := []string{"init", "backup", "restore"}
+	files := []string{"init", "backup", "restore", "back-run"}
 	for _, cmd := range append(root.Commands(), sub(root, "ledger")...) {
 		name := cmd.Name()
 		switch o := arguments[name]; {

@@ -14,8 +14,8 @@ const (
 	LeastLevel = 0.0005
 	// leastFlags is how many flags a level must rest on: with k of them its rate is known to about 1/sqrt(k). Common practice, no source.
 	leastFlags = 10
-	// leastDates is a quarter of a year.
-	leastDates = 60
+	// LeastDates is how many dates say something of a week: a quarter of a year. Common practice, no source.
+	LeastDates = 60
 
 	resamples  = 1000
 	blockDates = 20 // long enough for flags that come in clusters
@@ -58,8 +58,8 @@ func (s *Side) Advise(dates []rules.Date, budget float64) *Advice {
 	for _, n := range c.always {
 		a.Others += n
 	}
-	if len(dates) < leastDates {
-		a.Why = fmt.Sprintf("too little data to say: %s, %d are needed", rules.Counted(len(dates), "date"), leastDates)
+	if len(dates) < LeastDates {
+		a.Why = fmt.Sprintf("too little data to say: %s, %d are needed", rules.Counted(len(dates), "date"), LeastDates)
 		return a
 	}
 	whole := slices.Repeat([]int{1}, len(dates))
