@@ -180,6 +180,11 @@ func TestGoldenMessages(t *testing.T) {
 		for _, n := range teller.Notices(goldenReopened(series)) {
 			note(t, text, "open again", n)
 		}
+		for _, news := range goldenEscalations(series) {
+			for _, n := range teller.Escalations(news) {
+				note(t, text, string(news.Stage), n)
+			}
+		}
 		for _, n := range teller.Daily(goldenDaily(series)) {
 			note(t, text, "daily", n)
 		}
@@ -232,6 +237,22 @@ func goldenReopened(series string) rules.News {
 		news.Reopened[i].Standing = rules.Reopened
 	}
 	return news
+}
+
+// goldenEscalations are one or many flags at each stage.
+func goldenEscalations(series string) (out []rules.EscalationNews) {
+	one := []rules.Flag{breachOf(series, 12).Flag}
+	var many []rules.Flag
+	for n := range 7 {
+		many = append(many, breachOf(series+strings.Repeat("x", n), uint64(12+n)).Flag)
+	}
+	for _, stage := range []rules.Stage{rules.NotAnswered, rules.BeforeHold, rules.Held, rules.StillOpen} {
+		for _, flags := range [][]rules.Flag{one, many} {
+			out = append(out, rules.EscalationNews{At: made, Group: rules.Group{Name: series}, Flags: flags,
+				Step: rules.Step{Stage: stage, At: made, Due: made.Add(30 * time.Minute), Days: 5}})
+		}
+	}
+	return out
 }
 
 // note writes a notice to the golden text after holding it to its bounds.

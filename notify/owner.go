@@ -8,21 +8,23 @@ import (
 
 // ownerLine says who should look, by when, and which release waits for it.
 func (t *Teller) ownerLine(f *rules.FlagNews, read time.Time) string {
-	g := t.group(f.Group)
-	owner := g.Owner
-	if t.Owner != nil && f.Series != "" {
-		if o := t.Owner(f.Series); o != "" {
-			owner = o
-		}
-	}
-	var s string
-	if owner != "" {
-		s = "For " + name(owner)
-	}
+	g, s := t.group(f.Group), t.ownerWords(f)
 	if g.Reply > 0 {
 		s = join(s, "reply by "+clock(read.Add(g.Reply), read, t.Zone))
 	}
 	return upperFirst(join(s, t.releaseWords(g, f.Date, read)))
+}
+
+// ownerWords say who should look, nothing where nobody is named.
+func (t *Teller) ownerWords(f *rules.FlagNews) string {
+	owner := t.group(f.Group).Owner
+	if t.Owner != nil && f.Series != "" {
+		owner = or(t.Owner(f.Series), owner)
+	}
+	if owner == "" {
+		return ""
+	}
+	return "For " + name(owner)
 }
 
 func (t *Teller) releaseWords(g rules.Group, d rules.Date, read time.Time) string {

@@ -60,6 +60,13 @@ func (d *daemon) jobs(c *config.Config) ([]schedule.Job, error) {
 		}})
 	}
 	jobs = append(jobs, schedule.Job{Name: dailyJob, When: daily, Run: d.daily})
+	if timed(c) {
+		when, err := schedule.Parse(escalationSpec, c.Location)
+		if err != nil {
+			return nil, err
+		}
+		jobs = append(jobs, schedule.Job{Name: escalationJob, When: when, Run: d.escalate})
+	}
 	if c.Weekly == nil {
 		return jobs, nil
 	}
@@ -308,7 +315,7 @@ func (d *daemon) daily(ctx context.Context, slot time.Time) error {
 	if err != nil {
 		return err
 	}
-	return d.ledger.Add(s.teller.Daily(news))
+	return errors.Join(d.ledger.Add(s.teller.Daily(news)), escalate(s.config, d.ledger, s.teller, slot))
 }
 
 // newPass is a pass that goes on from what the one before left in memory.

@@ -95,7 +95,7 @@ func (a *app) passOver(c *config.Config, l *ledger.Ledger, only string, settled 
 	bars.clear()
 	a.sayPass(row)
 	if err == nil && a.held == nil {
-		err = a.deadlines(c, l, p)
+		err = firstError(a.deadlines(c, l, p), escalate(c, l, newTeller(c, nil), p.Now))
 	}
 	if err == nil && row.Refused > 0 {
 		return quiet{exitFailed}
