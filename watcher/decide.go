@@ -180,9 +180,10 @@ func entryOf(e *rules.Entry) RecordEntry {
 	return RecordEntry{Kind: DecisionEntry, Who: e.By.String(), At: e.At, Body: e.Text()}
 }
 
-// isMarket is the error of a market move that the residual does not bear out.
+// isMarket is the error of a market move that the residual does not bear out. Where no residual range judged the return, that it looks like the
+// market is enough.
 func (d *deciding) isMarket(f *rules.Flag) error {
-	if f.Kind == rules.KindMarketDay || f.LooksLike == rules.CauseMarket {
+	if f.Kind == rules.KindMarketDay {
 		return nil
 	}
 	why := "the flag is about no return"
@@ -191,8 +192,8 @@ func (d *deciding) isMarket(f *rules.Flag) error {
 		if err != nil {
 			return err
 		}
-		ok, because, err := r.residualInside(f)
-		if ok || err != nil {
+		judged, because, err := r.residualOutside(f)
+		if err != nil || because == "" || !judged && f.LooksLike == rules.CauseMarket {
 			return err
 		}
 		why = because
@@ -200,32 +201,23 @@ func (d *deciding) isMarket(f *rules.Flag) error {
 	return fmt.Errorf("flag %d is no market move: %s; give another reason, or say with an override note why it is one", f.Ref, why)
 }
 
-// residualInside says whether what the reference leaves unexplained of a flagged return is in range, and why not.
-func (r *Reader) residualInside(f *rules.Flag) (ok bool, why string, err error) {
+// residualOutside says why what the reference leaves unexplained of a flagged return is not known to be in range, "" when it is; judged says
+// whether a residual range judged it at all.
+func (r *Reader) residualOutside(f *rules.Flag) (judged bool, why string, err error) {
 	rows, _, err := r.At(f.Series, f.Date, f.Step)
 	if err != nil {
 		return false, "", err
 	}
-	set, err := r.settingsOf(f.Step)
-	if err != nil {
-		return false, "", err
-	}
-	why = "no residual range judged it, so nothing says that the market explains it"
 	for _, row := range rows {
-		if !set.residual(row.Range) {
+		if row.Of != rules.Residual || row.Limited || row.Finding == rules.NotJudged {
 			continue
 		}
-		switch row.Finding {
-		case rules.Breach:
-			return false, fmt.Sprintf("what its reference leaves unexplained is out of range %q", row.Range), nil
-		case rules.Inside, rules.Watch:
-			ok = true
+		if judged = true; row.Finding == rules.Breach {
+			return true, fmt.Sprintf("what its reference leaves unexplained is out of range %q", row.Range), nil
 		}
 	}
-	return ok, why, nil
-}
-
-// residual says whether the range of a name judges residuals.
-func (s *recorded) residual(name string) bool {
-	return slices.ContainsFunc(s.Ranges, func(r rules.Range) bool { return r.Name == name && r.Of == rules.Residual })
+	if !judged {
+		why = "no residual range judged it, so nothing says that the market explains it"
+	}
+	return judged, why, nil
 }
