@@ -28,8 +28,6 @@ type Config struct {
 	Weekly        *Weekly // nil when there is none
 	Page          Page
 	RootForbidden bool // root may enter nothing into the record
-
-	Later []Note // what is set now and works in a later version, in the order of the file
 }
 
 // Calendar says which days are business days, in parts joined by +: a week, a nation's, or those of a file.
@@ -50,13 +48,6 @@ type Page struct {
 	Listen   string // loopback address, "" for a free port
 	Host     string // by which a reverse proxy serves it, "" for none
 	Identity string // the header in which that proxy names who asks, "" where nobody is believed
-}
-
-// Note says of a key that it is set and valid and that its work comes in a later version.
-type Note struct {
-	Line int
-	Path string
-	Text string
 }
 
 // Options are what reading needs from outside. The zero value works.
@@ -118,6 +109,5 @@ func Parse(name string, data []byte, opt Options) (*Config, error) {
 	if len(d.faults) > 0 {
 		return nil, d.sorted(name)
 	}
-	c.Later = d.notes()
 	return c, nil
 }

@@ -1,9 +1,7 @@
 package config
 
 import (
-	"cmp"
 	"errors"
-	"slices"
 	"strings"
 
 	"gopkg.in/yaml.v3"
@@ -12,7 +10,6 @@ import (
 // place is where a key and its value stand in the file.
 type place struct {
 	key, value *yaml.Node
-	later      string
 }
 
 // decoder walks one document, remembers where each key stands and gathers the faults.
@@ -20,7 +17,6 @@ type decoder struct {
 	opt    Options
 	folder string
 	given  map[string]place // by path; a key that took its default is not in it
-	order  []string         // the paths with a note
 	failed map[string]bool  // paths with a fault
 	faults []Error
 	starts map[string]*yaml.Node // defaults as nodes, by their text
@@ -99,21 +95,8 @@ func (d *decoder) wrong(path string, n *yaml.Node, err error, want string) {
 }
 
 // remember keeps where a key stands.
-func (d *decoder) remember(path string, key, value *yaml.Node, later string) {
-	d.given[path] = place{key, value, later}
-	if later != "" {
-		d.order = append(d.order, path)
-	}
-}
-
-// notes are what the keys had to say of later versions, in the order of the file.
-func (d *decoder) notes() (notes []Note) {
-	for _, path := range d.order {
-		p := d.given[path]
-		notes = append(notes, Note{Line: p.key.Line, Path: path, Text: p.later})
-	}
-	slices.SortStableFunc(notes, func(a, b Note) int { return cmp.Compare(a.Line, b.Line) })
-	return notes
+func (d *decoder) remember(path string, key, value *yaml.Node) {
+	d.given[path] = place{key, value}
 }
 
 // quiet is a decoder for defaults: what it reads is not in the file.

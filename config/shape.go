@@ -23,10 +23,9 @@ type field struct {
 	shape    shape
 	at       func(any) any // where the value goes, within what the object fills
 	required bool
-	initial  string                  // the default, as YAML; "" for none
-	choice   string                  // of the fields with the same word exactly one is given
-	without  string                  // the key beside which this one may not stand
-	later    func(*yaml.Node) string // what to say of a value whose work comes in a later version; nil: nothing
+	initial  string // the default, as YAML; "" for none
+	choice   string // of the fields with the same word exactly one is given
+	without  string // the key beside which this one may not stand
 }
 
 // in turns a typed place within T into an untyped one. The place is a pointer, or a function that takes the value.
@@ -61,7 +60,7 @@ func (o object) read(d *decoder, path string, n *yaml.Node, dst any) {
 		f, p := &o.fields[i], join(path, o.fields[i].key)
 		switch pair, ok := given[f.key]; {
 		case ok:
-			d.remember(p, pair.key, pair.value, f.note(pair.value))
+			d.remember(p, pair.key, pair.value)
 			f.shape.read(d, p, pair.value, f.at(dst))
 		case f.required:
 			d.fail(path, n, trouble{message: "missing key " + f.key, want: f.shape.want()})
@@ -76,13 +75,6 @@ func (o object) read(d *decoder, path string, n *yaml.Node, dst any) {
 func has(given map[string]place, key string) bool {
 	_, ok := given[key]
 	return ok
-}
-
-func (f *field) note(n *yaml.Node) string {
-	if f.later == nil {
-		return ""
-	}
-	return f.later(n)
 }
 
 // start is the default as a node.

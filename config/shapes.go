@@ -28,7 +28,7 @@ func (l list[T]) read(d *decoder, path string, n *yaml.Node, dst any) {
 	values, seen := make([]T, len(n.Content)), map[string]bool{}
 	for i, item := range n.Content {
 		p := fmt.Sprintf("%s[%d]", path, i)
-		d.remember(p, item, item, "")
+		d.remember(p, item, item)
 		l.item.read(d, p, item, &values[i])
 		if l.unique && item.Kind == yaml.ScalarNode && seen[item.Value] {
 			d.fail(p, item, trouble{message: "given twice", got: shown(item.Value)})

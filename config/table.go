@@ -3,20 +3,8 @@ package config
 import (
 	"time"
 
-	"gopkg.in/yaml.v3"
-
 	"strayd/rules"
 )
-
-// when notes a key that holds the value.
-func when(value, text string) func(*yaml.Node) string {
-	return func(n *yaml.Node) string {
-		if n.Value == value {
-			return text
-		}
-		return ""
-	}
-}
 
 // table is the one list of keys: Parse walks it, and Schema is made of it.
 var table = object{what: "keys: ledger, feeds and ranges at least", fields: []field{

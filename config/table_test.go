@@ -138,6 +138,5 @@ func TestDefaults(t *testing.T) {
 		Breach: rules.Line{Tail: 0.0027}, Pending: "clip"})
 	check("doubtful", c.Doubtful, 0.002)
 	check("channels", c.Channels, []rules.Channel{{Name: "console", Kind: "console", After: 15 * time.Minute}})
-	check("later", c.Later, []Note(nil))
 	check("weekly", minimal(t, "weekly: {}\n").Weekly, Weekly{Schedule: "0 7 * * mon"})
 }

@@ -110,25 +110,6 @@ func TestLoadRefusesWhatIsNoConfiguration(t *testing.T) {
 	}
 }
 
-func TestLater(t *testing.T) {
-	check := func(text string, want ...string) {
-		t.Helper()
-		var got []string
-		for _, n := range parsed(t, text).Later {
-			got = append(got, fmt.Sprintf("%d %s", n.Line, n.Path))
-			if n.Text == "" {
-				t.Errorf("%s says nothing", n.Path)
-			}
-		}
-		if strings.Join(got, ", ") != strings.Join(want, ", ") {
-			t.Errorf("notes %q, want %q", got, want)
-		}
-	}
-	check(base + "    of: return\n    tail: t5\ncalendar: weekdays\n")
-	check(base+"    of: residual\n    tail: auto\ncalendar: GB\n", "8 ranges[0].tail")
-	check("weekly: {}\n" + base + "groups:\n  - {name: g, series: [a], reference: none, four_eyes: false}\n  - {name: h, series: [b], reference: peers}\n")
-}
-
 // Nearest words, by hand: within a third of the word's letters, swaps of neighbours counted once.
 func TestNearest(t *testing.T) {
 	list := []string{"unit", "date", "separator", "four_eyes"}

@@ -29,6 +29,8 @@ type Gauge struct {
 
 	mu   sync.Mutex
 	thin map[int]thinTail // raw t with n-1 degrees of freedom, by n
+
+	learnt map[float64]thinTail // of auto, by degrees of freedom; only read
 }
 
 // cuts are the z-scores at which watch and breach begin, positive.
@@ -49,6 +51,7 @@ type Past struct {
 	Group   Num                 // the group's deviation, for provisional verdicts
 	Dormant bool                // the newest used value was too old, so that the window starts anew
 	Days    int                 // business days that the value to be judged covers; 0 and 1 are one
+	DF      float64             // learnt of the group, for auto; 0 for t5
 }
 
 // NewGauge prepares a range. A budget line must have its Level. Errors name the range and the line.
@@ -63,7 +66,7 @@ func NewGauge(r Range) (*Gauge, error) {
 		g.tail = stats.Normal()
 	case "t":
 		g.tail, err = stats.ScaledT(r.Tail.DF)
-	default: // auto begins as t5; rank and predictive-t need no fixed tail
+	default: // auto is t5 until it has learnt; rank and predictive-t need no fixed tail
 		g.tail, err = stats.ScaledT(5)
 	}
 	if err != nil {
@@ -72,7 +75,24 @@ func NewGauge(r Range) (*Gauge, error) {
 	if r.Tail.Name != "rank" {
 		g.cut, err = g.cutsUnder(g.tail)
 	}
+	if r.Tail.Name == Auto && err == nil {
+		err = g.prepareLearnt()
+	}
 	return g, err
+}
+
+// prepareLearnt makes every tail that may be learnt.
+func (g *Gauge) prepareLearnt() error {
+	g.learnt = map[float64]thinTail{}
+	for _, df := range learntDF {
+		tail := learntTail(df)
+		cut, err := g.cutsUnder(tail)
+		if err != nil {
+			return err
+		}
+		g.learnt[df] = thinTail{tail, cut}
+	}
+	return nil
 }
 
 func (g *Gauge) cutsUnder(t stats.Tail) (c cuts, err error) {
@@ -171,7 +191,13 @@ func (g *Gauge) inner(n int) float64 {
 		}
 		c = t.cut
 	}
-	return math.Min(c.watch, c.breach)
+	least := math.Min(c.watch, c.breach)
+	if n >= LeastNormal {
+		for _, t := range g.learnt {
+			least = min(least, t.cut.watch, t.cut.breach)
+		}
+	}
+	return least
 }
 
 // thinAt is the tail of a predictive t with n-1 degrees of freedom and its cuts.

@@ -32,7 +32,7 @@ func (g *Gauge) measure(p *Past) (m measure) {
 	if g.Range.Tail.Name == "rank" && p.N >= LeastNormal {
 		return m
 	}
-	if err := g.setTail(&m, p.N); err != nil {
+	if err := g.setTail(&m, p); err != nil {
 		m.scored, v.Finding, v.Why = false, NotJudged, err.Error()
 		return m
 	}
@@ -50,8 +50,13 @@ func also(a, b string) string {
 	return a + "; " + b
 }
 
-// setTail chooses the tail: the range's own, or the predictive t while history is thin.
-func (g *Gauge) setTail(m *measure, n int) error {
+// setTail chooses the tail: the range's own, that which it has learnt, or the predictive t while history is thin.
+func (g *Gauge) setTail(m *measure, p *Past) error {
+	n := p.N
+	if t, ok := g.learnt[p.DF]; ok && n >= LeastNormal {
+		m.tail, m.cut = &t.tail, t.cut
+		return nil
+	}
 	if n >= LeastNormal && g.Range.Tail.Name != "predictive-t" {
 		m.tail, m.cut = &g.tail, g.cut
 		return nil

@@ -113,6 +113,9 @@ const (
 	LeaveOut Pending = "leave-out"
 )
 
+// Auto is the name of the tail that is learnt.
+const Auto = "auto"
+
 // TailModel is the distribution that turns a z-score into a tail probability.
 type TailModel struct {
 	Name string  // normal, t, auto, predictive-t, rank

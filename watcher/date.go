@@ -172,13 +172,13 @@ func (w *worker) judge(date rules.Date, h *hit) {
 	x := rules.Units(w.raw[h.at])
 	for _, l := range w.lanes {
 		if l.residual {
-			v := w.judgeResidual(l, h)
+			v := w.judgeResidual(l, h, date)
 			h.verdicts = append(h.verdicts, v)
 			h.flagged = h.flagged || (h.fresh || h.woken) && v.Finding == rules.Breach
 			continue
 		}
 		past := l.past(int(h.at))
-		past.Days = h.days
+		past.Days, past.DF = h.days, w.j.scales.learnt(l, h.group, date)
 		if past.N < rules.LeastNormal && past.N >= rules.LeastJudged {
 			past.Group = w.j.scales.lent(l, h.group, date)
 		}

@@ -76,6 +76,7 @@ func (w *worker) expect(t task, on rules.Date, each func(Expected) error) error 
 				if past = l.past(i); past.N > 0 && l.between(i, l.last[i], on) > rules.DormantAfter {
 					past = &rules.Past{Dormant: true}
 				}
+				past.DF = w.j.scales.learnt(l, w.group(i), on)
 				if !l.residual {
 					past.Group = w.j.scales.lent(l, w.group(i), on)
 				}

@@ -238,11 +238,14 @@ func (r *Reader) judge(s *seriesPast, n int, v Version, set *recorded, k int, ro
 		return err
 	}
 	if g.Range.Of == rules.Residual {
-		return r.judgeResidual(s, n, v, set, g, used, terms, row, windows)
+		return r.judgeResidual(s, n, v, set, k, used, terms, row, windows)
 	}
 	w := s.window(n, v.Date, v.Step, g, used, nil)
 	w.past.Group, err = r.groupScale(set.ids[k], s.group, v)
 	if err != nil {
+		return err
+	}
+	if w.past.DF, err = r.learnt(g, set.ids[k], s.group, v.Date); err != nil {
 		return err
 	}
 	w.past.Days = terms.Days

@@ -200,7 +200,7 @@ func (l *lane) note(date rules.Date, used []int64) {
 func (l *lane) past(i int) *rules.Past {
 	p := &l.known
 	l.at = i
-	p.N, p.Dormant, p.Group, p.Days = l.windows.N(i), l.dormant[i], rules.Num{}, 0
+	p.N, p.Dormant, p.Group, p.Days, p.DF = l.windows.N(i), l.dormant[i], rules.Num{}, 0, 0
 	switch w := l.windows.(type) {
 	case *stats.WeightedPanel:
 		p.Var = w.State(i).V

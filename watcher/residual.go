@@ -142,7 +142,7 @@ func towards(v rules.Verdict, foreseen float64) rules.Verdict {
 }
 
 // judgeResidual makes the verdict of a residual lane.
-func (w *worker) judgeResidual(l *lane, h *hit) rules.Verdict {
+func (w *worker) judgeResidual(l *lane, h *hit, date rules.Date) rules.Verdict {
 	x := w.residuals.now[h.at]
 	if x == Missing64 && h.days > 1 {
 		return rules.Verdict{Finding: rules.NotJudged, Why: spanResidual(h.days)}
@@ -150,7 +150,9 @@ func (w *worker) judgeResidual(l *lane, h *hit) rules.Verdict {
 	if x == Missing64 {
 		return w.withoutReference(int(h.at))
 	}
-	v := l.gauge.Judge(rules.Units(x), l.past(int(h.at)))
+	past := l.past(int(h.at))
+	past.DF = w.j.scales.learnt(l, h.group, date)
+	v := l.gauge.Judge(rules.Units(x), past)
 	if !l.judges(int(h.at)) {
 		v.Finding = rules.NotJudged
 	}

@@ -18,8 +18,9 @@ func valueOn(versions []Version, date rules.Date, step uint32) int64 {
 }
 
 // judgeResidual fills in a row's verdict under a residual range: as it was given when the residual of the version first was there.
-func (r *Reader) judgeResidual(s *seriesPast, n int, v Version, set *recorded, g *rules.Gauge, used []Version, terms rules.Terms, row *Row,
+func (r *Reader) judgeResidual(s *seriesPast, n int, v Version, set *recorded, k int, used []Version, terms rules.Terms, row *Row,
 	windows bool) error {
+	g := set.gauges[k]
 	if !terms.Daily() {
 		row.Verdict = rules.Verdict{Finding: rules.NotJudged, Why: spanResidual(terms.Days)}
 		return nil
@@ -32,13 +33,16 @@ func (r *Reader) judgeResidual(s *seriesPast, n int, v Version, set *recorded, g
 	if err != nil {
 		return err
 	}
-	first := slices.IndexFunc(kept, func(k Version) bool { return k.Date == v.Date && k.Step >= v.Step && k.Value != Missing64 })
+	first := slices.IndexFunc(kept, func(x Version) bool { return x.Date == v.Date && x.Step >= v.Step && x.Value != Missing64 })
 	if first < 0 {
 		row.Verdict = rules.Verdict{Finding: rules.NotJudged, Why: WhyNoResidual(set.members.Reference(s.name, s.group))}
 		return nil
 	}
 	residual := kept[first]
 	w := s.window(n, v.Date, residual.Step, g, used, kept)
+	if w.past.DF, err = r.learnt(g, set.ids[k], s.group, v.Date); err != nil {
+		return err
+	}
 	verdict := g.Judge(rules.Units(residual.Value), &w.past)
 	row.Verdict = towards(verdict, (row.Return - rules.Units(residual.Value)).Float())
 	row.residual = rules.Units(residual.Value)

@@ -28,6 +28,7 @@ type groupScales struct {
 	panels  map[int]*stats.Panel // by window
 	sums    map[blockKey][]stats.Sums
 	at      rules.Date // the date that sums belong to
+	tails   map[scaleKey][]GroupScale
 	err     error
 }
 
@@ -44,7 +45,8 @@ type blockKey struct {
 
 // newGroupScales prepares the scales of a step.
 func newGroupScales(j *judging, v View, blocks []block) *groupScales {
-	g := &groupScales{j: j, view: v, blocks: map[uint32][]*day{}, known: map[scaleKey]GroupScale{}, loaded: map[scaleKey]bool{}, panels: map[int]*stats.Panel{}}
+	g := &groupScales{j: j, view: v, blocks: map[uint32][]*day{}, known: map[scaleKey]GroupScale{}, loaded: map[scaleKey]bool{}, panels: map[int]*stats.Panel{},
+		tails: map[scaleKey][]GroupScale{}}
 	for _, b := range blocks {
 		g.blocks[b.number] = b.days
 	}

@@ -85,7 +85,7 @@ func (p *Pass) slowStep(ctx context.Context, v View, monday rules.Date) (*Batch,
 	if err := s.scan(ctx); err != nil {
 		return nil, err
 	}
-	b := &Batch{Step: j.step, Flags: s.flags}
+	b := &Batch{Step: j.step, Flags: s.flags, Scales: s.tails(j.held[len(j.held)-1], j.step)}
 	for n, f := range b.Flags {
 		f.Ref, f.Step = v.NextRef()+uint64(n), b.Step
 	}
@@ -106,7 +106,9 @@ type slowScan struct {
 	told   map[slowKey]*rules.Flag // the newest flag of each; nil until one is asked for
 	flags  []*FlagRow
 
-	returns, residuals []int64        // of one block: date by date
+	returns, residuals []int64 // of one block: date by date
+	raw                []int64 // returns as received, but for errors; nil where no tail is learnt
+	counts             map[scaleKey]*rules.Exceedances
 	uses               []int64        // of one date
 	seen               rules.SlowPast // of one series
 	left               []float64      // its residuals, where it has any
@@ -172,6 +174,9 @@ func (s *slowScan) chosen() (out []uint32) {
 func (s *slowScan) block(number uint32, chosen []uint32) error {
 	if size := len(s.dates) * BlockSize; s.returns == nil {
 		s.returns, s.residuals = make([]int64, size), make([]int64, size)
+		if s.j.learns() {
+			s.raw, s.counts = make([]int64, size), map[scaleKey]*rules.Exceedances{}
+		}
 	}
 	for n := range s.dates {
 		if err := s.read(n, number); err != nil {
@@ -195,6 +200,9 @@ func (s *slowScan) series(id uint32) error {
 	s.looked++
 	var failed error
 	name := string(s.j.names.Name(id))
+	if s.raw != nil {
+		s.count(id, name)
+	}
 	news := past.News(s.monday+6, func(k rules.Kind) *rules.Flag {
 		f, err := s.toldOf(name, k)
 		if err != nil {

@@ -13,6 +13,9 @@ func (s *slowScan) read(n int, block uint32) error {
 	date, returns, residuals := s.dates[n], s.returns[n*BlockSize:(n+1)*BlockSize], s.residuals[n*BlockSize:(n+1)*BlockSize]
 	fillMissing(returns)
 	fillMissing(residuals)
+	if s.raw != nil {
+		fillMissing(s.raw[n*BlockSize : (n+1)*BlockSize])
+	}
 	ok, err := s.view.Fill(Returns, date, block, 0, returns)
 	if err != nil || !ok {
 		return err
@@ -25,12 +28,12 @@ func (s *slowScan) read(n int, block uint32) error {
 			return err
 		}
 	}
-	return s.used(date, block, returns, residuals)
+	return s.used(n, block, returns, residuals)
 }
 
 // used puts used values in the place of returns, and takes out what the pool leaves out.
-func (s *slowScan) used(date rules.Date, block uint32, returns, residuals []int64) error {
-	raw := slices.Clone(returns)
+func (s *slowScan) used(n int, block uint32, returns, residuals []int64) error {
+	raw, date := slices.Clone(returns), s.dates[n]
 	for n, g := range s.j.gauges {
 		if g.Range.Limit == nil && g.Range.Of == rules.Return && s.j.ids[n] != 0 {
 			if err := s.view.Patch(s.j.ids[n], date, block, 0, returns); err != nil {
@@ -47,10 +50,13 @@ func (s *slowScan) used(date rules.Date, block uint32, returns, residuals []int6
 	for i := range returns {
 		switch {
 		case returns[i] == Missing64 || s.uses[i] == int64(causes.Out):
-			returns[i] = Missing64
+			returns[i], raw[i] = Missing64, Missing64
 		case residuals[i] != Missing64: // a residual belongs to the return as it came
 			returns[i] = raw[i]
 		}
+	}
+	if s.raw != nil {
+		copy(s.raw[n*BlockSize:], raw)
 	}
 	return nil
 }

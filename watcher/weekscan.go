@@ -131,6 +131,7 @@ func (w *weekScan) scan(t task, k int, l *lane, n int) error {
 		if past.N < rules.LeastNormal {
 			past.Group = w.j.scales.lent(l, w.group(i), date)
 		}
+		past.DF = w.j.scales.learnt(l, w.group(i), date)
 		v := l.gauge.Judge(rules.Units(raw[i]), past)
 		w.concluded(k, i, n, &v)
 	}

@@ -61,6 +61,9 @@ func (s *honestSum) print(name string) {
 // honestFrom is how many dates come as one file a feed before the others come one by one.
 const honestFrom = 260
 
+// honestStep is how many of these one pass takes: the checks of a week run between passes.
+const honestStep = 20
+
 func (b *bench) honestBook(h *honestKind, seed uint64, sum *honestSum) error {
 	book := h.make(seed)
 	dir, err := os.MkdirTemp(b.dir, "honest-")
@@ -72,19 +75,23 @@ func (b *bench) honestBook(h *honestKind, seed uint64, sum *honestSum) error {
 	if err := writeSetup(dir, book); err != nil {
 		return err
 	}
-	if err := os.WriteFile(d.path("strayd.yaml"), []byte(honestConfig(book)), 0o644); err != nil {
+	if err := os.WriteFile(d.path("strayd.yaml"), []byte(honestConfig(book, b.tail)), 0o644); err != nil {
 		return err
 	}
 	if err := d.fresh(); err != nil {
 		return err
 	}
 	from := min(honestFrom, len(book.Dates)/2)
-	for _, part := range [][2]int{{0, from}, {from, len(book.Dates)}} {
-		if err := d.honestFiles(book, part[0], part[1], sum); err != nil {
+	upto := from
+	for begin := 0; begin < len(book.Dates); begin, upto = upto, min(upto+honestStep, len(book.Dates)) {
+		if err := d.honestFiles(book, begin, upto, sum); err != nil {
 			return err
 		}
-		last := book.Dates[part[1]-1].String() + "T20:00:00Z"
+		last := book.Dates[upto-1].String() + "T20:00:00Z"
 		d.run("pass", "--settled", "--now", last) //nolint:errcheck // 1 where a file was refused, which the flags tell
+		if err := d.empty(); err != nil {
+			return err
+		}
 	}
 	text, _, err := d.output("flags", "--all", "--from", book.Dates[from].String(), "--format", "csv")
 	if err != nil {
@@ -156,7 +163,7 @@ func (s *honestSum) count(book *drill.Book, t int) {
 }
 
 // honestConfig is the configuration of a book of any groups.
-func honestConfig(b *drill.Book) string {
+func honestConfig(b *drill.Book, tail string) string {
 	text := "ledger: ledger.db\nfeeds:\n  - {name: index, files: \"inbox/index-*.csv\", unit: percent}\n" +
 		"  - {name: administrator, files: \"inbox/administrator-*.csv\", unit: percent}\nseries: series.csv\nevents: events.csv\n"
 	var groups []string
@@ -173,5 +180,5 @@ func honestConfig(b *drill.Book) string {
 	if len(groups) > 0 {
 		text += "groups:\n" + strings.Join(groups, "")
 	}
-	return text + "ranges:\n  - {name: own}\n  - {name: residual, of: residual}\n"
+	return text + "ranges:\n  - {name: own, tail: " + tail + "}\n  - {name: residual, of: residual, tail: " + tail + "}\n"
 }

@@ -20,6 +20,7 @@ type bench struct {
 	scale   float64
 	seed    uint64 // of the first book of funds
 	seeds   int    // books of funds that a drill goes through
+	tail    string // of the ranges of honest books
 	only    string // honest books whose names hold it
 }
 
@@ -34,6 +35,7 @@ func main() {
 	out := flag.String("out", "", "write the book into this `FOLDER`")
 	flag.Uint64Var(&b.seed, "seed", 1, "`NUMBER` that fixes the book, and the first of a drill")
 	flag.IntVar(&b.seeds, "seeds", 8, "books of a drill")
+	flag.StringVar(&b.tail, "tail", "auto", "tail `MODEL` of the ranges of honest books")
 	flag.StringVar(&b.only, "only", "", "honest books whose names hold `TEXT`")
 	flag.Parse()
 	if *kind != "" {

@@ -70,13 +70,6 @@ func (a *app) load() (*config.Config, error) {
 	return c, err
 }
 
-// sayLater tells what the configuration sets that this version does not act on yet.
-func (a *app) sayLater(c *config.Config) {
-	for _, n := range c.Later {
-		fmt.Fprintf(a.err, "%s:%d: %s: %s\n", c.File, n.Line, n.Path, n.Text)
-	}
-}
-
 // openLedger opens the configuration's ledger for reading, or for writing.
 func openLedger(c *config.Config, mode ledger.Mode) (*ledger.Ledger, error) {
 	return ledger.Open(c.Ledger, ledger.Options{Mode: mode})

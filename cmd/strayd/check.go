@@ -48,7 +48,6 @@ func (a *app) check(asked checking) error {
 	if err != nil {
 		return err
 	}
-	a.sayLater(c)
 	fmt.Fprintf(a.out, "%s is right.\n\n", c.File)
 	names, held := heldNames(c)
 	refused, err := a.checkFeeds(c, names, asked.settled)

@@ -94,7 +94,7 @@ func tailWords(t rules.TailModel) string {
 	case t.Name == "t":
 		return fmt.Sprintf("t with %g degrees of freedom", t.DF)
 	case t.Name == "auto":
-		return "auto (t with 5 degrees of freedom in this version)"
+		return "auto (t with 5 degrees of freedom until a group has shown others)"
 	}
 	return t.Name
 }

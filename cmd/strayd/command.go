@@ -84,7 +84,7 @@ func (a *app) path(name string) string {
 // configHash tells one configuration from another by all that it says.
 func configHash(c *config.Config) string {
 	plain := *c
-	plain.File, plain.Location, plain.Later = "", nil, nil
+	plain.File, plain.Location = "", nil
 	text, err := json.Marshal(plain)
 	if err != nil {
 		panic(err) // plain values always encode

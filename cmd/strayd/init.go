@@ -57,7 +57,6 @@ func (a *app) makeLedger() (string, error) {
 	if err != nil {
 		return "", err
 	}
-	a.sayLater(c)
 	l, err := openLedger(c, ledger.Create)
 	if err != nil {
 		return c.Ledger, err

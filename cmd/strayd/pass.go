@@ -37,7 +37,6 @@ Exit code 1 when a file was refused or could not be read; flags do not change it
 
 func (a *app) pass(only string, settled bool) error {
 	return a.withLedger(ledger.ReadWrite, func(c *config.Config, l *ledger.Ledger) error {
-		a.sayLater(c)
 		if only != "" && c.FeedKey(only) == "" {
 			return usagef("no feed %q in %s", only, c.File)
 		}

@@ -72,9 +72,6 @@ func (d *daemon) sayReady() {
 	if err := health.Ready(); err != nil {
 		d.log.Warn("the service manager cannot be told", "error", err)
 	}
-	for _, n := range c.Later {
-		d.log.Info("set, and not acted on by this version", "key", n.Path, "line", n.Line, "what", n.Text)
-	}
 }
 
 // reload takes a good new configuration over as a whole, and keeps the last good one otherwise.

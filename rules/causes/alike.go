@@ -19,7 +19,7 @@ const (
 	likeGuess  = 0.1         // mean square before anything is learnt
 	guessDates = 10          // that it counts for
 	mostCommon = 4           // deviations that one date counts for
-	farCommon  = 4           // deviations of the common residual, within which a day is as days are
+	farCommon  = 6           // deviations of the common residual, within which a day is as days are
 )
 
 func newAlike() alike {

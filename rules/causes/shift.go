@@ -40,14 +40,14 @@ func (p *Pool) offDates(c *contradiction, weight float64) {
 		}
 		before := st.fit.at(m1, st.ref[(p.t-2)&mask])
 		gain := p.gain(i, lk.x, lk.mu, before)
+		c.late += gain
 		if p.repeated(i) {
-			gain += sentAgain
+			c.late += lk.saysAgain()
 			c.again++
 		}
 		if st.yesterday == st.yesterday {
 			c.anew++
 		}
-		c.late += gain
 		switch {
 		case gain > 1:
 			c.pro++
@@ -59,6 +59,12 @@ func (p *Pool) offDates(c *contradiction, weight float64) {
 		}
 	}
 	c.late, c.early = float64(weight*c.late), float64(weight*c.early)
+}
+
+// saysAgain is what a value that is yesterday's again says for a file sent again: no more than chance leaves of it, where few digits or a
+// close reference make it likely by itself.
+func (lk *look) saysAgain() float64 {
+	return min(max(-math.Log(lk.width()*usual.peak/lk.s)-1, 0), sentAgain)
 }
 
 // gain is the logarithm of how much better a return fits one centre than another.
