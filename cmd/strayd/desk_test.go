@@ -107,6 +107,7 @@ func TestDeskPage(t *testing.T) {
 	o.sees("flag?ref=1", "that may be you")
 	o.does("ref=1&deed=sign-off&note=agreed", http.StatusOK, "signed off (agreed), by bob (uid 1002)")
 	a.does("ref=2,3&deed=acknowledge", http.StatusOK, "Flag 2", "Flag 3", "by alice (uid 1001)")
+	b.expect(alice, "waive 1 --until 2999-01-01", exitFailed, "signed off")
 	a.does("ref=4&deed=waive&until=2999-01-01", http.StatusOK, "waived")
 	a.does("ref=5&deed=decide&conclusion=genuine&reason=market move&note=x", http.StatusUnprocessableEntity, "no market move", `value="genuine" required checked`)
 	a.does("ref=5&deed=decide&conclusion=genuine&reason=market move&note=x&override=index fell", http.StatusOK, "overridden: index fell")

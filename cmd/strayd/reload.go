@@ -101,6 +101,9 @@ func (d *daemon) takeOver(ctx context.Context) error {
 	if c.Ledger != old.Ledger {
 		return fmt.Errorf("the ledger changed from %s to %s: that takes a restart", old.Ledger, c.Ledger)
 	}
+	if c.Page.Listen != old.Page.Listen {
+		return fmt.Errorf("page.listen changed from %q to %q: that takes a restart", old.Page.Listen, c.Page.Listen)
+	}
 	next, err := d.prepare(c)
 	if err != nil {
 		return err

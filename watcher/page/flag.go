@@ -33,7 +33,8 @@ type deedPart struct {
 	Can     map[string]bool // by deed
 	Four    bool
 	Decided *rules.Act
-	Self    bool // who looks decided it
+	Waived  *rules.Act // the waiver that waits for a second person
+	Self    bool // who looks did it
 	Value   bool // a value can be corrected
 	Until   rules.Date
 	Reasons []rules.Reason
@@ -161,7 +162,11 @@ func newDeed(flags []rules.Flag, chosen int, who rules.Person, book *Book, day r
 	d := &deedPart{Flags: flags, Can: map[string]bool{}, Until: book.Business.Add(day, 5), Reasons: rules.Reasons, Typed: old}
 	for i := range flags {
 		f := &flags[i]
-		d.Refs = append(d.Refs, choice{*f, i < chosen || len(old.Refs) == 0 && f.AsksOn(day) && f.Standing == flags[0].Standing || slices.Contains(old.Refs, f.Ref)})
+		tick := i < chosen || f.AsksOn(day) && f.Standing == flags[0].Standing
+		if len(old.Refs) > 0 {
+			tick = slices.Contains(old.Refs, f.Ref)
+		}
+		d.Refs = append(d.Refs, choice{*f, tick})
 		if i >= chosen {
 			continue
 		}
@@ -172,6 +177,9 @@ func newDeed(flags []rules.Flag, chosen int, who rules.Person, book *Book, day r
 		if f.Decided != nil && f.Standing == rules.Decided {
 			d.Decided = f.Decided
 			d.Self = d.Self || f.Decided.By.UID == who.UID
+		} else if f.AwaitsSecond() {
+			d.Waived = f.Last
+			d.Self = d.Self || f.Last.By.UID == who.UID
 		}
 	}
 	if f := &flags[0]; chosen == 1 && f.Implied.OK && f.LooksLike != rules.CauseGenuine && f.LooksLike != rules.CauseMarket {
