@@ -45,3 +45,20 @@ func FuzzParse(f *testing.F) {
 		}
 	})
 }
+
+// Whatever is set, the answer is a checked configuration or words about what is wrong.
+func FuzzSet(f *testing.F) {
+	for _, s := range []string{"ranges.own.window=120", "ranges.0={name: x}", "groups=[]", "ranges.own.breach={tail: 0.5%}", "a=b", "=",
+		"ranges.own=&a [*a]", "feeds.book.due.at=9"} {
+		f.Add(s)
+	}
+	f.Fuzz(func(t *testing.T, line string) {
+		opt := testOptions
+		opt.Set = []string{line, line}
+		c, err := Parse("strayd.yaml", []byte(setText), opt)
+		var bad Errors
+		if (c == nil) != (err != nil) || err != nil && !errors.As(err, &bad) {
+			t.Errorf("%q: %v, %v", line, c, err)
+		}
+	})
+}
