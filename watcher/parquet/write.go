@@ -39,7 +39,7 @@ type Writer struct {
 
 // NewWriter begins a table.
 func NewWriter(out io.Writer, what watcher.What) *Writer {
-	options := []pq.WriterOption{pq.Compression(&pq.Snappy), pq.MaxRowsPerRowGroup(groupRows), pq.CreatedBy("strayd", "", "")}
+	options := []pq.WriterOption{pq.Compression(&pq.Snappy), pq.MaxRowsPerRowGroup(groupRows)}
 	if what == watcher.Prices {
 		return &Writer{prices: pq.NewGenericWriter[priceRow](out, append(options, pq.KeyValueMetadata("strayd.schema", "prices 1"))...)}
 	}

@@ -21,6 +21,7 @@ type grid struct {
 	from1904 bool
 	columns  int // at most
 	rows     []row
+	width    int // columns
 	next     int // of rows
 	cells    []watcher.GridCell
 	styles   map[int]watcher.CellKind // of numbers, by the number of their style
@@ -40,7 +41,7 @@ func (g *grid) load() error {
 		return err
 	}
 	g.from1904 = props.Date1904 != nil && *props.Date1904
-	hidden, width, err := g.stream()
+	hidden, err := g.stream()
 	if err != nil {
 		return err
 	}
@@ -51,7 +52,7 @@ func (g *grid) load() error {
 	g.note(hidden, "row", "hidden and read like any other")
 	g.note(len(merged), "merged range", "of which only the first cell has a value")
 	out := 0
-	for c := range width {
+	for c := range g.width {
 		name, err := excelize.ColumnNumberToName(c + 1)
 		if err != nil {
 			return err
@@ -75,28 +76,28 @@ func (g *grid) note(n int, what, how string) {
 }
 
 // stream reads all values as they are kept.
-func (g *grid) stream() (hidden, width int, err error) {
+func (g *grid) stream() (hidden int, err error) {
 	rows, err := g.book.Rows(g.sheet)
 	if err != nil {
-		return 0, 0, err
+		return 0, err
 	}
 	for number := 1; rows.Next(); number++ {
 		values, err := rows.Columns(excelize.Options{RawCellValue: true})
 		if err != nil {
-			return 0, 0, err
+			return 0, err
 		}
 		if len(values) == 0 {
 			continue
 		}
-		if width = max(width, len(values)); width > g.columns {
-			return 0, 0, unfit("sheet %q has more than %d columns, the limit; deliver CSV or Parquet", g.sheet, g.columns)
+		if g.width = max(g.width, len(values)); g.width > g.columns {
+			return 0, unfit("sheet %q has more than %d columns, the limit; deliver CSV or Parquet", g.sheet, g.columns)
 		}
 		if rows.GetRowOpts().Hidden {
 			hidden++
 		}
 		g.rows = append(g.rows, row{number, values})
 	}
-	return hidden, width, rows.Close()
+	return hidden, rows.Close()
 }
 
 // Next implements watcher.Grid.
@@ -108,7 +109,11 @@ func (g *grid) Next() (cells []watcher.GridCell, number int, err error) {
 			g.next++
 			filled := false
 			g.cells = g.cells[:0]
-			for i, value := range r.values {
+			for i := range g.width {
+				value := "" // what is blank is looked at too: something may be lost there
+				if i < len(r.values) {
+					value = r.values[i]
+				}
 				c, err := g.cell(r.number, i, value)
 				if err != nil {
 					return err

@@ -35,6 +35,9 @@ func Open(file io.ReaderAt, size int64, sheet string, bounds watcher.GridBounds)
 	err := guarded(func() (err error) {
 		g.book, err = excelize.OpenReader(io.NewSectionReader(file, 0, size),
 			excelize.Options{RawCellValue: true, UnzipSizeLimit: bounds.Bytes, UnzipXMLSizeLimit: mostText})
+		if err == io.EOF {
+			return unfit("the archive holds no workbook")
+		}
 		if err != nil {
 			return err
 		}
