@@ -93,7 +93,12 @@ func (a *app) lookInto(file string) (*sampleFile, error) {
 		return nil, err
 	}
 	defer f.Close()
-	s, err := sample.Text(filepath.Base(full), f)
+	var s *sample.Sample
+	if open := grids()[strings.ToLower(filepath.Ext(full))]; open != nil {
+		s, err = gridSample(filepath.Base(full), f, info.Size(), open)
+	} else {
+		s, err = sample.Text(filepath.Base(full), f)
+	}
 	if err != nil {
 		return nil, err
 	}

@@ -20,6 +20,7 @@ type Sample struct {
 	parted    Remark
 	encoded   Remark
 	Typed     bool // the cells know whether they are dates or numbers
+	Percent   bool // numbers are shown as per cent, and hold fractions
 }
 
 // Row is one row after the header.

@@ -214,6 +214,11 @@ func Cells(name string, rows []Row, cut bool) (*Sample, error) {
 	if len(rows) == 0 {
 		return nil, &Unreadable{name, 0, "the file is empty"}
 	}
-	s := &Sample{Name: name, Header: rows[0].Cells, Line: rows[0].Line, Rows: rows[1:], Cut: cut, Typed: true}
+	s := &Sample{Name: name, Header: rows[0].Cells, Line: rows[0].Line, Cut: cut, Typed: true}
+	for _, r := range rows[1:] {
+		if len(r.Cells) == 0 || !strings.HasPrefix(r.Cells[0], "#") { // a control total
+			s.Rows = append(s.Rows, r)
+		}
+	}
 	return s, s.checkHeader()
 }

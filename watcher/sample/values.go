@@ -200,6 +200,9 @@ func (f *Finding) unit(t *table, found map[string][]float64) {
 	r := Remark{Key: "unit", Sure: Likely, Confirm: true, Why: fmt.Sprintf("a typical value is %s: a day of %s %% as fraction, %s %% as percent, %s %% as bp",
 		short(typical), short(100*typical), short(typical), short(typical/100))}
 	switch {
+	case t.samples[0].Percent:
+		f.Feed.Unit, r.Sure, r.Confirm = rules.Fraction, Sure, false
+		r.Why = "the cells are shown as per cent, and hold fractions"
 	case t.series >= 0 && strings.Contains(names, "bp"):
 		f.Feed.Unit, r.Sure = rules.BP, Sure
 		r.Why = "the column is named so; " + r.Why
