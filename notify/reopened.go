@@ -30,7 +30,7 @@ func (t *Teller) reopened(c rules.Channel, news rules.News) (out []rules.Notice)
 }
 
 func (t *Teller) openAgain(c rules.Channel, e event, n rules.Notice) []string {
-	if e[len(e)-1].Series != e[0].Series || e[len(e)-1].Date != e[0].Date {
+	if !e.oneValue() {
 		return append([]string{"OPEN AGAIN: " + rules.Counted(len(e), "flag") + ", see strayd flags"}, namedFlags(e, storm-mostTold)...)
 	}
 	if c.Short {

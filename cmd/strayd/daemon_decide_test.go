@@ -253,20 +253,21 @@ func TestDaemonTellsOfActs(t *testing.T) {
 	f.must("decide", "2", "3", "corrected", "0.25%", "--reason", "data error", "--note", "<!channel> resent")
 	f.allSent()
 	posts := s.in(channelID("desk"))[3:]
-	if len(posts) != 2 || posts[0].Thread != told[1].Stamp || !strings.HasPrefix(posts[0].Text, "ACKNOWLEDGED: fund-01, ref 2") {
+	if len(posts) != 3 || posts[0].Thread != told[1].Stamp || !strings.HasPrefix(posts[0].Text, "ACKNOWLEDGED: fund-01, ref 2") {
 		t.Fatalf("an acknowledgement reaches the desk as %q", posts)
 	}
-	p := posts[1]
-	if p.Thread != told[2].Stamp || !strings.HasPrefix(p.Text, "DECIDED: 2 flags\nfund-01, ref 2\nfund-02, ref 3\nCorrected to +0.25 %, data error, by ") ||
-		strings.Contains(p.Text+p.Blocks, "<!channel>") {
-		t.Errorf("a decision reaches the desk as %q", p)
+	for n, p := range posts[1:] { // each in the thread of its own flag
+		if p.Thread != told[1+n].Stamp || !strings.HasPrefix(p.Text, fmt.Sprintf("DECIDED: fund-%02d, ref %d\nCorrected to +0.25 %%, data error, by ", n+1, n+2)) ||
+			strings.Contains(p.Text+p.Blocks, "<!channel>") {
+			t.Errorf("a decision reaches the desk as %q", p)
+		}
 	}
 
 	// A restatement opens again what was decided: the thread says so, and the channel sees it.
 	f.arrive("d.csv", csvDays(series, 31, 31, map[string]float64{"fund-02": 0.0005}))
 	f.allSent()
 	again := 0
-	for _, p := range s.in(channelID("desk"))[5:] {
+	for _, p := range s.in(channelID("desk"))[6:] {
 		if !strings.HasPrefix(p.Text, "OPEN AGAIN: ") {
 			continue
 		}
