@@ -204,10 +204,10 @@ func (f *Finding) unit(t *table, found map[string][]float64) {
 		f.Feed.Unit, r.Sure, r.Confirm = rules.Fraction, Sure, false
 		r.Why = "the cells are shown as per cent, and hold fractions"
 	case t.series >= 0 && strings.Contains(names, "bp"):
-		f.Feed.Unit, r.Sure = rules.BP, Sure
+		f.Feed.Unit = rules.BP
 		r.Why = "the column is named so; " + r.Why
 	case t.series >= 0 && (strings.Contains(names, "%") || strings.Contains(names, "pct") || strings.Contains(names, "percent")):
-		f.Feed.Unit, r.Sure = rules.Percent, Sure
+		f.Feed.Unit = rules.Percent
 		r.Why = "the column is named so; " + r.Why
 	case len(sizes) == 0:
 		f.Feed.Unit, r.Sure, r.Why = rules.Fraction, Guess, "every value is zero"
