@@ -16,7 +16,7 @@ import (
 
 const (
 	deskSeries = 10_000
-	deskDates  = 500
+	deskDates  = 250
 	deskFlags  = 1000 // open ones, at least
 	perGroup   = 100  // series of a group, by their names
 	deskAsks   = 200  // of each page

@@ -34,8 +34,8 @@ type deedPart struct {
 	Four    bool
 	Decided *rules.Act
 	Waived  *rules.Act // the waiver that waits for a second person
-	Self    bool // who looks did it
-	Value   bool // a value can be corrected
+	Self    bool       // who looks did it
+	Value   bool       // a value can be corrected
 	Until   rules.Date
 	Reasons []rules.Reason
 	Typed   typed

@@ -2,6 +2,7 @@ package page
 
 import (
 	"cmp"
+	"html/template"
 	"math"
 	"net/http"
 	"slices"
@@ -19,6 +20,10 @@ type today struct {
 	step uint32
 	day  rules.Date
 	held *dayFacts
+
+	rows   template.HTML // the groups, written
+	facts  *dayFacts     // that they are of
+	minute time.Time     // that they were written in: they say how long until a release
 }
 
 // dayFacts are what the first page reads from the ledger.
@@ -49,7 +54,7 @@ type todayPage struct {
 	Asking   int // flags
 	Second   int // of which for a second person
 	Feeds    []feedToday
-	Groups   []groupToday
+	Groups   template.HTML
 	Troubles []string
 	Head     string
 }
@@ -117,7 +122,7 @@ func (p *Page) showToday(v *visit) error {
 func (p *Page) readToday(view watcher.View, all string) (*todayPage, error) {
 	book, now := p.src.Book(), p.src.Now()
 	day := rules.DateFrom(now.In(book.Zone))
-	facts, err := p.today.facts(view, day, startOf(now.In(book.Zone)))
+	facts, err := p.today.read(view, day, startOf(now.In(book.Zone)))
 	if err != nil {
 		return nil, err
 	}
@@ -131,21 +136,44 @@ func (p *Page) readToday(view watcher.View, all string) (*todayPage, error) {
 	for i := range book.Feeds {
 		out.Feeds = append(out.Feeds, feedOf(&book.Feeds[i], facts.feeds[book.Feeds[i].Name], now, book.Zone))
 	}
-	out.Groups = groupsOf(facts.flags, &book, now, day)
-	for n := range out.Groups {
-		if g := &out.Groups[n]; len(g.Lines) > mostLines && all != g.Name {
+	out.Groups, err = p.groups(facts, &book, now, all)
+	return out, err
+}
+
+// groups writes the groups, or gives what was written in the same minute of the same facts: with a thousand flags that is most of the work.
+func (p *Page) groups(facts *dayFacts, book *Book, now time.Time, all string) (template.HTML, error) {
+	t := &p.today
+	t.mu.Lock()
+	defer t.mu.Unlock()
+	minute := now.Truncate(time.Minute)
+	if all == "" && t.facts == facts && t.minute.Equal(minute) {
+		return t.rows, nil
+	}
+	day := rules.DateFrom(now.In(book.Zone))
+	groups := groupsOf(facts.flags, book, now, day)
+	for n := range groups {
+		g := &groups[n]
+		if len(g.Lines) > mostLines && all != g.Name {
 			g.More = len(g.Lines) - mostLines
 			g.Lines = g.Lines[:mostLines]
 		}
-		for i := range out.Groups[n].Lines {
-			out.Groups[n].Lines[i].say(&book, day)
+		for i := range g.Lines {
+			g.Lines[i].say(book, day)
 		}
 	}
-	return out, nil
+	var b strings.Builder
+	if err := p.pages["today"].ExecuteTemplate(&b, "groups", groups); err != nil {
+		return "", err
+	}
+	rows := template.HTML(b.String()) // written by a template, which escapes
+	if all == "" {
+		t.rows, t.facts, t.minute = rows, facts, minute
+	}
+	return rows, nil
 }
 
-// facts reads what the page needs, or gives what was read at the same step.
-func (t *today) facts(v watcher.View, day rules.Date, since time.Time) (*dayFacts, error) {
+// read gives what the page needs of the ledger, or gives what was read at the same step.
+func (t *today) read(v watcher.View, day rules.Date, since time.Time) (*dayFacts, error) {
 	t.mu.Lock()
 	defer t.mu.Unlock()
 	if t.held != nil && t.step == v.Step() && t.day == day {
