@@ -170,6 +170,9 @@ func TestGoldenMessages(t *testing.T) {
 			"looks", "crowded", "stale", "wrong", "market", "moved"} {
 			for _, n := range teller.Notices(goldenNews(series)[kind]) {
 				note(t, text, kind, n)
+				if last := n.Lines[len(n.Lines)-1]; n.Channel == "desk" && n.Kind != rules.KindDigest && !strings.Contains(last, "strayd explain ") {
+					t.Errorf("%s: the last line does not say how to answer: %q", kind, last)
+				}
 			}
 		}
 		for _, news := range goldenActs(series) {
