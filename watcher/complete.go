@@ -86,12 +86,16 @@ const (
 
 // ending refuses a file that stops within a line, as those before did not.
 func (g *fileGate) ending() (*rules.Refusal, error) {
-	taken := g.p.taken[g.feed.Name]
-	odd := slices.ContainsFunc(taken, func(r FileRow) bool { return r.Reason == unended })
-	if !g.sheet.Unended || odd || len(taken) < endingFiles {
+	if !g.endsUnlike(endingFiles) {
 		return nil, nil
 	}
 	return rules.RefuseUnended(g.sheet.Last()), nil
+}
+
+// endsUnlike says that the file stops within a line, and that at least so many files before did not.
+func (g *fileGate) endsUnlike(files int) bool {
+	taken := g.p.taken[g.feed.Name]
+	return g.sheet.Unended && len(taken) >= files && !slices.ContainsFunc(taken, func(r FileRow) bool { return r.Reason == unended })
 }
 
 // completeness looks for who is missing: a file that breaks off is refused, one that lacks series raises a flag with their names.
@@ -111,8 +115,14 @@ func (g *fileGate) completeness() (*rules.Refusal, error) {
 		return nil, err
 	}
 	d, err := g.delivery(before, came, last)
-	if err != nil || !files && 2*d.Missing.Count > d.Expected {
+	if err != nil {
 		return nil, err
+	}
+	if !files && 2*d.Missing.Count > d.Expected { // a date may come in parts
+		if g.endsUnlike(1) {
+			return rules.RefuseUnended(last), nil
+		}
+		return nil, nil
 	}
 	if r := d.Refuse(); r != nil && files && !g.p.Released[g.sheet.File.SHA256] {
 		return r, nil

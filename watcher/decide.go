@@ -146,6 +146,9 @@ func (d *deciding) one(ref uint64) error {
 	if !ok {
 		return &UnknownRef{ref}
 	}
+	if err := d.p.inTurn(&f); err != nil {
+		return err
+	}
 	a := d.act
 	a.Second = d.p.fourEyes(f.Group) || d.act.Deed == rules.SignOff && f.AwaitsSecond()
 	if a.Second {
@@ -161,6 +164,18 @@ func (d *deciding) one(ref uint64) error {
 	return err
 }
 
+// inTurn refuses an act on a day before the flag was raised, or before what was done about it last: the record tells a story in order.
+func (p *Pass) inTurn(f *rules.Flag) error {
+	last, what := f.RaisedAt, "it was raised"
+	if f.Last != nil && f.Last.At.After(last) {
+		last, what = f.Last.At, "something was done about it last"
+	}
+	if day := rules.DateFrom(last.In(p.zone())); p.today() < day {
+		return fmt.Errorf("flag %d: %s lies before %s, when %s", f.Ref, p.today(), day, what)
+	}
+	return nil
+}
+
 // fourEyes says whether a group asks for a second person.
 func (p *Pass) fourEyes(group string) bool {
 	return group != "" && slices.ContainsFunc(p.Settings.Groups, func(g rules.Group) bool { return g.Name == group && g.FourEyes })
@@ -168,11 +183,14 @@ func (p *Pass) fourEyes(group string) bool {
 
 // today is the day of the pass in its zone.
 func (p *Pass) today() rules.Date {
-	zone := p.Zone
-	if zone == nil {
-		zone = time.UTC
+	return rules.DateFrom(p.Now.In(p.zone()))
+}
+
+func (p *Pass) zone() *time.Location {
+	if p.Zone == nil {
+		return time.UTC
 	}
-	return rules.DateFrom(p.Now.In(zone))
+	return p.Zone
 }
 
 // entryOf is an entry as the record takes it.
