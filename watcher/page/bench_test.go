@@ -2,11 +2,11 @@ package page
 
 import (
 	"fmt"
+	"net/http"
 	"net/http/httptest"
 	"testing"
 	"time"
 
-	"net/http"
 	"strayd/rules"
 	"strayd/watcher"
 )

@@ -89,7 +89,8 @@ func (p *Page) readFlag(view watcher.View, ref uint64, weigh bool, who rules.Per
 	if e == nil {
 		return nil, notThere("no flag has the ref %d", ref)
 	}
-	out := &flagPage{Unsaid: !weigh && e.Flag.Series != "", Flag: e.Flag, Title: e.Title, Facts: e.Facts, Status: e.Flag.StandingOn(day), Blocks: p.blocks(&e.Flag, &book)}
+	out := &flagPage{Unsaid: !weigh && e.Flag.Series != "", Flag: e.Flag, Title: e.Title, Facts: e.Facts, Status: e.Flag.StandingOn(day),
+		Blocks: p.blocks(&e.Flag, &book)}
 	if e.Flag.Series != "" {
 		if out.Beside, err = beside(view, &e.Flag); err != nil {
 			return nil, err

@@ -105,7 +105,8 @@ func (p *Page) calm(next http.Handler) http.Handler {
 func (p *Page) atDesk(w http.ResponseWriter, r *http.Request) {
 	d := p.deskOf(r)
 	if d == nil {
-		p.refuse(w, http.StatusUnauthorized, "Nobody is known at this desk.", "Run `strayd desk` on the machine of the daemon: it makes a link for you, which is good for two minutes and for one use.")
+		p.refuse(w, http.StatusUnauthorized, "Nobody is known at this desk.",
+			"Run `strayd desk` on the machine of the daemon: it makes a link for you, which is good for two minutes and for one use.")
 		return
 	}
 	path, ok := strings.CutPrefix(r.URL.Path, d.path+"/")
