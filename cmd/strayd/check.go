@@ -66,6 +66,9 @@ func (a *app) check(asked checking) error {
 	if err := a.sayLines(c, names.Names); err != nil {
 		return err
 	}
+	if err := a.sayStrangers(c, names.Names); err != nil {
+		return err
+	}
 	if refused > 0 {
 		return quiet{exitFailed}
 	}
