@@ -45,6 +45,11 @@ func ascending(days []Date) []Date {
 	return slices.Compact(days)
 }
 
+// Same says that two calendars have the same business days.
+func (c *Calendar) Same(o *Calendar) bool {
+	return c == o || c.Weekdays() == o.Weekdays() && slices.Equal(c.plain().Holidays, o.plain().Holidays) && slices.Equal(c.plain().Open, o.plain().Open)
+}
+
 // plain is the calendar of nil.
 func (c *Calendar) plain() *Calendar {
 	if c == nil {

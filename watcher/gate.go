@@ -86,7 +86,10 @@ func (g *fileGate) compare() (*rules.Refusal, error) {
 		day.Past = g.pastOf(sample, d)
 		for _, refuse := range []func(rules.FileDay) *rules.Refusal{rules.RefuseRepeat, rules.RefuseScale} {
 			if r := refuse(day); r != nil {
-				return r, nil
+				usual, err := g.zeroDays(r, sample, d)
+				if err != nil || !usual {
+					return r, err
+				}
 			}
 		}
 		ratio, _ := rules.SizeRatio(day.Values)

@@ -217,3 +217,40 @@ func priorRatios(sample []stretch, dates int) (out []float64) {
 	}
 	return out
 }
+
+// zeroReach is how many dates back a day of nothing but zeros is looked for: a year of holidays.
+const zeroReach = 260
+
+// zeroDays says that a file is refused for being all zeros, and that such days were taken before: its holidays come so.
+func (g *fileGate) zeroDays(r *rules.Refusal, sample []stretch, date rules.Date) (bool, error) {
+	if r.LooksLike != rules.CauseZero {
+		return false, nil
+	}
+	n, _ := slices.BinarySearch(g.j.held, date)
+	for _, d := range g.j.held[max(0, n-zeroReach):n] {
+		if all, err := g.allZero(&sample[0], d); all || err != nil {
+			return all, err
+		}
+	}
+	return false, nil
+}
+
+// allZero says that most series of a stretch have a value on a date, and that all of these are zero.
+func (g *fileGate) allZero(s *stretch, date rules.Date) (bool, error) {
+	vals := make([]int64, s.offsets[len(s.offsets)-1]-s.from+1)
+	ok, err := g.v.Fill(Returns, date, s.block, s.from, vals)
+	if !ok || err != nil {
+		return false, err
+	}
+	there := 0
+	for _, at := range s.offsets {
+		switch v := vals[at-s.from]; v {
+		case Missing64:
+		case 0:
+			there++
+		default:
+			return false, nil
+		}
+	}
+	return 2*there > len(s.offsets), nil
+}

@@ -63,7 +63,7 @@ type leader struct {
 // weigh leads the pool up to the newest date that a file changes for a member. The one of the file before goes on where the ledger holds
 // nothing that it has not seen; else one is made anew and led through the dates on which its state depends.
 func (p *Pass) weigh(j *judging, v View, blocks []block) (*weighed, error) {
-	crew := newCrew(j.names, j.members, p.Settings.Events)
+	crew := newCrew(j.names, j.members, &p.Settings)
 	j.crew, j.doubts = crew, p.Settings.Doubtful > 0
 	j.lone = p.newWeigher == nil && (crew == nil || len(crew.series) < j.names.Len())
 	if crew == nil {
@@ -194,7 +194,7 @@ func (p *Pass) foreseeAll(j *judging, v View) (*weighed, error) {
 	for n, g := range j.gauges {
 		any = any || j.ids[n] != 0 && g.Range.Of == rules.Residual && g.Range.Limit == nil
 	}
-	crew := newCrew(j.names, j.members, p.Settings.Events)
+	crew := newCrew(j.names, j.members, &p.Settings)
 	if !any || crew == nil {
 		return nil, nil
 	}

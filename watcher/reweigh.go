@@ -62,7 +62,7 @@ func (r *Reader) leaderAt(series string, step uint32) (*leader, int, error) {
 	if err != nil {
 		return nil, 0, err
 	}
-	crew := newCrew(r.Names, set.members, set.Events)
+	crew := newCrew(r.Names, set.members, set.Settings)
 	id, _ := r.Names.Find([]byte(series))
 	if crew == nil {
 		return nil, 0, nil

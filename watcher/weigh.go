@@ -27,7 +27,8 @@ type crew struct {
 }
 
 // newCrew finds the members among the names held. It is nil when there is none.
-func newCrew(names *Names, m *rules.Membership, events []rules.Event) *crew {
+func newCrew(names *Names, m *rules.Membership, s *rules.Settings) *crew {
+	events := s.Events
 	if m.Lone() && len(events) == 0 {
 		return nil
 	}
@@ -53,6 +54,7 @@ func newCrew(names *Names, m *rules.Membership, events []rules.Event) *crew {
 	c.groups = distinct(group)
 	for _, id := range c.series {
 		c.members = append(c.members, c.member(names, all[id], group[id], reference[id], currency[id]))
+		c.members[len(c.members)-1].Calendar = s.CalendarFor(all[id])
 		if block := id / BlockSize; len(c.blocks) == 0 || c.blocks[len(c.blocks)-1] != block {
 			c.blocks = append(c.blocks, block)
 		}
@@ -125,5 +127,6 @@ func (c *crew) same(o *crew) bool {
 }
 
 func sameMember(a, b causes.Member) bool {
-	return a.ID == b.ID && a.Group == b.Group && a.Reference == b.Reference && a.FX == b.FX && slices.Equal(a.Events, b.Events)
+	return a.ID == b.ID && a.Group == b.Group && a.Reference == b.Reference && a.FX == b.FX && slices.Equal(a.Events, b.Events) &&
+		a.Calendar.Same(b.Calendar)
 }

@@ -3,6 +3,8 @@ package causes
 import (
 	"math"
 	"slices"
+
+	"strayd/stats"
 )
 
 // alike is how much the followers of a benchmark move together beyond it: small companies beside an index of large ones. It is learnt from the
@@ -11,7 +13,7 @@ type alike struct {
 	today  float64             // NaN for none
 	common [scaleSlots]float64 // by date
 	n      int
-	square float64 // sum of the squares, in the order of the dates
+	square float64 // robust: of 1.4826 times the median size, so that days on which the benchmark was wrong do not hide the next
 }
 
 const (
@@ -19,7 +21,8 @@ const (
 	likeGuess  = 0.1         // mean square before anything is learnt
 	guessDates = 10          // that it counts for
 	mostCommon = 4           // deviations that one date counts for
-	farCommon  = 6           // deviations of the common residual, within which a day is as days are
+	nearCommon = 4           // deviations of the common residual within which a day is as days are, of followers that have nothing in common
+	farCommon  = 6           // the same of followers that move as one
 )
 
 func newAlike() alike {
@@ -51,18 +54,24 @@ func (a *alike) learn(t int) {
 	a.common[t&scaleMask] = min(max(a.today, -mostCommon), mostCommon)
 	a.today = math.NaN()
 	a.n, a.square = 0, 0
+	var sizes [long]float64
 	for k := t - long + 1; k <= t; k++ {
 		if d := a.common[k&scaleMask]; d == d {
+			sizes[a.n] = math.Abs(d)
 			a.n++
-			a.square += float64(d * d)
 		}
+	}
+	if a.n > 0 {
+		slices.Sort(sizes[:a.n])
+		deviation := stats.NormalMAD * middle(sizes[:a.n])
+		a.square = deviation * deviation
 	}
 }
 
 // meanSquare is that of the median residual of n followers.
 func (a *alike) meanSquare(n int) float64 {
 	guess := max(likeGuess, ofMedian/float64(n))
-	return max((a.square+guessDates*guess)/(float64(a.n)+guessDates), 1e-3)
+	return max((float64(a.n)*a.square+guessDates*guess)/(float64(a.n)+guessDates), 1e-3)
 }
 
 // weight is what each of n followers counts for: together no more than as many that have nothing in common beyond the benchmark.
@@ -72,5 +81,6 @@ func (a *alike) weight(n int) float64 {
 
 // usual says that the followers are off together no further than they are on other days.
 func (a *alike) usual(n int) bool {
-	return math.Abs(a.today) < farCommon*math.Sqrt(a.meanSquare(n))
+	far := nearCommon + float64((farCommon-nearCommon)*(1-a.weight(n)))
+	return math.Abs(a.today) < far*math.Sqrt(a.meanSquare(n))
 }

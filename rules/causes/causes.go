@@ -22,9 +22,10 @@ type Member struct {
 	ID        string
 	Group     int // index into the names of groups, -1 for none
 	Reference Reference
-	FX        int           // the member whose return is that of the foreign currency in the base, -1 for none
-	Events    []rules.Event // of this series, by date
-	Feed      string        // that its values come by, "" where not known: what comes by one feed is a day off together
+	FX        int             // the member whose return is that of the foreign currency in the base, -1 for none
+	Events    []rules.Event   // of this series, by date
+	Calendar  *rules.Calendar // of its business days; nil for Monday to Friday
+	Feed      string          // that its values come by, "" where not known: what comes by one feed is a day off together
 }
 
 // Reference is what a member's residual is taken against.

@@ -15,7 +15,8 @@ func (p *Pool) conclude(w *weighing, r *Result) {
 	logOdds, best := w.logOdds(), w.best()
 	lk.total = w.total()
 	h := p.histogramOf(i)
-	if beyond := math.Abs(lk.z) > breachZ || math.Abs(lk.ownZ) > breachZ; logOdds > lowest && !beyond {
+	beyond := math.Abs(lk.z) > breachZ || math.Abs(lk.ownZ) > breachZ
+	if logOdds > lowest && !beyond {
 		p.odds[h].take(p.t, logOdds)
 		p.odds[len(p.odds)-1].take(p.t, logOdds)
 	}
@@ -26,6 +27,9 @@ func (p *Pool) conclude(w *weighing, r *Result) {
 	}
 	if best >= 0 && lk.reversal == 0 && logOdds > leastLine && logOdds > v.Line && w.odds[best].ratio > math.E {
 		v.Kind = kindOf(w.odds[best].cause, st)
+	}
+	if v.Kind == "" && !beyond && lk.reversal == 0 {
+		v.Out = false // nothing is left out in silence
 	}
 	if v.Out {
 		v.Use, st.isOut = Out, true

@@ -64,17 +64,18 @@ func (p *Pool) unlisted(w *weighing, lk *look) {
 	}
 }
 
-// eventDays is how many days a business day may span: a Friday before a Monday.
-const eventDays = 3
+// eventDays is how many days a business day may span: a Thursday before a Tuesday, and longer holidays.
+const eventDays = 10
 
 // near lists a member's events of today or a business day beside it.
 func (p *Pool) near(i int) []rules.Event {
 	e, from := p.members[i].Events, p.states[i].event
-	for from < len(e) && rules.Weekdays(e[from].Date, p.date) > 1 {
+	days := p.members[i].Calendar
+	for from < len(e) && e[from].Date < p.date && !days.Near(e[from].Date, p.date) {
 		from++
 	}
 	to := from
-	for to < len(e) && (e[to].Date <= p.date || rules.Weekdays(p.date, e[to].Date) <= 1) {
+	for to < len(e) && days.Near(e[to].Date, p.date) {
 		to++
 	}
 	return e[from:to]
