@@ -8,6 +8,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"runtime/debug"
 	"slices"
 	"strings"
 
@@ -23,6 +24,7 @@ import (
 // Bounds of what the library is let near. The page sizes of writers in use are 1 MiB and less.
 const (
 	mostFooter = 32 << 20 // bytes of the description at the end of a file
+	mostHeader = 64 << 10 // bytes of a page's header
 	mostPage   = 64 << 20 // bytes of a page, unpacked
 	mostValues = 8 << 20  // of a page
 	mostLeaf   = 1 << 31  // rows of a file
@@ -107,12 +109,20 @@ func (g *guard) leaf(m *format.ColumnMetaData, rows int64, optional bool) error 
 	case from < 4 || m.TotalCompressedSize < 0 || from > g.size-m.TotalCompressedSize:
 		return unfit("the Parquet file is damaged or cut off: column %s does not lie within it", name)
 	}
-	r := bufio.NewReader(io.NewSectionReader(g.file, from, m.TotalCompressedSize))
+	r := bufio.NewReaderSize(io.NewSectionReader(g.file, from, m.TotalCompressedSize), mostHeader)
 	decoder := thrift.NewDecoder(new(thrift.CompactProtocol).NewReader(r))
 	seen := int64(0)
 	for seen < rows {
+		// First from bytes that are there, where no length can claim more than they hold; then as a stream, to step over it.
+		begins, err := r.Peek(mostHeader)
+		if err != nil && err != io.EOF {
+			return err
+		}
 		h := new(format.PageHeader)
-		if err := decoder.Decode(h); err != nil {
+		if err = thrift.NewDecoder(new(thrift.CompactProtocol).NewReaderFromBytes(begins)).Decode(new(format.PageHeader)); err == nil {
+			err = decoder.Decode(h)
+		}
+		if err != nil {
 			return unfit("the Parquet file is damaged: a page of column %s cannot be read", name)
 		}
 		values, err := g.page(h, m.Codec, r, optional)
@@ -254,6 +264,7 @@ func damagedPage() error { return unfit("the Parquet file is damaged: a page can
 
 // guarded calls do, and turns a panic of the library, and any error that is no fault of reading, into a fault of the file.
 func guarded(do func() error) (err error) {
+	defer debug.SetPanicOnFault(debug.SetPanicOnFault(true)) // the library reads some pages by code that no bounds are checked in
 	defer func() {
 		if r := recover(); r != nil {
 			err = unfit("the Parquet file is damaged: %v", r)
