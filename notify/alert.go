@@ -175,7 +175,7 @@ func answerLine(e event) string {
 	switch kind := e[0].Kind; {
 	case kind == rules.KindLate:
 		return fmt.Sprintf("What has come: strayd explain %d. Seen to: strayd acknowledge %s", first, refs)
-	case kind == rules.KindRefused:
+	case kind == rules.KindRefused && e[0].Gated:
 		return fmt.Sprintf("What is behind it: strayd explain %d. Right as it is: strayd accept FILE --note WHY. Seen to: strayd acknowledge %s", first, refs)
 	case kind == rules.KindMarketDay:
 		return fmt.Sprintf("What is behind it: strayd explain %d. Answer: strayd decide REFS genuine --reason market-move --note WHY", first)

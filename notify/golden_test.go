@@ -77,6 +77,12 @@ func aboutFile(kind rules.Kind, name, note string) rules.FlagNews {
 		Standing: rules.Open, Feed: "administrator", File: name, Note: note}, WindowTo: rules.NoDate, Used: rules.Missing}
 }
 
+func gated(name string) rules.FlagNews {
+	f := aboutFile(rules.KindRefused, name, "nav-0313.csv: its values are about 100 times their usual size (median of 42 series)")
+	f.Gated = true
+	return f
+}
+
 func newsOf(flags ...rules.FlagNews) rules.News {
 	return rules.News{At: made, Feed: "administrator", File: "nav-0313.csv", Rows: 84, Series: 42, Flags: flags}
 }
@@ -151,6 +157,7 @@ func goldenNews(series string) map[string]rules.News {
 		"restated": newsOf(restatedOf(series, 14)),
 		"all":      newsOf(breachOf(series, 12), limitOf(series, 13), restatedOf(series, 14)),
 		"refused":  newsOf(aboutFile(rules.KindRefused, "nav-"+series+".csv", "nav-0313.csv:18:3: value \""+series+"\" is not a number")),
+		"gated":    newsOf(gated("nav-" + series + ".csv")),
 		"late":     newsOf(late),
 		"missing":  newsOf(aboutFile(rules.KindMissing, "nav-0313.csv", "3 series: "+series+", birch, cedar")),
 		"digest":   newsOf(append(storm, restatedOf(series+"aa", 200))...),
@@ -166,7 +173,7 @@ func goldenDaily(series string) rules.DayNews {
 func TestGoldenMessages(t *testing.T) {
 	for what, series := range hostile {
 		teller, text := deskTeller(t), &strings.Builder{}
-		for _, kind := range []string{"breach", "reopened", "small", "limit", "outsize", "restated", "all", "refused", "late", "missing", "digest",
+		for _, kind := range []string{"breach", "reopened", "small", "limit", "outsize", "restated", "all", "refused", "gated", "late", "missing", "digest",
 			"looks", "crowded", "stale", "wrong", "market", "moved"} {
 			for _, n := range teller.Notices(goldenNews(series)[kind]) {
 				note(t, text, kind, n)

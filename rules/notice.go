@@ -79,6 +79,7 @@ type FlagNews struct {
 	WindowTo Date  // newest of them
 	Used     Units // what the window takes meanwhile, Missing when left out
 	Market   *MarketNews
+	Gated    bool // a file refused by what is held: a person may release it
 	Covered  bool // the notice of a market day of the same news tells of it
 }
 

@@ -2,6 +2,7 @@ package watcher
 
 import (
 	"strconv"
+	"strings"
 	"unicode/utf8"
 )
 
@@ -23,9 +24,9 @@ func (b *BadFile) Place() string {
 	return s
 }
 
-// Note is the error with what to ask the provider for, also where the form alone is wrong.
+// Note is the error with what to ask the provider for, also where the form alone is wrong and its reason does not say it.
 func (b *BadFile) Note() string {
-	if b.Ask == "" && b.Line > 0 {
+	if b.Ask == "" && b.Line > 0 && !strings.Contains(b.Reason, "ask the provider") {
 		return b.Error() + "; ask the provider for the file with this put right"
 	}
 	return b.Error()

@@ -52,6 +52,9 @@ func (p *Pass) gate(j *judging, f rules.Feed, sheet *Sheet, blocks []block) ([]*
 // the series' lives, so that the file is tried again then.
 func (p *Pass) gateKey(f rules.Feed) string { return p.FeedKey(f) + p.gateText }
 
+// gateMark parts the hash of a feed's settings from what the gate looked at.
+const gateMark = "+"
+
 func gateText(s *rules.Settings) string {
 	text, err := json.Marshal(rules.Settings{Calendar: s.Calendar, Calendars: s.Calendars, CalendarOf: s.CalendarOf, Lives: s.Lives,
 		References: s.References})
@@ -59,7 +62,7 @@ func gateText(s *rules.Settings) string {
 		panic(err) // texts and whole numbers only
 	}
 	sum := sha256.Sum256(text)
-	return "+" + hex.EncodeToString(sum[:8])
+	return gateMark + hex.EncodeToString(sum[:8])
 }
 
 // compare holds the sizes and the values of the file's newest dates against the past.

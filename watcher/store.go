@@ -1,6 +1,7 @@
 package watcher
 
 import (
+	"strings"
 	"time"
 
 	"strayd/rules"
@@ -229,6 +230,9 @@ const (
 
 // Fileless says that the row's step was made by no file.
 func (r *FileRow) Fileless() bool { return r.Outcome != Accepted && r.Outcome != Refused }
+
+// Gated says that the file was refused by what is held, not by its form: a person may release it. Its key is that of gateKey.
+func (r *FileRow) Gated() bool { return r.Outcome == Refused && strings.Contains(r.FeedKey, gateMark) }
 
 // Counts are the figures of a file or a pass.
 type Counts struct {

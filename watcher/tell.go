@@ -15,7 +15,8 @@ func (p *Pass) tell(b *Batch, series int) {
 		case f.Reopens:
 			news.Reopened = append(news.Reopened, f.Flag)
 		case f.Step == b.Step:
-			news.Flags = append(news.Flags, rules.FlagNews{Flag: f.Flag, Window: f.Window, WindowTo: f.WindowTo, Used: f.Used, Market: f.Market})
+			news.Flags = append(news.Flags, rules.FlagNews{Flag: f.Flag, Window: f.Window, WindowTo: f.WindowTo, Used: f.Used, Market: f.Market,
+				Gated: b.File.Gated()})
 		}
 	}
 	cover(news.Flags)

@@ -179,13 +179,25 @@ func refusedFiles(_ *config.Config, v watcher.View) (words []string, err error) 
 	if v == nil {
 		return nil, nil
 	}
-	err = v.Flags(false, func(g rules.Flag) bool {
+	var refused []rules.Flag
+	if err := v.Flags(false, func(g rules.Flag) bool {
 		if g.Kind == rules.KindRefused {
-			words = append(words, printable(g.File))
+			refused = append(refused, g)
 		}
 		return true
-	})
-	return words, err
+	}); err != nil {
+		return nil, err
+	}
+	for _, g := range refused {
+		row, err := v.File(g.Step)
+		if err != nil {
+			return nil, err
+		}
+		if row.Gated() { // accept takes no other
+			words = append(words, printable(g.File))
+		}
+	}
+	return words, nil
 }
 
 func feedNames(c *config.Config, _ watcher.View) (words []string, err error) {

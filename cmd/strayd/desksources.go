@@ -111,7 +111,9 @@ func evidenceOf(v watcher.View, ref uint64, weigh bool) (*page.Evidence, error) 
 	}
 	if e.flag.Series == "" {
 		var text bytes.Buffer
-		(&app{out: &text}).explainFile(e.flag)
+		if err := (&app{out: &text}).explainFile(r, e.flag); err != nil {
+			return nil, err
+		}
 		out.Title = text.String()
 		return out, explainTurns(line, r, e.flag)
 	}

@@ -58,8 +58,7 @@ func (a *app) explain(c *config.Config, v watcher.View, args []string, rangeName
 	}
 	if e.flag != nil && e.flag.Series == "" {
 		if format == "table" {
-			a.explainFile(e.flag)
-			return a.explainFileTurns(r, e.flag)
+			return firstError(a.explainFile(r, e.flag), a.explainFileTurns(r, e.flag))
 		}
 		return fmt.Errorf("flag %d is about file %s, not an observation: see `strayd flags --all --format %s`", e.flag.Ref, e.flag.File, format)
 	}
@@ -182,22 +181,28 @@ func array(objects []string) string {
 }
 
 // explainFile explains a flag that is about a file or a feed, not an observation.
-func (a *app) explainFile(f *rules.Flag) {
+func (a *app) explainFile(r *watcher.Reader, f *rules.Flag) error {
 	at := f.RaisedAt.Format(time.RFC3339)
 	if f.Kind == rules.KindMarketDay {
 		fmt.Fprintf(a.out, "Ref %d: market day of group %s, median %s for %s (raised %s, %s).\n  %s\n", f.Ref, printable(f.Group), rules.InPercent(f.Return.Float()),
 			day(f.Date), at, f.Standing, printable(f.Note))
 		fmt.Fprintf(a.out, "Its breaches: strayd flags --all --date %s --group %q\n", f.Date, printable(f.Group))
-		return
+		return nil
 	}
 	if f.Kind == rules.KindLate {
 		fmt.Fprintf(a.out, "Ref %d: feed %s was not whole for %s when its deadline passed (raised %s).\n  %s\n", f.Ref, f.Feed, day(f.Date), at, printable(f.Note))
 		fmt.Fprintln(a.out, "What has come since is in `strayd flags` and `strayd history SERIES`.")
-		return
+		return nil
 	}
 	fmt.Fprintf(a.out, "Ref %d: file %s of feed %s was refused on %s, and nothing of it is kept.\n  %s\n", f.Ref, printable(f.File), f.Feed, at,
 		printable(f.Note))
-	fmt.Fprintln(a.out, "It is tried again when its content or the feed's settings change, or when somebody releases it: strayd accept "+printable(f.File)+".")
+	again := "It is tried again when its content or the feed's settings change"
+	row, err := r.File(f.Step)
+	if err == nil && row.Gated() {
+		again += ", or when somebody releases it: strayd accept " + printable(f.File) + " --note WHY"
+	}
+	fmt.Fprintln(a.out, again+".")
+	return err
 }
 
 func (a *app) explainTable(r *watcher.Reader, e *explained) error {

@@ -105,6 +105,13 @@ func (p *Page) readFlag(view watcher.View, ref uint64, weigh bool, who rules.Per
 		}
 	}
 	out.Deed = newDeed(append([]rules.Flag{e.Flag}, out.Beside...), 1, who, &book, day, old)
+	if e.Flag.Kind == rules.KindRefused {
+		row, err := view.File(e.Flag.Step)
+		if err != nil {
+			return nil, err
+		}
+		out.Deed.Can[string(rules.Accept)] = out.Deed.Can[string(rules.Accept)] && row.Gated()
+	}
 	return out, nil
 }
 
