@@ -130,6 +130,10 @@ func TestRefused(t *testing.T) {
 	huge := bytes.Clone(good)
 	copy(huge[len(huge)-8:], "\xff\xff\xff\x7f")
 	check("a description beyond the file", huge, "the Parquet file is damaged: its description of 2147483647 bytes does not fit")
+	// A list of 2^31-1 elements, of which none is there: field 2, a list of structs (Thrift compact protocol).
+	claim := "\x15\x02\x19\xFC\xFF\xFF\xFF\xFF\x07\x00"
+	check("a list without elements", []byte("PAR1"+claim+string([]byte{byte(len(claim)), 0, 0, 0})+"PAR1"),
+		"the Parquet file is damaged: its description claims more than it holds")
 	check("lists", written(t, []struct {
 		A []int64 `parquet:"a"`
 	}{{[]int64{1}}}), `column "a" holds lists or records; deliver a flat table`)

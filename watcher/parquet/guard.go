@@ -23,7 +23,7 @@ import (
 
 // Bounds of what the library is let near. The page sizes of writers in use are 1 MiB and less.
 const (
-	mostFooter = 32 << 20 // bytes of the description at the end of a file
+	mostFooter = 8 << 20  // bytes of the description at the end of a file
 	mostHeader = 64 << 10 // bytes of a page's header
 	mostPage   = 64 << 20 // bytes of a page, unpacked
 	mostValues = 8 << 20  // of a page
@@ -59,7 +59,7 @@ func checkEnds(file io.ReaderAt, size int64) error {
 	case footer > size-12 || footer > mostFooter:
 		return unfit("the Parquet file is damaged: its description of %d bytes does not fit", footer)
 	}
-	return nil
+	return checkFooter(file, size, footer)
 }
 
 // guard walks over the pages of a file before the library reads them.
