@@ -308,6 +308,15 @@ func TestWeekVerdict(t *testing.T) {
 		c.Take("alder", CoverTally{Judged: 250}, CoverTally{Judged: 250, Beyond: 10})
 		f.Covers = []Cover{c}
 	})
+	// 2 beyond 0.27 % of 3,000, where 8.1 are expected: the likelihood ratio by hand is 6.6, p 0.010.
+	check(Look, "range own over all groups: too few beyond the 0.27 % line, 2 of 3,000", func(f *WeekFacts) {
+		c := Cover{Range: "own", Level: 0.0027, Share: 0.01}
+		c.Take("alder", CoverTally{Judged: 3000, Beyond: 2}, CoverTally{Judged: 3000, Beyond: 30})
+		f.Covers = []Cover{c}
+	})
+	check(Holds, "; 1 flag open and undecided.", func(f *WeekFacts) {
+		f.Flags = []Flag{raised(1, "alder", "2026-03-13", "2026-03-14T06:00:00Z", t)}
+	})
 	check(Look, "the settings were changed once", func(f *WeekFacts) { f.Changes = []Change{{}} })
 	check(Look, "where 0.3 were expected", func(f *WeekFacts) {
 		f.Covers = []Cover{{Range: "own", Of: Return, Level: 0.0027, Share: 0.01, Days: []CoverDay{{day(t, "2026-03-10"), 100, 9, 9}}}}

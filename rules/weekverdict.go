@@ -36,12 +36,15 @@ func NewWeekLog(now, last *WeekFacts) *WeekLog {
 	return l
 }
 
-// Sentence says the verdict and why, in one sentence of at most three reasons.
+// Sentence says the verdict and why, in one sentence of at most three reasons, and how many flags nobody has decided.
 func (l *WeekLog) Sentence() string {
 	why := l.Why[:min(3, len(l.Why))]
 	s := strings.ToUpper(string(l.Word)[:1]) + string(l.Word)[1:] + ": " + strings.Join(why, "; ")
 	if more := len(l.Why) - len(why); more > 0 {
 		s += fmt.Sprintf("; and %d more", more)
+	}
+	if open := l.Now.Ageing.Open; open > 0 {
+		s += fmt.Sprintf("; %s open and undecided", Counted(open, "flag"))
 	}
 	return s + "."
 }
@@ -108,9 +111,13 @@ func (w *WeekFigures) lookReasons() (r reasons) {
 		if c.Group != "" {
 			of = "group " + c.Group
 		}
-		v := c.InnerSays
-		r.when(v.Verdict == TooMany || v.Verdict == TooFew, "range %s over %s: %s beyond the %s line, %s of %s", c.Range, of, v.Verdict,
-			InPercentPlain(c.Share), Thousands(v.Beyond), Thousands(v.Judged))
+		for _, line := range []struct {
+			share float64
+			Coverage
+		}{{c.Share, c.InnerSays}, {c.Level, c.OuterSays}} {
+			r.when(line.Verdict == TooMany || line.Verdict == TooFew, "range %s over %s: %s beyond the %s line, %s of %s", c.Range, of, line.Verdict,
+				InPercentPlain(line.share), Thousands(line.Beyond), Thousands(line.Judged))
+		}
 	}
 	r.when(w.Checked.Part < w.Checked.Whole && !w.unwatched(), "%s of %s expected series-days have no value", Thousands(w.Checked.Whole-w.Checked.Part), Thousands(w.Checked.Whole))
 	r.when(w.Ageing.PastReply > 0, "%s past the reply-by time", Counted(w.Ageing.PastReply, "flag"))
