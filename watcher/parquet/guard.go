@@ -223,6 +223,7 @@ func claims(h *format.PageHeader) (values int64, encoding format.Encoding, plain
 
 // known are the encodings whose room is bounded by the bytes of the page and its number of values.
 func known(e format.Encoding) bool {
+	//lint:ignore SA1019 writers of the format's first version still use it
 	return slices.Contains([]format.Encoding{format.Plain, format.PlainDictionary, format.RLE, format.RLEDictionary, format.ByteStreamSplit,
 		format.DeltaBinaryPacked, format.DeltaLengthByteArray}, e)
 }
