@@ -2,6 +2,7 @@ package main
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 
 	"strayd/rules"
@@ -25,6 +26,38 @@ func (a *app) sayActed(answer *watcher.Answer) error {
 		fmt.Fprintf(a.out, "A second person must agree: strayd sign-off %s\n", refWords(e.Second))
 	}
 	return a.sayDiffers(e)
+}
+
+// beyondAgain says of which flags the corrected value is itself beyond the line that was broken, or beyond a limit.
+func beyondAgain(s *rules.Settings, answer *watcher.Answer) (notes []string) {
+	act := &answer.Entry.Act
+	if act.Deed != rules.Decide || act.Conclusion != rules.Corrected {
+		return nil
+	}
+	members, err := rules.NewMembership(s)
+	if err != nil {
+		return nil // the settings were checked when they were read
+	}
+	x := act.Value.Float()
+	say := func(series, of string, low, high rules.Num) {
+		n := fmt.Sprintf("the corrected value %s of %s is itself beyond the %s, %s; if that is not meant, decide again", rules.InPercent(x), printable(series), of,
+			rules.Between(low, high))
+		if (low.OK && x < low.V || high.OK && x > high.V) && !slices.Contains(notes, n) {
+			notes = append(notes, n)
+		}
+	}
+	for i := range answer.Flags {
+		f := &answer.Flags[i]
+		if f.Kind != rules.KindLimit {
+			say(f.Series, "breach line of range "+f.Range, f.Low, f.High)
+		}
+		for n := range s.Ranges {
+			if r := &s.Ranges[n]; r.Limit != nil && members.Applies(n, f.Series, f.Group) {
+				say(f.Series, "limit "+r.Name, rules.Some(r.Limit.Low.Float()), rules.Some(r.Limit.High.Float()))
+			}
+		}
+	}
+	return notes
 }
 
 func upper(s string) string { return strings.ToUpper(s[:1]) + s[1:] }

@@ -159,7 +159,9 @@ func parseDecision(args []string) (refs []string, act rules.Act, err error) {
 	case act.Conclusion != rules.Corrected && value != "":
 		return nil, act, fmt.Errorf("%s takes no value", word)
 	case value != "":
-		act.Value, err = rules.ParseUnits(value)
+		if act.Value, err = rules.ParseUnits(value); err != nil {
+			err = fmt.Errorf("corrected %w: need a value such as 1.28%%, -35bp or 0.0128", err)
+		}
 	}
 	return args[:at], act, err
 }
@@ -209,6 +211,9 @@ func (a *app) act(args []string, d *deed, act rules.Act) error {
 		answer, err := p.Act(refs, act)
 		if err != nil {
 			return err
+		}
+		for _, n := range beyondAgain(&p.Settings, answer) {
+			fmt.Fprintln(a.err, "note: "+n)
 		}
 		return a.sayActed(answer)
 	})
