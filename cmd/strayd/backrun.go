@@ -47,9 +47,14 @@ many flags a week; the past is then judged again under it.
 			"  strayd back-run --with tighter.yaml --days 750 --changed changed.csv\n  strayd back-run --budget 2 --format json\n" +
 			"  strayd back-run --feed administrator history-2024.csv history-2025.csv",
 		Args: takes(0, 1000),
-		RunE: func(_ *cobra.Command, files []string) error { return a.backRun(o, files) },
 	}
 	s := cmd.Flags()
+	cmd.RunE = func(_ *cobra.Command, files []string) error {
+		if s.Changed("budget") && !(o.budget > 0) {
+			return usagef("--budget %v: need a number of flags a week, more than 0", o.budget)
+		}
+		return a.backRun(o, files)
+	}
 	s.StringVar(&o.with, "with", "", "the other settings are those of this configuration `FILE`")
 	s.StringArrayVar(&o.set, "set", nil, "`PATH=VALUE` in the place of a line of the other settings; may be given again")
 	s.IntVar(&o.days, "days", 250, "compare the last `N` dates; those before are judged, and not counted")
@@ -163,6 +168,9 @@ func (r *backRunning) other(these rules.Settings) (rules.Settings, error) {
 	}
 	opt.Set = r.options.set
 	c, err := config.Load(path, opt)
+	if errors.Is(err, os.ErrNotExist) {
+		return these, badSetting{fmt.Errorf("--with: no configuration %s here", path)}
+	}
 	if err != nil {
 		return these, err
 	}

@@ -29,6 +29,9 @@ func heldBook(v watcher.View, s rules.Settings, dates int, only []rules.Pattern)
 	}
 	b := &drill.Book{Dates: all[max(0, len(all)-dates):], Events: s.Events}
 	ids := chosen(names, members, only)
+	if len(ids) == 0 && len(only) > 0 {
+		return nil, usagef("--for: no series or group of that name is held")
+	}
 	if cells := len(ids) * len(b.Dates); cells > mostCells {
 		return nil, fmt.Errorf("%s on %s are more than the %s values that a drill holds: narrow it with --for", rules.Counted(len(ids), "series"),
 			rules.Counted(len(b.Dates), "date"), rules.Thousands(mostCells))

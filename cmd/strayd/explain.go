@@ -41,6 +41,8 @@ type explained struct {
 	row      watcher.Row
 	versions []watcher.Version
 	flag     *rules.Flag
+	beside   []string           // where none was asked for by its ref: the flags of the date, in words
+	limits   []string           // that the value breaks as well, in words
 	weighed  *watcher.Reweighed // nil for a series that is not weighed together with others
 }
 
@@ -78,7 +80,11 @@ func findExplained(r *watcher.Reader, args []string, rangeName string) (*explain
 		if err != nil {
 			return nil, usageError{err}
 		}
-		return explainObservation(r, args[0], d, ^uint32(0), rangeName, nil)
+		e, err := explainObservation(r, args[0], d, ^uint32(0), rangeName, nil)
+		if err == nil {
+			e.beside, err = flagsOn(r.View, args[0], d)
+		}
+		return e, err
 	}
 	ref, err := strconv.ParseUint(args[0], 10, 64)
 	if err != nil {
@@ -120,7 +126,35 @@ func explainObservation(r *watcher.Reader, series string, d rules.Date, asOf uin
 	if at < 0 {
 		return nil, fmt.Errorf("no range %q judged series %q on %s", rangeName, series, d)
 	}
-	return &explained{row: rows[at], versions: versions, flag: f}, nil
+	e := &explained{row: rows[at], versions: versions, flag: f}
+	for i := range rows {
+		if row := &rows[i]; f == nil && i != at && row.Limited && row.Finding == rules.Breach {
+			e.limits = append(e.limits, fmt.Sprintf("limit %s, which allows %s", row.Range, between(row.Low, row.High)))
+		}
+	}
+	return e, nil
+}
+
+// flagsOn are the flags of a series on a date, in words.
+func flagsOn(v watcher.View, series string, d rules.Date) (words []string, err error) {
+	names, err := v.Names()
+	if err != nil {
+		return nil, err
+	}
+	id, ok := names.Find([]byte(series))
+	for _, kind := range rules.Kinds {
+		if !ok {
+			break
+		}
+		f, ok, err := v.FlagAt(id, d, kind)
+		if err != nil {
+			return nil, err
+		}
+		if ok {
+			words = append(words, fmt.Sprintf("ref %d (%s, %s)", f.Ref, f.Kind, f.Standing))
+		}
+	}
+	return words, nil
 }
 
 // weigh makes the weighing of the value again. It reads the past of every series that is weighed together with it.
@@ -231,6 +265,12 @@ func (e *explained) evidence(line func(name, format string, args ...any), r *wat
 	row := &e.row
 	if e.flag != nil && e.flag.Kind.Slow() {
 		line("flagged", "%s", printable(e.flag.Note))
+	}
+	if len(e.beside) > 0 {
+		line("flagged", "%s", strings.Join(e.beside, ", "))
+	}
+	if len(e.limits) > 0 {
+		line("also breaks", "%s", printable(strings.Join(e.limits, "; ")))
 	}
 	if row.Why != "" {
 		line("why", "%s", printable(row.Why))

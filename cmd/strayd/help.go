@@ -54,7 +54,9 @@ func callOf(c *cobra.Command) string {
 
 // optionWords are the library's words for options, and ours.
 var optionWords = strings.NewReplacer("unknown flag", "unknown option", "unknown shorthand flag", "unknown option",
-	"flag needs an argument", "option needs a value", "bad flag syntax", "option is misspelt", " flag: ", " option: ")
+	"flag needs an argument", "option needs a value", "bad flag syntax", "option is misspelt", " flag: ", " option: ",
+	"strconv.ParseFloat: parsing ", "not a number: ", "strconv.ParseInt: parsing ", "not a whole number: ", "strconv.ParseUint: parsing ", "not a whole number: ",
+	": invalid syntax", "", ": value out of range", " is too large")
 
 func optionError(err error) error { return errors.New(optionWords.Replace(err.Error())) }
 

@@ -44,6 +44,9 @@ func (a *app) history(series, from, to, format string) error {
 			return usagef("--to: %w", err)
 		}
 	}
+	if from != "" && to != "" && since > until {
+		return usagef("--from %s is later than --to %s", since, until)
+	}
 	if err := checkFormat(format); err != nil {
 		return err
 	}

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"errors"
 	"fmt"
 	"os"
 
@@ -98,6 +99,9 @@ under another name.`,
 			c, err := a.load()
 			if err != nil {
 				return err
+			}
+			if _, err := os.Stat(args[0]); errors.Is(err, os.ErrNotExist) {
+				return fmt.Errorf("there is no backup %s: name a file that `strayd ledger backup` wrote", args[0])
 			}
 			kept, r, err := ledger.Restore(a.ctx, args[0], c.Ledger)
 			if err != nil {

@@ -66,6 +66,10 @@ func (a *app) execute(args []string) (code int) {
 	if code == exitUsage {
 		fmt.Fprintln(a.err, "See `strayd help`, or `strayd COMMAND --help`.")
 	}
+	var damaged *ledger.Damaged
+	if errors.As(err, &damaged) {
+		fmt.Fprintln(a.err, "The way back from a damaged ledger: strayd ledger restore BACKUP")
+	}
 	return code
 }
 

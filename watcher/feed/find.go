@@ -25,24 +25,24 @@ func Find(f rules.Feed, now time.Time, settled bool) (watcher.Found, error) {
 	var found watcher.Found
 	root, err := os.OpenRoot(f.Dir)
 	if err != nil {
-		return found, fmt.Errorf("feed %s: %w", f.Name, err)
+		return found, err
 	}
 	defer root.Close()
 	names, err := namesIn(root)
 	if err != nil {
-		return found, fmt.Errorf("feed %s: %w", f.Name, err)
+		return found, err
 	}
 	for _, name := range names {
 		ok, err := matches(f, name)
 		if err != nil {
-			return found, fmt.Errorf("feed %s: files %q: %w", f.Name, f.Pattern, err)
+			return found, fmt.Errorf("files %q: %w", f.Pattern, err)
 		}
 		if !ok {
 			continue
 		}
 		c := watcher.Candidate{Feed: f.Name, Dir: f.Dir, Name: name, Date: nameDate(name), Sentinel: hasSentinel(names, name, f.Sentinel)}
 		if err := sortInto(&found, root, c, f.Settle, now, settled); err != nil {
-			return found, fmt.Errorf("feed %s: %w", f.Name, err)
+			return found, err
 		}
 	}
 	arrange(&found)
