@@ -111,6 +111,9 @@ func marketOf(group string, still ...string) rules.FlagNews {
 	f := breachOf("", 20)
 	f.Group, f.Kind, f.Range, f.Low, f.High, f.Tail, f.Log10, f.Line = group, rules.KindMarketDay, "", rules.Num{}, rules.Num{}, rules.Num{}, rules.Num{}, 0
 	f.Market = &rules.MarketNews{Reporting: 15, MedianZ: 4.13, NotMoved: still}
+	if len(still) > 1 {
+		f.Market.NotMoved, f.Market.Otherwise = still[1:], still[:1]
+	}
 	return f
 }
 

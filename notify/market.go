@@ -23,22 +23,29 @@ func (t *Teller) market(news rules.News, e event, read rules.Notice) []string {
 
 func movedLine(m *rules.MarketNews) string {
 	return fmt.Sprintf("%s have a value, %s moved; the median lies %.1f deviations out by their own past", rules.Counted(m.Reporting, "series"),
-		rules.Thousands(m.Reporting-len(m.NotMoved)), m.MedianZ)
+		rules.Thousands(m.Reporting-len(m.NotMoved)-len(m.Otherwise)), m.MedianZ)
 }
 
 func stillLine(m *rules.MarketNews) string {
-	if len(m.NotMoved) == 0 {
+	if len(m.NotMoved)+len(m.Otherwise) == 0 {
 		return "All of them moved."
 	}
+	return both(someNamed("Did NOT move", m.NotMoved), someNamed("Moved otherwise", m.Otherwise))
+}
+
+// someNamed names the first of some series after what they did; "" where there are none.
+func someNamed(what string, all []string) string {
+	if len(all) == 0 {
+		return ""
+	}
 	var names []string
-	for _, s := range m.NotMoved[:min(stillNamed, len(m.NotMoved))] {
+	for _, s := range all[:min(stillNamed, len(all))] {
 		names = append(names, name(s))
 	}
-	s := "Did NOT move: " + strings.Join(names, ", ")
-	if more := len(m.NotMoved) - len(names); more > 0 {
-		s = fmt.Sprintf("Did NOT move (%s): %s and %d more", rules.Thousands(len(m.NotMoved)), strings.Join(names, ", "), more)
+	if more := len(all) - len(names); more > 0 {
+		return fmt.Sprintf("%s (%s): %s and %d more", what, rules.Thousands(len(all)), strings.Join(names, ", "), more)
 	}
-	return s
+	return what + ": " + strings.Join(names, ", ")
 }
 
 // coveredLine says which breaches the message stands for.

@@ -87,7 +87,8 @@ type FlagNews struct {
 type MarketNews struct {
 	Reporting int      // series with a value
 	MedianZ   float64  // of their distances from their own past, in deviations
-	NotMoved  []string // series that did not take part
+	NotMoved  []string // series that did not take part, and stayed near their usual size
+	Otherwise []string // series that did not take part, and moved far in their own way
 }
 
 // DayNews is what the daily line says.

@@ -76,6 +76,9 @@ func (j *judging) marketFlag(date rules.Date, m *causes.Market) *FlagRow {
 	for _, at := range m.NotMoved {
 		news.NotMoved = append(news.NotMoved, c.members[at].ID)
 	}
+	for _, at := range m.Otherwise {
+		news.Otherwise = append(news.Otherwise, c.members[at].ID)
+	}
 	f.Market, f.Note = news, marketNote(news)
 	for at, fresh := range j.weighed.days[date].fresh {
 		if fresh && c.members[at].Group == m.Group && int(c.series[at]) < j.firstNames {
@@ -90,15 +93,23 @@ func (j *judging) marketFlag(date rules.Date, m *causes.Market) *FlagRow {
 
 func marketNote(m *rules.MarketNews) string {
 	note := fmt.Sprintf("%s with a value, median distance %.1f deviations", rules.Counted(m.Reporting, "series"), m.MedianZ)
-	if len(m.NotMoved) == 0 {
+	if len(m.NotMoved)+len(m.Otherwise) == 0 {
 		return note + "; all moved"
 	}
-	names := m.NotMoved[:min(len(m.NotMoved), mostNamed)]
-	note += "; did not move: " + strings.Join(names, ", ")
-	if more := len(m.NotMoved) - len(names); more > 0 {
-		note += fmt.Sprintf(" and %d more", more)
+	return note + someNamed("; did not move: ", m.NotMoved) + someNamed("; moved otherwise: ", m.Otherwise)
+}
+
+// someNamed names the first of some series after what they did; "" where there are none.
+func someNamed(what string, all []string) string {
+	if len(all) == 0 {
+		return ""
 	}
-	return note
+	names := all[:min(len(all), mostNamed)]
+	s := what + strings.Join(names, ", ")
+	if more := len(all) - len(names); more > 0 {
+		s += fmt.Sprintf(" and %d more", more)
+	}
+	return s
 }
 
 // withWrong gives a reference that its followers agree is wrong a view of its own, or that reason to the view that is there.

@@ -112,7 +112,8 @@ type Market struct {
 	Median    float64 // return, of the members that have a value
 	MedianZ   float64 // of |z| under each member's own past
 	Reporting int     // members with a value
-	NotMoved  []int   // members that did not take part
+	NotMoved  []int   // members that did not take part, and stayed inside their own watch line
+	Otherwise []int   // members that did not take part, and moved beyond it in their own way
 }
 
 // WrongSeries is a reference that its followers agree is wrong.

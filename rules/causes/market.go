@@ -39,10 +39,15 @@ func (p *Pool) market(g int, row []ranked, z float64) Market {
 	m := Market{Group: g, Median: (row[(n-1)/2].x + row[n/2].x) / 2, MedianZ: z, Reporting: n}
 	for _, r := range row {
 		if p.still(r.member, m.Median, z) {
-			m.NotMoved = append(m.NotMoved, r.member)
+			if math.Abs(p.looks[r.member].ownZ) > watchZ {
+				m.Otherwise = append(m.Otherwise, r.member)
+			} else {
+				m.NotMoved = append(m.NotMoved, r.member)
+			}
 		}
 	}
 	slices.Sort(m.NotMoved)
+	slices.Sort(m.Otherwise)
 	return m
 }
 

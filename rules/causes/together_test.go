@@ -20,7 +20,8 @@ func TestMarketDay(t *testing.T) {
 			t.Fatalf("seed %d: markets %+v, want one, of group 0", seed, r.Markets)
 		}
 		m := r.Markets[0]
-		if m.Reporting != fundsOf || m.Median > -0.03 || m.MedianZ < watchZ || !slices.Equal(m.NotMoved, []int{onIndex + 4, onIndex + 7}) {
+		if m.Reporting != fundsOf || m.Median > -0.03 || m.MedianZ < watchZ || !slices.Equal(m.NotMoved, []int{onIndex + 4}) ||
+			!slices.Equal(m.Otherwise, []int{onIndex + 7}) {
 			t.Errorf("seed %d: %+v", seed, m)
 		}
 		for i := range fundsOf {
