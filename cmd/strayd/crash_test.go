@@ -103,7 +103,7 @@ func sizeOf(path string) int64 {
 	return info.Size()
 }
 
-// rounds is how many rounds of kills to make: 12, 5 with -short, or as STRAYD_CRASHES says.
+// rounds is how many rounds of kills to make: 10, 5 with -short, or as STRAYD_CRASHES says.
 func rounds(t *testing.T) int {
 	if text := os.Getenv("STRAYD_CRASHES"); text != "" {
 		n, err := strconv.Atoi(text)
@@ -115,7 +115,7 @@ func rounds(t *testing.T) int {
 	if testing.Short() {
 		return 5
 	}
-	return 12
+	return 10
 }
 
 // Kills passes at random moments. Between the kill and the next pass every file is wholly there or not at all, and the files that are

@@ -56,7 +56,7 @@ func TestDiskFull(t *testing.T) {
 	t.Logf("seed %d", seed)
 	d := deliver(t, rand.New(rand.NewPCG(seed, 10)), true)
 	least, most := diskNeeds(t, d, disk)
-	steps := int64(4)
+	steps := int64(3)
 	if testing.Short() {
 		steps = 2
 	}
