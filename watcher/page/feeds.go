@@ -76,12 +76,7 @@ func (x *feedFacts) record(f *rules.Feed, book *Book, now time.Time) feedRecord 
 	a := &arrival{}
 	today := startOf(now.In(book.Zone))
 	for _, row := range files {
-		switch {
-		case row.Outcome == watcher.Accepted:
-			a.file = row
-		case !row.Received.Before(today):
-			a.refused++
-		}
+		a.take(row, today)
 	}
 	out := feedRecord{feedToday: feedOf(f, a, now, book.Zone)}
 	for n := len(files) - 1; n >= 0 && len(out.Files) < filesShown; n-- {
