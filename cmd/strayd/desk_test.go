@@ -5,7 +5,9 @@ import (
 	"net/http"
 	"net/http/cookiejar"
 	"net/url"
+	"os"
 	"os/user"
+	"path/filepath"
 	"regexp"
 	"strings"
 	"testing"
@@ -135,6 +137,32 @@ func TestDeskReleasesAFile(t *testing.T) {
 	a.sees("flag?ref="+ref[1], "Release the file", "was refused")
 	a.does("ref="+ref[1]+"&deed=accept", http.StatusUnprocessableEntity, "needs --note")
 	a.does("ref="+ref[1]+"&deed=accept&note=the desk confirms", http.StatusOK, "released", "by alice")
+}
+
+// Of many missing series the page names five, and says how many more there are.
+func TestDeskCountsTheMissing(t *testing.T) {
+	f := demoFolder(t)
+	f.nextDay("whole.csv", 1)
+	text, err := os.ReadFile(filepath.Join(f.path, "inbox/whole.csv"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	var kept []string
+	for n, line := range strings.Split(strings.TrimSpace(string(text)), "\n") {
+		if n == 0 || n%3 != 0 { // 24 series without every third
+			kept = append(kept, line)
+		}
+	}
+	if err := os.Remove(filepath.Join(f.path, "inbox/whole.csv")); err != nil {
+		t.Fatal(err)
+	}
+	f.write("inbox/returns-2026-03-16.csv", strings.Join(kept, "\n")+"\n")
+	b := f.beside()
+	b.expect(alice, "pass --settled", exitDone, "16 new")
+	page := b.desk(alice).sees("", "16 of 24</b> series checked", "and 3 more")
+	if n := strings.Count(page[strings.Index(page, "no value"):strings.Index(page, "and 3 more")], "<bdi>"); n != 5 {
+		t.Errorf("%d missing series are named, want 5", n)
+	}
 }
 
 // Whoever has no link gets nothing, and no daemon gives none.

@@ -30,6 +30,7 @@ type todayPage struct {
 	Checked  int
 	Due      int
 	Missing  []string
+	More     int // missing series that are not named
 	Asking   int // flags
 	Second   int // of which for a second person
 	Feeds    []feedToday
@@ -60,6 +61,7 @@ func (p *Page) readToday(view watcher.View, all string) (*todayPage, error) {
 	}
 	out := &todayPage{Now: now.In(book.Zone), Date: facts.newest, Checked: facts.checked, Due: facts.due, Missing: facts.missing, Asking: len(facts.flags),
 		Troubles: book.Troubles, Head: facts.head}
+	out.More = max(0, facts.due-facts.checked-len(facts.missing))
 	for i := range facts.flags {
 		if facts.flags[i].AwaitsSecond() {
 			out.Second++
