@@ -206,6 +206,16 @@ func (d *daemon) alone(ctx context.Context) (release func(), err error) {
 	return func() { <-d.passing }, nil
 }
 
+// turn is alone for a job of the daemon's own: with the set-up in force, whose channels look for notices once the job is done.
+func (d *daemon) turn(ctx context.Context) (s *setup, done func(), err error) {
+	release, err := d.alone(ctx)
+	if err != nil {
+		return nil, nil, err
+	}
+	s = d.inForce()
+	return s, func() { s.post.Wake(); release() }, nil
+}
+
 // run has everything run until the end comes, then stops it.
 func (d *daemon) run(ctx context.Context, server *desk.Server, pages net.Listener) error {
 	ends := make(chan error, 3)

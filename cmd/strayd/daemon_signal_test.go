@@ -246,18 +246,7 @@ func TestCheckChannels(t *testing.T) {
 	socketFolder(t)
 	s := newChatService(t)
 	f := deskFolder(t, "desk", "ops")
-	want := func(code int, args []string, texts ...string) {
-		t.Helper()
-		got, out, errs := f.try(append([]string{"check"}, args...)...)
-		if got != code {
-			t.Errorf("check %v: exit code %d\n%s%s", args, got, out, errs)
-		}
-		for _, text := range texts {
-			if !strings.Contains(out, text) {
-				t.Errorf("check %v does not say %q\n%s", args, text, out)
-			}
-		}
-	}
+	want := f.checks
 	want(exitDone, nil, "channel desk (slack): not asked: no token", "channel console (console): prints here")
 	want(exitFailed, []string{"--send"}, "channel desk (slack): does not deliver: no token", "TEST of channel console")
 	t.Setenv("STRAYD_SLACK_TOKEN", chatToken)

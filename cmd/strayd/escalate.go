@@ -138,12 +138,10 @@ func groupOf(c *config.Config, name string) rules.Group {
 
 // escalate does so in the daemon.
 func (d *daemon) escalate(ctx context.Context, slot time.Time) error {
-	release, err := d.alone(ctx)
+	s, done, err := d.turn(ctx)
 	if err != nil {
 		return err
 	}
-	defer release()
-	s := d.inForce()
-	defer s.post.Wake()
+	defer done()
 	return escalate(s.config, d.ledger, s.teller, slot)
 }

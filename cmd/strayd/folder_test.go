@@ -117,3 +117,17 @@ func reference(t testing.TB, name string) []record {
 	}
 	return records(t, string(text))
 }
+
+// checks runs check with further words and wants its exit code, and texts in what it says.
+func (f *folder) checks(code int, args []string, texts ...string) {
+	f.t.Helper()
+	got, out, errs := f.try(append([]string{"check"}, args...)...)
+	if got != code {
+		f.t.Errorf("check %v: exit code %d\n%s%s", args, got, out, errs)
+	}
+	for _, text := range texts {
+		if !strings.Contains(out, text) {
+			f.t.Errorf("check %v does not say %q\n%s", args, text, out)
+		}
+	}
+}

@@ -133,13 +133,11 @@ func (d *daemon) pass(ctx context.Context, feed string) error {
 }
 
 func (d *daemon) onePass(ctx context.Context, feed string) error {
-	release, err := d.alone(ctx)
+	s, done, err := d.turn(ctx)
 	if err != nil {
 		return err
 	}
-	defer release()
-	s := d.inForce()
-	defer s.post.Wake()
+	defer done()
 	p, err := d.newPass(s.config)
 	if err != nil {
 		return err
@@ -280,13 +278,11 @@ func (d *daemon) deadlines(ctx context.Context, feed string, slot time.Time) err
 // deadline looks once more at what has arrived, then judges whether the feed is whole. A feed that cannot be looked at is not whole.
 func (d *daemon) deadline(ctx context.Context, f rules.Feed, date rules.Date, due time.Time) (ok bool, err error) {
 	looked := d.pass(ctx, f.Name)
-	release, err := d.alone(ctx)
+	s, done, err := d.turn(ctx)
 	if err != nil {
 		return false, err
 	}
-	defer release()
-	s := d.inForce()
-	defer s.post.Wake()
+	defer done()
 	p, err := d.newPass(s.config)
 	if err == nil {
 		err = p.Deadline(f, date, due)
@@ -300,13 +296,11 @@ func (d *daemon) daily(ctx context.Context, slot time.Time) error {
 	if !c.Calendar.Days.Business(rules.DateFrom(slot.In(c.Location))) {
 		return nil // a holiday
 	}
-	release, err := d.alone(ctx)
+	s, done, err := d.turn(ctx)
 	if err != nil {
 		return err
 	}
-	defer release()
-	s := d.inForce()
-	defer s.post.Wake()
+	defer done()
 	channels, err := s.post.sender.Health()
 	if err != nil {
 		return err

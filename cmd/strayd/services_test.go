@@ -136,18 +136,7 @@ func TestCheckSendsToServices(t *testing.T) {
 	s := newServices(t, false)
 	f := deskFolder(t)
 	f.configure(deskConfig() + s.channels())
-	want := func(code int, args []string, texts ...string) {
-		t.Helper()
-		got, out, errs := f.try(append([]string{"check"}, args...)...)
-		if got != code {
-			t.Errorf("check %v: exit code %d\n%s%s", args, got, out, errs)
-		}
-		for _, text := range texts {
-			if !strings.Contains(out, text) {
-				t.Errorf("check %v does not say %q\n%s", args, text, out)
-			}
-		}
-	}
+	want := f.checks
 	want(exitDone, nil, "channel hook (webhook): not asked: no secret", "channel post (mail): server "+s.mail.Addr().String()+" answers (none); without a user")
 	want(exitFailed, []string{"--send"}, "channel hook (webhook): does not deliver: no secret")
 	for _, e := range credentials() {
